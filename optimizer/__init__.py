@@ -1,0 +1,1 @@
+"""Constrained multi-objective search over arrays, its archive and its fronts; knows nothing of machines."""

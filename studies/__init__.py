@@ -1,0 +1,1 @@
+"""The study file and what a user does with it."""
