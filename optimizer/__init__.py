@@ -1,1 +1,1 @@
-"""Constrained multi-objective search over arrays, its archive and its fronts; knows nothing of machines."""
+"""Constrained multi-objective search over arrays, with its archive; it knows no machines."""
