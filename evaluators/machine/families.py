@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import operator
 from collections.abc import Iterable
 from dataclasses import dataclass, replace
 
@@ -145,9 +146,9 @@ def enumerate_families(slots: Iterable[int], pole_pairs: Iterable[int]) -> list[
     list of Winding or Refusal
         In the order given, slots outermost; a refusal says which condition failed.
     """
-    pairs = list(pole_pairs)
+    pairs = [operator.index(p) for p in pole_pairs]
     results: list[Winding | Refusal] = []
-    for q in slots:
+    for q in map(operator.index, slots):
         for p in pairs:
             for ps in (p - 1, p + 1):
                 if ps == 0:
@@ -188,9 +189,7 @@ def _choose_pitch(winding: Winding) -> int:
     factors = []
     for pitch in range(1, family.slots // 2 + 1):
         trial = replace(winding, family=replace(family, coil_pitch=pitch))
-        torque = trial.winding_factors(family.pole_pairs)[0][0]
-        suspension = trial.winding_factors(family.suspension_pole_pairs)[1][0]
-        factors.append((pitch, float(torque), float(suspension)))
+        factors.append((pitch, trial.torque_winding_factor, trial.suspension_winding_factor))
     enough = [item for item in factors if item[1] >= TORQUE_FACTOR_MINIMUM]
     if not enough:
         best = max(factors, key=lambda item: item[1])

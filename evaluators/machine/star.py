@@ -87,8 +87,8 @@ def split_groups(
     A line through the origin cuts the star of phase 0's sensed coil phasors in two, group b
     being reversed for suspension. The sum of signed phasors is longest for some such line: a
     phasor on the wrong side of its own resultant would lengthen it by changing sides. All lines
-    between neighbouring phasors are tried, at most Q/3; of equally long sums the first line
-    counted counter-clockwise from the first coil wins. Phase belts at a p that is no multiple of
+    between neighbouring phasors are tried, at most Q/3; of equally long sums the one whose
+    group a reaches furthest from the first coil on wins. Phase belts at a p that is no multiple of
     three repeat every 120 degrees, so the split is turned by Q/3 and 2Q/3 coils for the others.
 
     Parameters
@@ -108,13 +108,14 @@ def split_groups(
     angle = 2 * suspension_pole_pairs * coils + np.where(sense[coils] > 0, 0, slots)
     angle = (angle - angle[0]) % (2 * slots)
     phasors = unit_phasors(angle, 2 * slots)
-    best, chosen = -1.0, np.zeros(coils.size, dtype=np.bool_)
+    splits = []
     for edge in np.unique(angle % slots):
         # The line lies a quarter unit beyond a phasor, hence between two neighbours.
         side = (4 * (angle - edge) - 1) % (8 * slots) < 4 * slots
         length = float(np.abs(np.sum(np.where(side, -phasors, phasors))))
-        if length > best + BALANCE_TOLERANCE * coils.size:
-            best, chosen = length, side ^ side[0]
+        splits.append((length, (side ^ side[0]).tolist()))
+    longest = max(length for length, _ in splits) - BALANCE_TOLERANCE * coils.size
+    chosen = min(split for length, split in splits if length >= longest)
     group = np.zeros(slots, dtype=np.int64)
     for turn in range(PHASES):
         group[(coils + turn * (slots // PHASES)) % slots] = chosen

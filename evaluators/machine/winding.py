@@ -23,6 +23,7 @@ from typing import Literal, NamedTuple
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from evaluators.machine import winding_spectrum
 from evaluators.machine.star import (
     PHASES,
     ComplexArray,
@@ -31,6 +32,7 @@ from evaluators.machine.star import (
     phase_sequence,
     unit_phasors,
 )
+from evaluators.machine.winding_spectrum import MmfSpectrum
 
 FloatArray = NDArray[np.float64]
 Connection = Literal["torque", "suspension"]
@@ -135,20 +137,6 @@ class CoilString(NamedTuple):
     coils: tuple[int, ...]
     starts: tuple[int, ...]
     finishes: tuple[int, ...]
-
-
-@dataclass(frozen=True)
-class MmfSpectrum:
-    """Air-gap magnetomotive force of balanced currents, per turn of a coil and ampere peak.
-
-    f(theta, t) = Re(sum over n of forward[n] exp(j (omega t - orders[n] theta))
-    + backward[n] exp(j (omega t + orders[n] theta))), positive where it drives flux outwards;
-    forward waves turn counter-clockwise. Arrays have shape (n_orders,), orders 1 to n_orders.
-    """
-
-    orders: IntArray
-    forward: ComplexArray
-    backward: ComplexArray
 
 
 def _read_only(array: NDArray[np.generic]) -> None:
@@ -280,3 +268,92 @@ class Winding:
         torque = np.abs(self.phase_phasors("torque", orders)).max(axis=0)
         suspension = np.abs(self.phase_phasors("suspension", orders)).max(axis=0)
         return torque, suspension
+
+    @cached_property
+    def torque_winding_factor(self) -> float:
+        """Winding factor of torque current at order p."""
+        return float(self.winding_factors(self.family.pole_pairs)[0][0])
+
+    @cached_property
+    def suspension_winding_factor(self) -> float:
+        """Winding factor of suspension current at order ps."""
+        return float(self.winding_factors(self.family.suspension_pole_pairs)[1][0])
+
+    def slot_mmf(self, connection: Connection) -> ComplexArray:
+        """`torque_slot_mmf` or `suspension_slot_mmf`, by name."""
+        return self.torque_slot_mmf if connection == "torque" else self.suspension_slot_mmf
+
+    def rotating_factors(
+        self, connection: Connection, orders: ArrayLike
+    ) -> tuple[FloatArray, FloatArray]:
+        """Winding factors of the counter-clockwise and clockwise waves, (n_orders,) each."""
+        return winding_spectrum.rotating_factors(self.slot_mmf(connection), orders)
+
+    def mmf_spectrum(self, connection: Connection, max_order: int) -> MmfSpectrum:
+        """Spectrum of the magnetomotive force per turn and ampere peak, up to `max_order`."""
+        return winding_spectrum.mmf_spectrum(self.slot_mmf(connection), max_order)
+
+    def differential_leakage(self, connection: Connection) -> float:
+        """Harmonic leakage factor sigma_d referred to order p or ps."""
+        family = self.family
+        order = family.pole_pairs if connection == "torque" else family.suspension_pole_pairs
+        return winding_spectrum.differential_leakage(self.slot_mmf(connection), order)
+
+    @cached_property
+    def residual_voltage(self) -> float:
+        """Magnet voltage at the suspension terminals over that at the torque terminals.
+
+        The largest, over phases and magnet orders p n (n = 1, 3, 5, ...), of
+        |E_a - E_b| at p n over |E_a + E_b| at p, for flux density harmonics that fall as 1/n as
+        those of a rectangular wave do. Winding factors repeat with n after 2Q, so that no order
+        beyond can exceed those looked at. Rounding is returned as zero.
+        """
+        multiples = np.arange(1, 2 * self.family.slots, 2, dtype=np.int64)
+        difference = self.phase_phasors("suspension", self.family.pole_pairs * multiples)
+        ratio = float(np.max(np.abs(difference) / multiples)) / self.torque_winding_factor
+        return ratio if ratio > ROUNDING else 0.0
+
+    @cached_property
+    def coil_sides(self) -> tuple[CoilSide, ...]:
+        """All 2Q coil sides, by slot and layer."""
+        sides = []
+        for coil in range(self.family.slots):
+            phase, group, sense = (
+                int(self.phase[coil]),
+                int(self.group[coil]),
+                int(self.sense[coil]),
+            )
+            for layer, direction in ((1, -sense), (2, sense)):
+                slot = int(self.coil_slots[coil, layer - 1])
+                reversal = 1 - 2 * group
+                sides.append(
+                    CoilSide(
+                        slot, layer, coil, phase, group, sense, direction, direction * reversal
+                    )
+                )
+        return tuple(sorted(sides))
+
+    @cached_property
+    def connections(self) -> tuple[CoilString, ...]:
+        """The six coil strings, by phase and group.
+
+        Coils follow one another counter-clockwise; the widest gap is left between last and first.
+        """
+        strings = []
+        for phase in range(PHASES):
+            for group in (0, 1):
+                coils = np.flatnonzero((self.phase == phase) & (self.group == group))
+                gaps = np.diff(coils, prepend=coils[-1:] - self.family.slots)
+                coils = np.roll(coils, -int(np.argmax(gaps)))
+                forward = self.sense[coils] > 0
+                returns, goes = self.coil_slots[coils].T
+                strings.append(
+                    CoilString(
+                        phase,
+                        group,
+                        tuple(coils.tolist()),
+                        tuple(np.where(forward, goes, returns).tolist()),
+                        tuple(np.where(forward, returns, goes).tolist()),
+                    )
+                )
+        return tuple(strings)
