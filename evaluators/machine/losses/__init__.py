@@ -1,0 +1,1 @@
+"""Losses of the machine: iron, copper, and eddy currents in magnets and sleeve."""
