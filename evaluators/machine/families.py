@@ -121,8 +121,10 @@ def check_winding(winding: Winding) -> None:
         ("suspension", suspension, family.suspension_pole_pairs),
     ):
         if float(np.abs(phasors).max()) < BALANCE_TOLERANCE:
-            problem = f"coil pitch {family.coil_pitch} makes no {name} field of order {order}"
-            raise _refuse(family, "coil pitch", problem)
+            problem = (
+                f"with coil pitch {family.coil_pitch} it makes no {name} field of order {order}"
+            )
+            raise _refuse(family, "both fields made", problem)
         try:
             phase_sequence(phasors)
         except WindingError as error:

@@ -1,0 +1,246 @@
+"""Which families are found, why others are refused, and that no better split exists."""
+
+from __future__ import annotations
+
+import itertools
+
+import numpy as np
+import pytest
+
+from evaluators.machine.families import (
+    SUSPENSION_FACTOR_MINIMUM,
+    TORQUE_FACTOR_MINIMUM,
+    Refusal,
+    WindingError,
+    check_winding,
+    design_winding,
+    enumerate_families,
+)
+from evaluators.machine.winding import Winding
+
+SLOTS = (6, 9, 12, 15, 18, 24, 30, 36)
+
+
+def feasible(slots: tuple[int, ...], pole_pairs: range) -> list[Winding]:
+    return [w for w in enumerate_families(slots, pole_pairs) if isinstance(w, Winding)]
+
+
+@pytest.mark.parametrize(("numbers"), [(6, 2, 1), (12, 4, 5)])
+def test_known_tooth_coil_families(numbers: tuple[int, int, int]) -> None:
+    # Common practice: two slots per three poles are wound on single teeth, k_w = sin 60 degrees.
+    winding = design_winding(*numbers)
+    assert winding.family.coil_pitch == 1
+    assert winding.torque_winding_factor == pytest.approx(np.sqrt(3) / 2, abs=1e-12)
+    assert winding.residual_voltage == 0.0
+
+
+def test_enumeration_finds_what_the_conditions_leave() -> None:
+    found = feasible(SLOTS, range(1, 9))
+    # By hand: Q a multiple of six, p no multiple of three, and of p - 1, p, p + 1 one is a
+    # multiple of three, which leaves one ps for each p: six slot numbers by six pole pairs.
+    expected = [
+        f"Q{q}p{p}s{p + 1 if p % 3 == 1 else p - 1}"
+        for q in (6, 12, 18, 24, 30, 36)
+        for p in (1, 2, 4, 5, 7, 8)
+    ]
+    assert [w.family.id for w in found] == expected
+    assert len(found) == 36
+    for winding in found:
+        check_winding(winding)
+        assert winding.torque_winding_factor >= TORQUE_FACTOR_MINIMUM
+        assert winding.suspension_winding_factor >= SUSPENSION_FACTOR_MINIMUM
+        assert winding.residual_voltage == 0.0
+
+
+def test_enumeration_returns_refusals_with_reasons() -> None:
+    results = enumerate_families([9, 10], [1, 3])
+    assert [r.id for r in results] == [
+        *("Q9p1s2", "Q9p3s2", "Q9p3s4"),
+        *("Q10p1s2", "Q10p3s2", "Q10p3s4"),
+    ]
+    refusals = [r for r in results if isinstance(r, Refusal)]
+    assert len(refusals) == 6
+    assert all(r.reason.startswith(f"{r.id} cannot be wound: ") for r in refusals)
+
+
+@pytest.mark.parametrize(
+    ("numbers", "condition", "words"),
+    [
+        ((12, 3, 4), "pole pairs no multiple of three", "3 pole pairs"),
+        ((12, 2, 3), "suspension pole pairs no multiple of three", "3 suspension pole pairs"),
+        ((10, 4, 5), "equal division among phases", "10 slots"),
+        ((9, 4, 5), "equal division among groups", "3 coils of a phase"),
+        ((15, 7, 8), "equal division among groups", "5 coils of a phase"),
+        ((12, 4, 6), "suspension pole pairs", "differ"),
+        ((12, 4, 5, 7), "coil pitch", "half the slots"),
+        ((12, 4, 5, 3), "both fields made", "no torque field of order 4"),
+        ((0, 1, 2), "whole numbers", "slots = 0"),
+        ((6, 11, 10), None, None),
+    ],
+)
+def test_refusals_name_the_failed_condition(
+    numbers: tuple[int, ...], condition: str | None, words: str | None
+) -> None:
+    if condition is None:
+        design_winding(*numbers)
+        return
+    with pytest.raises(WindingError, match=words) as caught:
+        design_winding(*numbers)
+    assert caught.value.condition == condition
+
+
+def test_limits_of_the_factors(monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("evaluators.machine.families.TORQUE_FACTOR_MINIMUM", 0.87)
+    with pytest.raises(WindingError, match=r"pitch 1, gives 0\.866") as caught:
+        design_winding(12, 4, 5)
+    assert caught.value.condition == "torque winding factor"
+    monkeypatch.setattr("evaluators.machine.families.TORQUE_FACTOR_MINIMUM", 0.866)
+    monkeypatch.setattr("evaluators.machine.families.SUSPENSION_FACTOR_MINIMUM", 0.7)
+    with pytest.raises(WindingError, match=r"pitch 1, gives 0\.683") as caught:
+        design_winding(12, 4, 5)
+    assert caught.value.condition == "suspension winding factor"
+
+
+def test_pitch_has_the_best_suspension_factor_unless_tooth_coils_serve() -> None:
+    for winding in feasible((12, 18, 24, 36), range(1, 12)):
+        family = winding.family
+        rivals = []
+        for pitch in range(1, family.slots // 2 + 1):
+            try:
+                rival = design_winding(*_numbers(winding), pitch)
+            except WindingError:
+                continue  # a pitch that makes one of the fields vanish
+            if rival.torque_winding_factor >= TORQUE_FACTOR_MINIMUM:
+                rivals.append((pitch, rival.suspension_winding_factor))
+        useful = dict(r for r in rivals if r[1] >= SUSPENSION_FACTOR_MINIMUM)
+        if 1 in useful:
+            assert family.coil_pitch == 1
+        else:
+            best = max(useful.values())
+            assert useful[family.coil_pitch] == pytest.approx(best, abs=1e-9)
+            assert family.coil_pitch == min(y for y, k in useful.items() if k > best - 1e-9)
+
+
+def test_stated_pitch_overrides_the_limits() -> None:
+    winding = design_winding(24, 1, 2, 8)
+    assert winding.family.coil_pitch == 8
+    assert winding.torque_winding_factor < TORQUE_FACTOR_MINIMUM
+
+
+@pytest.mark.parametrize("slots", [6, 12, 18, 24, 30])
+@pytest.mark.parametrize("pole_pairs", [1, 2, 4, 5, 7, 8, 11])
+def test_no_split_of_a_phase_beats_the_star(slots: int, pole_pairs: int) -> None:
+    """All splits of phase 0 into equal halves whose torque EMFs are equal, one by one."""
+    ps = pole_pairs + 1 if pole_pairs % 3 == 1 else pole_pairs - 1
+    winding = design_winding(slots, pole_pairs, ps)
+    coils = np.flatnonzero(winding.phase == 0)
+    rest = np.array(list(itertools.product((1, -1), repeat=coils.size - 1)))
+    splits = np.hstack([np.ones((rest.shape[0], 1), dtype=int), rest])
+    splits = splits[splits.sum(axis=1) == 0] * winding.sense[coils]
+    at_p = splits @ np.exp(2j * np.pi * pole_pairs * coils / slots)
+    at_ps = np.abs(splits @ np.exp(2j * np.pi * ps * coils / slots))
+    best = at_ps[np.abs(at_p) < 1e-9].max() / coils.size
+    best *= abs(np.sin(np.pi * ps * winding.family.coil_pitch / slots))
+    assert winding.suspension_winding_factor == pytest.approx(best, abs=1e-9)
+
+
+@pytest.mark.parametrize("numbers", [(6, 2, 1), (12, 1, 2), (12, 2, 1), (12, 4, 5), (12, 5, 4)])
+def test_no_assignment_to_phases_beats_the_star(numbers: tuple[int, int, int]) -> None:
+    """All symmetrical three-phase windings: phase 0 takes one coil of each three 120 degrees apart.
+
+    Among those with the star's torque factor none has a better suspension factor at its pitch.
+    """
+    slots, p, ps = numbers
+    winding = design_winding(*numbers)
+    third = slots // 3
+    positions = [range(1) if i == 0 else range(3) for i in range(third)]
+    signs = np.array(list(itertools.product((1, -1), repeat=third)))
+    halves = signs[signs.sum(axis=1) == 0]
+    best_torque, best_suspension = 0.0, 0.0
+    for turns in itertools.product(*positions):
+        coils = np.arange(third) + third * np.array(turns)
+        torque_phasors = np.exp(2j * np.pi * p * coils / slots) * signs
+        torque = np.abs(torque_phasors.sum(axis=1))
+        best_torque = max(best_torque, torque.max())
+        for sense in signs[torque > winding_distribution(winding) * third - 1e-9]:
+            at_p = np.abs(halves @ (sense * np.exp(2j * np.pi * p * coils / slots)))
+            at_ps = np.abs(halves @ (sense * np.exp(2j * np.pi * ps * coils / slots)))
+            best_suspension = max(best_suspension, at_ps[at_p < 1e-9].max(initial=0.0))
+    assert winding_distribution(winding) * third == pytest.approx(best_torque, abs=1e-9)
+    reach = abs(np.sin(np.pi * ps * winding.family.coil_pitch / slots))
+    assert winding.suspension_winding_factor == pytest.approx(
+        best_suspension / third * reach, abs=1e-9
+    )
+
+
+def winding_distribution(winding: Winding) -> float:
+    slots, p, _ = _numbers(winding)
+    reach = abs(np.sin(np.pi * p * winding.family.coil_pitch / slots))
+    return winding.torque_winding_factor / float(reach)
+
+
+def test_checks_catch_broken_layouts() -> None:
+    good = design_winding(18, 4, 5)
+
+    def broken(**changes: np.ndarray) -> Winding:
+        arrays = {"phase": good.phase, "group": good.group, "sense": good.sense} | changes
+        return Winding(good.family, **arrays)
+
+    phase = good.phase.copy()
+    phase[0] = (phase[0] + 1) % 3
+    _expect(broken(phase=phase), "equal division")
+
+    sense = good.sense.copy()
+    sense[0] = -sense[0]
+    _expect(broken(sense=sense), "phases balanced")
+
+    # Exchange between the groups two coils that do not face each other, alike in every phase.
+    a = np.flatnonzero((good.phase == 0) & (good.group == 0))
+    b = np.flatnonzero((good.phase == 0) & (good.group == 1))
+    first, second = next((i, k) for i in a for k in b if (k - i) % 18 != 9)
+    group = good.group.copy()
+    for turn in (0, 6, 12):
+        group[(first + turn) % 18], group[(second + turn) % 18] = 1, 0
+    bad = broken(group=group)
+    # Still equal and balanced, but the suspension terminals now see torque voltage.
+    _expect(bad, "equal torque EMF of groups")
+    assert bad.residual_voltage > 0.1
+
+
+def test_residual_voltage_by_hand() -> None:
+    """Groups of facing coils, 12 slots and 10 poles: teeth 0 and 6 against 5 and 11.
+
+    At p, teeth 0 and 6 lie together once their senses are counted, and so do 5 and 11, 30 degrees
+    further on: difference over sum is |1 - exp(j 30 deg)| / |1 + exp(j 30 deg)|.
+    """
+    good = design_winding(12, 5, 4)
+    group = np.zeros(12, dtype=int)
+    for k in range(3):
+        members = np.flatnonzero(good.phase == k)
+        firm = {members[0], (members[0] + 6) % 12}
+        group[[i for i in members if i not in firm]] = 1
+    bad = Winding(good.family, good.phase, group, good.sense)
+    ratio = abs(1 - np.exp(1j * np.pi / 6)) / abs(1 + np.exp(1j * np.pi / 6))  # tan 15 degrees
+    difference = np.abs(bad.phase_phasors("suspension", 5)).max()
+    assert difference / bad.torque_winding_factor == pytest.approx(ratio, rel=1e-9)
+    # Order 3p differs by 1 - exp(j 90 deg), times the pitch factors' ratio, over 3.
+    third = np.sqrt(2) / abs(1 + np.exp(1j * np.pi / 6)) / 3 * abs(np.sin(15 * np.pi / 12))
+    third /= abs(np.sin(5 * np.pi / 12))
+    assert bad.residual_voltage == pytest.approx(max(ratio, third), rel=1e-9)
+
+
+def test_large_windings_are_designed_quickly_and_alike() -> None:
+    first, second = design_winding(144, 20, 19), design_winding(144, 20, 19)
+    assert first.family == second.family
+    assert np.array_equal(first.group, second.group)
+
+
+def _numbers(winding: Winding) -> tuple[int, int, int]:
+    family = winding.family
+    return family.slots, family.pole_pairs, family.suspension_pole_pairs
+
+
+def _expect(winding: Winding, condition: str) -> None:
+    with pytest.raises(WindingError) as caught:
+        check_winding(winding)
+    assert caught.value.condition == condition
