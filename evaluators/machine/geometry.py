@@ -310,11 +310,12 @@ def cross_sections(
     closing = straight + (span - 1.0) * (half_pitch - straight)
     tip_half = np.where(span <= 1.0, 0.5 * span * tooth, bore * np.sin(closing))
 
-    reasons = np.full(rows, "", dtype=np.dtypes.StringDType())
+    reasons = [""] * rows
 
     def refuse(bad: NDArray[np.bool_], text: str, *values: FloatArray) -> None:
-        for row in np.flatnonzero(bad & (reasons == "")):
-            reasons[row] = text.format(*(float(item[row]) for item in values))
+        for row in np.flatnonzero(bad):
+            if not reasons[row]:
+                reasons[row] = text.format(*(float(item[row]) for item in values))
 
     finite = np.all([np.isfinite(item) for item in value.values()], axis=0)
     refuse(~finite, "a design variable is not a finite number")
@@ -358,7 +359,7 @@ def cross_sections(
         value["tooth_width_ratio"],
     )
 
-    valid = np.flatnonzero(reasons == "")
+    valid = np.flatnonzero([not reason for reason in reasons])
     sections = CrossSections(
         family=family,
         shaft_radius=shaft[valid],
@@ -374,4 +375,4 @@ def cross_sections(
         tip_half_width=tip_half[valid],
         magnet_arc_ratio=value["magnet_arc_ratio"][valid],
     )
-    return sections, valid, np.asarray(reasons, dtype=np.str_)
+    return sections, valid, np.array(reasons, dtype=np.str_)
