@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import ArrayLike
 from scipy.interpolate import CubicHermiteSpline, PchipInterpolator
 
-from evaluators.machine.quantity import MU_0, FloatArray
+from evaluators.machine.quantity import MU_0, FloatArray, floats
 
 
 class MagnetizationCurve:
@@ -42,8 +42,8 @@ class MagnetizationCurve:
         flux_density: Sequence[float] | FloatArray,
         slopes: FloatArray | None = None,
     ) -> None:
-        h = np.asarray(field, dtype=np.float64)
-        b = np.asarray(flux_density, dtype=np.float64)
+        h = floats(field)
+        b = floats(flux_density)
         _check_points(h, b)
         if slopes is None:
             slopes = _monotone_slopes(h, b)
@@ -63,13 +63,13 @@ class MagnetizationCurve:
 
     def field(self, flux_density: ArrayLike) -> FloatArray:
         """Return H in A/m for B in T (any sign, any shape)."""
-        b = np.asarray(flux_density, dtype=np.float64)
+        b = floats(flux_density)
         c3, c2, c1, c0, t = self._piece(np.abs(b))
         return np.asarray(np.copysign(((c3 * t + c2) * t + c1) * t + c0, b))
 
     def differential_reluctivity(self, flux_density: ArrayLike) -> FloatArray:
         """Return dH/dB in m/H for B in T (any sign, any shape)."""
-        c3, c2, c1, _, t = self._piece(np.abs(np.asarray(flux_density, dtype=np.float64)))
+        c3, c2, c1, _, t = self._piece(np.abs(floats(flux_density)))
         return np.asarray((3.0 * c3 * t + 2.0 * c2) * t + c1)
 
     def reluctivity(self, flux_density_squared: ArrayLike) -> tuple[FloatArray, FloatArray]:
@@ -80,7 +80,7 @@ class MagnetizationCurve:
         nu, derivative
             In m/H and m/(H T²), of the shape of the argument; both are continuous.
         """
-        b2 = np.asarray(flux_density_squared, dtype=np.float64)
+        b2 = floats(flux_density_squared)
         b = np.sqrt(b2)
         c3, c2, c1, c0, t = self._piece(b)
         first = b < self._knots[1]
@@ -93,7 +93,7 @@ class MagnetizationCurve:
 
     def flux_density(self, field: ArrayLike) -> FloatArray:
         """Return B in T for H in A/m (any sign, any shape), the inverse of `field`."""
-        h = np.asarray(field, dtype=np.float64)
+        h = floats(field)
         magnitude = np.abs(h)
         last_h, last_b = self.field_points[-1], self._knots[-1]
         low = self._knots[np.searchsorted(self.field_points, magnitude, side="right") - 1]

@@ -11,9 +11,15 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 FloatArray = NDArray[np.float64]
+ComplexArray = NDArray[np.complex128]
 
 MU_0 = 4e-7 * math.pi
 """Magnetic constant in H/m; the CODATA 2018 value differs by less than 1e-9 of it."""
+
+
+def floats(values: ArrayLike) -> FloatArray:
+    """Return the values as an array of floats, without a copy where they are one."""
+    return np.asarray(values, dtype=np.float64)
 
 
 @dataclass(frozen=True)
@@ -82,14 +88,14 @@ class Quantity:
 
     def at(self, temperature_C: ArrayLike) -> FloatArray:
         """Return the value at `temperature_C` (°C, any shape), same shape."""
-        temperature = np.asarray(temperature_C, dtype=np.float64)
+        temperature = floats(temperature_C)
         if self.table_C:
             return np.asarray(np.interp(temperature, self.table_C, self.table_value))
         return np.asarray(self.value * (1.0 + self.per_K * (temperature - self.at_C)))
 
     def covers(self, temperature_C: ArrayLike) -> NDArray[np.bool_]:
         """Tell for each temperature (°C) whether a table covers it; true when there is none."""
-        temperature = np.asarray(temperature_C, dtype=np.float64)
+        temperature = floats(temperature_C)
         if not self.table_C:
             return np.ones(temperature.shape, dtype=np.bool_)
         return np.asarray((temperature >= self.table_C[0]) & (temperature <= self.table_C[-1]))

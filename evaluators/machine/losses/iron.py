@@ -10,7 +10,7 @@ import numpy as np
 from numpy.typing import ArrayLike
 from scipy.optimize import least_squares, nnls
 
-from evaluators.machine.quantity import FloatArray
+from evaluators.machine.quantity import FloatArray, floats
 
 MEAN_COS_1_5 = math.gamma(1.25) / (math.sqrt(math.pi) * math.gamma(1.75))
 """Mean over a period of |cos|^1.5, which ties the excess loss of a sine to that of a waveform."""
@@ -89,7 +89,7 @@ def lamination_skin_factor(thickness_to_skin_depth: ArrayLike) -> FloatArray:
     Bozorth, *Ferromagnetism*, 1951 (from memory). Not part of the loss functions below, because
     the permeability to use in it is arbitrary in a saturating sheet.
     """
-    x = np.asarray(thickness_to_skin_depth, dtype=np.float64)
+    x = floats(thickness_to_skin_depth)
     # Below 0.1 cancellation costs more digits than the series leaves out (x⁸).
     small = x < 0.1
     y = np.clip(np.where(small, 1.0, x), None, 300.0)
@@ -102,8 +102,8 @@ def iron_loss_sine(
     coefficients: IronLossCoefficients, flux_density: ArrayLike, frequency: ArrayLike
 ) -> IronLoss:
     """Return the loss in W/kg at sinusoidal B of peak `flux_density` (T) and `frequency` (Hz)."""
-    b = np.abs(np.asarray(flux_density, dtype=np.float64))
-    f = np.abs(np.asarray(frequency, dtype=np.float64))
+    b = np.abs(floats(flux_density))
+    f = np.abs(floats(frequency))
     fb = f * b
     return IronLoss(
         hysteresis=np.asarray(_hysteresis_energy(coefficients, b) * f),
@@ -171,10 +171,10 @@ def iron_loss_from_waveform(
     IronLoss
         Each part of shape (...).
     """
-    f = np.asarray(frequency, dtype=np.float64)
-    components = [np.asarray(flux_density, dtype=np.float64)]
+    f = floats(frequency)
+    components = [floats(flux_density)]
     if second_component is not None:
-        components.append(np.asarray(second_component, dtype=np.float64))
+        components.append(floats(second_component))
     samples = components[0].shape[-1]
     hysteresis = np.zeros(np.broadcast_shapes(components[0].shape[:-1], f.shape))
     speed_squared = np.zeros_like(components[0])
@@ -220,8 +220,8 @@ def improved_steinmetz(
     frequency
         Hz, shape (...).
     """
-    b = np.asarray(flux_density, dtype=np.float64)
-    f = np.asarray(frequency, dtype=np.float64)
+    b = floats(flux_density)
+    f = floats(frequency)
     mean_cos = math.gamma(0.5 * (alpha + 1.0)) / (
         math.sqrt(math.pi) * math.gamma(0.5 * alpha + 1.0)
     )
@@ -255,7 +255,7 @@ def fit_iron_loss(
     ValueError
         If there are fewer points than coefficients, or a point is not positive.
     """
-    f, b, p = (np.asarray(a, dtype=np.float64).ravel() for a in (frequency, flux_density, loss))
+    f, b, p = (floats(a).ravel() for a in (frequency, flux_density, loss))
     if not (f.size == b.size == p.size and f.size >= 6):
         sizes = f"{f.size}, {b.size} and {p.size}"
         msg = f"a loss fit needs three equally long lists of at least 6 points, got {sizes}"
