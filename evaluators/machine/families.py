@@ -70,6 +70,10 @@ def design_winding(
     else the pitch with the largest suspension factor, of equals the shortest. A stated
     `coil_pitch` may fall below both limits but must make both fields.
 
+    The star puts torque first: no other symmetrical winding of as large a torque factor has a
+    better split. Giving up torque factor for suspension factor down to the limit is not tried; of
+    the families with up to 18 slots and 8 pole pairs it would help Q12p2s1 alone (0.683 for 0.612).
+
     Parameters
     ----------
     slots, pole_pairs, suspension_pole_pairs : int

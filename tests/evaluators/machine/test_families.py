@@ -75,15 +75,11 @@ def test_enumeration_returns_refusals_with_reasons() -> None:
         ((12, 4, 5, 7), "coil pitch", "half the slots"),
         ((12, 4, 5, 3), "both fields made", "no torque field of order 4"),
         ((0, 1, 2), "whole numbers", "slots = 0"),
-        ((6, 11, 10), None, None),
     ],
 )
 def test_refusals_name_the_failed_condition(
-    numbers: tuple[int, ...], condition: str | None, words: str | None
+    numbers: tuple[int, ...], condition: str, words: str
 ) -> None:
-    if condition is None:
-        design_winding(*numbers)
-        return
     with pytest.raises(WindingError, match=words) as caught:
         design_winding(*numbers)
     assert caught.value.condition == condition
@@ -144,39 +140,59 @@ def test_no_split_of_a_phase_beats_the_star(slots: int, pole_pairs: int) -> None
     assert winding.suspension_winding_factor == pytest.approx(best, abs=1e-9)
 
 
-@pytest.mark.parametrize("numbers", [(6, 2, 1), (12, 1, 2), (12, 2, 1), (12, 4, 5), (12, 5, 4)])
-def test_no_assignment_to_phases_beats_the_star(numbers: tuple[int, int, int]) -> None:
-    """All symmetrical three-phase windings: phase 0 takes one coil of each three 120 degrees apart.
+def symmetrical_windings(numbers: tuple[int, int, int]) -> tuple[np.ndarray, np.ndarray]:
+    """Distribution factors of all symmetrical three-phase windings, brute force.
 
-    Among those with the star's torque factor none has a better suspension factor at its pitch.
+    Phase 0 takes one coil of each three that lie 120 degrees apart, with either sense. Returns
+    the torque factor and the best suspension factor of a split into equal halves whose torque
+    EMFs are equal, both before the pitch factor.
     """
     slots, p, ps = numbers
-    winding = design_winding(*numbers)
     third = slots // 3
-    positions = [range(1) if i == 0 else range(3) for i in range(third)]
     signs = np.array(list(itertools.product((1, -1), repeat=third)))
     halves = signs[signs.sum(axis=1) == 0]
-    best_torque, best_suspension = 0.0, 0.0
-    for turns in itertools.product(*positions):
-        coils = np.arange(third) + third * np.array(turns)
-        torque_phasors = np.exp(2j * np.pi * p * coils / slots) * signs
-        torque = np.abs(torque_phasors.sum(axis=1))
-        best_torque = max(best_torque, torque.max())
-        for sense in signs[torque > winding_distribution(winding) * third - 1e-9]:
-            at_p = np.abs(halves @ (sense * np.exp(2j * np.pi * p * coils / slots)))
-            at_ps = np.abs(halves @ (sense * np.exp(2j * np.pi * ps * coils / slots)))
-            best_suspension = max(best_suspension, at_ps[at_p < 1e-9].max(initial=0.0))
-    assert winding_distribution(winding) * third == pytest.approx(best_torque, abs=1e-9)
-    reach = abs(np.sin(np.pi * ps * winding.family.coil_pitch / slots))
-    assert winding.suspension_winding_factor == pytest.approx(
-        best_suspension / third * reach, abs=1e-9
-    )
+    torque, suspension = [], []
+    for turns in itertools.product(range(3), repeat=third - 1):
+        coils = np.arange(third) + third * np.array((0, *turns))
+        at_p = signs * np.exp(2j * np.pi * p * coils / slots)
+        at_ps = signs * np.exp(2j * np.pi * ps * coils / slots)
+        equal = np.abs(at_p @ halves.T) < 1e-9
+        torque.append(np.abs(at_p.sum(axis=1)) / third)
+        suspension.append(np.where(equal, np.abs(at_ps @ halves.T), 0.0).max(axis=1) / third)
+    return np.concatenate(torque), np.concatenate(suspension)
 
 
-def winding_distribution(winding: Winding) -> float:
-    slots, p, _ = _numbers(winding)
-    reach = abs(np.sin(np.pi * p * winding.family.coil_pitch / slots))
-    return winding.torque_winding_factor / float(reach)
+def reach(order: int, winding: Winding) -> float:
+    """Pitch factor."""
+    family = winding.family
+    return float(abs(np.sin(np.pi * order * family.coil_pitch / family.slots)))
+
+
+@pytest.mark.parametrize("numbers", [(6, 2, 1), (12, 1, 2), (12, 2, 1), (12, 4, 5), (12, 5, 4)])
+def test_no_assignment_of_equal_torque_beats_the_star(numbers: tuple[int, int, int]) -> None:
+    winding = design_winding(*numbers)
+    torque, suspension = symmetrical_windings(numbers)
+    at_p, at_ps = reach(numbers[1], winding), reach(numbers[2], winding)
+    assert winding.torque_winding_factor == pytest.approx(torque.max() * at_p, abs=1e-9)
+    best = suspension[torque > torque.max() - 1e-9].max()
+    assert winding.suspension_winding_factor == pytest.approx(best * at_ps, abs=1e-9)
+
+
+@pytest.mark.parametrize(
+    ("numbers", "better"),
+    [((12, 1, 2), None), ((12, 4, 5), None), ((12, 5, 4), None), ((12, 2, 1), 0.683013)],
+)
+def test_what_less_torque_would_buy(numbers: tuple[int, int, int], better: float | None) -> None:
+    """Giving up torque factor down to the limit helps in the one case that is documented."""
+    winding = design_winding(*numbers)
+    torque, suspension = symmetrical_windings(numbers)
+    best = 0.0
+    for pitch in range(1, 7):
+        at_p, at_ps = (abs(np.sin(np.pi * n * pitch / 12)) for n in numbers[1:])
+        enough = torque * at_p >= TORQUE_FACTOR_MINIMUM
+        best = max(best, float(at_ps * suspension[enough].max(initial=0.0)))
+    expected = winding.suspension_winding_factor if better is None else better
+    assert best == pytest.approx(expected, abs=6e-7)  # six printed decimals
 
 
 def test_checks_catch_broken_layouts() -> None:
@@ -227,6 +243,21 @@ def test_residual_voltage_by_hand() -> None:
     third = np.sqrt(2) / abs(1 + np.exp(1j * np.pi / 6)) / 3 * abs(np.sin(15 * np.pi / 12))
     third /= abs(np.sin(5 * np.pi / 12))
     assert bad.residual_voltage == pytest.approx(max(ratio, third), rel=1e-9)
+
+
+def test_residual_voltage_looks_at_all_magnet_orders() -> None:
+    """Coils 0 and 13 exchanged between the groups of a two-pole winding of span 4/12.
+
+    The groups then differ by two steps of 15 n degrees at order n, 4 sin(7.5 n degrees), over a
+    sum of eight coils; pitch factors are sin 30 degrees at order 1 and 1 at order 3, which rules.
+    """
+    good = design_winding(24, 1, 2, 4)
+    group = good.group.copy()
+    group[[0, 13]] = group[[13, 0]]
+    bad = Winding(good.family, good.phase, group, good.sense)
+    distribution = 0.957662  # q = 4, handbook (Pyrhonen et al., 2014, ch. 2; from memory)
+    expected = 4 * np.sin(np.radians(22.5)) / 3 / (8 * distribution * 0.5)
+    assert bad.residual_voltage == pytest.approx(expected, rel=1e-6)  # digits of the handbook
 
 
 def test_large_windings_are_designed_quickly_and_alike() -> None:

@@ -103,6 +103,19 @@ def test_mmf_spectrum_is_that_of_the_staircase(
         assert found == pytest.approx(np.sum(pieces) / np.pi, abs=1e-11)  # rounding
 
 
+@pytest.mark.parametrize("numbers", FAMILIES)
+def test_phase_phasors_give_the_flux_linkage(numbers: tuple[int, int, int]) -> None:
+    """A_z = cos(n theta - a) at the slot centres, A(go) - A(return) summed over a phase's coils."""
+    winding = design_winding(*numbers)
+    slots, order, lead = numbers[0], numbers[1], 0.3
+    potential = np.cos(order * 2 * np.pi * (np.arange(slots) + 0.5) / slots - lead)
+    linkage = potential[winding.coil_slots[:, 1]] - potential[winding.coil_slots[:, 0]]
+    phasors = winding.phase_phasors("torque", order)[:, 0] * np.exp(-1j * lead)
+    for k in range(3):
+        expected = np.sum((linkage * winding.sense)[winding.phase == k])
+        assert 2 * slots / 3 * phasors[k].real == pytest.approx(expected, abs=ROUNDING * 10)
+
+
 def test_main_mmf_is_the_textbook_one() -> None:
     # (m/2)(4/pi) N k_w / (2p) per ampere peak, N turns in series per phase
     # (Pyrhonen et al., 2014, ch. 2; from memory).
