@@ -122,7 +122,8 @@ class Magnet(SolidMaterial):
     """Sintered permanent magnet with a straight recoil line that ends in a knee.
 
     B = remanence + mu0 recoil_permeability H holds down to H = -knee_ratio * coercivity, where
-    coercivity is that of polarization (HcJ). Temperature coefficients are the reversible ones.
+    coercivity is that of polarization (HcJ). Temperature coefficients are the reversible ones;
+    thermal expansion is given along and across the direction of magnetization.
     """
 
     remanence: Annotated[Quantity, Limits("T", 0.1, 1.6)]
@@ -134,7 +135,8 @@ class Magnet(SolidMaterial):
     poisson_ratio: Annotated[Quantity, Limits("1", 0.0, 0.5)]
     tensile_strength: Annotated[Quantity, Limits("Pa", 1e6, 1e9)]
     compressive_strength: Annotated[Quantity, Limits("Pa", 1e7, 1e10)]
-    expansion: Annotated[Quantity, Limits("1/K", -1e-5, 5e-5)]
+    expansion_along: Annotated[Quantity, Limits("1/K", -1e-5, 5e-5)]
+    expansion_across: Annotated[Quantity, Limits("1/K", -1e-5, 5e-5)]
 
     def knee_field(self, temperature_C: ArrayLike) -> FloatArray:
         """Return the field at the knee in A/m (negative) at a temperature in °C."""

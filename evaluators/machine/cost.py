@@ -1,0 +1,120 @@
+"""Cost of the active materials from masses and a price list."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping
+from dataclasses import dataclass, field, fields
+
+import numpy as np
+from numpy.typing import ArrayLike
+
+from evaluators.machine.quantity import FloatArray, floats
+
+
+@dataclass(frozen=True)
+class Price:
+    """Price of one material.
+
+    Parameters
+    ----------
+    per_kg
+        Currency units per kilogram bought.
+    waste_share
+        Share of the bought mass that does not end up in the machine (punching scrap, grinding
+        dust, wire ends), from 0 to below 1.
+    processing_per_kg
+        Currency units per kilogram in the machine for turning material into a part.
+
+    Raises
+    ------
+    ValueError
+        If a number is negative or not finite, or the waste share reaches 1.
+    """
+
+    per_kg: float
+    waste_share: float = 0.0
+    processing_per_kg: float = 0.0
+
+    def __post_init__(self) -> None:
+        for name in ("per_kg", "processing_per_kg"):
+            value = getattr(self, name)
+            if not (math.isfinite(value) and value >= 0.0):
+                msg = f"{name} = {value} must be 0 or more"
+                raise ValueError(msg)
+        if not 0.0 <= self.waste_share < 1.0:
+            msg = f"waste_share = {self.waste_share} must be 0 or more and below 1"
+            raise ValueError(msg)
+
+    @property
+    def per_kg_installed(self) -> float:
+        """Currency units per kilogram that is in the machine."""
+        return self.per_kg / (1.0 - self.waste_share) + self.processing_per_kg
+
+
+@dataclass(frozen=True)
+class Prices:
+    """Price list of the active materials; `currency` only labels the result.
+
+    Raises
+    ------
+    ValueError
+        If the currency is empty.
+    """
+
+    electrical_steel: Price
+    copper: Price
+    magnet: Price
+    sleeve: Price
+    shaft_steel: Price = field(default_factory=lambda: Price(0.0))
+    currency: str = "EUR"
+
+    def __post_init__(self) -> None:
+        if not self.currency.strip():
+            msg = "currency is empty; name one, for instance EUR"
+            raise ValueError(msg)
+
+    @classmethod
+    def materials(cls) -> tuple[str, ...]:
+        """Return the names of the priced materials."""
+        return tuple(entry.name for entry in fields(cls) if entry.name != "currency")
+
+
+def material_costs(masses: Mapping[str, ArrayLike], prices: Prices) -> dict[str, FloatArray]:
+    """Return the cost of each material in currency units.
+
+    Parameters
+    ----------
+    masses
+        Net masses in kg by the names of `Prices.materials`, shape (n,) each; materials left out
+        cost nothing.
+
+    Returns
+    -------
+    dict
+        By the same names, shape (n,).
+
+    Raises
+    ------
+    ValueError
+        If a material has no price.
+    """
+    unknown = sorted(set(masses) - set(Prices.materials()))
+    if unknown:
+        msg = f"no price for {unknown[0]!r}; priced are {', '.join(Prices.materials())}"
+        raise ValueError(msg)
+    return {
+        name: floats(mass) * float(getattr(prices, name).per_kg_installed)
+        for name, mass in masses.items()
+    }
+
+
+def active_material_cost(masses: Mapping[str, ArrayLike], prices: Prices) -> FloatArray:
+    """Return the cost of all active materials in currency units, shape (n,).
+
+    Arguments and exceptions as for `material_costs`.
+    """
+    total: FloatArray = np.zeros(())
+    for cost in material_costs(masses, prices).values():
+        total = np.asarray(total + cost)
+    return total
