@@ -1,0 +1,62 @@
+"""Plain-text tables that stay readable in a terminal, a pipe and a log file; safe CSV."""
+
+from __future__ import annotations
+
+import csv
+import io
+import math
+from collections.abc import Iterable, Sequence
+
+GAP = "  "
+# A spreadsheet runs a cell that starts with one of these as a formula (OWASP, "CSV Injection").
+FORMULA_STARTS = ("=", "+", "-", "@", "\t", "\r")
+
+
+def text_table(head: Sequence[str], rows: Iterable[Sequence[str]], left: int = 1) -> str:
+    """Align `rows` under `head`; the first `left` columns to the left, the others to the right."""
+    body = [list(map(str, row)) for row in rows]
+    widths = [max(len(line[column]) for line in [list(head), *body]) for column in range(len(head))]
+
+    def line(cells: Sequence[str]) -> str:
+        padded = [
+            cell.ljust(width) if column < left else cell.rjust(width)
+            for column, (cell, width) in enumerate(zip(cells, widths, strict=True))
+        ]
+        return GAP.join(padded).rstrip()
+
+    rule = GAP.join("-" * width for width in widths)
+    return "\n".join([line(head), rule, *(line(row) for row in body)])
+
+
+def number(value: float, digits: int = 4) -> str:
+    """`value` with `digits` significant digits, without exponent in the usual range."""
+    if not math.isfinite(value):
+        return "-" if math.isnan(value) else str(value)
+    if value == 0.0:
+        return "0"
+    size = math.floor(math.log10(abs(value)))
+    if not -4 <= size < 9:
+        return f"{value:.{digits - 1}e}"
+    return f"{value:.{max(0, digits - 1 - size)}f}"
+
+
+def percent(share: float) -> str:
+    """A share as per cent with one decimal."""
+    return "-" if math.isnan(share) else f"{100.0 * share:.1f} %"
+
+
+def csv_text(head: Sequence[str], rows: Iterable[Sequence[object]]) -> str:
+    """Comma-separated values; text that a spreadsheet would run is made plain text."""
+    stream = io.StringIO()
+    writer = csv.writer(stream, lineterminator="\n")
+    writer.writerow([_cell(item) for item in head])
+    writer.writerows([_cell(item) for item in row] for row in rows)
+    return stream.getvalue()
+
+
+def _cell(value: object) -> object:
+    if isinstance(value, str) and value.startswith(FORMULA_STARTS):
+        return f"'{value}"
+    if isinstance(value, float) and not math.isfinite(value):
+        return ""
+    return value
