@@ -4,8 +4,8 @@ The bore is tooth face (tangential field zero) or slot mouth. In each mouth the 
 a sum of the slot's modes, in the gap a sum of exp(j n theta); both must give the same vector
 potential across the mouth (Galerkin mode matching; subdomain models of slotted machines, e.g.
 Dubas and Espanet, IEEE Trans. Magn. 45(5), 2009, and Lubin, Mezani, Rezzoug, IEEE Trans. Magn.
-47(2), 2011, solve one system for all slots). All slots are alike, so a discrete Fourier transform over
-the slots splits the problem: an order n meets only orders n + kQ, and each residue class of orders
+47(2), 2011, solve one system for all slots). All slots are alike, so a discrete Fourier transform
+over the slots splits the problem: an order n meets only orders n + kQ, and each residue class of orders
 is a system of only K unknowns, K modes of one mouth.
 
 Sources: a magnet harmonic of order nu, standing still in the rotor, varies as exp(-j nu angle) in

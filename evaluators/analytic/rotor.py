@@ -100,14 +100,34 @@ def response(radii: RotorRadii, orders: NDArray[np.int64], core: FloatArray) -> 
     return np.asarray(-bore / order * (1.0 + reflected * shrink) / (1.0 - reflected * shrink))
 
 
+def core_share(radii: RotorRadii, orders: NDArray[np.int64], core: FloatArray) -> FloatArray:
+    """A_n at the core's surface over A_n at the bore, rotor without magnetisation, (n, v)."""
+    order = np.abs(np.asarray(orders, dtype=np.float64))
+    ratio = _ring_ratio(radii, order, core)
+    reflected = (1.0 - ratio) / (1.0 + ratio)
+    ring = (radii.core / radii.magnet)[:, None] ** order
+    gap = (radii.magnet / radii.bore)[:, None] ** order
+    mirrored = ring**2 * (1.0 - core) / (1.0 + core)
+    through_ring = 2.0 * ring / ((1.0 + core) * (1.0 + mirrored))
+    return np.asarray(through_ring * (1.0 + reflected) * gap / (1.0 + reflected * gap**2))
+
+
+@dataclass(frozen=True)
+class MagnetSource:
+    """Two-sided coefficients A_n, (n, v), of the magnets under a smooth, perfect stator, Wb/m."""
+
+    bore: ComplexArray
+    core: ComplexArray
+
+
 def source(
     radii: RotorRadii,
     radial: FloatArray,
     tangential: FloatArray,
     orders: NDArray[np.int64],
     core: FloatArray,
-) -> ComplexArray:
-    """Two-sided coefficient A_n at a smooth, infinitely permeable bore for positive orders, Wb/m.
+) -> MagnetSource:
+    """Field of the magnets under a smooth, infinitely permeable bore, positive orders.
 
     Parameters
     ----------
@@ -120,8 +140,9 @@ def source(
 
     Returns
     -------
-    array (n, v), complex
-        The coefficient of exp(+j n theta); that of the negative order is its conjugate.
+    MagnetSource
+        Coefficients of exp(+j n theta) at the bore and at the core; those of the negative order
+        are their conjugates.
     """
     n = np.asarray(orders, dtype=np.float64)
     inner, outer, bore = radii.core[:, None], radii.magnet[:, None], radii.bore[:, None]
@@ -147,4 +168,10 @@ def source(
     side = (1.0 - mirrored) / (1.0 + mirrored)
     numerator = (value_outer - offset) * side - offset - jump
     denominator = (1.0 + shrink_gap**2) * side + mu * (1.0 - shrink_gap**2)
-    return np.asarray(2.0 * shrink_gap * numerator / denominator)
+    edge = numerator / denominator
+    rising = (edge * (1.0 + shrink_gap**2) + offset - value_outer) / (1.0 + mirrored)
+    falling = (rising * shrink_ring * (1.0 - core) - core_term) / (1.0 + core)
+    return MagnetSource(
+        bore=np.asarray(2.0 * shrink_gap * edge),
+        core=np.asarray(rising * shrink_ring + falling + value_inner),
+    )

@@ -71,9 +71,7 @@ def mouth(sections: CrossSections, modes: int) -> SlotMouth:
         middle = np.sqrt(outer * inner)[:, None]
         angle = 0.5 * sections.slot_angle(middle)[:, 0]
         length = np.log(outer / inner) / angle
-        compliance, share = _widen(
-            compliance, share, np.log(angle / half_angle[:, step]), modes
-        )
+        compliance, share = _widen(compliance, share, np.log(angle / half_angle[:, step]), modes)
         # A straight piece: f and a swap by tanh, so the compliance approaches 1/decay.
         tanh = np.tanh(decay * length[:, None])
         cosh = np.cosh(decay * length[:, None])

@@ -13,9 +13,9 @@ from dataclasses import dataclass, fields
 import numpy as np
 from numpy.typing import NDArray
 
+from evaluators.machine.families import Family
 from evaluators.machine.task import Construction
 from evaluators.machine.variables import VARIABLE_NAMES
-from evaluators.machine.families import Family
 
 FloatArray = NDArray[np.float64]
 
@@ -236,10 +236,9 @@ RADII = (
 
 
 def _tooth_sector_area(radius: FloatArray, half_width: FloatArray) -> FloatArray:
-    """Area of a parallel-sided tooth from the axis out to `radius`: integral of 2 asin(h/r) r dr."""
+    """Area of a parallel-sided tooth out to `radius`: integral of 2 asin(h/r) r dr."""
     return np.asarray(
-        radius**2 * np.arcsin(half_width / radius)
-        + half_width * np.sqrt(radius**2 - half_width**2)
+        radius**2 * np.arcsin(half_width / radius) + half_width * np.sqrt(radius**2 - half_width**2)
     )
 
 

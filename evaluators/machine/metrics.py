@@ -128,8 +128,8 @@ METRICS: tuple[Metric, ...] = (
         "lift_off_ratio",
         "1",
         "levitation",
-        "force at the suspension share over weight plus pull at the touchdown clearance (half the "
-        "mechanical clearance)",
+        "force of the whole slot current at standstill over weight (horizontal shaft) plus "
+        "magnetic pull at the touchdown clearance, half the mechanical clearance",
         DESIGN,
         False,
     ),
@@ -169,8 +169,7 @@ METRICS: tuple[Metric, ...] = (
         "core_flux_density_T",
         "T",
         "field",
-        "largest mean flux density across the rotor core (with the shaft, if magnetic) at the "
-        "duty",
+        "largest mean flux density across the rotor core (with the shaft, if magnetic) at the duty",
         DESIGN,
         True,
     ),
@@ -178,7 +177,7 @@ METRICS: tuple[Metric, ...] = (
         "magnet_flux_density_T",
         "T",
         "field",
-        "smallest flux density along the magnetisation under the middle of a magnet at the duty",
+        "smallest radial flux density over the magnets' outer surface at the duty",
         DESIGN,
         False,
     ),
@@ -260,18 +259,27 @@ METRICS: tuple[Metric, ...] = (
     # -- mechanics --
     Metric("tip_speed_m_s", "m/s", "mechanics", "surface speed of the sleeve", DESIGN, True),
     Metric(
+        "sleeve_interference_um",
+        "um",
+        "mechanics",
+        "radial interference of sleeve and magnets, cold and at rest: the study's, or the one "
+        "that keeps the stated pressure between magnets and core at overspeed and temperature",
+        "orthotropic ring (Lekhnitskii, Anisotropic Plates, 1968) on segments on a disc",
+    ),
+    Metric(
         "sleeve_stress_MPa",
         "MPa",
         "mechanics",
-        "hoop stress of the sleeve at overspeed from shrink fit, own rotation and magnets",
-        "thin ring (Timoshenko, Strength of Materials II)",
+        "largest stress of the sleeve at overspeed and temperature or cold at rest: von Mises in a "
+        "metal, along the fibre in a wound sleeve",
+        "orthotropic ring (Lekhnitskii, Anisotropic Plates, 1968) on segments on a disc",
         True,
     ),
     Metric(
         "sleeve_stress_ratio",
         "1",
         "mechanics",
-        "sleeve stress at overspeed over the strength at temperature",
+        "sleeve stress over the yield strength (metal) or the strength (fibre) at temperature",
         DESIGN,
         True,
     ),
@@ -279,8 +287,9 @@ METRICS: tuple[Metric, ...] = (
         "contact_pressure_MPa",
         "MPa",
         "mechanics",
-        "pressure between sleeve and magnets left at overspeed; negative if they part",
-        "thin ring (Timoshenko, Strength of Materials II)",
+        "pressure left between magnets and core at overspeed and temperature; negative if they "
+        "part",
+        "orthotropic ring (Lekhnitskii, Anisotropic Plates, 1968) on segments on a disc",
         False,
     ),
     # -- heat --
@@ -297,9 +306,7 @@ METRICS: tuple[Metric, ...] = (
         "stack_length_mm", "mm", "size", "iron length that makes the duty's torque", DESIGN, True
     ),
     Metric("outer_diameter_mm", "mm", "size", "of the stator", DESIGN, True),
-    Metric(
-        "length_ratio", "1", "size", "stack length over bore diameter", DESIGN, True
-    ),
+    Metric("length_ratio", "1", "size", "stack length over bore diameter", DESIGN, True),
     Metric("slot_opening_mm", "mm", "size", "chord of the slot opening at the bore", DESIGN),
     Metric("mass_kg", "kg", "size", "mass of all active materials", DESIGN, True),
     Metric("magnet_mass_kg", "kg", "size", "mass of the magnets", DESIGN, True),

@@ -128,8 +128,13 @@ class Construction:
         Thickness of liner and wall insulation, m (used for the smallest usable slot).
     minimum_slot_opening : float
         Narrowest slot opening that can be wound, m.
-    sleeve_interference : float
-        Radial shrink-fit interference of the sleeve at rest and cold, m.
+    sleeve_interference : float or None
+        Radial shrink-fit interference of the sleeve at rest and cold, m; None for the one that
+        leaves `contact_pressure` between magnets and core at overspeed and temperature.
+    contact_pressure : float
+        Pa, see `sleeve_interference`.
+    end_clearance : float
+        Axial clearance between rotor faces and housing, m.
     rotor_overhang : float
         Axial length of rotor iron, magnets and sleeve beyond the stack, both ends together, m.
     """
@@ -142,14 +147,14 @@ class Construction:
     end_turn_extension: float = 2e-3
     slot_insulation: float = 0.25e-3
     minimum_slot_opening: float = 0.8e-3
-    sleeve_interference: float = 30e-6
+    sleeve_interference: float | None = None
+    contact_pressure: float = 2e6
+    end_clearance: float = 3e-3
     rotor_overhang: float = 0.0
 
     def __post_init__(self) -> None:
         if self.magnetisation not in ("radial", "parallel"):
-            msg = (
-                f"construction: magnetisation = {self.magnetisation!r} must be radial or parallel"
-            )
+            msg = f"construction: magnetisation = {self.magnetisation!r} must be radial or parallel"
             raise ValueError(msg)
         _require("construction", "copper_fill", self.copper_fill, 0.05, 0.9)
         _require("construction", "magnet_segments", self.magnet_segments, 1, 200)
@@ -158,7 +163,10 @@ class Construction:
         _require("construction", "end_turn_extension (m)", self.end_turn_extension, 0.0, 1.0)
         _require("construction", "slot_insulation (m)", self.slot_insulation, 0.0, 1e-2)
         _require("construction", "minimum_slot_opening (m)", self.minimum_slot_opening, 0.0, 0.1)
-        _require("construction", "sleeve_interference (m)", self.sleeve_interference, 0.0, 2e-3)
+        if self.sleeve_interference is not None:
+            _require("construction", "sleeve_interference (m)", self.sleeve_interference, 0.0, 2e-3)
+        _require("construction", "contact_pressure (Pa)", self.contact_pressure, 0.0, 1e9)
+        _require("construction", "end_clearance (m)", self.end_clearance, 1e-5, 1.0)
         _require("construction", "rotor_overhang (m)", self.rotor_overhang, 0.0, 1.0)
 
 

@@ -1,4 +1,4 @@
-"""The design variables: what a search may vary in one family, with unit and widest sensible range."""
+"""The design variables: what a search may vary, with unit and widest sensible range."""
 
 from __future__ import annotations
 

@@ -1,0 +1,181 @@
+"""Saturation: how much magnetic voltage teeth, yoke and rotor core take at the duty.
+
+The iron is brought into the linear gap model by its secant permeability, one number each for
+teeth, yoke and core, found where the flux that the iron lets through equals the flux it was
+computed for. The wave of each part is taken as sinusoidal with the peak that the slotted field
+has, and the fundamental of its magnetic voltage counts (describing function; the lumped circuit
+with iron drop of Pyrhonen, Jokinen, Hrabovcova, Design of Rotating Electrical Machines, 2014,
+ch. 3). A small field on top, the suspension's, sees the mean differential permeability instead.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from evaluators.analytic.gap import Iron
+from evaluators.analytic.rotor import MU_0, RotorRadii, core_share, response, source
+from evaluators.machine.geometry import CrossSections
+from evaluators.machine.magnetization import MagnetizationCurve
+
+FloatArray = NDArray[np.float64]
+ComplexArray = NDArray[np.complex128]
+
+BISECTIONS = 24  # of the flux share, to 1e-7
+# Gauss-Legendre points of a quarter period: the integrand is smooth but for the knee.
+_NODES, _WEIGHTS = np.polynomial.legendre.leggauss(8)
+_QUARTER = 0.25 * np.pi * (1.0 + _NODES)
+_SINE = np.sin(_QUARTER)
+_WEIGHT = _WEIGHTS * 0.5
+
+
+def secant_reluctivity(curve: MagnetizationCurve, peak: FloatArray) -> FloatArray:
+    """Fundamental of H over B for B = peak sin(t), (n,), m/H."""
+    wave = np.maximum(peak, 1e-6)[:, None] * _SINE
+    return np.asarray(
+        2.0 * np.sum(_WEIGHT * curve.field(wave) * _SINE, axis=1) / np.maximum(peak, 1e-6)
+    )
+
+
+def mean_differential_reluctivity(curve: MagnetizationCurve, peak: FloatArray) -> FloatArray:
+    """Mean of dH/dB over B = peak sin(t), (n,), m/H."""
+    wave = peak[:, None] * _SINE
+    return np.asarray(np.sum(_WEIGHT * curve.differential_reluctivity(wave), axis=1))
+
+
+@dataclass(frozen=True)
+class Paths:
+    """Flux paths of n designs with perfect iron at the duty.
+
+    Attributes
+    ----------
+    magnet, current : arrays (n,), complex, Wb/m
+        Fundamental of A at the bore by the magnets and by the torque current, slotted.
+    tooth_peak, yoke_peak, core_peak : arrays (n,), T
+        Largest mean flux densities.
+    """
+
+    magnet: ComplexArray
+    current: ComplexArray
+    tooth_peak: FloatArray
+    yoke_peak: FloatArray
+    core_peak: FloatArray
+
+
+@dataclass(frozen=True)
+class Steels:
+    """Magnetisation curves of both stacks, and whether the shaft carries flux too."""
+
+    stator: MagnetizationCurve
+    rotor: MagnetizationCurve
+    shaft_magnetic: bool
+
+
+@dataclass(frozen=True)
+class SaturatedIron:
+    """Iron for the main field and for a small field on top of it, and what share of flux is left.
+
+    `share` (n,) is the fundamental flux over that with perfect iron.
+    """
+
+    main: Iron
+    small: Iron
+    share: FloatArray
+
+
+def saturate(
+    sections: CrossSections,
+    radii: RotorRadii,
+    magnetisation: tuple[FloatArray, FloatArray],
+    paths: Paths,
+    steels: Steels,
+) -> SaturatedIron:
+    """Find the iron that fits the flux it lets through.
+
+    Parameters
+    ----------
+    magnetisation : pair of arrays (n, 1), T
+        Of the fundamental, from `evaluators.analytic.rotor.magnetisation`.
+    paths : Paths
+        With perfect iron.
+    """
+    order = np.array([sections.family.pole_pairs])
+    perfect = np.abs(paths.magnet + paths.current)
+    gap_peak = 2.0 * order[0] * perfect / radii.bore
+    tooth_length = sections.slot_radius - sections.bore_radius
+    yoke_radius = 0.5 * (sections.slot_radius + sections.outer_radius)
+    smooth_source = source(radii, *magnetisation, order, np.zeros_like(magnetisation[0])).bore[:, 0]
+    smooth_response = response(radii, order, np.zeros_like(magnetisation[0]))[:, 0]
+    zero = np.zeros_like(perfect)
+    hole = zero if steels.shaft_magnetic else sections.shaft_radius / sections.core_radius
+
+    def iron(share: FloatArray, small: bool) -> Iron:
+        reluctivity = mean_differential_reluctivity if small else secant_reluctivity
+        tooth = reluctivity(steels.stator, share * paths.tooth_peak)
+        yoke = reluctivity(steels.stator, share * paths.yoke_peak)
+        core = reluctivity(steels.rotor, share * paths.core_peak)
+        return Iron(
+            tooth=MU_0 * tooth * tooth_length * paths.tooth_peak / gap_peak,
+            yoke=MU_0 * yoke * yoke_radius / radii.bore * paths.yoke_peak / (2.0 * perfect),
+            core_permeability=1.0 / (MU_0 * core),
+            core_ratio=hole,
+        )
+
+    def passed(share: FloatArray) -> FloatArray:
+        """Share of flux that iron saturated by `share` lets through; falls as `share` grows."""
+        state = iron(share, small=False)
+        core = state.core_admittance(radii.recoil_permeability, order)
+        alone = response(radii, order, core)[:, 0]
+        stator = state.stator_admittance(radii.bore, sections.family.slots, order)[:, 0]
+        series = 1.0 / (1.0 - alone * stator)
+        driven = source(radii, *magnetisation, order, core).bore[:, 0]
+        flux = (
+            paths.magnet * driven / smooth_source + paths.current * alone / smooth_response
+        ) * series
+        return np.asarray(np.abs(flux) / perfect)
+
+    low, high = zero, np.ones_like(perfect)
+    for _ in range(BISECTIONS):
+        middle = 0.5 * (low + high)
+        more = passed(middle) > middle
+        low, high = np.where(more, middle, low), np.where(more, high, middle)
+    share = 0.5 * (low + high)
+    return SaturatedIron(main=iron(share, small=False), small=iron(share, small=True), share=share)
+
+
+def core_peak(
+    sections: CrossSections, at_core: ComplexArray, steels: Steels
+) -> tuple[FloatArray, FloatArray]:
+    """Flux densities of the rotor core from the fundamental of A at its surface, (n,) complex.
+
+    Returns
+    -------
+    mean, effective : arrays (n,), T
+        Mean over the thickness that carries flux (the shaft too, if magnetic); mean of that and
+        the density at the surface of a core of uniform permeability, n coth(n ln(Ro/Ri)) / Ro per
+        potential, which the core's permeability is taken at.
+    """
+    outer = sections.core_radius
+    inner = np.zeros_like(outer) if steels.shaft_magnetic else sections.shaft_radius
+    flux = 2.0 * np.abs(at_core)
+    order = sections.family.pole_pairs
+    with np.errstate(divide="ignore"):
+        surface = order / np.tanh(order * np.log(outer / inner)) / outer
+    mean = flux / (outer - inner)
+    return np.asarray(mean), np.asarray(0.5 * (mean + flux * surface))
+
+
+def fundamental_at_core(
+    radii: RotorRadii,
+    magnets: ComplexArray,
+    smooth_bore: ComplexArray,
+    smooth_core: ComplexArray,
+    current: ComplexArray,
+    pole_pairs: int,
+    core: FloatArray,
+) -> ComplexArray:
+    """Fundamental of A at the core from the slotted field at the bore, (n,) complex each."""
+    share = core_share(radii, np.array([pole_pairs]), core)[:, 0]
+    return np.asarray(smooth_core + share * (magnets - smooth_bore + current))
