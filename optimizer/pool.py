@@ -111,7 +111,7 @@ class Pool:
         """Store the problem where each worker reads it once."""
         if self._sent is not None and self._sent[0] is problem:
             return self._sent[1]
-        from joblib.externals.cloudpickle import dumps
+        from cloudpickle import dumps
 
         try:
             data = dumps(problem)

@@ -42,6 +42,9 @@ class Settings:
     labels: Mapping[str, str] = field(default_factory=dict)
 
     def __post_init__(self) -> None:
+        if isinstance(self.seed, int) and self.seed >= 2**63:
+            msg = f"seed is {self.seed!r}; a whole number below 2**63 is wanted"
+            raise ProblemError(msg)
         checks = {"budget": (self.budget, 1), "seed": (self.seed, 0), "chunk": (self.chunk, 1)}
         if self.population is not None:
             checks["population"] = (self.population, 4)
