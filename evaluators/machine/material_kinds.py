@@ -85,6 +85,7 @@ class Material:
 class SolidMaterial(Material):
     """A solid with its thermal properties."""
 
+    density: Annotated[Quantity, Limits("kg/m3", 100.0, 25e3)]
     resistivity: Annotated[Quantity, Limits("ohm m", 1e-9, 1e12)]
     thermal_conductivity: Annotated[Quantity, Limits("W/(m K)", 0.05, 1e3)]
     specific_heat: Annotated[Quantity, Limits("J/(kg K)", 50.0, 5e3)]

@@ -1,0 +1,173 @@
+"""Iron loss against the closed forms of its three terms."""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+import pytest
+
+from evaluators.machine.losses.iron import (
+    IronLossCoefficients,
+    classical_coefficient,
+    excess_constant,
+    fit_iron_loss,
+    improved_steinmetz,
+    iron_loss_from_harmonics,
+    iron_loss_from_waveform,
+    iron_loss_sine,
+    lamination_skin_factor,
+)
+
+LAW = IronLossCoefficients(hysteresis=0.0150, exponent=1.9, classical=4.0e-5, excess=6e-4)
+# Own evaluation of the three-term law, W/kg at 0.5, 1.0 and 1.5 T.
+LAW_TABLE = {
+    50.0: (0.300958, 1.06213, 2.23516),
+    100.0: (0.714047, 2.5, 5.24316),
+    400.0: (4.90472, 17.2, 36.1817),
+    1000.0: (20.7274, 73.9737, 157.266),
+}
+SAMPLES = 4096
+PHASE = 2.0 * math.pi * np.arange(SAMPLES) / SAMPLES
+SINE = np.sin(PHASE)
+TRIANGLE = 2.0 / math.pi * np.arcsin(SINE)
+
+
+def test_three_terms() -> None:
+    for frequency, row in LAW_TABLE.items():
+        total = iron_loss_sine(LAW, [0.5, 1.0, 1.5], frequency).total
+        np.testing.assert_allclose(total, row, rtol=5e-6)  # six printed digits
+
+
+def test_fit_recovers_its_coefficients() -> None:
+    f, b = (a.ravel() for a in np.meshgrid([50.0, 100.0, 400.0, 1000.0], [0.5, 1.0, 1.5]))
+    fit = fit_iron_loss(f, b, iron_loss_sine(LAW, b, f).total)
+    found = (fit.hysteresis, fit.exponent, fit.classical, fit.excess)
+    expected = (LAW.hysteresis, LAW.exponent, LAW.classical, LAW.excess)
+    np.testing.assert_allclose(found, expected, rtol=1e-6)  # exact data, least squares at rounding
+    assert fit.exponent_slope < 1e-6
+
+
+def test_fit_with_given_classical_part_recovers_the_growing_exponent() -> None:
+    law = IronLossCoefficients(0.014, 1.4, 5e-5, 5e-4, exponent_slope=0.6)
+    f, b = (a.ravel() for a in np.meshgrid([50.0, 400.0, 2000.0], np.linspace(0.2, 1.7, 9)))
+    fit = fit_iron_loss(f, b, iron_loss_sine(law, b, f).total, classical=5e-5)
+    found = (fit.hysteresis, fit.exponent, fit.exponent_slope, fit.excess)
+    np.testing.assert_allclose(found, (0.014, 1.4, 0.6, 5e-4), rtol=1e-6)
+
+
+@pytest.mark.parametrize(("thickness", "frequency", "peak", "watt_per_m3"), [
+    (0.35e-3, 50.0, 1.5, 2176.248),
+    (0.35e-3, 1000.0, 0.5, 96722.12),
+    (0.20e-3, 1000.0, 1.0, 126330.9),
+])  # fmt: skip
+def test_classical_lamination_loss(
+    thickness: float, frequency: float, peak: float, watt_per_m3: float
+) -> None:
+    """pi² f² B² d² sigma / 6, sigma = 1.92 MS/m. Bozorth, *Ferromagnetism*, 1951 (from memory)."""
+    k = classical_coefficient(thickness, 1.0 / 1.92e6, 7600.0)
+    assert k * (frequency * peak) ** 2 * 7600.0 == pytest.approx(watt_per_m3, rel=1e-6)
+
+
+@pytest.mark.parametrize(("ratio", "factor"), [
+    (0.5, 0.9999008), (1.0, 0.9984167), (1.5, 0.9920657), (2.0, 0.9755889), (3.0, 0.8932052),
+    (5.0, 0.6100304), (10.0, 0.2999920),
+])  # fmt: skip
+def test_lamination_skin_effect(ratio: float, factor: float) -> None:
+    assert lamination_skin_factor(ratio) == pytest.approx(factor, abs=6e-8)  # printed digits
+
+
+def test_lamination_skin_factor_is_continuous_and_bounded() -> None:
+    assert lamination_skin_factor(0.0) == 1.0
+    at_switch = lamination_skin_factor(np.array([0.1 - 1e-9, 0.1 + 1e-9]))
+    # Cancellation in cosh - cos at 0.1 leaves about 1e-12 / 0.1².
+    assert at_switch[0] == pytest.approx(at_switch[1], abs=1e-10)
+    assert lamination_skin_factor(1e4) == pytest.approx(3e-4, rel=1e-9)  # limit 3 / lambda
+
+
+def test_excess_constant() -> None:
+    """8.763365, printed as 8.76 by Bertotti, *IEEE Trans. Magn.* 24(1), 1988."""
+    assert excess_constant() == pytest.approx(8.763365, abs=5e-7)
+
+
+def test_waveform_of_a_sine_is_the_law() -> None:
+    part = iron_loss_from_waveform(LAW, 1.2 * SINE, 400.0)
+    law = iron_loss_sine(LAW, 1.2, 400.0)
+    # The polygon through 4096 samples is short by (pi/4096)²/3 = 2e-7.
+    np.testing.assert_allclose(part, law, rtol=1e-6)
+
+
+def test_triangle_over_sine() -> None:
+    part = iron_loss_from_waveform(LAW, TRIANGLE, 50.0)
+    law = iron_loss_sine(LAW, 1.0, 50.0)
+    # Mean of (dB/dt)²: 16 against 2 pi²; |dB/dt|^1.5: 8 against 8.763365. Exact for a polygon.
+    assert part.classical / law.classical == pytest.approx(8.0 / math.pi**2, rel=1e-9)
+    assert part.excess / law.excess == pytest.approx(8.0 / 8.763365, rel=1e-6)
+    assert part.hysteresis == pytest.approx(law.hysteresis, rel=1e-12)  # same peak
+
+
+def test_rotating_field_has_twice_the_classical_loss() -> None:
+    part = iron_loss_from_waveform(LAW, SINE, 50.0, np.cos(PHASE))
+    law = iron_loss_sine(LAW, 1.0, 50.0)
+    assert part.classical / law.classical == pytest.approx(2.0, rel=1e-6)
+    # Constant |dB/dt|: (2 pi)^1.5 over 8.763365.
+    assert part.excess / law.excess == pytest.approx((2 * math.pi) ** 1.5 / 8.763365, rel=1e-6)
+    assert part.hysteresis == pytest.approx(2.0 * law.hysteresis, rel=1e-6)
+
+
+def test_harmonics_and_waveform_agree_on_the_classical_part() -> None:
+    """Parseval: the classical loss of a waveform is the sum over its harmonics."""
+    amplitude = np.array([[1.0, 0.3, 0.1], [0.5, 0.0, 0.2]])
+    order = np.array([1.0, 3.0, 7.0])
+    wave = np.einsum("nh,ht->nt", amplitude, np.sin(np.outer(order, PHASE)))
+    f = np.array([50.0, 400.0])
+    by_wave = iron_loss_from_waveform(LAW, wave, f)
+    by_sum = iron_loss_from_harmonics(LAW, amplitude, f[:, None] * order)
+    # The polygon is short by (7 pi/4096)²/3 = 1e-5 at most.
+    np.testing.assert_allclose(by_wave.classical, by_sum.classical, rtol=2e-5)
+    assert by_sum.total.shape == (2,)
+
+
+def test_minor_loops_add_hysteresis_only_where_b_turns_back() -> None:
+    third = np.sin(PHASE) + 0.2 * np.sin(3 * PHASE)
+    path = np.abs(np.diff(np.append(third, third[0]))).sum()
+    plain = iron_loss_from_waveform(LAW, third, 50.0)
+    looped = iron_loss_from_waveform(LAW, third, 50.0, minor_loops=True)
+    swing = third.max() - third.min()
+    expected = path / (2.0 * swing)
+    assert looped.hysteresis / plain.hysteresis == pytest.approx(expected, rel=1e-9)
+    assert expected > 1.02  # the third harmonic makes dents at the crests
+    sine = iron_loss_from_waveform(LAW, SINE, 50.0, minor_loops=True)
+    assert sine.hysteresis == pytest.approx(iron_loss_sine(LAW, 1.0, 50.0).hysteresis, rel=1e-6)
+
+
+@pytest.mark.parametrize(("alpha", "beta", "ratio"), [
+    (1.2, 2.0, 0.9682610), (1.5, 2.5, 0.9128914), (2.0, 2.0, 0.8105695), (1.0, 2.0, 1.0),
+])  # fmt: skip
+def test_improved_steinmetz(alpha: float, beta: float, ratio: float) -> None:
+    """Sine in, Steinmetz out; triangle over sine at equal peak (own evaluation of COMPEL 2002)."""
+    sine = improved_steinmetz(3.0, alpha, beta, 0.8 * SINE, 1e3)
+    assert sine == pytest.approx(3.0 * 1e3**alpha * 0.8**beta, rel=1e-6)  # polygon of 4096 samples
+    triangle = improved_steinmetz(3.0, alpha, beta, 0.8 * TRIANGLE, 1e3)
+    assert triangle / sine == pytest.approx(ratio, rel=1e-6)
+
+
+def test_no_field_no_loss() -> None:
+    assert iron_loss_sine(LAW, 0.0, 50.0).total == 0.0
+    assert (
+        iron_loss_from_waveform(LAW, np.zeros((3, 24)), 50.0, minor_loops=True).total.sum() == 0.0
+    )
+
+
+@pytest.mark.parametrize("change", [{"hysteresis": -1.0}, {"exponent": 7.0}, {"excess": math.nan}])
+def test_bad_coefficients_are_refused(change: dict[str, float]) -> None:
+    good = {"hysteresis": 0.01, "exponent": 2.0, "classical": 1e-5, "excess": 1e-4}
+    with pytest.raises(ValueError, match=next(iter(change))):
+        IronLossCoefficients(**{**good, **change})
+
+
+def test_bad_loss_tables_are_refused() -> None:
+    with pytest.raises(ValueError, match="at least 6 points"):
+        fit_iron_loss([50.0], [1.0], [1.0])
+    with pytest.raises(ValueError, match="positive"):
+        fit_iron_loss([50.0] * 6, [1.0] * 6, [0.0] * 6)
