@@ -50,11 +50,12 @@ def ring_field_ratio(
     a = floats(inner_radius)
     b = floats(outer_radius)
     k = (1.0 - 1.0j) * np.sqrt(omega * MU_0 * mu_r / (2.0 * floats(resistivity)))
-    k = np.where(np.abs(k * a) > 10.0 * math.sqrt(2.0), np.nan, k)
+    beyond = np.abs(k * a) > 10.0 * math.sqrt(2.0)
+    k = np.where(beyond, 1.0 / a, k)
     weight_j, weight_y = yvp(nu, k * a), -jvp(nu, k * a)
     potential = weight_j * jv(nu, k * b) + weight_y * yv(nu, k * b)
     slope = k * (weight_j * jvp(nu, k * b) + weight_y * yvp(nu, k * b))
-    return np.asarray(b * slope / (mu_r * potential))
+    return np.asarray(np.where(beyond, np.nan, b * slope / (mu_r * potential)))
 
 
 def ring_loss(
