@@ -15,6 +15,7 @@ from evaluators.machine.materials import (
 from evaluators.machine.task import Conditions, Construction, Duty, MaterialSet, RippleWeights
 from studies.schema import (
     KILO,
+    MEGA,
     MICRO,
     MILLI,
     ConditionsSection,
@@ -64,7 +65,8 @@ def conditions(section: ConditionsSection) -> Conditions:
 
 
 def construction(section: ConstructionSection) -> Construction:
-    """Lengths in metres."""
+    """Lengths in metres, pressure in pascals."""
+    interference = section.sleeve_interference_um
     return Construction(
         magnetisation=section.magnetisation,
         copper_fill=section.copper_fill,
@@ -74,7 +76,9 @@ def construction(section: ConstructionSection) -> Construction:
         end_turn_extension=section.end_turn_extension_mm * MILLI,
         slot_insulation=section.slot_insulation_mm * MILLI,
         minimum_slot_opening=section.minimum_slot_opening_mm * MILLI,
-        sleeve_interference=section.sleeve_interference_um * MICRO,
+        sleeve_interference=None if interference is None else interference * MICRO,
+        contact_pressure=section.contact_pressure_MPa * MEGA,
+        end_clearance=section.end_clearance_mm * MILLI,
         rotor_overhang=section.rotor_overhang_mm * MILLI,
     )
 

@@ -12,7 +12,7 @@ from pydantic import BaseModel, ConfigDict, Field
 
 from evaluators.machine.task import Conditions, Construction, Duty, RippleWeights
 
-KILO, MILLI, MICRO = 1e3, 1e-3, 1e-6
+MEGA, KILO, MILLI, MICRO = 1e6, 1e3, 1e-3, 1e-6
 
 
 class Section(BaseModel):
@@ -130,11 +130,24 @@ class ConstructionSection(Section):
         le=100.0,
         description="narrowest slot opening that can be wound",
     )
-    sleeve_interference_um: float = Field(
-        Construction.sleeve_interference / MICRO,
+    sleeve_interference_um: float | None = Field(
+        None,
         ge=0.0,
         le=2000.0,
-        description="radial shrink-fit interference, cold and at rest",
+        description="radial shrink-fit interference, cold and at rest; if left out, the one that "
+        "leaves contact_pressure_MPa",
+    )
+    contact_pressure_MPa: float = Field(
+        Construction.contact_pressure / MEGA,
+        ge=0.0,
+        le=1000.0,
+        description="pressure to be left between magnets and core at overspeed and temperature",
+    )
+    end_clearance_mm: float = Field(
+        Construction.end_clearance / MILLI,
+        ge=0.01,
+        le=1000.0,
+        description="axial clearance between rotor faces and housing",
     )
     rotor_overhang_mm: float = Field(
         Construction.rotor_overhang / MILLI,

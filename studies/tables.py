@@ -8,6 +8,7 @@ import math
 from collections.abc import Iterable, Sequence
 
 GAP = "  "
+WIDEST = 110  # characters of a table before it is broken
 # A spreadsheet runs a cell that starts with one of these as a formula (OWASP, "CSV Injection").
 FORMULA_STARTS = ("=", "+", "-", "@", "\t", "\r")
 
@@ -26,6 +27,26 @@ def text_table(head: Sequence[str], rows: Iterable[Sequence[str]], left: int = 1
 
     rule = GAP.join("-" * width for width in widths)
     return "\n".join([line(head), rule, *(line(row) for row in body)])
+
+
+def wide_table(
+    head: Sequence[str], rows: Iterable[Sequence[str]], left: int = 1, width: int = WIDEST
+) -> str:
+    """As `text_table`, broken into several below each other that repeat the left columns."""
+    body = [list(row) for row in rows]
+    blocks: list[list[int]] = [[]]
+    for column in range(left, len(head)):
+        trial = [*range(left), *blocks[-1], column]
+        cells = [[line[item] for item in trial] for line in [list(head), *body]]
+        if blocks[-1] and len(text_table(cells[0], cells[1:]).split("\n")[1]) > width:
+            blocks.append([])
+        blocks[-1].append(column)
+    tables = []
+    for block in blocks:
+        chosen = [*range(left), *block]
+        cells = [[line[item] for item in chosen] for line in [list(head), *body]]
+        tables.append(text_table(cells[0], cells[1:], left))
+    return "\n\n".join(tables)
 
 
 def number(value: float, digits: int = 4) -> str:

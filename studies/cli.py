@@ -1,0 +1,90 @@
+"""The command ``hovergap``. Commands import what they need when they run, so help is quick."""
+
+from __future__ import annotations
+
+import os
+import sys
+from typing import Any
+
+import click
+
+from studies.commands.check import check
+from studies.commands.compare import compare
+from studies.commands.families import families
+from studies.commands.inspect import inspect
+from studies.commands.materials import materials
+from studies.commands.metrics import metrics
+from studies.commands.new import new
+from studies.commands.resume import resume
+from studies.commands.status import status
+from studies.commands.sweep import sweep
+from studies.errors import EXIT_FAILED, EXIT_INTERRUPTED, StudiesError
+
+
+class _Program(click.Group):
+    """The group of commands; turns expected errors into one clear text and an exit code."""
+
+    def list_commands(self, ctx: click.Context) -> list[str]:
+        """Commands in the order in which a user meets them."""
+        del ctx
+        return list(self.commands)
+
+    def invoke(self, ctx: click.Context) -> Any:
+        """Run the command; no expected error shows a traceback."""
+        try:
+            return super().invoke(ctx)
+        except (click.ClickException, click.exceptions.Exit, click.Abort):
+            raise
+        except StudiesError as error:
+            click.echo(str(error), err=True)
+            ctx.exit(error.exit_code)
+        except BrokenPipeError:
+            # The reader of a pipe has gone (`| head`); nothing is left to say to it.
+            os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+            ctx.exit(EXIT_FAILED)
+        except KeyboardInterrupt:
+            click.echo("stopped", err=True)
+            ctx.exit(EXIT_INTERRUPTED)
+        except Exception as error:
+            text = _expected(error)
+            if text is None:
+                raise
+            click.echo(text, err=True)
+            ctx.exit(EXIT_FAILED)
+
+
+def _expected(error: Exception) -> str | None:
+    """One sentence for an error that a lower room raised on purpose, None for a defect."""
+    from evaluators.interface import EvaluatorError
+    from optimizer.errors import OptimizerError
+
+    if isinstance(error, EvaluatorError | OptimizerError):
+        return str(error)
+    if isinstance(error, OSError) and error.strerror:
+        place = f"{error.filename}: " if error.filename else ""
+        return f"{place}{error.strerror.lower()}"
+    return None
+
+
+@click.group(cls=_Program, context_settings={"help_option_names": ["-h", "--help"]})
+@click.version_option(package_name="hovergap", prog_name="hovergap")
+def main() -> None:
+    """Search bearingless permanent-magnet machines: families, windings, cross-sections, fronts.
+
+    Begin with `hovergap sweep compressor`, or write a study of your own with `hovergap new`.
+    """
+
+
+for _command in (
+    new,
+    check,
+    sweep,
+    resume,
+    status,
+    compare,
+    inspect,
+    families,
+    metrics,
+    materials,
+):
+    main.add_command(_command)

@@ -1,0 +1,53 @@
+"""``hovergap compare``: families against each other."""
+
+from __future__ import annotations
+
+import json
+from pathlib import Path
+
+import click
+
+
+@click.command()
+@click.argument("folders", metavar="RESULTS/STUDY...", nargs=-1, required=True, type=click.Path())
+@click.option("--json", "as_json", is_flag=True, help="Print JSON.")
+@click.option("--csv", "csv_file", type=click.Path(), help="Write one line a family to this file.")
+@click.option(
+    "--front-csv", type=click.Path(), help="Write every design of all fronts to this file."
+)
+@click.pass_context
+def compare(
+    context: click.Context,
+    folders: tuple[str, ...],
+    as_json: bool,
+    csv_file: str | None,
+    front_csv: str | None,
+) -> None:
+    """Compare the families of one or several studies by their fronts."""
+    from studies import comparison_text
+    from studies.comparison import as_json as comparison_json
+    from studies.comparison import compare_families
+    from studies.damage import report_damage
+    from studies.layout import open_results
+
+    distinct = dict.fromkeys(str(Path(folder)) for folder in folders)
+    comparison = compare_families([open_results(Path(folder)) for folder in distinct])
+    for member in comparison.members:
+        member.stored.counts  # noqa: B018  all parts are read, so that damage shows
+    if csv_file:
+        _write(Path(csv_file), comparison_text.summary_csv(comparison))
+    if front_csv:
+        _write(Path(front_csv), comparison_text.front_csv(comparison))
+    if as_json:
+        click.echo(json.dumps(comparison_json(comparison), indent=2, allow_nan=False))
+    else:
+        click.echo(comparison_text.comparison_text(comparison))
+    damaged = [part for member in comparison.members for part in member.stored.reader.damaged]
+    context.exit(report_damage(damaged))
+
+
+def _write(file: Path, text: str) -> None:
+    from studies.layout import storage
+
+    with storage(file, "write"):
+        file.write_text(text, encoding="utf-8")

@@ -1,0 +1,68 @@
+"""``hovergap resume``: go on with a sweep."""
+
+from __future__ import annotations
+
+import click
+
+from studies.commands.sweep import LARGEST_BUDGET, MOST_WORKERS
+
+
+@click.command()
+@click.argument("results_folder", metavar="RESULTS/STUDY", type=click.Path())
+@click.option("--family", multiple=True, help="Only this family of the study; repeatable.")
+@click.option(
+    "--budget",
+    type=click.IntRange(1, LARGEST_BUDGET),
+    help="Evaluations of each family from now on; more than before extends the search.",
+)
+@click.option("--workers", type=click.IntRange(1, MOST_WORKERS), help="Processes.")
+@click.option(
+    "--study",
+    "study_file",
+    type=click.Path(),
+    default="",
+    help="Study file to hold against the stored copy; by default the one it was copied from.",
+)
+@click.pass_context
+def resume(
+    context: click.Context,
+    results_folder: str,
+    family: tuple[str, ...],
+    budget: int | None,
+    workers: int | None,
+    study_file: str,
+) -> None:
+    """Go on with a sweep that was stopped, or extend it with --budget.
+
+    The stored copy of the study decides; what has changed in the study file since then is said.
+    """
+    from dataclasses import replace
+    from pathlib import Path
+
+    from studies import sweep as room
+    from studies.layout import open_results, save_request
+
+    results = open_results(Path(results_folder))
+    study = results.study
+    differing = room.changes_since_frozen(results, study_file)
+    if differing:
+        click.echo("The study file has changed since it was copied to the results:")
+        for line in differing:
+            click.echo(f"  {line}")
+        click.echo(
+            "Going on with the copy. To search the changed study, give it another name and sweep "
+            "it.\n"
+        )
+    families = room.chosen_families(study, family or results.request.families)
+    problems = room.problems_of(study, families)
+    if budget is not None:
+        results = save_request(results, replace(results.request, evaluations_per_family=budget))
+    wanted = tuple(
+        item for item in study.families if item in families or item in results.request.families
+    )
+    results = save_request(results, replace(results.request, families=wanted))
+    click.echo(
+        f"{study.name}: {room.counted(families)}, "
+        f"{results.request.evaluations_per_family:,} evaluations each, in {results.folder}"
+    )
+    context.exit(room.search_families(results, problems, workers or room.usable_workers()))

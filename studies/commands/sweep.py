@@ -1,0 +1,67 @@
+"""``hovergap sweep``: search the families of a study."""
+
+from __future__ import annotations
+
+import click
+
+LARGEST_BUDGET = 10_000_000
+MOST_WORKERS = 256
+
+
+@click.command()
+@click.argument("study_file", metavar="STUDY.toml")
+@click.option(
+    "--results",
+    "results_folder",
+    type=click.Path(file_okay=False),
+    default="results",
+    show_default=True,
+    help="Folder in which the study gets a folder of its own.",
+)
+@click.option("--family", "family", multiple=True, help="Search only this family; repeatable.")
+@click.option(
+    "--budget", type=click.IntRange(1, LARGEST_BUDGET), help="Evaluations of each family."
+)
+@click.option(
+    "--workers",
+    type=click.IntRange(1, MOST_WORKERS),
+    help="Processes; by default one for each processor. The results do not depend on it.",
+)
+@click.option("--seed", type=click.IntRange(0, 2**31 - 1), help="Seed of the search.")
+@click.pass_context
+def sweep(
+    context: click.Context,
+    study_file: str,
+    results_folder: str,
+    family: tuple[str, ...],
+    budget: int | None,
+    workers: int | None,
+    seed: int | None,
+) -> None:
+    """Search every family of a study and keep every evaluation.
+
+    STUDY.toml is a study file, or the name of a shipped study such as `compressor`. Ctrl-C ends
+    the sweep with everything stored; `hovergap resume` goes on with it.
+    """
+    from pathlib import Path
+
+    from studies import sweep as room
+    from studies.layout import Request, create
+    from studies.library import find_study
+
+    study = find_study(study_file)
+    families = room.chosen_families(study, family)
+    problems = room.problems_of(study, families)
+    shipped = study.file.endswith(room.SHIPPED_MARK)
+    request = Request(
+        origin=study.file if shipped else str(Path(study.file).absolute()),
+        families=families,
+        evaluations_per_family=budget or study.search.evaluations_per_family,
+        seed=study.search.seed if seed is None else seed,
+    )
+    results = create(Path(results_folder), study, request)
+    click.echo(
+        f"{study.name}: {room.counted(families)}, {request.evaluations_per_family:,} evaluations "
+        f"each, into {results.folder}"
+    )
+    context.exit(room.search_families(results, problems, workers or room.usable_workers()))

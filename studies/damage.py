@@ -1,0 +1,23 @@
+"""One sentence for each damaged part met while reading."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from pathlib import Path
+
+import click
+
+from studies.errors import EXIT_FAILED, EXIT_OK
+
+
+def report_damage(parts: Iterable[Path | str]) -> int:
+    """Say which parts are damaged; exit code 1 if any is, because rows are missing then."""
+    code = EXIT_OK
+    for part in dict.fromkeys(map(Path, parts)):
+        click.echo(
+            f"{part}: is damaged, so its evaluations are missing above; "
+            f"`hovergap resume {part.parent.parent}` sets it aside and evaluates them again",
+            err=True,
+        )
+        code = EXIT_FAILED
+    return code
