@@ -55,6 +55,16 @@ def test_disc_with_a_hole() -> None:
     np.testing.assert_allclose(growth, [2.803908e-6, 2.656334e-6], rtol=1e-6)
 
 
+def test_growth_is_compatible_with_the_strains() -> None:
+    """The hoop strain is u/r and the radial strain du/dr, both from the same stresses."""
+    r = np.linspace(0.01, RIM, 4001)
+    growth = rotating_disc_growth(r, 0.01, RIM, young=210e9, speed=W, **STEEL)
+    stress = rotating_disc_stress(r, 0.01, RIM, speed=W, **STEEL)
+    radial_strain = (stress.radial - 0.3 * stress.hoop) / 210e9
+    # Central differences, second order in a step of 5 um.
+    np.testing.assert_allclose(np.gradient(growth, r)[1:-1], radial_strain[1:-1], atol=1e-10)
+
+
 def test_long_cylinder_by_plane_strain_constants() -> None:
     _, nu = plane_strain(210e9, 0.3)
     solid = rotating_disc_stress(0.0, 0.0, RIM, 7850.0, nu, W).hoop
