@@ -1,0 +1,1 @@
+"""Drawings of one design: outlines as numbers, cross-section and winding as SVG."""
