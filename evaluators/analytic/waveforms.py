@@ -14,7 +14,12 @@ from evaluators.machine.geometry import cross_sections
 
 
 def waveforms(model: AnalyticModel, design: Mapping[str, float]) -> tuple[Waveform, ...]:
-    """Torque, cogging, force along and across the command, EMF, tooth and yoke flux density."""
+    """Torque, cogging, forces with the currents that command them, EMF, iron flux densities.
+
+    The force is given without suspension current and with the one that commands a mean force along
+    x, and along y. That current, as ampere-turns of one coil of phase one, keeps its phase to the
+    rotor: what a controller must add to the rotor angle can be read from it.
+    """
     task = model.task
     batch = {name: np.array([float(value)]) for name, value in design.items()}
     sections, valid, reasons = cross_sections(task.winding.family, batch, task.construction)
@@ -27,7 +32,13 @@ def waveforms(model: AnalyticModel, design: Mapping[str, float]) -> tuple[Wavefo
     sectors = model.rotation.sectors
     count = motion.positions.size * sectors
     angle = 2.0 * np.pi * np.arange(count) / count
-    force = model.force_waves(motion, exciting)[0, 0]
+    rest = model.whole_turn(motion)[0][0]
+    force_x, force_y = model.force_waves(motion, exciting)[0]
+    turning = np.exp(1j * task.winding.family.pole_pairs * angle)
+    command_x, command_y = (
+        np.real(exciting.suspension[0] * model.command(motion, direction)[0] * turning)
+        for direction in (0.0, 0.5 * np.pi)
+    )
     teeth, yoke = model.linkage.iron_flux(waves.magnets, waves.current, model.rotation)
     orders = model.rotation.magnet_orders
     flux = model.linkage.magnet_harmonics(waves.magnets, orders)[0]
@@ -44,8 +55,14 @@ def waveforms(model: AnalyticModel, design: Mapping[str, float]) -> tuple[Wavefo
     return (
         over_turn("torque", "N m/m", np.tile(motion.torque[0], sectors)),
         over_turn("cogging torque", "N m/m", np.tile(motion.cogging[0], sectors)),
-        over_turn("force along x, commanded along x", "N/m", np.real(force)),
-        over_turn("force along y, commanded along x", "N/m", np.imag(force)),
+        over_turn("force along x, commanded along x", "N/m", np.real(force_x)),
+        over_turn("force along y, commanded along x", "N/m", np.imag(force_x)),
+        over_turn("force along x, commanded along y", "N/m", np.real(force_y)),
+        over_turn("force along y, commanded along y", "N/m", np.imag(force_y)),
+        over_turn("force along x, no suspension current", "N/m", np.real(rest)),
+        over_turn("force along y, no suspension current", "N/m", np.imag(rest)),
+        over_turn("suspension current of phase one, commanded along x", "A turns", command_x),
+        over_turn("suspension current of phase one, commanded along y", "A turns", command_y),
         over_turn("EMF of phase one per turn of a coil", "V/m", emf),
         Waveform(
             "tooth flux density",

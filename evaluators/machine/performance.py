@@ -20,6 +20,7 @@ from evaluators.machine.friction import disc_power, gap_power
 from evaluators.machine.gas import gas_state
 from evaluators.machine.geometry import CrossSections
 from evaluators.machine.losses.copper import slot_loss, strand_factor
+from evaluators.machine.mass import active_masses
 from evaluators.machine.material_kinds import Gas
 from evaluators.machine.mechanics import tip_speed
 from evaluators.machine.metrics import METRICS
@@ -258,28 +259,12 @@ def _mechanics(task: Task, sections: CrossSections) -> dict[str, FloatArray]:
 
 
 def _size(task: Task, sections: CrossSections, length: FloatArray) -> dict[str, FloatArray]:
-    parts, construction = task.materials, task.construction
-    rotor_length = length + construction.rotor_overhang
-    stacking = float(parts.stator_steel.stacking_factor.value)
-    rotor_stacking = float(parts.rotor_steel.stacking_factor.value)
-    copper_area = task.winding.family.slots * sections.slot_area * construction.copper_fill
-    mean_length = length + sections.end_turn_length(construction)
-    stator = sections.stator_area * length * stacking * float(parts.stator_steel.density.value)
-    core = sections.core_area * rotor_length * rotor_stacking
-    masses = {
-        "copper": copper_area * mean_length * float(parts.conductor.density.value),
-        "magnet": sections.magnet_area * rotor_length * float(parts.magnet.density.value),
-        "sleeve": sections.sleeve_area * rotor_length * float(parts.sleeve.density.value),
-        "shaft_steel": sections.shaft_area * rotor_length * float(parts.shaft.density.value),
-        "electrical_steel": stator + core * float(parts.rotor_steel.density.value),
-    }
-    total = np.sum(list(masses.values()), axis=0)
-    rotor = total - stator - masses["copper"]
+    masses, rotor = active_masses(task, sections, length)
     return {
         "stack_length_mm": 1e3 * length,
         "outer_diameter_mm": 2e3 * sections.outer_radius,
         "length_ratio": length / (2.0 * sections.bore_radius),
-        "mass_kg": total,
+        "mass_kg": np.sum(list(masses.values()), axis=0),
         "magnet_mass_kg": masses["magnet"],
         "rotor_weight_N": STANDARD_GRAVITY * rotor,
         "cost": active_material_cost(masses, task.prices),
