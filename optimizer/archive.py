@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import json
 import time
+import zlib
 from collections.abc import Sequence
 from contextlib import ExitStack
 from pathlib import Path
@@ -24,17 +25,18 @@ from optimizer.errors import ArchiveError, ArchiveMismatchError
 from optimizer.lock import writer_lock
 from optimizer.parts import (
     DamagedPartError,
+    check_part,
     encode,
     next_number,
     part_paths,
     parts_digest,
-    read_whole,
+    read_part,
     set_aside,
     write_part,
 )
 from optimizer.problem import BoolArray, FloatArray, IntArray, Outcome, Problem
 from optimizer.progress import Settings
-from optimizer.reader import FRONT_NAME, IDENTITY_NAME, read_identity
+from optimizer.reader import FRONT_CHECK_NAME, FRONT_NAME, IDENTITY_NAME, read_identity
 from optimizer.reader import ArchiveReader as ArchiveReader
 from optimizer.reader import is_archive as is_archive
 from optimizer.reader import open_archive as open_archive
@@ -189,7 +191,9 @@ class Archive:
         chosen = pa.concat_tables(tables) if tables else self._schema.empty_table()
         made_of = {**(self._schema.metadata or {}), PARTS_KEY: parts_digest(self.folder)}
         table = _in_order(chosen).replace_schema_metadata(made_of)
-        write_durably(self.folder / FRONT_NAME, encode(table))
+        data = encode(table)
+        write_durably(self.folder / FRONT_NAME, data)
+        write_durably(self.folder / FRONT_CHECK_NAME, f"{zlib.crc32(data):08x}".encode())
 
     def _identify(self) -> None:
         wanted = identity_of(self._problem, self._settings)
@@ -224,7 +228,8 @@ class Archive:
     def _checked(self, path: Path) -> pa.Table | None:
         """Return a part, or None if it is damaged or belongs elsewhere."""
         try:
-            table = read_whole(path)
+            check_part(path)
+            table = read_part(path)
         except DamagedPartError:
             return None
         metadata = table.schema.metadata or {}

@@ -1,8 +1,8 @@
-"""Immutable Parquet parts: one file each, checked when written about and when read.
+"""Immutable Parquet parts: one file each, checked before anything in it is believed.
 
-A part is called ``part-<number>-<crc>.parquet``; the CRC-32 of the whole file in its name lets
-the writer find any changed byte, footer included. Every page carries its own checksum, so that
-a reader of a few columns finds changed bytes among those without reading the rest.
+A part is called ``part-<number>-<crc>.parquet``, with the CRC-32 of the whole file in its name.
+Every page carries its own checksum too, which other readers of Parquet can verify; but those
+leave out the headers and the footer, where a changed byte can read as valid wrong data.
 """
 
 from __future__ import annotations
@@ -20,6 +20,7 @@ from optimizer.durable import write_durably
 from optimizer.errors import storage_error
 
 QUARANTINE = "quarantine"
+_BLOCK = 1 << 20
 _NAME = re.compile(r"part-(\d{8,})(?:-([0-9a-f]{8}))?\.parquet")
 
 
@@ -84,44 +85,75 @@ def write_part(folder: Path, number: int, table: pa.Table) -> Path:
     return path
 
 
-def read_whole(path: Path) -> pa.Table:
-    """Read a part and check every byte of it.
+def check_part(path: Path) -> None:
+    """Hold every byte of a part against the checksum in its name.
 
     Raises
     ------
     DamagedPartError
-        If it was changed, cut short or cannot be read at all.
+        If it was changed or cut short.
     FileNotFoundError
         If there is no such file.
+    ArchiveError
+        If it cannot be opened.
     """
+    match = _NAME.fullmatch(path.name)
+    if match and match[2] and file_checksum(path) != match[2]:
+        msg = "its bytes do not match the checksum in its name"
+        raise DamagedPartError(msg)
+
+
+def file_checksum(path: Path) -> str:
+    """CRC-32 of a file as eight hexadecimal digits.
+
+    Raises
+    ------
+    FileNotFoundError
+        If there is no such file.
+    ArchiveError
+        If it cannot be opened.
+    """
+    checksum = 0
     try:
-        data = path.read_bytes()
+        with open(path, "rb") as file:
+            while block := file.read(_BLOCK):
+                checksum = zlib.crc32(block, checksum)
     except FileNotFoundError:
         raise
     except OSError as error:
         raise storage_error(error, path, "read") from error
-    match = _NAME.fullmatch(path.name)
-    if match and match[2] and zlib.crc32(data) != int(match[2], 16):
-        msg = "its bytes do not match the checksum in its name"
-        raise DamagedPartError(msg)
-    return _parse(pa.BufferReader(data), None)
+    return f"{checksum:08x}"
 
 
-def read_columns(path: Path, columns: Sequence[str] | None) -> pa.Table:
-    """Read some columns of a part (all by default) and check the pages read.
+def read_part(path: Path, columns: Sequence[str] | None = None) -> pa.Table:
+    """Read some columns of a part, or all; pages are checked, :func:`check_part` is not called.
 
     Raises
     ------
-    DamagedPartError, FileNotFoundError
-        As :func:`read_whole`.
+    DamagedPartError
+        If it cannot be read, or has no such column.
+    FileNotFoundError
+        If there is no such file.
     """
     try:
-        with pa.OSFile(str(path)) as source:
-            return _parse(source, columns)
+        with (
+            pa.OSFile(str(path)) as source,
+            pq.ParquetFile(source, page_checksum_verification=True) as file,
+        ):
+            names = set(file.schema_arrow.names)
+            missing = [name for name in columns or [] if name not in names]
+            if missing:
+                msg = f"it has no column {missing[0]}"
+                raise DamagedPartError(msg)
+            return file.read(columns=None if columns is None else list(columns))
     except FileNotFoundError:
         raise
     except PermissionError as error:
         raise storage_error(error, path, "read") from error
+    # What Arrow raises for a broken file: OSError for a page, ArrowInvalid (a ValueError) and
+    # other ArrowExceptions for the footer, and these two for text and sizes out of order.
+    except (OSError, pa.ArrowException, UnicodeDecodeError, MemoryError) as error:
+        raise DamagedPartError(str(error).partition("\n")[0]) from error
 
 
 def set_aside(path: Path) -> Path:
@@ -138,18 +170,3 @@ def set_aside(path: Path) -> Path:
         return path.replace(aside)
     except OSError as error:
         raise storage_error(error, path, "set aside") from error
-
-
-def _parse(source: pa.NativeFile, columns: Sequence[str] | None) -> pa.Table:
-    try:
-        with pq.ParquetFile(source, page_checksum_verification=True) as file:
-            names = set(file.schema_arrow.names)
-            missing = [name for name in columns or [] if name not in names]
-            if missing:
-                msg = f"it has no column {missing[0]}"
-                raise DamagedPartError(msg)
-            return file.read(columns=None if columns is None else list(columns))
-    # What Arrow raises for a broken file: OSError for a page, ArrowInvalid (a ValueError) and
-    # other ArrowExceptions for the footer, and these two for text that is no longer text.
-    except (OSError, pa.ArrowException, UnicodeDecodeError, MemoryError) as error:
-        raise DamagedPartError(str(error).splitlines()[0] if str(error) else "") from error

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import contextlib
 import json
 from collections.abc import Callable, Sequence
 from functools import cached_property
@@ -15,11 +14,19 @@ import pyarrow.parquet as pq
 
 from optimizer.errors import ArchiveError, storage_error
 from optimizer.fronts import non_dominated
-from optimizer.parts import DamagedPartError, part_paths, parts_digest, read_columns
+from optimizer.parts import (
+    DamagedPartError,
+    check_part,
+    file_checksum,
+    part_paths,
+    parts_digest,
+    read_part,
+)
 from optimizer.schema import IDENTITY_KEY, PARTS_KEY, SCHEMA_VERSION
 
 IDENTITY_NAME = "archive.json"
 FRONT_NAME = "front.parquet"
+FRONT_CHECK_NAME = ".front.crc"
 _TRIES = 5  # a writer that merges parts at the end of a run may take one away meanwhile
 _LARGEST_IDENTITY = 10_000_000  # bytes
 
@@ -66,6 +73,7 @@ class ArchiveReader:
         self.folder = folder
         self.settings = settings
         self.damaged: tuple[Path, ...] = ()
+        self._sound: set[Path] = set()
 
     @cached_property
     def schema(self) -> pa.Schema:
@@ -123,10 +131,10 @@ class ArchiveReader:
     def _find(self, evaluation: int) -> pa.Table:
         for path in part_paths(self.folder):
             try:
-                numbers = read_columns(path, ["evaluation"])["evaluation"].to_numpy()
+                numbers = self._part(path, ["evaluation"])["evaluation"].to_numpy()
                 places = np.flatnonzero(numbers == evaluation)
                 if len(places):
-                    return read_columns(path, None).slice(int(places[0]), 1)
+                    return self._part(path).slice(int(places[0]), 1)
             except DamagedPartError:
                 self.damaged = tuple(sorted({*self.damaged, path}))
         return self.schema.empty_table()
@@ -136,7 +144,7 @@ class ArchiveReader:
         tables, damaged = [], []
         for path in part_paths(self.folder):
             try:
-                tables.append(read_columns(path, wanted))
+                tables.append(self._part(path, wanted))
             except DamagedPartError:
                 damaged.append(path)
         self.damaged = tuple(sorted({*self.damaged, *damaged}))
@@ -152,12 +160,9 @@ class ArchiveReader:
         return table.select(names)
 
     def _front(self) -> pa.Table:
-        path = self.folder / FRONT_NAME
-        if path.is_file():
-            with contextlib.suppress(DamagedPartError):  # it is made again below
-                table = read_columns(path, None)
-                if (table.schema.metadata or {}).get(PARTS_KEY) == parts_digest(self.folder):
-                    return table
+        table = self._stored_front()
+        if table is not None:
+            return table
         names = [f"objective:{name}" for name in self.settings["objectives"]]
         table = self._read(self.schema.names)
         if not table.num_rows:
@@ -165,6 +170,23 @@ class ArchiveReader:
         feasible = np.flatnonzero(table["feasible"].to_numpy())
         points = np.column_stack([table[name].to_numpy()[feasible] for name in names])
         return table.take(pa.array(feasible[non_dominated(points)]))
+
+    def _stored_front(self) -> pa.Table | None:
+        path, check = self.folder / FRONT_NAME, self.folder / FRONT_CHECK_NAME
+        try:
+            if check.read_text(encoding="utf-8") != file_checksum(path):
+                return None
+            table = read_part(path)
+        except (DamagedPartError, OSError, UnicodeDecodeError):
+            return None
+        made_of = (table.schema.metadata or {}).get(PARTS_KEY)
+        return table if made_of == parts_digest(self.folder) else None
+
+    def _part(self, path: Path, columns: Sequence[str] | None = None) -> pa.Table:
+        if path not in self._sound:  # parts never change: once is enough
+            check_part(path)
+            self._sound.add(path)
+        return read_part(path, columns)
 
     def _retried(self, read: Callable[[], pa.Table]) -> pa.Table:
         for _ in range(_TRIES - 1):
