@@ -41,10 +41,11 @@ class SlotMouth:
     compliance : array (n, K, K)
         Symmetric; couples modes of equal parity only.
     current_share : array (n, K)
-        Zero for odd modes.
+        Zero for odd modes. By reciprocity the winding's mean of A exceeds the mouth's by
+        -current_share f as well.
     permeance : array (n,)
-        (A averaged over the winding minus a_0 at the mouth) over mu0 I: the slot's leakage
-        permeance number.
+        Of A, mean over the winding minus mean over the mouth, over mu0 I with f = 0: the slot's
+        leakage permeance number.
     """
 
     compliance: FloatArray
@@ -71,19 +72,24 @@ def mouth(sections: CrossSections, modes: int) -> SlotMouth:
         middle = np.sqrt(outer * inner)[:, None]
         angle = 0.5 * sections.slot_angle(middle)[:, 0]
         length = np.log(outer / inner) / angle
-        compliance, share = _widen(compliance, share, np.log(angle / half_angle[:, step]), modes)
+        compliance, share, gain = _widen(
+            compliance, share, np.log(angle / half_angle[:, step]), modes
+        )
+        permeance += gain
         # A straight piece: f and a swap by tanh, so the compliance approaches 1/decay.
         tanh = np.tanh(decay * length[:, None])
         cosh = np.cosh(decay * length[:, None])
         divisor = identity + (decay * tanh)[:, :, None] * compliance
         top = compliance + (tanh / decay)[:, :, None] * identity
         transposed = np.swapaxes(divisor, 1, 2)
+        behind = share
         share = np.linalg.solve(transposed, share[:, :, None])[:, :, 0] / cosh
+        permeance += 0.5 * length - np.sum(behind * decay * tanh * cosh * share, axis=1)
         compliance = np.swapaxes(np.linalg.solve(transposed, np.swapaxes(top, 1, 2)), 1, 2)
-        permeance += 0.5 * length
-        compliance, share = _widen(
+        compliance, share, gain = _widen(
             compliance, share, np.log(half_angle[:, step + 1] / angle), modes
         )
+        permeance += gain
     compliance = 0.5 * (compliance + np.swapaxes(compliance, 1, 2))
     return SlotMouth(compliance=compliance, current_share=share, permeance=permeance)
 
@@ -121,18 +127,28 @@ def _body(sections: CrossSections) -> tuple[FloatArray, FloatArray]:
 
 def _widen(
     compliance: FloatArray, share: FloatArray, stretch: FloatArray, modes: int
-) -> tuple[FloatArray, FloatArray]:
-    """Change of channel width by exp(stretch), (n,), going inwards, applied to the answer."""
+) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """Change of channel width by exp(stretch), (n,), going inwards, applied to the answer.
+
+    Currents map as f' = B f + d f_0, so the potentials map by the inverse transpose: a = B^T a'
+    and, of the means, a_0 = a_0' + d a' (the power, sum of a f, is the same on both sides).
+
+    Returns
+    -------
+    compliance, share, gain
+        The first two inside the change of width; what it adds to the permeance.
+    """
     vectors, inverse, values = _dilation(modes)
     scale = np.exp(stretch[:, None] * values)  # (n, modes + 1)
     whole = np.real(np.einsum("ij,nj,jk->nik", vectors, scale, inverse))
-    currents = whole[:, 1:, 1:]
+    back = np.linalg.inv(whole[:, 1:, 1:])
     driven = whole[:, 1:, 0]
-    back = np.linalg.inv(currents)
-    share = share + np.einsum("nij,njk,nk->ni", compliance, back, driven)
+    returned = np.einsum("nij,nj->ni", back, driven)
+    raised = share + np.einsum("nij,nj->ni", compliance, returned)
     compliance = np.swapaxes(back, 1, 2) @ compliance @ back
-    share = np.einsum("nji,nj->ni", back, share)
-    return compliance, share
+    inside = np.einsum("nji,nj->ni", back, raised)
+    gain = np.sum(share * returned + inside * driven, axis=1)
+    return compliance, inside, gain
 
 
 @lru_cache(maxsize=8)
