@@ -5,8 +5,8 @@ a sum of the slot's modes, in the gap a sum of exp(j n theta); both must give th
 potential across the mouth (Galerkin mode matching; subdomain models of slotted machines, e.g.
 Dubas and Espanet, IEEE Trans. Magn. 45(5), 2009, and Lubin, Mezani, Rezzoug, IEEE Trans. Magn.
 47(2), 2011, solve one system for all slots). All slots are alike, so a discrete Fourier transform
-over the slots splits the problem: an order n meets only orders n + kQ, and each residue class of orders
-is a system of only K unknowns, K modes of one mouth.
+over the slots splits the problem: an order n meets only orders n + kQ, and each residue class of
+orders is a system of only K unknowns, K modes of one mouth.
 
 Sources: a magnet harmonic of order nu, standing still in the rotor, varies as exp(-j nu angle) in
 the stator and belongs to the class of nu; a slot current of Fourier residue s drives the class of
@@ -15,6 +15,7 @@ s. Both are linear, so a rotating machine is a sum of such answers and no positi
 
 from __future__ import annotations
 
+from copy import copy
 from dataclasses import dataclass
 
 import numpy as np
@@ -30,14 +31,13 @@ IntArray = NDArray[np.int64]
 
 @dataclass(frozen=True)
 class Iron:
-    """Magnetic voltage taken by the iron, per design (n,); all zero for perfect iron.
+    """How much magnetic voltage the iron takes, per design (n,); all zero for perfect iron.
 
     Attributes
     ----------
-    tooth : array (n,)
-        Length of air, in m, that takes the voltage of the teeth at the same radial flux.
-    yoke : array (n,)
-        mu0 H_theta at the bore over A that drives the stator yoke, 1/m.
+    tooth, yoke : arrays (n,)
+        mu0 times voltage over flux per metre, of one tooth and of one slot pitch of the stator
+        yoke.
     core_permeability : array (n,)
         Relative permeability of the rotor core; infinity for a perfect one.
     core_ratio : array (n,)
@@ -66,15 +66,14 @@ class Iron:
             depth = order * -np.log(self.core_ratio)[:, None]
         return np.asarray(recoil_permeability / self.core_permeability[:, None] / np.tanh(depth))
 
-    def stator_admittance(self, bore: FloatArray, slots: int, orders: IntArray) -> FloatArray:
-        """mu0 H_theta over A at the bore, as a layer in series with the gap, (n, v), 1/m.
+    def stator_voltage(self, slots: int, classes: IntArray) -> FloatArray:
+        """mu0 times the voltage lost around a slot over its potential a, (n, c).
 
-        The teeth count for orders that pass through whole teeth only, below half the slots.
+        Tooth j carries a_j - a_(j-1) and the yoke behind slot j carries a_j, so the path around
+        slot j loses (2 a_j - a_(j-1) - a_(j+1)) and a_j times their reluctances.
         """
-        order = np.abs(orders)
-        through = np.where(2 * order < slots, order, 0)
-        tooth = through**2 * (self.tooth / bore**2)[:, None]
-        return np.asarray(tooth + self.yoke[:, None])
+        turn = 4.0 * np.sin(np.pi * classes / slots) ** 2
+        return np.asarray(turn * self.tooth[:, None] + self.yoke[:, None])
 
 
 @dataclass(frozen=True)
@@ -83,14 +82,17 @@ class GapField:
 
     Attributes
     ----------
+    classes : array (c,) of int
     orders : array (c, w) of int
         Spatial orders, one row per class; 0 marks an entry without field.
     rising, falling : arrays (n, c, w), Wb/m
         A = sum (rising (r/bore)^|n| + falling (r/bore)^-|n|) exp(j n theta).
     slot : array (n, c), Wb/m
-        Fourier coefficient of the mean of A over the slot mouths: a_j = slot exp(j 2 pi c j / Q).
+        Fourier coefficient of the mean of A over the windings of the slots, less what the slot's
+        own current adds on the way in from the mouth: a_j = slot exp(j 2 pi c j / Q).
     """
 
+    classes: IntArray
     orders: IntArray
     rising: ComplexArray
     falling: ComplexArray
@@ -100,6 +102,10 @@ class GapField:
 class SlottedGap:
     """The slotted gap of n designs, ready to answer sources in given classes of orders.
 
+    Iron of the stator acts as a current in the slots that is minus the voltage it takes (the law
+    of the circuit around one slot), so the answer is that of perfect teeth plus a share of the
+    answer to such a current.
+
     Parameters
     ----------
     radii : RotorRadii
@@ -107,11 +113,12 @@ class SlottedGap:
         Slot opening angle at the bore, rad.
     mouth : SlotMouth
     slots : int
-    iron : Iron
     classes : array (c,) of int
         Residues (magnet orders or current residues) that will be asked for.
     reach : int
         Orders run from class - reach Q to class + reach Q.
+    iron : Iron, optional
+        Perfect if left out.
     """
 
     def __init__(
@@ -120,48 +127,80 @@ class SlottedGap:
         opening: FloatArray,
         mouth: SlotMouth,
         slots: int,
-        iron: Iron,
         classes: IntArray,
         reach: int,
+        iron: Iron | None = None,
     ) -> None:
         self.radii, self.slots, self.mouth = radii, slots, mouth
         self.half = 0.5 * opening
         self.classes = np.asarray(classes, dtype=np.int64)
         self.orders = self.classes[:, None] + slots * np.arange(-reach, reach + 1)[None, :]
-        flat = np.where(self.orders == 0, 1, self.orders).ravel()
-        rows, shape = opening.size, self.orders.shape
-        alone = response(radii, flat, iron.core_admittance(radii.recoil_permeability, flat))
-        self._stator = iron.stator_admittance(radii.bore, slots, flat)
-        self._series = 1.0 / (1.0 - alone * self._stator)
-        nonzero = (self.orders != 0).ravel()
-        self._response = np.where(nonzero, alone * self._series, 0.0).reshape(rows, *shape)
-        self._series = np.where(nonzero, self._series, 0.0).reshape(rows, *shape)
-        self._stator = self._stator.reshape(rows, *shape)
+        self._share = self.half[:, None] * mouth.current_share
         self._modes = _mode_integrals(self.half, self.orders, mouth.current_share.shape[1])
-        weighted = self._modes[..., 1:] * (self._response * slots / (2.0 * np.pi))[..., None]
-        turned = np.swapaxes(self._modes, 2, 3)
-        driven = turned[:, :, 1:, :] @ weighted
-        scale = self.half**2 * radii.bore
-        self._matrix = scale[:, None, None, None] * mouth.compliance[:, None] - driven
-        self._uniform = np.sum(
-            weighted * self._modes[..., :1], axis=2
-        )  # response of the modes to a uniform mouth field, (n, c, K)
+        self._set_iron(iron or Iron.perfect(opening.size))
+
+    def with_iron(self, iron: Iron) -> SlottedGap:
+        """The same gap with other iron."""
+        other = copy(self)
+        other._set_iron(iron)
+        return other
+
+    def _set_iron(self, iron: Iron) -> None:
+        flat = np.where(self.orders == 0, 1, self.orders).ravel()
+        admittance = iron.core_admittance(self.radii.recoil_permeability, flat)
+        alone = response(self.radii, flat, admittance).reshape(-1, *self.orders.shape)
+        self._response = np.where(self.orders != 0, alone, 0.0)
+        weighted = self._modes[..., 1:] * (self._response * self.slots / (2.0 * np.pi))[..., None]
+        driven = np.swapaxes(self._modes, 2, 3)[:, :, 1:, :] @ weighted
+        scale = self.half**2 * self.radii.bore
+        self._matrix = scale[:, None, None, None] * self.mouth.compliance[:, None] - driven
+        # Response of the modes to a uniform mouth field, (n, c, K).
+        self._uniform = np.sum(weighted * self._modes[..., :1], axis=2)
+        self._stator = iron.stator_voltage(self.slots, self.classes)
+        self._reaction: GapField | None = None
+
+    @property
+    def reaction(self) -> GapField:
+        """Field of mu0 I_j = exp(j 2 pi c j / Q) with perfect teeth and yoke, Wb/m over Wb/m."""
+        if self._reaction is None:
+            self._reaction = self._currents_alone(
+                np.full(self.classes.shape, 1.0 / MU_0, dtype=np.complex128)
+            )
+        return self._reaction
 
     def _field(self, smooth: ComplexArray | float, mouth_field: ComplexArray) -> GapField:
         """Gap harmonics from the smooth-bore potential and mouth fields mu0 h (n, c, K+1)."""
         shift = np.exp(-1j * np.pi * self.orders / self.slots)
-        driven = np.einsum("ncwk,nck->ncw", self._modes, mouth_field)
+        driven = (self._modes @ mouth_field[..., None])[..., 0]
         driven = driven * (self.slots / (2.0 * np.pi)) * shift
-        potential = smooth * self._series + self._response * driven
-        tangential = driven + self._stator * potential
+        potential = smooth + self._response * driven
         order = np.where(self.orders == 0, 1, np.abs(self.orders))
-        swing = self.radii.bore[:, None, None] / order * tangential
-        mean = np.einsum("ncw,cw,ncw->nc", potential, 1.0 / shift, self._modes[..., 0])
+        swing = self.radii.bore[:, None, None] / order * driven
+        mean = np.sum(potential / shift * self._modes[..., 0], axis=2)
+        # What the mouth's modes add on the way to the winding, by reciprocity.
+        inside = self.radii.bore[:, None] * np.einsum(
+            "nk,nck->nc", self._share, mouth_field[..., 1:]
+        )
         return GapField(
+            classes=self.classes,
             orders=self.orders,
             rising=0.5 * (potential - swing),
             falling=0.5 * (potential + swing),
-            slot=mean / (2.0 * self.half[:, None]),
+            slot=mean / (2.0 * self.half[:, None]) + inside,
+        )
+
+    def _with_stator(self, field: GapField) -> GapField:
+        """Add what the stator's iron does to the field of perfect teeth and yoke."""
+        if not np.any(self._stator):
+            return field
+        reaction = self.reaction
+        lost = self._stator * field.slot / (1.0 + self._stator * reaction.slot)
+        return GapField(
+            classes=self.classes,
+            orders=self.orders,
+            rising=field.rising - lost[:, :, None] * reaction.rising,
+            falling=field.falling - lost[:, :, None] * reaction.falling,
+            slot=field.slot - lost * reaction.slot,
         )
 
     def of_magnets(self, smooth: ComplexArray) -> GapField:
@@ -175,11 +214,12 @@ class SlottedGap:
         """
         own = self.orders == self.classes[:, None]
         wide = np.where(own, smooth[:, :, None], 0.0)
-        shift = np.exp(1j * np.pi * self.orders / self.slots)
-        load = np.einsum("ncw,cw,ncwk->nck", wide * self._series, shift, self._modes[..., 1:])
+        middle = self.orders.shape[1] // 2
+        shift = np.exp(1j * np.pi * self.classes / self.slots)
+        load = (smooth * shift)[..., None] * self._modes[:, :, middle, 1:]
         answer = np.linalg.solve(self._matrix, load[..., None])[..., 0]
         uniform = np.zeros((*load.shape[:2], 1))
-        return self._field(wide, np.concatenate([uniform, answer], axis=2))
+        return self._with_stator(self._field(wide, np.concatenate([uniform, answer], axis=2)))
 
     def of_currents(self, current: ComplexArray) -> GapField:
         """Field of slot currents.
@@ -189,11 +229,14 @@ class SlottedGap:
         current : array (c,) or (n, c), A
             Fourier coefficient of the slot currents: I_j = current exp(j 2 pi c j / Q).
         """
+        return self._with_stator(self._currents_alone(current))
+
+    def _currents_alone(self, current: ComplexArray) -> GapField:
         bore = self.radii.bore[:, None]
         current = np.broadcast_to(current, (bore.shape[0], self.classes.size))
         uniform = -MU_0 * current / (2.0 * self.half[:, None] * bore)
-        share = self.half[:, None] * self.mouth.current_share
-        load = self._uniform * uniform[..., None] - MU_0 * share[:, None, :] * current[..., None]
+        load = self._uniform * uniform[..., None]
+        load = load - MU_0 * self._share[:, None, :] * current[..., None]
         answer = np.linalg.solve(self._matrix, load[..., None])[..., 0]
         return self._field(0.0, np.concatenate([uniform[..., None], answer], axis=2))
 

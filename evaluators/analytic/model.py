@@ -131,13 +131,12 @@ class AnalyticModel:
         residues, current = self.rotation.current_residues("torque")
         control, control_current = self.rotation.current_residues("suspension")
 
-        def gap(iron: Iron, classes: NDArray[np.int64]) -> SlottedGap:
+        def gap(classes: NDArray[np.int64]) -> SlottedGap:
             return SlottedGap(
                 radii,
                 sections.slot_opening_angle,
                 slot,
                 self.rotation.slots,
-                iron,
                 classes,
                 self.resolution.reach,
             )
@@ -150,20 +149,22 @@ class AnalyticModel:
         perfect = Iron.perfect(len(sections))
         core = perfect.core_admittance(self.recoil, magnet_orders)
         smooth = source(radii, *magnetised, magnet_orders, core)
-        magnets = gap(perfect, magnet_orders).of_magnets(smooth.bore)
+        for_magnets, for_current = gap(magnet_orders), gap(residues)
+        magnets = for_magnets.of_magnets(smooth.bore)
         phasor = torque_phasor(magnets)
-        driven = gap(perfect, residues).of_currents(np.conj(phasor)[:, None] * current)
-        paths = self._paths(sections, radii, magnets, driven, smooth, perfect)
+        driven = for_current.of_currents(np.conj(phasor)[:, None] * current)
+        reaction = np.real(for_magnets.reaction.slot[:, 0])
+        paths = self._paths(sections, radii, magnets, driven, smooth, perfect, reaction)
         iron = saturate(
             sections, radii, (magnetised[0][:, :1], magnetised[1][:, :1]), paths, self.steels
         )
 
         core = iron.main.core_admittance(self.recoil, magnet_orders)
         smooth = source(radii, *magnetised, magnet_orders, core)
-        magnets = gap(iron.main, magnet_orders).of_magnets(smooth.bore)
+        magnets = for_magnets.with_iron(iron.main).of_magnets(smooth.bore)
         phasor = torque_phasor(magnets)
-        driven = gap(iron.main, residues).of_currents(np.conj(phasor)[:, None] * current)
-        suspension = gap(iron.small, control).of_currents(control_current)
+        driven = for_current.with_iron(iron.main).of_currents(np.conj(phasor)[:, None] * current)
+        suspension = gap(control).with_iron(iron.small).of_currents(control_current)
         return Waves(magnets, driven, suspension), smooth, phasor, iron
 
     def _paths(
@@ -174,6 +175,7 @@ class AnalyticModel:
         driven: GapField,
         smooth: MagnetSource,
         perfect: Iron,
+        reaction: FloatArray,
     ) -> Paths:
         fundamental = _at_order(magnets, self.rotation.pole_pairs)
         current = _at_order(driven, self.rotation.pole_pairs)
@@ -188,9 +190,11 @@ class AnalyticModel:
             perfect.core_admittance(self.recoil, order),
         )
         teeth, yoke = self.linkage.iron_flux(magnets, driven, self.rotation)
+        main = driven.classes == self.rotation.pole_pairs % self.rotation.slots
         return Paths(
-            magnet=fundamental,
-            current=current,
+            magnet=magnets.slot[:, 0],
+            current=driven.slot[:, main][:, 0],
+            reaction=reaction,
             tooth_peak=np.abs(teeth).max(axis=(1, 2)) / sections.tooth_width,
             yoke_peak=np.abs(yoke).max(axis=(1, 2)) / sections.yoke_thickness,
             core_peak=core_peak(sections, at_core, self.steels)[1],

@@ -52,13 +52,16 @@ class Paths:
     Attributes
     ----------
     magnet, current : arrays (n,), complex, Wb/m
-        Fundamental of A at the bore by the magnets and by the torque current, slotted.
+        Slot potential of the fundamental by the magnets and by the torque current.
+    reaction : array (n,)
+        Slot potential of the class of p by mu0 I_j = exp(j 2 pi p j / Q).
     tooth_peak, yoke_peak, core_peak : arrays (n,), T
         Largest mean flux densities.
     """
 
     magnet: ComplexArray
     current: ComplexArray
+    reaction: FloatArray
     tooth_peak: FloatArray
     yoke_peak: FloatArray
     core_peak: FloatArray
@@ -103,9 +106,10 @@ def saturate(
     """
     order = np.array([sections.family.pole_pairs])
     perfect = np.abs(paths.magnet + paths.current)
-    gap_peak = 2.0 * order[0] * perfect / radii.bore
-    tooth_length = sections.slot_radius - sections.bore_radius
+    slots = sections.family.slots
+    tooth_shape = (sections.slot_radius - sections.bore_radius) / sections.tooth_width
     yoke_radius = 0.5 * (sections.slot_radius + sections.outer_radius)
+    yoke_shape = 2.0 * np.pi * yoke_radius / slots / sections.yoke_thickness
     smooth_source = source(radii, *magnetisation, order, np.zeros_like(magnetisation[0])).bore[:, 0]
     smooth_response = response(radii, order, np.zeros_like(magnetisation[0]))[:, 0]
     zero = np.zeros_like(perfect)
@@ -117,8 +121,8 @@ def saturate(
         yoke = reluctivity(steels.stator, share * paths.yoke_peak)
         core = reluctivity(steels.rotor, share * paths.core_peak)
         return Iron(
-            tooth=MU_0 * tooth * tooth_length * paths.tooth_peak / gap_peak,
-            yoke=MU_0 * yoke * yoke_radius / radii.bore * paths.yoke_peak / (2.0 * perfect),
+            tooth=MU_0 * tooth * tooth_shape,
+            yoke=MU_0 * yoke * yoke_shape,
             core_permeability=1.0 / (MU_0 * core),
             core_ratio=hole,
         )
@@ -127,13 +131,11 @@ def saturate(
         """Share of flux that iron saturated by `share` lets through; falls as `share` grows."""
         state = iron(share, small=False)
         core = state.core_admittance(radii.recoil_permeability, order)
-        alone = response(radii, order, core)[:, 0]
-        stator = state.stator_admittance(radii.bore, sections.family.slots, order)[:, 0]
-        series = 1.0 / (1.0 - alone * stator)
-        driven = source(radii, *magnetisation, order, core).bore[:, 0]
-        flux = (
-            paths.magnet * driven / smooth_source + paths.current * alone / smooth_response
-        ) * series
+        # The core weakens the magnets as a smooth gap's, and currents as the rotor's response.
+        weaker = response(radii, order, core)[:, 0] / smooth_response
+        driven = source(radii, *magnetisation, order, core).bore[:, 0] / smooth_source
+        stator = state.stator_voltage(slots, order)[:, 0] * paths.reaction * weaker
+        flux = (paths.magnet * driven + paths.current * weaker) / (1.0 + stator)
         return np.asarray(np.abs(flux) / perfect)
 
     low, high = zero, np.ones_like(perfect)
