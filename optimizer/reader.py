@@ -22,6 +22,7 @@ from optimizer.parts import (
     parts_digest,
     read_part,
 )
+from optimizer.problem import IntArray
 from optimizer.schema import IDENTITY_KEY, PARTS_KEY, SCHEMA_VERSION
 
 IDENTITY_NAME = "archive.json"
@@ -121,23 +122,29 @@ class ArchiveReader:
         ArchiveError
             If it is not there.
         """
-        found = self._retried(lambda: self._find(evaluation))
+        found = self._retried(lambda: self._rows(np.array([evaluation])))
         if found.num_rows:
             values: dict[str, Any] = found.slice(0, 1).to_pylist()[0]
             return values
         msg = f"{self.folder} has no evaluation {evaluation}; it has {self.rows} rows"
         raise ArchiveError(msg)
 
-    def _find(self, evaluation: int) -> pa.Table:
+    def _rows(self, evaluations: IntArray) -> pa.Table:
+        """Return all columns of some rows, without reading the other parts in full."""
+        tables = []
         for path in part_paths(self.folder):
             try:
                 numbers = self._part(path, ["evaluation"])["evaluation"].to_numpy()
-                places = np.flatnonzero(numbers == evaluation)
+                places = np.flatnonzero(np.isin(numbers, evaluations))
                 if len(places):
-                    return self._part(path).slice(int(places[0]), 1)
+                    tables.append(self._part(path).take(pa.array(places)))
             except DamagedPartError:
                 self.damaged = tuple(sorted({*self.damaged, path}))
-        return self.schema.empty_table()
+        if not tables:
+            return self.schema.empty_table()
+        table = pa.concat_tables(tables)
+        _, first = np.unique(table["evaluation"].to_numpy(), return_index=True)
+        return table.take(pa.array(first)).combine_chunks()
 
     def _read(self, names: list[str]) -> pa.Table:
         wanted = list(dict.fromkeys([*names, "evaluation"]))
@@ -164,12 +171,13 @@ class ArchiveReader:
         if table is not None:
             return table
         names = [f"objective:{name}" for name in self.settings["objectives"]]
-        table = self._read(self.schema.names)
+        table = self._read(["evaluation", "feasible", *names])
         if not table.num_rows:
-            return table
+            return self.schema.empty_table()
         feasible = np.flatnonzero(table["feasible"].to_numpy())
         points = np.column_stack([table[name].to_numpy()[feasible] for name in names])
-        return table.take(pa.array(feasible[non_dominated(points)]))
+        numbers = table["evaluation"].to_numpy()[feasible]
+        return self._rows(numbers[non_dominated(points)])
 
     def _stored_front(self) -> pa.Table | None:
         path, check = self.folder / FRONT_NAME, self.folder / FRONT_CHECK_NAME
