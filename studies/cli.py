@@ -10,6 +10,7 @@ import click
 
 from studies.commands.check import check
 from studies.commands.compare import compare
+from studies.commands.export import export
 from studies.commands.families import families
 from studies.commands.inspect import inspect
 from studies.commands.materials import materials
@@ -83,6 +84,7 @@ for _command in (
     status,
     compare,
     inspect,
+    export,
     families,
     metrics,
     materials,

@@ -1,0 +1,1 @@
+"""Files for others: drawings, windings, materials, fronts, and data for solver and controller."""
