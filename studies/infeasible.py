@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections import Counter
 
 from studies.layout import Results
@@ -10,6 +11,7 @@ from studies.tables import number, percent, text_table
 
 SHOWN_DESIGNS = 3
 SHOWN_REASONS = 3
+NUMBER = re.compile(r"\d[\d.e+-]*")
 
 
 def explain(results: Results, family: str, designs: int = SHOWN_DESIGNS) -> str:
@@ -56,9 +58,15 @@ def explain(results: Results, family: str, designs: int = SHOWN_DESIGNS) -> str:
 
 
 def _reasons(stored: Stored) -> str:
-    """The commonest reasons of failed rows."""
-    reasons = Counter(stored.reader.table(["reason"])["reason"].to_pylist())
+    """The commonest reasons of failed rows, alike but for their numbers counted as one."""
+    examples: dict[str, str] = {}
+    counts: Counter[str] = Counter()
+    for reason in stored.reader.table(["reason"])["reason"].to_pylist():
+        kind = NUMBER.sub("#", reason)
+        counts[kind] += 1
+        examples.setdefault(kind, reason)
     common = [
-        f"  {count:,} times: {reason}" for reason, count in reasons.most_common(SHOWN_REASONS)
+        f"  {count:,} times, for example: {examples[kind]}"
+        for kind, count in counts.most_common(SHOWN_REASONS)
     ]
     return "; commonest reasons:\n" + "\n".join(common) if common else ""

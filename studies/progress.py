@@ -36,7 +36,7 @@ class ProgressLine:
     def begin(self, family: str) -> None:
         """Turn to the next family."""
         self._family = family
-        self._shown_at = time.monotonic() - (0.0 if self.terminal else PLAIN_INTERVAL_S)
+        self._shown_at = -math.inf
 
     def show(self, state: Progress) -> None:
         """Show the state if the last showing is long enough ago."""
@@ -72,19 +72,21 @@ class ProgressLine:
         done = state.evaluations
         share = state.feasible / done if done else 0.0
         later = len(self._families) - 1 - self._families.index(self._family)
-        parts = [
-            f"{self._family}  {done:,}/{state.budget:,}",
-            f"feasible {100.0 * share:.1f} %",
-            f"front {state.front_size}",
-            f"hypervolume {state.hypervolume:.3f}",
-        ]
-        if math.isfinite(state.rate) and state.rate > 0.0:
-            parts.append(f"{state.rate:.0f}/s" if state.rate >= 10.0 else f"{state.rate:.2f}/s")
-            left = duration(state.seconds_left)
+        parts = [f"{self._family}  {done:,}/{state.budget:,}"]
+        known = math.isfinite(state.rate) and state.rate > 0.0
+        if known:
+            left = f"left {duration(state.seconds_left)}"
             if later:
-                whole = state.seconds_left + later * state.budget / state.rate
-                left += f", all {duration(whole)}"
-            parts.append(f"left {left}")
+                left += f", all {duration(state.seconds_left + later * state.budget / state.rate)}"
+            parts.append(left)
+        # The most wanted stands first, because a narrow terminal cuts the end.
+        parts += [
+            f"feasible {100.0 * share:.1f} %",
+            f"hypervolume {state.hypervolume:.3f}",
+            f"front {state.front_size}",
+        ]
+        if known:
+            parts.append(f"{state.rate:.0f}/s" if state.rate >= 10.0 else f"{state.rate:.2f}/s")
         return "  ".join(parts)
 
 

@@ -227,6 +227,13 @@ class SearchSection(Section):
     population: int | None = Field(
         None, ge=4, le=10_000, description="designs of one generation; chosen if left out"
     )
+    designs_per_call: int = Field(
+        25,
+        ge=1,
+        le=10_000,
+        description="designs the evaluator gets at a time; one generation is shared among the "
+        "workers in such pieces",
+    )
     seed: int = Field(1, ge=0, le=2**31 - 1, description="seed of the search")
 
 

@@ -95,7 +95,6 @@ def search_families(results: Results, problems: dict[str, MachineProblem], worke
     line = ProgressLine(families)
     summaries: dict[str, Summary] = {}
     dispatcher: Dispatcher = Serial() if workers == 1 else Pool(workers)
-    settings = _settings(results)
     with Interruption() as interruption, writer_lock(results.folder), dispatcher:
         try:
             for family, problem in problems.items():
@@ -103,7 +102,7 @@ def search_families(results: Results, problems: dict[str, MachineProblem], worke
                 summary = run(
                     problem,
                     results.family_folder(family),
-                    _with_evaluator(settings, problem),
+                    _settings(results, problem),
                     dispatcher,
                     line.show,
                     interruption,
@@ -168,24 +167,21 @@ def changes_since_frozen(results: Results, file: str) -> list[str]:
     return changes(results.study.content, content)
 
 
-def _settings(results: Results) -> Settings:
+def _settings(results: Results, problem: MachineProblem) -> Settings:
+    study, evaluator, family = results.study, problem.evaluator, problem.task.winding.family
     return Settings(
         budget=results.request.evaluations_per_family,
         seed=results.request.seed,
-        population=results.study.search.population,
-        labels={"study": results.study.name, "study_digest": study_digest(results.study)},
-    )
-
-
-def _with_evaluator(settings: Settings, problem: MachineProblem) -> Settings:
-    evaluator, family = problem.evaluator, problem.task.winding.family
-    return Settings(
-        budget=settings.budget,
-        seed=settings.seed,
-        population=settings.population,
+        population=study.search.population,
+        chunk=study.search.designs_per_call,
         evaluator=evaluator.name,
         evaluator_version=evaluator.version,
-        labels={**settings.labels, "family": family.id, "coil_pitch": str(family.coil_pitch)},
+        labels={
+            "study": study.name,
+            "study_digest": study_digest(study),
+            "family": family.id,
+            "coil_pitch": str(family.coil_pitch),
+        },
     )
 
 

@@ -1,0 +1,234 @@
+"""Comparing families by their fronts and looking up single designs."""
+
+from __future__ import annotations
+
+import csv
+import io
+import itertools
+import json
+import re
+from collections.abc import Callable
+from pathlib import Path
+
+import numpy as np
+import pytest
+from click.testing import Result
+
+from evaluators.machine.metrics import METRICS
+from evaluators.machine.variables import VARIABLES
+from optimizer.archive import open_archive
+from studies.comparison import BINDING, REFERENCE
+from studies.inspection import CAUTIONS
+from studies.tables import csv_text, number, text_table, wide_table
+
+Run = Callable[..., Result]
+Write = Callable[..., Path]
+
+GOALS = ("loss_total_W", "cost", "ripple_index")
+
+
+@pytest.fixture
+def swept(hovergap: Run, write_study: Write) -> Path:
+    result = hovergap("sweep", write_study(), "--workers", "1")
+    assert result.exit_code == 0, result.output
+    return Path("results/small")
+
+
+def front(folder: Path) -> np.ndarray:
+    """Front by brute force: every feasible row against every other."""
+    table = open_archive(folder).table()
+    points = np.column_stack([table[f"objective:{goal}"].to_numpy() for goal in GOALS])
+    points = points[table["feasible"].to_numpy()]
+    keep = [
+        not any((other <= point).all() and (other < point).any() for other in points)
+        for point in points
+    ]
+    return np.unique(points[keep], axis=0)
+
+
+def share_below(points: np.ndarray, samples: np.ndarray) -> float:
+    """Share of sample points that some point dominates."""
+    beaten = np.zeros(len(samples), dtype=bool)
+    for point in points:
+        beaten |= (point <= samples).all(axis=1)
+    return float(beaten.mean())
+
+
+def test_comparison_numbers_against_brute_force(hovergap: Run, swept: Path) -> None:
+    result = hovergap("compare", swept, "--json")
+    assert result.exit_code == 0, result.output
+    found = json.loads(result.output)
+    families = {item["family"]: item for item in found["families"]}
+    fronts = {name: front(swept / name) for name in families}
+    joint = np.concatenate(list(fronts.values()))
+    low, high = joint.min(axis=0), joint.max(axis=0)
+    scaled = {name: (points - low) / (high - low) for name, points in fronts.items()}
+    rng = np.random.default_rng(5)
+    samples = rng.random((20_000, 3)) * REFERENCE
+    for name, item in families.items():
+        table = open_archive(swept / name).table()
+        assert item["evaluations"] == table.num_rows == 200
+        assert item["feasible_share"] == np.mean(table["feasible"].to_numpy())
+        assert item["front_size"] == len(fronts[name])
+        # Monte Carlo with 20,000 points: standard deviation at most 0.0036; four of them.
+        assert item["hypervolume"] == pytest.approx(
+            share_below(scaled[name], samples), abs=4 * 0.0036
+        )
+        for column, goal in enumerate(GOALS):
+            assert item["extremes"][goal]["value"] == fronts[name][:, column].min()
+        # Rounding of the scale only.
+        chosen = [item["compromise"]["objectives"][goal] for goal in GOALS]
+        distance = np.linalg.norm((np.array(chosen) - low) / (high - low))
+        nearest = np.linalg.norm(scaled[name], axis=1).min()
+        assert distance == pytest.approx(nearest, rel=1e-12)
+        close = table.filter(table["feasible"])
+        margins = {
+            tuple(row[f"objective:{goal}"] for goal in GOALS): row["margin:tip_speed_m_s_at_most"]
+            for row in close.to_pylist()
+        }
+        binding = np.mean([margins[tuple(point)] >= -BINDING for point in fronts[name]])
+        assert item["binding_limits"].get("tip_speed_m_s_at_most", 0.0) == binding
+    for a, b in itertools.permutations(fronts, 2):
+        weakly = (scaled[a][:, None] <= scaled[b][None]).all(axis=2)
+        assert found["coverage"][a][b] == weakly.any(axis=0).mean()
+        shift = (scaled[a][:, None] - scaled[b][None]).max(axis=2).min(axis=0).max()
+        assert found["additive_epsilon"][a][b] == pytest.approx(shift, abs=1e-12)  # rounding
+
+
+def test_dominated_family_is_said_plainly(hovergap: Run, write_study: Write) -> None:
+    """The toy's ripple grows with the slots and nothing else does: more slots are dominated."""
+    ideal = [
+        ("rotor_radius_mm = [12.0, 24.0]", "rotor_radius_mm = [12.0, 12.001]"),
+        ("current_density_A_mm2 = [2.0, 8.0]", "current_density_A_mm2 = 4.0"),
+        ("magnet_arc_ratio = [0.6, 1.0]", "magnet_arc_ratio = 0.9"),
+        ("magnet_thickness_mm = [2.0, 5.0]", "magnet_thickness_mm = 3.0"),
+    ]
+    arguments = ("--budget", "100", "--workers", "1")
+    assert hovergap("sweep", write_study(*ideal), *arguments).exit_code == 0
+    output = hovergap("compare", "results/small").output
+    assert "Q12p4s5 is dominated by Q6p2s1: every design of its front" in output
+    found = json.loads(hovergap("compare", "results/small", "--json").output)
+    assert found["dominated"] == [{"family": "Q12p4s5", "by": "Q6p2s1"}]
+
+
+def test_several_studies(hovergap: Run, write_study: Write, swept: Path) -> None:
+    other = write_study(
+        ('name = "small"', 'name = "other"'), ("seed = 3", "seed = 4"), name="o.toml"
+    )
+    assert hovergap("sweep", other, "--budget", "50", "--workers", "1").exit_code == 0
+    result = hovergap("compare", swept, "results/other", "--json")
+    labels = [item["label"] for item in json.loads(result.output)["families"]]
+    assert labels == ["small/Q6p2s1", "small/Q12p4s5", "other/Q6p2s1", "other/Q12p4s5"]
+    assert len(json.loads(hovergap("compare", swept, swept, "--json").output)["families"]) == 2
+    third = write_study(
+        ('name = "small"', 'name = "third"'), ('"cost"', '"mass_kg"'), name="t.toml"
+    )
+    assert hovergap("sweep", third, "--budget", "50", "--workers", "1").exit_code == 0
+    result = hovergap("compare", swept, "results/third")
+    assert result.exit_code == 2
+    assert "different objectives" in result.output
+
+
+def test_text_is_readable_when_piped(hovergap: Run, swept: Path) -> None:
+    output = hovergap("compare", swept).output
+    assert "\x1b" not in output
+    for words in ("Hypervolume is the share", "Coverage", "Additive epsilon", "Best of each"):
+        assert words in output
+    assert max(map(len, output.splitlines())) <= 120
+
+
+def test_csv_files(hovergap: Run, swept: Path, tmp_path: Path) -> None:
+    result = hovergap("compare", swept, "--csv", "families.csv", "--front-csv", "fronts.csv")
+    assert result.exit_code == 0
+    with Path("families.csv").open() as stream:
+        rows = list(csv.DictReader(stream))
+    assert [row["family"] for row in rows] == ["Q6p2s1", "Q12p4s5"]
+    assert float(rows[0]["best:cost"]) == front(swept / "Q6p2s1")[:, 1].min()
+    with Path("fronts.csv").open() as stream:
+        designs = list(csv.DictReader(stream))
+    assert len(designs) == sum(len(front(swept / row["family"])) for row in rows)
+    assert all(re.fullmatch(r"Q\d+p\d+s\d+-\d{6}", row["design"]) for row in designs)
+    (tmp_path / "folder").mkdir()
+    result = hovergap("compare", swept, "--csv", "folder")
+    assert result.exit_code == 1
+    assert "Traceback" not in result.output
+
+
+def test_csv_text_runs_nothing_in_a_spreadsheet() -> None:
+    text = csv_text(["a", "=b"], [["=1+1", -2.5], ["@x", float("nan")], ["plain", "+cmd"]])
+    rows = list(csv.reader(io.StringIO(text)))
+    assert rows == [["a", "'=b"], ["'=1+1", "-2.5"], ["'@x", ""], ["plain", "'+cmd"]]
+
+
+def test_inspect_shows_the_stored_design(hovergap: Run, swept: Path) -> None:
+    row = open_archive(swept / "Q12p4s5").row(42)
+    result = hovergap("inspect", swept, "Q12p4s5-000042", "--json")
+    assert result.exit_code == 0, result.output
+    found = json.loads(result.output)
+    assert found["design"] == "Q12p4s5-000042"
+    assert found["variables"] == {item.name: row[item.name] for item in VARIABLES}
+    assert found["metrics"] == {item.name: row[item.name] for item in METRICS}
+    assert found["limits"] == [
+        {
+            "metric": "tip_speed_m_s",
+            "at_most": 70.0,
+            "value": row["tip_speed_m_s"],
+            "margin": row["margin:tip_speed_m_s_at_most"],
+        }
+    ]
+    bore = row["rotor_radius_mm"] + row["clearance_mm"]
+    assert found["dimensions"]["bore_radius_mm"] == pytest.approx(bore, rel=1e-12)  # rounding
+    sides = found["winding"]["coil_sides"]
+    assert len(sides) == 2 * 12  # two layers
+    for phase, group in itertools.product("UVW", "ab"):
+        assert sum(s["phase"] == phase and s["group"] == group for s in sides) == 4
+    for side in sides:  # group b is reversed for suspension
+        turned = side["torque_direction"] != side["suspension_direction"]
+        assert turned == (side["group"] == "b")
+    text = hovergap("inspect", swept, "Q12p4s5-42").output
+    for words in ("tip_speed_m_s", "at most 70 m/s", "loss_copper_W", "coil pitch 1"):
+        assert words in text
+    flat = " ".join(text.split())
+    assert all(caution in flat for caution in CAUTIONS)
+
+
+@pytest.mark.parametrize(
+    ("design", "words"),
+    [
+        ("Q12p4s5-999999", "is not stored; the last one of Q12p4s5 is Q12p4s5-000199"),
+        ("Q12p4s4-000001", "did you mean 'Q12p4s5'?"),
+        ("nonsense", "is no design; write"),
+        ("-1", "No such option"),
+        ("../../x-1", "has no family"),
+    ],
+)
+def test_inspect_of_what_is_not_there(hovergap: Run, swept: Path, design: str, words: str) -> None:
+    result = hovergap("inspect", swept, design)
+    assert result.exit_code == 2
+    assert words in result.output
+
+
+def test_inspect_says_whether_a_design_is_on_the_front(hovergap: Run, swept: Path) -> None:
+    found = json.loads(hovergap("compare", swept, "--json").output)
+    chosen = found["families"][0]["compromise"]["design"]
+    assert "no other design of its family beats it" in hovergap("inspect", swept, chosen).output
+    table = open_archive(swept / "Q6p2s1").table(["evaluation", "feasible"])
+    broken = next(row["evaluation"] for row in table.to_pylist() if not row["feasible"])
+    output = hovergap("inspect", swept, f"Q6p2s1-{broken}").output
+    assert "breaks at least one limit" in output
+    assert re.search(r"tip_speed_m_s .* BROKEN", output)
+
+
+def test_tables() -> None:
+    table = text_table(["name", "x"], [["a", "1"], ["long", "22"]])
+    assert table.splitlines() == ["name   x", "----  --", "a      1", "long  22"]
+    wide = wide_table(["name", "first", "second"], [["a", "1", "2"]], width=12)
+    assert wide.split("\n\n") == [
+        "name  first\n----  -----\na         1",
+        "name  second\n----  ------\na          2",
+    ]
+
+
+def test_numbers() -> None:
+    shown = [number(v) for v in (0.0, 1234567.0, 12.3456, 0.000123456, 1e-9, -5.0, float("nan"))]
+    assert shown == ["0", "1234567", "12.35", "0.0001235", "1.000e-09", "-5.000", "-"]

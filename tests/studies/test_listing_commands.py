@@ -1,0 +1,197 @@
+"""Commands that need no results: families, metrics, materials, new, check, help."""
+
+from __future__ import annotations
+
+import json
+import re
+import subprocess
+import sys
+import time
+from collections.abc import Callable
+from pathlib import Path
+
+import pytest
+from click.testing import Result
+
+from evaluators.machine.metrics import METRICS
+from evaluators.machine.task import Conditions, Construction, Duty, RippleWeights
+from studies import convert
+from studies.crosschecks import Limit
+from studies.library import shipped
+from studies.schema import (
+    ConditionsSection,
+    ConstructionSection,
+    DutySection,
+    RippleSection,
+)
+
+Run = Callable[..., Result]
+
+
+def test_families_as_json(hovergap: Run) -> None:
+    result = hovergap("families", "--slots", "6,12", "--pole-pairs", "2-4", "--json")
+    assert result.exit_code == 0
+    rows = {row["family"]: row for row in json.loads(result.output)}
+    # Q6p2s1 and Q12p4s5 with tooth coils have the factor sin(60 degrees) (closed form).
+    assert {"Q6p2s1", "Q12p4s5"} <= rows.keys()
+    assert rows["Q12p4s5"] == rows["Q12p4s5"] | {
+        "slots": 12,
+        "pole_pairs": 4,
+        "suspension_pole_pairs": 5,
+        "coil_pitch": 1,
+    }
+    for name in ("Q6p2s1", "Q12p4s5"):
+        # Rounding of a sum of at most a dozen unit phasors.
+        assert rows[name]["torque_winding_factor"] == pytest.approx(0.75**0.5, abs=1e-12)
+        assert rows[name]["residual_voltage"] == pytest.approx(0.0, abs=1e-9)
+
+
+def test_families_table_with_frequency_and_refusals(hovergap: Run) -> None:
+    arguments = ("families", "--slots", "9,12", "--pole-pairs", "4", "--speed", "15000")
+    result = hovergap(*arguments, "--refused")
+    assert result.exit_code == 0
+    assert re.search(r"^Q12p4s5 .* 1000$", result.output, re.MULTILINE)  # 4 x 250 turns a second
+    assert "Q9p4s5 cannot be wound" in result.output
+
+
+@pytest.mark.parametrize("value", ["a", "12-6", "2", "1e3", "", "6,,9", "400", "99999999999999"])
+def test_families_refuses_bad_numbers(value: str, hovergap: Run) -> None:
+    result = hovergap("families", "--slots", value)
+    assert result.exit_code == 2
+    assert "--slots" in result.output
+
+
+def test_metrics_and_materials(hovergap: Run) -> None:
+    text = hovergap("metrics").output
+    assert all(metric.name in text and metric.definition in text for metric in METRICS)
+    listed = json.loads(hovergap("metrics", "--json").output)
+    assert [item["name"] for item in listed] == [metric.name for metric in METRICS]
+    assert "rotor_radius_mm" in hovergap("metrics", "--variables").output
+    names = {item["name"] for item in json.loads(hovergap("materials", "--json").output)}
+    assert {"Copper", "TiAl6V4", "42CrMo4"} <= names
+
+
+@pytest.mark.parametrize(
+    ("power", "speed", "link"),
+    [("11", "48000", "560"), ("0.05", "120000", "48"), ("250", "6000", "750"), ("2", "500", "400")],
+)
+def test_new_writes_a_study_that_checks(power: str, speed: str, link: str, hovergap: Run) -> None:
+    options = ("--power", power, "--speed", speed, "--dc-link", link)
+    result = hovergap("new", "fan.toml", *options)
+    assert result.exit_code == 0, result.output
+    text = Path("fan.toml").read_text()
+    assert "First-order sizing" in text
+    assert hovergap("check", "fan.toml").exit_code == 0
+    again = hovergap("new", "fan.toml")
+    assert again.exit_code == 2
+    assert "left alone" in again.output
+    assert Path("fan.toml").read_text() == text
+
+
+@pytest.mark.parametrize("name", ["fan", "fan.txt", ".toml", "a b.toml", "none/fan.toml"])
+def test_new_refuses_unusable_names(name: str, hovergap: Run) -> None:
+    result = hovergap("new", name)
+    assert result.exit_code in (1, 2)
+    assert len(result.output.strip().splitlines()) == 1
+    assert not Path(name).exists()
+
+
+def test_sizing_follows_its_stated_rules() -> None:
+    from studies.sizing import LENGTH_RATIO, TIP_SPEED, TORQUE_PER_VOLUME, size
+
+    slow = size(5000.0, 300.0, 1.2)
+    volume = 3.141592653589793 * slow.rotor_radius**2 * slow.stack_length
+    # Torque, volume and slenderness are exact relations, so only rounding is allowed.
+    assert slow.torque == pytest.approx(5000.0 / 300.0, rel=1e-12)
+    assert volume == pytest.approx(slow.torque / TORQUE_PER_VOLUME, rel=1e-12)
+    assert slow.stack_length == pytest.approx(LENGTH_RATIO * 2.0 * slow.rotor_radius, rel=1e-12)
+    fast = size(100e3, 6000.0, 1.2)
+    assert fast.limited_by_tip_speed
+    assert fast.tip_speed == pytest.approx(TIP_SPEED, rel=1e-12)
+    volume = 3.141592653589793 * fast.rotor_radius**2 * fast.stack_length
+    assert volume == pytest.approx(fast.torque / TORQUE_PER_VOLUME, rel=1e-12)
+
+
+def test_check_says_what_would_be_searched(hovergap: Run, write_study: Callable[..., Path]) -> None:
+    result = hovergap("check", write_study())
+    assert result.exit_code == 0
+    for words in ("Q12p4s5", "2000 ", "minimise cost", "tip_speed_m_s at most 70 m/s", "in order"):
+        assert words in result.output
+
+
+def test_check_reports_what_the_evaluator_cannot_do(
+    hovergap: Run, write_study: Callable[..., Path]
+) -> None:
+    lacking = 'name = "toy"\n[evaluator.settings]\nmetrics = ["cost", "ripple_index"]'
+    result = hovergap("check", write_study(('name = "toy"', lacking)))
+    assert result.exit_code == 2
+    assert "does not return loss_total_W, tip_speed_m_s" in result.output
+    wrong = 'name = "toy"\n[evaluator.settings]\ndelay = 1'
+    result = hovergap("check", write_study(('name = "toy"', wrong)))
+    assert result.exit_code != 0
+    assert "there is no setting 'delay'" in result.output
+
+
+@pytest.mark.parametrize("name", sorted(shipped()))
+def test_shipped_studies_check(name: str, hovergap: Run) -> None:
+    result = hovergap("check", name)
+    assert result.exit_code == 0, result.output
+    families = [line for line in result.output.splitlines() if re.match(r"Q\d+p\d+s\d+ ", line)]
+    assert len(families) >= 6
+
+
+def test_a_study_that_is_neither_file_nor_shipped(hovergap: Run) -> None:
+    result = hovergap("check", "compresor")
+    assert result.exit_code == 2
+    assert "did you mean 'compressor'?" in result.output
+
+
+def test_ranges_of_the_file_are_accepted_by_the_machine() -> None:
+    """What a key accepts at its ends, the machine's own checks accept too."""
+    builders = {
+        DutySection: convert.duty,
+        ConditionsSection: convert.conditions,
+        ConstructionSection: convert.construction,
+        RippleSection: convert.ripple,
+    }
+    base = {"power_kW": 1.0, "speed_rpm": 1000.0, "dc_link_V": 500.0}
+    for section, build in builders.items():
+        given = base if section is DutySection else {}
+        assert isinstance(
+            build(section.model_validate(given)),  # type: ignore[arg-type]
+            Duty | Conditions | Construction | RippleWeights,
+        )
+        for key, field in section.model_fields.items():
+            for item in field.metadata:
+                for end in ("ge", "le"):
+                    if hasattr(item, end):
+                        build(section.model_validate({**given, key: getattr(item, end)}))  # type: ignore[arg-type]
+
+
+def test_limit_scale_and_words() -> None:
+    assert Limit("torque_ripple", "at_most", 0.0).scale == 1.0
+    assert Limit("contact_pressure_MPa", "at_least", -2.0).scale == 2.0
+    assert Limit("mass_kg", "at_most", 3.0).text() == "mass_kg at most 3 kg"
+
+
+def test_help_is_quick_and_lists_all_commands(process: Callable[..., object]) -> None:
+    heavy = "{'numpy', 'pydantic', 'pyarrow'}"
+    code = f"import sys, studies.cli; sys.exit(bool({heavy} & set(sys.modules)))"
+    assert subprocess.run([sys.executable, "-c", code], check=False).returncode == 0
+    times = []
+    for _ in range(3):
+        begin = time.perf_counter()
+        result = process("--help")
+        times.append(time.perf_counter() - begin)
+    assert result.returncode == 0  # type: ignore[attr-defined]
+    for name in ("new", "check", "sweep", "resume", "status", "compare", "inspect", "families"):
+        assert f"  {name} " in result.stdout  # type: ignore[attr-defined]
+    # Measured 0.08 s on two slow cores; a user begins to wait at about 0.3 s.
+    assert min(times) < 0.3
+
+
+def test_unknown_commands_and_options(hovergap: Run) -> None:
+    for arguments in (("swep",), ("sweep",), ("sweep", "x.toml", "--bugdet", "1"), ("compare",)):
+        result = hovergap(*arguments)
+        assert result.exit_code == 2
+        assert "Traceback" not in result.output
