@@ -4,9 +4,16 @@ from __future__ import annotations
 
 import numpy as np
 
-from evaluators.machine.geometry import CrossSections
+from evaluators.machine.geometry import MILLI, RADII, CrossSections
 from evaluators.machine.winding import Winding
-from studies.drawing.outlines import Outline, outlines
+from studies.drawing.outlines import (
+    Loop,
+    SlotShape,
+    coil_side,
+    rotor_outlines,
+    slot_ring,
+    slot_turn,
+)
 from studies.drawing.palette import PART_COLOURS, PHASE_COLOURS, PHASE_TINTS
 from studies.drawing.svg import line, loop_path, number, outline_path, picture, scale_bar_length
 from studies.drawing.svg import text as words
@@ -35,49 +42,41 @@ def cross_section_svg(
     key : str
         Prefix of the ids inside the drawing, unique on its page: letters, digits and ``-``.
     """
-    parts = outlines(sections, row, winding)
-    outer = _millimetres(sections, "outer_radius", row)
+    shape = SlotShape.of(sections, row)
+    outer = shape.outer_radius / MILLI
     slots = winding.family.slots
     body = [
         f'<g transform="scale(1,-1)" stroke="#3A3F46" stroke-width="{number(0.004 * outer)}">',
-        *_stator(parts, slots, key, winding, outer),
-        *_rotor(parts),
+        *_stator(shape, key, winding, outer),
+        *_rotor(shape),
         "</g>",
-        *_pole_letters(sections, row),
-        *_labels(sections, row, outer),
+        *_pole_letters(shape),
+        *_labels(shape, outer),
         *_scale_bar(outer),
     ]
     half = (1.0 + MARGIN) * outer
     label = (
         f"Cross-section of {name}: {slots} slots, {winding.family.poles} magnet poles, outer "
         f"diameter {2.0 * outer:.1f} mm, bore diameter "
-        f"{2.0 * _millimetres(sections, 'bore_radius', row):.1f} mm"
+        f"{2.0 * shape.bore_radius / MILLI:.1f} mm"
     )
     box = (-half, -half, 2.0 * half + LABEL_WIDTH * outer, 2.0 * half + 0.16 * outer)
     return picture(box, label, body)
 
 
-def _millimetres(sections: CrossSections, name: str, row: int) -> float:
-    return 1e3 * float(getattr(sections, name)[row])
-
-
-def _stator(
-    parts: tuple[Outline, ...], slots: int, key: str, winding: Winding, outer: float
-) -> list[str]:
+def _stator(shape: SlotShape, key: str, winding: Winding, outer: float) -> list[str]:
     """The lamination as a ring, one slot and one coil side of each layer repeated around it."""
-    bore = float(np.hypot(*parts[1].outer.vertices[0]))  # a slot begins at the bore
-    sides = {part.number: part for part in parts if part.part == "winding"}
+    slots = shape.family.slots
+    turn = slot_turn(0, slots)
+    sides = {layer: coil_side(shape, layer, turn) for layer in (1, 2)}
     drawn = [
         "<defs>",
-        f'<path id="{key}-s" d="{loop_path(parts[1].outer)}"/>',
-        *(
-            f'<path id="{key}-l{layer}" d="{loop_path(sides[layer - 1].outer)}"/>'
-            for layer in (1, 2)
-        ),
+        f'<path id="{key}-s" d="{loop_path(slot_ring(shape, turn))}"/>',
+        *(f'<path id="{key}-l{layer}" d="{loop_path(side)}"/>' for layer, side in sides.items()),
         _signs(key, outer),
         "</defs>",
         f'<circle r="{number(outer)}" fill="{PART_COLOURS["stator"]}"/>',
-        f'<circle r="{number(bore)}" fill="{PART_COLOURS["gap"]}"/>',
+        f'<circle r="{number(shape.bore_radius / MILLI)}" fill="{PART_COLOURS["gap"]}"/>',
         f'<g fill="{PART_COLOURS["slot"]}">',
         *(_again(f"{key}-s", slot, slots) for slot in range(slots)),
         "</g>",
@@ -93,7 +92,7 @@ def _stator(
             drawn.append("</g>")
     drawn.append(f'<g stroke="#000" fill="#000" stroke-width="{number(0.008 * outer)}">')
     drawn += [
-        _sign(sides[2 * side.slot + side.layer - 1], side.torque_direction, key)
+        _sign(sides[side.layer], side.slot * 2.0 * np.pi / slots, side.torque_direction, key)
         for side in winding.coil_sides
     ]
     drawn.append("</g>")
@@ -114,10 +113,10 @@ def _signs(key: str, outer: float) -> str:
     )
 
 
-def _sign(side: Outline, direction: int, key: str) -> str:
+def _sign(side: Loop, turn: float, direction: int, key: str) -> str:
     """Placed by polar means, because a coil side may be a curved band."""
-    points = side.outer.vertices @ np.array([1.0, 1j])
-    towards = np.exp(1j * np.angle(points.sum()))
+    points = side.vertices @ np.array([1.0, 1j])
+    towards = np.exp(1j * (np.angle(points.sum()) + turn))
     middle = np.abs(points).mean() * towards
     return (
         f'<use href="#{key}-{"o" if direction > 0 else "x"}" x="{number(middle.real)}" '
@@ -125,11 +124,9 @@ def _sign(side: Outline, direction: int, key: str) -> str:
     )
 
 
-def _rotor(parts: tuple[Outline, ...]) -> list[str]:
+def _rotor(shape: SlotShape) -> list[str]:
     drawn = []
-    for part in parts:
-        if part.part in ("stator", "slot", "winding"):
-            continue
+    for part in rotor_outlines(shape):
         colour: str = part.part
         if part.part == "magnet":
             colour = "south" if part.number % 2 else "north"
@@ -139,13 +136,12 @@ def _rotor(parts: tuple[Outline, ...]) -> list[str]:
     return drawn
 
 
-def _pole_letters(sections: CrossSections, row: int) -> list[str]:
+def _pole_letters(shape: SlotShape) -> list[str]:
     """N and S in the magnets, where they are thick enough to read."""
-    inner = _millimetres(sections, "core_radius", row)
-    outer = _millimetres(sections, "magnet_radius", row)
-    poles = sections.family.poles
+    inner, outer = shape.core_radius / MILLI, shape.magnet_radius / MILLI
+    poles = shape.family.poles
     size = min(0.8 * (outer - inner), 0.5 * np.pi * (outer + inner) / poles, 0.2 * outer)
-    if size < 0.02 * _millimetres(sections, "outer_radius", row):
+    if size < 0.02 * shape.outer_radius / MILLI:
         return []
     middle = 0.5 * (inner + outer)
     angles = 2.0 * np.pi * np.arange(poles) / poles
@@ -161,22 +157,10 @@ def _pole_letters(sections: CrossSections, row: int) -> list[str]:
     ]
 
 
-def _labels(sections: CrossSections, row: int, outer: float) -> list[str]:
+def _labels(shape: SlotShape, outer: float) -> list[str]:
     """Names of the parts in a column on the right, each with a line to its part."""
-    half_pitch = np.pi / sections.family.slots
-    radius = {
-        name: _millimetres(sections, name, row)
-        for name in (
-            "shaft_radius",
-            "core_radius",
-            "magnet_radius",
-            "rotor_radius",
-            "bore_radius",
-            "wedge_radius",
-            "slot_radius",
-            "outer_radius",
-        )
-    }
+    half_pitch = np.pi / shape.family.slots
+    radius = {name: getattr(shape, name) / MILLI for name in RADII}
     # Slot nearest to 35 degrees, so that the line to its winding stays short.
     slot = (2.0 * round((0.6 / half_pitch - 1.0) / 2.0) + 1.0) * half_pitch
     places = [

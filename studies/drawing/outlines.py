@@ -11,8 +11,10 @@ Arcs about the shaft axis and straight tooth sides are exact. The sides of the w
 
 from __future__ import annotations
 
+import cmath
+import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, fields
 from functools import cached_property
 from typing import Literal
 
@@ -20,6 +22,7 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.optimize import brentq
 
+from evaluators.machine.families import Family
 from evaluators.machine.geometry import CrossSections
 from evaluators.machine.winding import Winding
 
@@ -126,49 +129,63 @@ class _Ring:
 
 @dataclass(frozen=True)
 class SlotShape:
-    """One slot about the x axis: its upper wall as points, lower wall mirrored. Metres.
+    """One slot about the x axis, and the circles around it; lengths in metres.
 
-    The wall of the slot at radius r lies at the angle pi/Q - asin(h(r)/r) from the slot's axis.
+    The wall of the slot at radius r lies at the angle pi/Q - asin(h(r)/r) from the slot's axis,
+    h being the half-width of the tooth as in `CrossSections.tooth_half_width`.
     """
 
-    sections: CrossSections
-    row: int
+    family: Family
+    shaft_radius: float
+    core_radius: float
+    magnet_radius: float
+    rotor_radius: float
+    bore_radius: float
+    tip_radius: float
+    wedge_radius: float
+    slot_radius: float
+    outer_radius: float
+    tooth_width: float
+    tip_half_width: float
+    magnet_arc_ratio: float
 
-    def value(self, name: str) -> float:
-        """A dimension of the row."""
-        return float(getattr(self.sections, name)[self.row])
+    @classmethod
+    def of(cls, sections: CrossSections, row: int) -> SlotShape:
+        """Dimensions of design `row`."""
+        names = [item.name for item in fields(cls) if item.name != "family"]
+        return cls(sections.family, **{name: float(getattr(sections, name)[row]) for name in names})
 
     def half_angle(self, radius: float) -> float:
         """Half the angle between the walls at `radius`."""
-        one = self.sections.rows(slice(self.row, self.row + 1))
-        return 0.5 * float(one.slot_angle(np.array([radius]))[0])
+        share = (radius - self.tip_radius) / (self.wedge_radius - self.tip_radius)
+        share = min(max(share, 0.0), 1.0)
+        half = self.tip_half_width + share * (0.5 * self.tooth_width - self.tip_half_width)
+        return math.pi / self.family.slots - math.asin(half / radius)
 
     def wall(self, radius: float) -> Point:
         """Point of the wall at positive angle."""
-        return complex(radius * np.exp(1j * self.half_angle(radius)))
+        return cmath.rect(radius, self.half_angle(radius))
 
     @cached_property
     def wedge_wall(self) -> list[Point]:
         """Points from tip to wedge radius, two for each arc and one."""
-        radii = np.linspace(
-            self.value("tip_radius"), self.value("wedge_radius"), 2 * WEDGE_ARCS + 1
-        )
+        radii = np.linspace(self.tip_radius, self.wedge_radius, 2 * WEDGE_ARCS + 1)
         return [self.wall(float(radius)) for radius in radii]
 
     def wound_area(self, inner: float, outer: float) -> float:
         """Area between two radii of the wound part, m2."""
-        half = 0.5 * self.value("tooth_width")
+        half = 0.5 * self.tooth_width
 
         def tooth(radius: float) -> float:
-            return float(radius**2 * np.arcsin(half / radius) + half * np.sqrt(radius**2 - half**2))
+            return radius**2 * math.asin(half / radius) + half * math.sqrt(radius**2 - half**2)
 
-        ring = np.pi / self.sections.family.slots * (outer**2 - inner**2)
-        return float(ring - (tooth(outer) - tooth(inner)))
+        ring = math.pi / self.family.slots * (outer**2 - inner**2)
+        return ring - (tooth(outer) - tooth(inner))
 
     @cached_property
     def halving_radius(self) -> float:
         """Radius that divides the wound part into equal areas."""
-        inner, outer = self.value("wedge_radius"), self.value("slot_radius")
+        inner, outer = self.wedge_radius, self.slot_radius
         half = 0.5 * self.wound_area(inner, outer)
         return float(
             brentq(lambda r: self.wound_area(inner, r) - half, inner, outer, xtol=1e-15, rtol=1e-14)
@@ -191,13 +208,12 @@ def outlines(sections: CrossSections, row: int, winding: Winding) -> tuple[Outli
     if winding.family != sections.family:
         msg = f"the winding is of {winding.family.id}, the cross-section of {sections.family.id}"
         raise ValueError(msg)
-    shape = SlotShape(sections, row)
-    value = shape.value
+    shape = SlotShape.of(sections, row)
     slots = sections.family.slots
     return (
-        Outline("stator", 0, "stator lamination", _circle(value("outer_radius")), (_bore(shape),)),
+        Outline("stator", 0, "stator lamination", _circle(shape.outer_radius), (_bore(shape),)),
         *(
-            Outline("slot", slot, f"slot {slot + 1}", _slot(shape, _slot_turn(slot, slots)))
+            Outline("slot", slot, f"slot {slot + 1}", slot_ring(shape, slot_turn(slot, slots)))
             for slot in range(slots)
         ),
         *(
@@ -205,19 +221,27 @@ def outlines(sections: CrossSections, row: int, winding: Winding) -> tuple[Outli
                 "winding",
                 2 * slot + layer - 1,
                 f"slot {slot + 1}, layer {layer}",
-                coil_side(shape, layer, _slot_turn(slot, slots)),
+                coil_side(shape, layer, slot_turn(slot, slots)),
             )
             for slot in range(slots)
             for layer in (1, 2)
         ),
-        *_magnets(shape),
-        _annulus("sleeve", "sleeve", value("rotor_radius"), value("magnet_radius")),
-        _annulus("core", "rotor core", value("core_radius"), value("shaft_radius")),
-        Outline("shaft", 0, "shaft", _circle(value("shaft_radius"))),
+        *rotor_outlines(shape),
     )
 
 
-def _slot_turn(slot: int, slots: int) -> Point:
+def rotor_outlines(shape: SlotShape) -> tuple[Outline, ...]:
+    """Magnets, sleeve, core and shaft at rotor angle 0."""
+    return (
+        *_magnets(shape),
+        _annulus("sleeve", "sleeve", shape.rotor_radius, shape.magnet_radius),
+        _annulus("core", "rotor core", shape.core_radius, shape.shaft_radius),
+        Outline("shaft", 0, "shaft", _circle(shape.shaft_radius)),
+    )
+
+
+def slot_turn(slot: int, slots: int) -> Point:
+    """Unit vector along the axis of a slot."""
     return complex(np.exp(2j * np.pi * (slot + 0.5) / slots))
 
 
@@ -235,9 +259,9 @@ def _annulus(part: Part, label: str, outer: float, inner: float) -> Outline:
 def _upper_wall(shape: SlotShape) -> list[tuple[str, list[Point]]]:
     """The wall from bore to slot bottom as straight and curved pieces."""
     return [
-        ("line", [shape.wall(shape.value("bore_radius")), shape.wedge_wall[0]]),
+        ("line", [shape.wall(shape.bore_radius), shape.wedge_wall[0]]),
         ("curve", shape.wedge_wall),
-        ("line", [shape.wedge_wall[-1], shape.wall(shape.value("slot_radius"))]),
+        ("line", [shape.wedge_wall[-1], shape.wall(shape.slot_radius)]),
     ]
 
 
@@ -262,30 +286,31 @@ def _add_walls(ring: _Ring, shape: SlotShape, turn: Point, bottom: float) -> Non
 
 def _bore(shape: SlotShape) -> Loop:
     """Bore and slots in one ring."""
-    bore, slots = shape.value("bore_radius"), shape.sections.family.slots
+    bore, slots = shape.bore_radius, shape.family.slots
     ring = _Ring()
     opening = shape.half_angle(bore)
     for slot in range(slots):
-        turn = _slot_turn(slot, slots)
-        _add_walls(ring, shape, turn, shape.value("slot_radius"))
+        turn = slot_turn(slot, slots)
+        _add_walls(ring, shape, turn, shape.slot_radius)
         # Along the face of the next tooth.
         ring.arc(turn * shape.wall(bore), 2.0 * np.pi / slots - 2.0 * opening)
     return ring.close()
 
 
-def _slot(shape: SlotShape, turn: Point) -> Loop:
+def slot_ring(shape: SlotShape, turn: Point = 1.0) -> Loop:
+    """Ring of one slot with its mouth."""
     ring = _Ring()
-    _add_walls(ring, shape, turn, shape.value("slot_radius"))
-    bore = shape.value("bore_radius")
+    _add_walls(ring, shape, turn, shape.slot_radius)
+    bore = shape.bore_radius
     ring.arc(turn * shape.wall(bore), -2.0 * shape.half_angle(bore))
     return ring.close()
 
 
 def coil_side(shape: SlotShape, layer: int, turn: Point = 1.0) -> Loop:
     """Ring of layer 1 or 2 in the slot whose axis `turn` points along."""
-    inner, outer = shape.value("wedge_radius"), shape.value("slot_radius")
+    inner, outer = shape.wedge_radius, shape.slot_radius
     ring = _Ring()
-    if shape.sections.family.coil_pitch == 1:
+    if shape.family.coil_pitch == 1:
         # Coil i ends with its go side (layer 2) in slot i, beside tooth i: the clockwise half.
         low, high = shape.half_angle(inner), shape.half_angle(outer)
         if layer == 1:
@@ -310,9 +335,9 @@ def coil_side(shape: SlotShape, layer: int, turn: Point = 1.0) -> Loop:
 
 def _magnets(shape: SlotShape) -> list[Outline]:
     """One sector for each pole, drawn at rotor angle 0."""
-    poles = shape.sections.family.poles
-    inner, outer = shape.value("core_radius"), shape.value("magnet_radius")
-    arc = 2.0 * np.pi / poles * shape.value("magnet_arc_ratio")
+    poles = shape.family.poles
+    inner, outer = shape.core_radius, shape.magnet_radius
+    arc = 2.0 * np.pi / poles * shape.magnet_arc_ratio
     found = []
     for pole in range(poles):
         turn = complex(np.exp(2j * np.pi * pole / poles))
