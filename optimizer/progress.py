@@ -71,6 +71,7 @@ class Progress:
         objective of the first 20 (or more, to the end of that generation) feasible rows; the
         worst corner is the reference point. 0 until there are so many. The box never moves,
         so the figure never falls within a study, and passes 1 once the front leaves the box.
+        From six objectives on it is an estimate.
     rate : float
         New evaluations a second over the last 30 seconds; rows taken from the archive do not
         count. NaN until one was made.
