@@ -7,11 +7,12 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from evaluators.analytic import losses, stress
+from evaluators.analytic import losses, rotor_state, stress
 from evaluators.analytic.gap import GapField, Iron, SlottedGap
 from evaluators.analytic.linkage import Linkage
 from evaluators.analytic.rotation import Rotation
-from evaluators.analytic.rotor import MU_0, MagnetSource, RotorRadii, magnetisation, source
+from evaluators.analytic.rotor import MagnetSource, RotorRadii, magnetisation, source
+from evaluators.analytic.rotor_state import at_order
 from evaluators.analytic.saturation import (
     Paths,
     SaturatedIron,
@@ -20,7 +21,7 @@ from evaluators.analytic.saturation import (
     fundamental_at_core,
     saturate,
 )
-from evaluators.analytic.slots import mouth
+from evaluators.analytic.slots import SlotMouth, mouth
 from evaluators.machine.field import Excitation, FieldSolution
 from evaluators.machine.geometry import CrossSections
 from evaluators.machine.task import Task
@@ -56,15 +57,16 @@ class Resolution:
 
 @dataclass(frozen=True)
 class Waves:
-    """Gap fields of n designs: magnets, torque current, suspension current of phasor one.
+    """Gap fields of n designs (magnets, torque current, suspension current) and their slots.
 
-    The suspension field is per ampere-turn and made with the small-signal iron; torque and magnet
-    fields hold at the duty.
+    The suspension field is that of phasor one, per ampere-turn, and made with the small-signal
+    iron; torque and magnet fields hold at the duty.
     """
 
     magnets: GapField
     current: GapField
     suspension: GapField
+    slot: SlotMouth
 
 
 @dataclass(frozen=True)
@@ -165,7 +167,7 @@ class AnalyticModel:
         phasor = torque_phasor(magnets)
         driven = for_current.with_iron(iron.main).of_currents(np.conj(phasor)[:, None] * current)
         suspension = gap(control).with_iron(iron.small).of_currents(control_current)
-        return Waves(magnets, driven, suspension), smooth, phasor, iron
+        return Waves(magnets, driven, suspension, slot), smooth, phasor, iron
 
     def _paths(
         self,
@@ -177,8 +179,8 @@ class AnalyticModel:
         perfect: Iron,
         reaction: FloatArray,
     ) -> Paths:
-        fundamental = _at_order(magnets, self.rotation.pole_pairs)
-        current = _at_order(driven, self.rotation.pole_pairs)
+        fundamental = at_order(magnets, self.rotation.pole_pairs)
+        current = at_order(driven, self.rotation.pole_pairs)
         order = np.array([self.rotation.pole_pairs])
         at_core = fundamental_at_core(
             radii,
@@ -288,15 +290,14 @@ class AnalyticModel:
         pole_pairs = self.rotation.pole_pairs
         at_core = fundamental_at_core(
             radii,
-            _at_order(waves.magnets, pole_pairs),
+            at_order(waves.magnets, pole_pairs),
             smooth.bore[:, 0],
             smooth.core[:, 0],
-            _at_order(waves.current, pole_pairs),
+            at_order(waves.current, pole_pairs),
             pole_pairs,
             iron_state.main.core_admittance(self.recoil, np.array([pole_pairs])),
         )
-        slot = mouth(sections, self.resolution.slot_modes)
-        linkage = self.linkage
+        slot, linkage = waves.slot, self.linkage
         iron = losses.iron(
             self.task, self.rotation, linkage, sections, waves, exciting, self.stacking
         )
@@ -312,7 +313,9 @@ class AnalyticModel:
             force_error_magnitude=error.max(axis=(1, 2)),
             force_error_angle=angle.max(axis=(1, 2)),
             force_per_ampere_turn=per_turn,
-            displacement_stiffness=self._stiffness(sections, waves.magnets),
+            displacement_stiffness=rotor_state.stiffness_of(
+                sections, waves.magnets, self.rotation.magnet_orders
+            ),
             flux_linkage=np.abs(linkage.magnets(waves.magnets, self.rotation.magnet_orders)),
             torque_inductance=linkage.inductance(
                 "torque", waves.current, slot.permeance, self.rotation, phasor
@@ -322,74 +325,24 @@ class AnalyticModel:
             ),
             gap_flux_density=2.0
             * pole_pairs
-            * np.abs(_at_order(waves.magnets, pole_pairs))
+            * np.abs(at_order(waves.magnets, pole_pairs))
             / sections.bore_radius,
             tooth_flux_density=iron.tooth_peak,
             yoke_flux_density=iron.yoke_peak,
             core_flux_density=core_peak(sections, at_core, self.steels)[0],
-            magnet_flux_density=self._lowest_in_magnet(sections, waves),
+            magnet_flux_density=rotor_state.lowest_magnet_density(
+                sections,
+                waves.magnets,
+                waves.current,
+                self.rotation.magnet_orders,
+                self.recoil,
+                self.remanence if self.task.construction.magnetisation == "parallel" else None,
+            ),
             loss_teeth=iron.teeth,
             loss_yoke=iron.yoke,
             loss_magnet=eddy.magnet.sum(axis=1),
             loss_sleeve=eddy.sleeve.sum(axis=1),
         )
-
-    def _stiffness(self, sections: CrossSections, magnets: GapField) -> FloatArray:
-        """Pull per eccentricity of the magnets' field, N/m per m.
-
-        Exact for concentric smooth cylinders and recoil permeability one, every magnet harmonic on
-        its own: pi B^2/(4 mu0) ((n+1)(coth((n+1)x) + 1) + (n-1)(coth((n-1)x) - 1)) with
-        x = ln(bore/core) (own derivation; thin-gap limit by Covo, AIEE Trans. 73, 1954). In a plane
-        field n = 1 has no homopolar path and keeps the first term only.
-        """
-        gap = np.log(sections.bore_radius / sections.core_radius)[:, None]
-        order = self.rotation.magnet_orders.astype(np.float64)
-        density = np.stack(
-            [
-                2.0 * n * np.abs(_at_order(magnets, int(n), column)) / sections.bore_radius
-                for column, n in enumerate(self.rotation.magnet_orders)
-            ],
-            axis=1,
-        )
-        above = (order + 1.0) * (1.0 / np.tanh((order + 1.0) * gap) + 1.0)
-        lower = np.where(order > 1.0, order - 1.0, 1.0)
-        below = np.where(order > 1.0, lower * (1.0 / np.tanh(lower * gap) - 1.0), 0.0)
-        return np.asarray(np.sum(np.pi * density**2 / (4.0 * MU_0) * (above + below), axis=1))
-
-    def _lowest_in_magnet(self, sections: CrossSections, waves: Waves) -> FloatArray:
-        """Smallest radial flux density over the magnets' outer surface at the duty, T.
-
-        Of the waves that stand still in the rotor: magnet harmonics and torque fundamental.
-        """
-        orders = self.rotation.magnet_orders
-        ratio = (sections.magnet_radius / sections.bore_radius)[:, None] ** orders
-        rising = np.stack(
-            [_at_order(waves.magnets, int(n), k, "rising") for k, n in enumerate(orders)], 1
-        )
-        falling = np.stack(
-            [_at_order(waves.magnets, int(n), k, "falling") for k, n in enumerate(orders)], 1
-        )
-        rising[:, 0] += _at_order(waves.current, int(orders[0]), None, "rising")
-        falling[:, 0] += _at_order(waves.current, int(orders[0]), None, "falling")
-        radial = 1j * orders * (rising * ratio + falling / ratio) / sections.magnet_radius[:, None]
-        share = np.linspace(-0.98, 0.98, 25)
-        half = 0.5 * np.pi * sections.magnet_arc_ratio / self.rotation.pole_pairs
-        angle = half[:, None, None] * share[:, None] * orders
-        density = 2.0 * np.real(np.einsum("nv,nsv->ns", radial, np.exp(1j * angle)))
-        return np.asarray(density.min(axis=1))
-
-
-def _at_order(
-    field: GapField, order: int, column: int | None = None, part: str = "potential"
-) -> ComplexArray:
-    """Coefficient of one order, summed over classes unless `column` names one, (n,)."""
-    rows = slice(None) if column is None else slice(column, column + 1)
-    here = field.orders[rows] == order
-    rising = np.sum(np.where(here, field.rising[:, rows], 0.0), axis=(1, 2))
-    falling = np.sum(np.where(here, field.falling[:, rows], 0.0), axis=(1, 2))
-    if part == "potential":
-        return np.asarray(rising + falling)
-    return np.asarray(rising if part == "rising" else falling)
 
 
 def _collapse(dense: ComplexArray) -> ComplexArray:

@@ -77,7 +77,7 @@ class FieldSolution:
     gap_flux_density, tooth_flux_density, yoke_flux_density, core_flux_density : T
         Peak fundamental of the magnets at the bore; largest mean densities at the duty.
     magnet_flux_density : T
-        Smallest radial density over the magnets' outer surface at the duty.
+        Smallest density along the magnetisation over the magnets' outer surface at the duty.
     loss_teeth, loss_yoke, loss_magnet, loss_sleeve : W/m
         At the duty.
     """

@@ -177,7 +177,7 @@ METRICS: tuple[Metric, ...] = (
         "magnet_flux_density_T",
         "T",
         "field",
-        "smallest radial flux density over the magnets' outer surface at the duty",
+        "smallest flux density along the magnetisation over the magnets' outer surface at the duty",
         DESIGN,
         False,
     ),
