@@ -140,7 +140,7 @@ class Rotation:
         return reduce(gcd, (abs(d) for d in differences), 0) or 1
 
     def positions(self, per_sixth_period: int) -> FloatArray:
-        """Rotor angles over one sector, rad; at least `per_sixth_period` in 60 electrical degrees."""
+        """Rotor angles over one sector, rad; `per_sixth_period` or more in 60 electrical deg."""
         count = -(-per_sixth_period * 6 * self.pole_pairs // self.sectors)
         return np.asarray(2.0 * np.pi / self.sectors * np.arange(count) / count)
 
