@@ -17,9 +17,10 @@ from studies.commands.materials import materials
 from studies.commands.metrics import metrics
 from studies.commands.new import new
 from studies.commands.resume import resume
+from studies.commands.sensitivity import sensitivity
 from studies.commands.status import status
 from studies.commands.sweep import sweep
-from studies.errors import EXIT_FAILED, EXIT_INTERRUPTED, StudiesError
+from studies.errors import EXIT_BAD_INPUT, EXIT_FAILED, EXIT_INTERRUPTED, StudiesError
 
 
 class _Program(click.Group):
@@ -47,28 +48,46 @@ class _Program(click.Group):
             click.echo("stopped", err=True)
             ctx.exit(EXIT_INTERRUPTED)
         except Exception as error:
-            text = _expected(error)
-            if text is None:
+            expected = _expected(error)
+            if expected is None:
                 raise
-            click.echo(text, err=True)
-            ctx.exit(EXIT_FAILED)
+            click.echo(expected[0], err=True)
+            ctx.exit(expected[1])
 
 
-def _expected(error: Exception) -> str | None:
-    """One sentence for an error that a lower room raised on purpose, None for a defect."""
+def _expected(error: Exception) -> tuple[str, int] | None:
+    """Sentence and exit code for an error that a lower room raised on purpose, else None."""
     from evaluators.interface import EvaluatorError
     from optimizer.errors import OptimizerError
 
-    if isinstance(error, EvaluatorError | OptimizerError):
-        return str(error)
+    if isinstance(error, EvaluatorError):
+        return str(error), EXIT_BAD_INPUT
+    if isinstance(error, OptimizerError):
+        return str(error), EXIT_FAILED
     if isinstance(error, OSError) and error.strerror:
         place = f"{error.filename}: " if error.filename else ""
-        return f"{place}{error.strerror.lower()}"
+        return f"{place}{error.strerror.lower()}", EXIT_FAILED
     return None
 
 
+def _show_version(context: click.Context, parameter: click.Parameter, wanted: bool) -> None:
+    del parameter
+    if wanted:
+        from studies.layout import program_version
+
+        click.echo(f"hovergap {program_version()}")
+        context.exit()
+
+
 @click.group(cls=_Program, context_settings={"help_option_names": ["-h", "--help"]})
-@click.version_option(package_name="hovergap", prog_name="hovergap")
+@click.option(
+    "--version",
+    is_flag=True,
+    is_eager=True,
+    expose_value=False,
+    callback=_show_version,
+    help="Show the version.",
+)
 def main() -> None:
     """Search bearingless permanent-magnet machines: families, windings, cross-sections, fronts.
 
@@ -85,6 +104,7 @@ for _command in (
     compare,
     inspect,
     export,
+    sensitivity,
     families,
     metrics,
     materials,

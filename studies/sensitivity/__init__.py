@@ -1,0 +1,1 @@
+"""How strongly a design's metrics follow from each variable, near the design and over the box."""
