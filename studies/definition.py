@@ -138,8 +138,16 @@ def load_study(file: FilePath) -> Study:
     return study_from(read_bytes(file), str(file))
 
 
-def study_from(content: bytes, file: str) -> Study:
-    """Check the content of a study file; `file` is the name used in messages.
+def study_from(content: bytes, file: str, stored: bool = False) -> Study:
+    """Check the content of a study file.
+
+    Parameters
+    ----------
+    content : bytes
+    file : str
+        Name used in messages.
+    stored : bool
+        Whether it is the copy in a results folder, which can be read without its evaluator.
 
     Raises
     ------
@@ -147,16 +155,17 @@ def study_from(content: bytes, file: str) -> Study:
         With every mistake found.
     """
     table, lines = parse(content, file)
-    return _Reader(table, lines, file).study(content)
+    return _Reader(table, lines, file, stored).study(content)
 
 
 class _Reader:
     """Collects findings while the sections are read one by one."""
 
-    def __init__(self, table: Table, lines: Positions, file: str) -> None:
+    def __init__(self, table: Table, lines: Positions, file: str, stored: bool) -> None:
         self.table = table
         self.lines = lines
         self.file = file
+        self.stored = stored
         self.findings: list[Finding] = []
 
     def study(self, content: bytes) -> Study:
@@ -197,7 +206,7 @@ class _Reader:
         if self.findings:
             raise StudyFileError(self.file, self._placed())
         head = cast("StudySection", head)
-        return Study(
+        study = Study(
             name=head.name,
             description=head.description,
             file=self.file,
@@ -216,6 +225,24 @@ class _Reader:
             search=cast("SearchSection", search),
             evaluator=cast("EvaluatorSection", evaluator),
         )
+        self._fitting_together(study)
+        return study
+
+    def _fitting_together(self, study: Study) -> None:
+        """Let the machine's room check what it checks across sections."""
+        try:
+            for family in study.families:
+                study.task(family)
+        except ValueError as error:
+            self.findings.append(self._spoken(str(error)))
+            raise StudyFileError(self.file, self._placed()) from None
+
+    def _spoken(self, text: str, key: str = "") -> Finding:
+        """A finding from a text such as ``duty: speed = ... must ...``."""
+        owner, colon, rest = text.partition(": ")
+        if colon and owner in SECTIONS:
+            return Finding((owner,), rest)
+        return Finding((key,) if key else (), text)
 
     def _placed(self) -> list[Finding]:
         placed = [
@@ -240,7 +267,7 @@ class _Reader:
         try:
             return builder(section)
         except ValueError as error:
-            self.findings.append(Finding((key,), str(error)))
+            self.findings.append(self._spoken(str(error), key))
             return None
 
     def _materials(self, section: MaterialsSection | None) -> MaterialSet | None:
@@ -267,7 +294,7 @@ class _Reader:
         if section is None:
             return None
         known = sorted(installed())
-        if section.name not in known:
+        if section.name not in known and not self.stored:
             problem = unknown("evaluator", section.name)
             remedy = suggest(section.name, known) if known else "none is installed"
             self.findings.append(Finding(("evaluator", "name"), problem, remedy))

@@ -129,7 +129,7 @@ def open_results(folder: Path) -> Results:
             msg = f"{folder}: holds no {STUDY_FILE}, so it is no results folder of a study{listing}"
             raise ResultsError(msg)
         content = file.read_bytes()
-    study = study_from(content, str(file))
+    study = study_from(content, str(file), stored=True)
     return Results(folder, study, _request(folder, study))
 
 

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import Any
 
-from optimizer.errors import ArchiveError
+from optimizer.errors import ArchiveError, ArchiveLockedError
 from optimizer.lock import LOCK_NAME, writer_lock
 from studies.layout import Results
 from studies.stored import stored_families
@@ -61,5 +61,7 @@ def being_written(results: Results) -> bool:
     try:
         with writer_lock(results.folder):
             return False
-    except ArchiveError:
+    except ArchiveLockedError:
         return True
+    except ArchiveError:  # a folder that may only be read is not written by this user either
+        return False

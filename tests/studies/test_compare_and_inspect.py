@@ -129,6 +129,16 @@ def test_several_studies(hovergap: Run, write_study: Write, swept: Path) -> None
     assert "different objectives" in result.output
 
 
+def test_results_are_read_without_the_evaluator(hovergap: Run, swept: Path) -> None:
+    frozen = swept / "study.toml"
+    frozen.write_text(frozen.read_text().replace('name = "toy"', 'name = "sold"'))
+    for arguments in (("compare", swept), ("inspect", swept, "Q6p2s1-0"), ("status", swept)):
+        assert hovergap(*arguments).exit_code == 0
+    result = hovergap("resume", swept)
+    assert result.exit_code == 2
+    assert "no evaluator is called 'sold'" in result.output
+
+
 def test_text_is_readable_when_piped(hovergap: Run, swept: Path) -> None:
     output = hovergap("compare", swept).output
     assert "\x1b" not in output

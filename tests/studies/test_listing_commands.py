@@ -128,7 +128,7 @@ def test_check_reports_what_the_evaluator_cannot_do(
     assert "does not return loss_total_W, tip_speed_m_s" in result.output
     wrong = 'name = "toy"\n[evaluator.settings]\ndelay = 1'
     result = hovergap("check", write_study(('name = "toy"', wrong)))
-    assert result.exit_code != 0
+    assert result.exit_code == 2
     assert "there is no setting 'delay'" in result.output
 
 
@@ -188,6 +188,28 @@ def test_help_is_quick_and_lists_all_commands(process: Callable[..., object]) ->
         assert f"  {name} " in result.stdout  # type: ignore[attr-defined]
     # Measured 0.08 s on two slow cores; a user begins to wait at about 0.3 s.
     assert min(times) < 0.3
+
+
+def test_version(hovergap: Run) -> None:
+    result = hovergap("--version")
+    assert result.exit_code == 0
+    assert re.fullmatch(r"hovergap (\d+\.\d+\.\d+\S*|unknown)\n", result.output)
+
+
+def test_reader_of_a_pipe_may_leave(process: Callable[..., object]) -> None:
+    """As in `hovergap metrics | head -1`; the text is longer than a pipe holds."""
+    lines = "import sys, studies.cli\nsys.argv = ['hovergap', 'metrics', '--json']\n"
+    code = f"{lines}for _ in range(20):\n    studies.cli.main(standalone_mode=False)"
+    child = subprocess.Popen(
+        [sys.executable, "-c", code], stdout=subprocess.PIPE, stderr=subprocess.PIPE, text=True
+    )
+    assert child.stdout is not None
+    child.stdout.readline()
+    child.stdout.close()
+    assert child.stderr is not None
+    errors = child.stderr.read()
+    child.wait(timeout=60)
+    assert "Traceback" not in errors
 
 
 def test_unknown_commands_and_options(hovergap: Run) -> None:

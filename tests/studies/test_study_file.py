@@ -330,3 +330,16 @@ def test_damaged_text_never_ends_in_anything_but_a_study_error(
     except StudyFileError as error:
         message = str(error)
     assert all(line.startswith("damaged.toml") for line in message.splitlines())
+
+
+def test_what_only_the_whole_task_shows_is_placed_too(
+    write_study: Write, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    def refuse(**parts: object) -> None:
+        msg = "materials: this magnet does not go with this shaft"
+        raise ValueError(msg)
+
+    monkeypatch.setattr("studies.definition.Task", refuse)
+    file = write_study()
+    expected = f"{file}:{line_of(file, '[materials]')}: materials: this magnet does not go"
+    assert mistakes(file)[0].startswith(expected)
