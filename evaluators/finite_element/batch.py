@@ -1,0 +1,319 @@
+"""The field of LANES designs at all rotor positions: torque field, suspension, displacement."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Protocol, TypeVar
+
+import numpy as np
+from numpy.typing import NDArray
+
+from evaluators.finite_element import mesh, newton, rotor
+from evaluators.finite_element.factor import Pattern
+from evaluators.finite_element.gap import GapCoupling
+from evaluators.finite_element.lanes import LANES
+from evaluators.finite_element.model import FieldModel
+from evaluators.finite_element.symmetry import Sector
+from evaluators.finite_element.system import System, Topology, slot_load
+from evaluators.machine.geometry import CrossSections
+
+FloatArray = NDArray[np.float64]
+ComplexArray = NDArray[np.complex128]
+IntArray = NDArray[np.int64]
+BoolArray = NDArray[np.bool_]
+Field = TypeVar("Field", FloatArray, ComplexArray)
+
+
+class SolverFactory(Protocol):
+    """Makes the linear solver of a pattern."""
+
+    def __call__(self, pattern: Pattern) -> newton.LinearSolver:
+        """Solver for all matrices of `pattern`."""
+        ...
+
+
+@dataclass(frozen=True)
+class Waves:
+    """Field on the bore at some rotor positions, two-sided Fourier coefficients.
+
+    Attributes
+    ----------
+    angles : array (t,)
+        Rotor positions, rad.
+    orders : array (m,)
+        Positive orders.
+    potential, tangential : arrays (t, m, LANES)
+        Coefficients of A and of h = -r H_phi on the gap side of the bore.
+    """
+
+    angles: FloatArray
+    orders: IntArray
+    potential: ComplexArray
+    tangential: ComplexArray
+
+
+@dataclass(frozen=True)
+class Solution:
+    """Torque field at some rotor positions.
+
+    Attributes
+    ----------
+    nodes : array (t, size, LANES)
+        Potential, Wb/m.
+    linkage : array (t, slots, LANES)
+        Potential averaged over the wound part of each slot of the sector, Wb/m.
+    waves : Waves
+        Orders of the sector's class.
+    converged : array (LANES,)
+    """
+
+    nodes: FloatArray
+    linkage: FloatArray
+    waves: Waves
+    converged: BoolArray
+
+
+@dataclass(frozen=True)
+class Perturbation:
+    """Small fields on top of a torque field, at some rotor positions.
+
+    Attributes
+    ----------
+    waves : Waves
+        Potential per unit of the complex cause; as the causes are complex, positive and negative
+        orders are independent: `orders` runs over both.
+    linkage : array (t, slots, LANES), complex
+    """
+
+    waves: Waves
+    linkage: ComplexArray
+    nodes: ComplexArray
+
+
+class BatchField:
+    """Field of one batch of LANES cross-sections of a model's family.
+
+    Parameters
+    ----------
+    model : FieldModel
+    sections : CrossSections
+        LANES designs.
+    make_solver : SolverFactory
+        Batched LDL^T by default; `reference.SciPySolver` is the slow path held against it.
+    """
+
+    def __init__(
+        self,
+        model: FieldModel,
+        sections: CrossSections,
+        make_solver: SolverFactory = newton.BatchSolver,
+    ) -> None:
+        self.model, self.sections, self.make_solver = model, sections, make_solver
+        self.mesh = mesh.build(sections, model.discretisation.resolution)
+        self.gap = GapCoupling(self.mesh.angle[0], model.slots, model.orders)
+        rings = model.discretisation.iron_rings
+        share = np.arange(1, rings + 1)[:, None] / rings
+        shaft, core = sections.shaft_radius, sections.core_radius
+        self.rotor = rotor.Rotor(
+            iron_radius=np.concatenate([shaft * share, shaft + (core - shaft) * share]),
+            magnet_radius=sections.magnet_radius,
+            sleeve_radius=sections.rotor_radius,
+            bore_radius=sections.bore_radius,
+            magnet_permeability=model.recoil,
+            sleeve_permeability=float(model.task.materials.sleeve.relative_permeability.value),
+        )
+        self.remanence = tuple(
+            model.remanence * item
+            for item in rotor.magnetisation(
+                sections.magnet_arc_ratio,
+                model.pole_pairs,
+                model.magnet_orders,
+                model.task.construction.magnetisation,
+            )
+        )
+        self.torque_system = System(model.torque, self.mesh, model.stator_curve)
+        self.torque_solver = make_solver(model.torque.pattern)
+        self.load = slot_load(self.mesh, model.torque.lattice)
+        self.response = np.zeros((model.orders + 1, LANES))
+        self.source = np.zeros((model.magnet_orders.size, LANES), dtype=np.complex128)
+        small, _ = model.rotor_curve.reluctivity(1.0)
+        self.set_rotor_iron(np.full((2 * rings, LANES), float(small)))
+
+    # -- sources ------------------------------------------------------------------------------
+
+    def set_rotor_iron(self, reluctivity: FloatArray) -> None:
+        """Take over the reluctivity of the iron rings, (k, LANES) m/H."""
+        self.reluctivity = reluctivity
+        y, radial, tangential = self.rotor.at_bore(np.arange(1, self.model.orders + 1), reluctivity)
+        self.response[1:] = y
+        row = self.model.magnet_orders - 1
+        self.source = np.asarray(
+            -1j * (radial[row] * self.remanence[0] + tangential[row] * self.remanence[1])
+        )
+        self.gap.set_response(self.response)
+        self.torque_system.set_gap(self.gap.stiffness(self.model.symmetry.torque))
+
+    def magnet_load(self, angles: FloatArray) -> FloatArray:
+        """Right-hand side of the magnets at rotor `angles` (t,), (t, slots, 2 C, LANES)."""
+        model = self.model
+        slots = model.symmetry.torque.slots
+        relative = angles[:, None] - model.pitch * np.arange(slots)
+        load = self.gap.source_load(self.source, model.magnet_orders, relative.ravel())
+        return load.reshape(angles.size, slots, *load.shape[1:])
+
+    def torque_currents(self, angles: FloatArray, ampere_turns: FloatArray) -> FloatArray:
+        """Slot currents of the torque sector, (t, slots, LANES), A."""
+        model = self.model
+        phasor = np.exp(1j * (model.pole_pairs * angles + model.symmetry.torque_phase))
+        slot = model.task.winding.torque_slot_mmf[: model.symmetry.torque.slots]
+        return np.real(np.outer(phasor, slot))[:, :, None] * ampere_turns
+
+    def add_currents(self, load: FloatArray, topology: Topology, currents: FloatArray) -> None:
+        """Add slot currents (slots, LANES) to a right-hand side (size, LANES)."""
+        for nodes, current in zip(topology.slot_nodes, currents, strict=True):
+            np.add.at(load, nodes, self.load * current)
+
+    # -- torque field -------------------------------------------------------------------------
+
+    def solve(
+        self, angles: FloatArray, ampere_turns: FloatArray, start: FloatArray | None = None
+    ) -> Solution:
+        """Torque field at rotor `angles` (t,), each started from those before.
+
+        `ampere_turns` (LANES,) are the peak ampere-turns of a coil, zero for no load.
+        """
+        model = self.model
+        topology = model.torque
+        magnets = self.magnet_load(angles)
+        currents = self.torque_currents(angles, ampere_turns)
+        nodes = np.empty((angles.size, topology.size, LANES))
+        converged = np.ones(LANES, dtype=np.bool_)
+        for t in range(angles.size):
+            load = np.zeros((topology.size, LANES))
+            load[topology.lattice.bore] = magnets[t]
+            self.add_currents(load, topology, currents[t])
+            if t >= 3:
+                guess = 3.0 * (nodes[t - 1] - nodes[t - 2]) + nodes[t - 3]
+            elif t == 2:
+                guess = 2.0 * nodes[1] - nodes[0]
+            elif t == 1:
+                guess = nodes[0]
+            else:
+                guess = np.zeros_like(load) if start is None else start
+            nodes[t], state = newton.solve(
+                self.torque_system, self.torque_solver, guess, load, model.discretisation.newton
+            )
+            converged &= state.converged
+        return Solution(
+            nodes, self.slot_means(topology, nodes), self.torque_waves(angles, nodes), converged
+        )
+
+    def settle_rotor_iron(
+        self, angle: float, ampere_turns: FloatArray, rounds: int = 3
+    ) -> FloatArray:
+        """Find the reluctivity of the rotor's iron at the duty; returns the field, (size, LANES).
+
+        The field of the lowest magnet orders stands still in the rotor; slotting is left out.
+        """
+        model = self.model
+        orders = model.magnet_orders[:3]
+        start: FloatArray | None = None
+        for _ in range(rounds):
+            solution = self.solve(np.array([angle]), ampere_turns, start)
+            start = solution.nodes[0]
+            inside = self.rotor_field(orders, solution.waves)
+            square = rotor.mean_square_density(inside, self.rotor, orders, self.reluctivity)
+            half = model.discretisation.iron_rings
+            self.set_rotor_iron(
+                np.concatenate(
+                    [
+                        model.shaft_curve.reluctivity(square[:half])[0],
+                        model.rotor_curve.reluctivity(square[half:])[0],
+                    ]
+                )
+            )
+        if start is None:
+            msg = "rounds must be at least 1"
+            raise ValueError(msg)
+        return start
+
+    def slot_means(self, topology: Topology, nodes: Field) -> Field:
+        """Mean potential over the wound part of each slot, (..., slots, LANES)."""
+        local: Field = nodes[..., topology.slot_nodes, :]
+        result: Field = np.einsum("...scal,cal->...sl", local, self.load)
+        return result
+
+    # -- waves --------------------------------------------------------------------------------
+
+    def torque_waves(self, angles: FloatArray, nodes: FloatArray) -> Waves:
+        """Fourier coefficients of the torque field on the bore."""
+        model = self.model
+        sector = model.symmetry.torque
+        orders = self.gap.class_orders(sector)
+        orders = orders[orders <= self.highest_wave]
+        bore = nodes[:, model.torque.lattice.bore]
+        potential = self.gap.coefficients(bore, sector, orders)
+        tangential = self.response[orders] * potential
+        magnet = np.searchsorted(orders, model.magnet_orders[model.magnet_orders <= orders[-1]])
+        turned = np.exp(-1j * np.outer(angles, orders[magnet]))
+        tangential[:, magnet] += turned[:, :, None] * self.source[: magnet.size]
+        return Waves(angles, orders, potential, tangential)
+
+    @property
+    def highest_wave(self) -> int:
+        """Highest order evaluated for torque and force; beyond, the rotor hardly answers."""
+        return min(self.model.orders, 12 * self.model.slots)
+
+    def rotor_field(self, orders: IntArray, waves: Waves) -> rotor.Inside:
+        """Field in the rotor of some magnet orders, averaged over the positions."""
+        place = np.searchsorted(waves.orders, orders)
+        turned = np.exp(1j * np.outer(waves.angles, orders))[:, :, None]
+        mean = (waves.potential[:, place] * turned).mean(axis=0)
+        magnet = np.searchsorted(self.model.magnet_orders, orders)
+        return self.rotor.inside(
+            orders,
+            self.reluctivity,
+            self.remanence[0][magnet],
+            self.remanence[1][magnet],
+            mean,
+        )
+
+    # -- small fields on top ------------------------------------------------------------------
+
+    def suspension_system(self) -> tuple[System, newton.LinearSolver]:
+        """Equations and solver of the sector of the suspension field."""
+        system = System(self.model.suspension, self.mesh, self.model.stator_curve)
+        system.set_gap(self.gap.stiffness(self.model.symmetry.suspension))
+        return system, self.make_solver(self.model.suspension.pattern)
+
+    def perturb(
+        self,
+        system: System,
+        solver: newton.LinearSolver,
+        angles: FloatArray,
+        nodes: FloatArray,
+        loads: list[tuple[FloatArray, FloatArray]],
+    ) -> ComplexArray:
+        """Solve with the tangent of a torque field for complex loads, (t, size, LANES).
+
+        `loads` gives real and imaginary part per position, each (size, LANES).
+        """
+        source, factor = self.model.to_suspension
+        result = np.empty((angles.size, system.topology.size, LANES), dtype=np.complex128)
+        nothing = np.zeros((system.topology.size, LANES))
+        for t in range(angles.size):
+            potential = nodes[t][source] * factor[:, None]
+            _, values = system.tangent(potential, nothing)
+            solver.factorise(values)
+            real, imag = loads[t]
+            result[t] = solver.solve(real) + 1j * solver.solve(imag)
+        return result
+
+    def coefficients_both_sides(
+        self, nodes: ComplexArray, sector: Sector, lattice_bore: IntArray, orders: IntArray
+    ) -> tuple[ComplexArray, ComplexArray]:
+        """Coefficients of positive and of negative `orders` of a complex field on the bore."""
+        bore = nodes[:, lattice_bore]
+        real = self.gap.coefficients(bore.real, sector, orders)
+        imag = self.gap.coefficients(bore.imag, sector, orders)
+        return real + 1j * imag, np.conj(real) + 1j * np.conj(imag)

@@ -1,0 +1,142 @@
+"""What one task and one resolution fix: sectors, topologies, positions, materials."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field, replace
+from functools import cached_property
+
+import numpy as np
+from numpy.typing import NDArray
+
+from evaluators.finite_element import newton
+from evaluators.finite_element.lattice import Lattice, Resolution
+from evaluators.finite_element.symmetry import Symmetry, symmetry
+from evaluators.finite_element.system import CurveTable, Topology
+from evaluators.machine.task import Task
+
+FloatArray = NDArray[np.float64]
+IntArray = NDArray[np.int64]
+
+
+@dataclass(frozen=True)
+class Discretisation:
+    """How finely space and time are divided.
+
+    Attributes
+    ----------
+    resolution : Resolution
+        Of the stator mesh.
+    positions : int
+        Rotor positions in 60 electrical degrees with current.
+    cogging_positions : int
+        Rotor positions in one cogging period without current.
+    orders_per_slot : int
+        Highest Fourier order on the bore over the number of slots.
+    iron_rings : int
+        Rings into which shaft and rotor core each are divided.
+    newton : newton.Settings
+    """
+
+    resolution: Resolution = field(default_factory=Resolution)
+    positions: int = 12
+    cogging_positions: int = 8
+    orders_per_slot: int = 40
+    iron_rings: int = 3
+    newton: newton.Settings = field(default_factory=newton.Settings)
+
+    def __post_init__(self) -> None:
+        limits = {
+            "positions": (4, 240),
+            "cogging_positions": (4, 240),
+            "orders_per_slot": (8, 400),
+            "iron_rings": (1, 20),
+        }
+        for name, (low, high) in limits.items():
+            value = getattr(self, name)
+            if not low <= value <= high:
+                msg = f"{name} = {value} must lie between {low} and {high}"
+                raise ValueError(msg)
+
+    def refined(self, factor: int) -> Discretisation:
+        """Mesh and steps `factor` times as fine."""
+        return replace(
+            self,
+            resolution=self.resolution.refined(factor),
+            positions=factor * self.positions,
+            cogging_positions=factor * self.cogging_positions,
+            orders_per_slot=factor * self.orders_per_slot,
+        )
+
+
+class FieldModel:
+    """Everything of a task that does not depend on the design; made once, used for all batches."""
+
+    def __init__(self, task: Task, discretisation: Discretisation) -> None:
+        self.task = task
+        self.discretisation = discretisation
+        family = task.winding.family
+        self.slots, self.pole_pairs = family.slots, family.pole_pairs
+        self.pitch = 2.0 * np.pi / family.slots
+        self.symmetry: Symmetry = symmetry(task.winding)
+        self.orders = discretisation.orders_per_slot * family.slots
+        materials, conditions = task.materials, task.conditions
+        self.stacking = float(materials.stator_steel.stacking_factor.value)
+        self.stator_curve = CurveTable.of(
+            materials.stator_steel.magnetization.laminated(self.stacking)
+        )
+        self.rotor_curve = materials.rotor_steel.magnetization.laminated(
+            float(materials.rotor_steel.stacking_factor.value)
+        )
+        self.shaft_curve = materials.shaft.magnetization
+        self.remanence = float(materials.magnet.remanence.at(conditions.magnet_temperature))
+        self.recoil = float(materials.magnet.recoil_permeability.at(conditions.magnet_temperature))
+
+    @cached_property
+    def torque(self) -> Topology:
+        """Topology of the sector of the torque field."""
+        sector = self.symmetry.torque
+        return Topology(Lattice(self.discretisation.resolution, sector.slots, sector.sign))
+
+    @cached_property
+    def suspension(self) -> Topology:
+        """Topology of the sector of the suspension field."""
+        sector = self.symmetry.suspension
+        return Topology(Lattice(self.discretisation.resolution, sector.slots, sector.sign))
+
+    @cached_property
+    def to_suspension(self) -> tuple[IntArray, FloatArray]:
+        """Unknown of the torque sector behind each one of the suspension sector, and its sign."""
+        small, large = self.torque.lattice, self.suspension.lattice
+        sign = self.symmetry.torque.sign
+        source = np.empty(large.size, dtype=np.int64)
+        factor = np.empty(large.size)
+        column = np.arange(large.columns)
+        number = np.broadcast_to(small.node[:, column % small.columns], large.node.shape)
+        turns = np.broadcast_to(float(sign) ** (column // small.columns), large.node.shape)
+        there = large.node >= 0
+        source[large.node[there]] = number[there]
+        factor[large.node[there]] = turns[there]
+        return source, factor
+
+    @property
+    def sixth(self) -> float:
+        """Rotor angle of 60 electrical degrees, rad."""
+        return float(np.pi / (3 * self.pole_pairs))
+
+    @cached_property
+    def angles(self) -> FloatArray:
+        """Rotor positions with current, rad: 60 electrical degrees."""
+        count = self.discretisation.positions
+        return np.asarray(self.sixth * np.arange(count) / count)
+
+    @cached_property
+    def cogging_angles(self) -> FloatArray:
+        """Rotor positions without current, rad: one cogging period."""
+        count = self.discretisation.cogging_positions
+        period = 2.0 * np.pi / self.task.winding.family.cogging_periods
+        return np.asarray(period * np.arange(count) / count)
+
+    @cached_property
+    def magnet_orders(self) -> IntArray:
+        """Odd multiples of p up to the highest order."""
+        return np.arange(self.pole_pairs, self.orders + 1, 2 * self.pole_pairs)

@@ -1,0 +1,73 @@
+"""Settings of the evaluator as a study gives them."""
+
+from __future__ import annotations
+
+from dataclasses import fields, replace
+
+from evaluators.finite_element.lattice import Resolution
+from evaluators.finite_element.model import Discretisation
+from evaluators.interface import EvaluatorError
+
+KNOWN = (
+    "cells",
+    "cogging_positions",
+    "iron_rings",
+    "orders_per_slot",
+    "positions",
+    "refinement",
+)
+
+
+def read_settings(settings: dict[str, object]) -> Discretisation:
+    """Discretisation from settings.
+
+    Known are ``positions``, ``cogging_positions``, ``orders_per_slot``, ``iron_rings`` (see
+    `Discretisation`), ``refinement`` (cells and positions times this) and ``cells`` (a table with
+    the fields of `Resolution`).
+
+    Raises
+    ------
+    EvaluatorError
+        If a setting is unknown or has a value out of its range.
+    """
+    result = Discretisation()
+    try:
+        for name, value in settings.items():
+            if name not in KNOWN:
+                msg = (
+                    f"the finite-element evaluator has no setting {name!r}; it has "
+                    f"{', '.join(KNOWN)}"
+                )
+                raise EvaluatorError(msg)
+            if name == "cells":
+                result = replace(result, resolution=_cells(value))
+            elif name == "positions":
+                result = replace(result, positions=_whole(name, value))
+            elif name == "cogging_positions":
+                result = replace(result, cogging_positions=_whole(name, value))
+            elif name == "orders_per_slot":
+                result = replace(result, orders_per_slot=_whole(name, value))
+            elif name == "iron_rings":
+                result = replace(result, iron_rings=_whole(name, value))
+        if "refinement" in settings:
+            result = result.refined(_whole("refinement", settings["refinement"]))
+    except ValueError as error:
+        if isinstance(error, EvaluatorError):
+            raise
+        raise EvaluatorError(str(error)) from error
+    return result
+
+
+def _whole(name: str, value: object) -> int:
+    if isinstance(value, bool) or not isinstance(value, int) or value < 1:
+        msg = f"setting {name} = {value!r} must be a whole number of at least 1"
+        raise EvaluatorError(msg)
+    return value
+
+
+def _cells(value: object) -> Resolution:
+    known = [item.name for item in fields(Resolution)]
+    if not isinstance(value, dict) or not set(value) <= set(known):
+        msg = f"setting cells = {value!r} must be a table with some of {', '.join(known)}"
+        raise EvaluatorError(msg)
+    return replace(Resolution(), **{name: _whole(name, item) for name, item in value.items()})

@@ -1,0 +1,122 @@
+"""Without slots and with perfect iron the fields, forces and stiffness are known in closed form."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+
+import numpy as np
+import pytest
+
+from evaluators.finite_element import stress
+from evaluators.finite_element.batch import BatchField, Solution
+from evaluators.finite_element.displacement import stiffness
+from evaluators.finite_element.lanes import LANES
+
+SlotlessMaker = Callable[..., BatchField]
+NO_CURRENT = np.zeros(LANES)
+
+# Radial flux density at the bore, T: amplitude of each order. Closed form of Zhu, Howe, Chan, IEEE
+# Trans. Magn. 38(1), 2002, evaluated by a four-region boundary-value solution; Rr, Rm, Rs = 20, 24,
+# 25 mm, p = 2, and 10, 18, 20 mm, p = 1; arc 0.8, mu_r 1.05, Br 1.2 T.
+BORE_FIELD = {
+    ("radial", 2): {2: 1.0219770, 6: 0.19538660, 14: 0.064130039, 18: 0.069260756},
+    ("parallel", 2): {2: 1.0262970, 6: 0.066337260, 10: 0.087402510, 14: 0.10418244},
+    ("radial", 1): {1: 0.82039957, 3: 0.15322277, 7: 0.047538747},
+}
+MACHINE = {2: ((12, 2, 1), 20.0, 24.0, 25.0), 1: ((12, 1, 2), 10.0, 18.0, 20.0)}
+
+
+def no_load(batch: BatchField, angle: float = 0.0) -> Solution:
+    return batch.solve(np.array([angle]), NO_CURRENT)
+
+
+@pytest.mark.parametrize(("magnetisation", "p"), BORE_FIELD)
+def test_magnet_field_at_the_bore(
+    slotless_machine: SlotlessMaker, magnetisation: str, p: int
+) -> None:
+    numbers, core, magnet, bore = MACHINE[p]
+    batch = slotless_machine(numbers, core, magnet, bore, magnetisation=magnetisation)
+    waves = no_load(batch).waves
+    for order, expected in BORE_FIELD[magnetisation, p].items():
+        place = int(np.searchsorted(waves.orders, order))
+        found = 2.0 * order * np.abs(waves.potential[0, place]) / batch.sections.bore_radius
+        # Only the trace on the bore is discretised; measured 2e-6 (n = p) to 1 % (n = 9 p).
+        tolerance = 1e-5 if order == p else 1e-2
+        assert found == pytest.approx(np.full(LANES, expected), rel=tolerance)
+
+
+def test_error_falls_with_refinement(slotless_machine: SlotlessMaker) -> None:
+    """Quadratic elements: the error of the field falls at least as h^3."""
+    numbers, core, magnet, bore = MACHINE[2]
+    errors = []
+    for refinement in (1, 2):
+        batch = slotless_machine(numbers, core, magnet, bore, refinement=refinement)
+        waves = no_load(batch, 0.1).waves
+        place = int(np.searchsorted(waves.orders, 18))
+        found = 36.0 * np.abs(waves.potential[0, place, 0]) / batch.sections.bore_radius[0]
+        errors.append(abs(found - 0.069260756))
+    assert errors[1] < errors[0] / 2**3
+
+
+def test_hardly_any_torque_at_no_load(slotless_machine: SlotlessMaker) -> None:
+    batch = slotless_machine(*MACHINE[2])
+    waves = batch.solve(np.array([0.0, 0.05, 0.1]), NO_CURRENT).waves
+    torque = stress.torque(waves.orders, waves.potential, waves.tangential)
+    # The torque of a 20 kA/m sheet is 40 N m/m; the mesh's own slot pitch makes 6e-4 of that
+    # (measured), from orders that it resolves by a few elements.
+    assert np.max(np.abs(torque)) < 1e-3 * 40.0
+
+
+# Aligned current sheet of 10 kA/m on the bore, N/m: pi Rs B1 K/2 (coth(nu ln(Rs/Rr)) +- 1), exact
+# with curvature (own derivation; Bichsel, dissertation, ETH Zurich 1990, from memory).
+FORCE = {((12, 1, 2), 2): 1382.586, ((12, 2, 1), 1): 1440.442, ((12, 2, 1), 3): 1098.112}
+
+
+@pytest.mark.parametrize(("numbers", "nu"), FORCE)
+def test_force_of_a_current_sheet(
+    slotless_machine: SlotlessMaker, numbers: tuple[int, int, int], nu: int
+) -> None:
+    batch = slotless_machine(numbers, 20.0, 24.0, 25.0, recoil=1.0, fundamental_only=True)
+    model, radius = batch.model, batch.sections.bore_radius
+    main = no_load(batch)
+    sector, topology = model.symmetry.suspension, model.suspension
+    orders = np.array([nu])
+    sheet = (-radius * 1e4 / 2.0j)[None, :]  # K sin(nu phi), whose radial field is a cosine
+    load = np.zeros((topology.size, LANES))
+    load[topology.lattice.bore] = batch.gap.source_load(
+        sheet, orders, -model.pitch * np.arange(sector.slots)
+    )
+    system, solver = batch.suspension_system()
+    small = batch.perturb(
+        system, solver, main.waves.angles, main.nodes, [(load, np.zeros_like(load))]
+    )
+    answer = batch.gap.coefficients(small[:, topology.lattice.bore].real, sector, orders)
+    highest = batch.highest_wave
+    fields = [
+        stress.rotating(stress.spread(rows, a, highest), stress.spread(rows, h, highest), radius)
+        for rows, a, h in (
+            (main.waves.orders, main.waves.potential, main.waves.tangential),
+            (orders, answer, batch.response[orders] * answer),
+        )
+    ]
+    force = 2.0 * stress.pair(fields[0], fields[1], radius)
+    # Measured 1e-5: only the orders' own traces enter.
+    assert np.abs(force[0]) == pytest.approx(np.full(LANES, FORCE[numbers, nu]), rel=1e-4)
+    assert np.max(np.abs(force.imag)) < 1e-6 * np.max(np.abs(force))
+
+
+# pi B1^2/(4 mu0) ((p+1)(coth((p+1)x) + 1) + (p-1)(coth((p-1)x) - 1)), x = ln(Rs/Rr), exact linear
+# stiffness of concentric cylinders, p = 1 without homopolar path (own derivation, confirmed to 1e-5
+# with scikit-fem on eccentric meshes). B1 = 1.039318 T (p = 1), 1.031641 T (p = 2) at the bore.
+STIFFNESS = {(12, 1, 2): 4_573_941.0, (12, 2, 1): 7_774_065.0}
+
+
+@pytest.mark.parametrize("numbers", STIFFNESS)
+def test_stiffness_of_concentric_cylinders(
+    slotless_machine: SlotlessMaker, numbers: tuple[int, int, int]
+) -> None:
+    batch = slotless_machine(numbers, 20.0, 24.0, 25.0, recoil=1.0, fundamental_only=True)
+    system, solver = batch.suspension_system()
+    found = stiffness(batch, no_load(batch, 0.2), [0], system, solver)
+    # Measured 1e-5.
+    assert found[0] == pytest.approx(np.full(LANES, STIFFNESS[numbers]), rel=1e-4)
