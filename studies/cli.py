@@ -20,6 +20,7 @@ from studies.commands.resume import resume
 from studies.commands.sensitivity import sensitivity
 from studies.commands.status import status
 from studies.commands.sweep import sweep
+from studies.commands.tolerance import tolerance
 from studies.errors import EXIT_BAD_INPUT, EXIT_FAILED, EXIT_INTERRUPTED, StudiesError
 
 
@@ -105,6 +106,7 @@ for _command in (
     inspect,
     export,
     sensitivity,
+    tolerance,
     families,
     metrics,
     materials,

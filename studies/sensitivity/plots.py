@@ -93,7 +93,12 @@ def _panels(
     figure = Figure(figsize=(3.1 * COLUMNS, height))
     # Fixed margins in inches: solving for them would take longer than drawing.
     figure.subplots_adjust(
-        left=0.045, right=0.99, bottom=0.5 / height, top=1.0 - 0.5 / height, hspace=0.42, wspace=0.15
+        left=0.045,
+        right=0.99,
+        bottom=0.5 / height,
+        top=1.0 - 0.5 / height,
+        hspace=0.42,
+        wspace=0.15,
     )
     panels: list[Axes] = list(np.ravel(figure.subplots(rows, COLUMNS, sharey=True, squeeze=False)))
     reach = _reach(curves, largest)
