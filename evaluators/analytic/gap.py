@@ -116,7 +116,8 @@ class SlottedGap:
     classes : array (c,) of int
         Residues (magnet orders or current residues) that will be asked for.
     reach : int
-        Orders run from class - reach Q to class + reach Q.
+        Orders are the `reach` smallest of either sign beside the smallest of all, the same for
+        equal residues, so that fields of magnets and of currents are reciprocal.
     iron : Iron, optional
         Perfect if left out.
     """
@@ -134,7 +135,8 @@ class SlottedGap:
         self.radii, self.slots, self.mouth = radii, slots, mouth
         self.half = 0.5 * opening
         self.classes = np.asarray(classes, dtype=np.int64)
-        self.orders = self.classes[:, None] + slots * np.arange(-reach, reach + 1)[None, :]
+        self._lowest = (self.classes + slots // 2) % slots - slots // 2
+        self.orders = self._lowest[:, None] + slots * np.arange(-reach, reach + 1)[None, :]
         self._share = self.half[:, None] * mouth.current_share
         self._modes = _mode_integrals(self.half, self.orders, mouth.current_share.shape[1])
         self._set_iron(iron or Iron.perfect(opening.size))
@@ -211,12 +213,18 @@ class SlottedGap:
         smooth : array (n, c)
             A_n at a smooth bore (`evaluators.analytic.rotor.source`) of the order equal to the
             class itself.
+
+        Raises
+        ------
+        IndexError
+            If an order lies beyond `reach`.
         """
         own = self.orders == self.classes[:, None]
         wide = np.where(own, smooth[:, :, None], 0.0)
-        middle = self.orders.shape[1] // 2
+        number = np.arange(self.classes.size)
+        place = self.orders.shape[1] // 2 + (self.classes - self._lowest) // self.slots
         shift = np.exp(1j * np.pi * self.classes / self.slots)
-        load = (smooth * shift)[..., None] * self._modes[:, :, middle, 1:]
+        load = (smooth * shift)[..., None] * self._modes[:, number, place, 1:]
         answer = np.linalg.solve(self._matrix, load[..., None])[..., 0]
         uniform = np.zeros((*load.shape[:2], 1))
         return self._with_stator(self._field(wide, np.concatenate([uniform, answer], axis=2)))

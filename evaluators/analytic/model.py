@@ -42,7 +42,7 @@ class Resolution:
     slot_modes : int
         Modes of the slot mouth beside the uniform one.
     reach : int
-        Orders run to `reach` times the slots on each side.
+        Orders of the gap run to `reach` times the slots, at least beyond the pole pairs.
     highest_order : int
         Of the orders that torque and force are summed to.
     positions : int
@@ -91,7 +91,8 @@ class AnalyticModel:
     def __init__(self, task: Task, resolution: Resolution) -> None:
         self.task, self.resolution = task, resolution
         family = task.winding.family
-        highest = max(15 * family.pole_pairs, 45)
+        self.reach = max(resolution.reach, family.pole_pairs // family.slots + 1)
+        highest = min(max(15 * family.pole_pairs, 45), self.reach * family.slots)
         self.rotation = Rotation(
             winding=task.winding,
             highest_order=max(resolution.highest_order, 3 * family.slots),
@@ -140,7 +141,7 @@ class AnalyticModel:
                 slot,
                 self.rotation.slots,
                 classes,
-                self.resolution.reach,
+                self.reach,
             )
 
         def torque_phasor(magnets: GapField) -> ComplexArray:
