@@ -1,0 +1,113 @@
+"""Pull of a displaced rotor and flux density in the magnets, against closed forms."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import machines
+import numpy as np
+import pytest
+
+from evaluators.analytic.gap import GapField
+from evaluators.analytic.rotor import MU_0, RotorRadii, magnetisation, source
+from evaluators.analytic.rotor_state import displacement_stiffness, lowest_magnet_density
+from evaluators.machine.geometry import CrossSections
+
+
+@pytest.mark.parametrize(
+    ("pole_pairs", "density", "expected"), [(1, 1.039318, 4_573_941), (2, 1.031641, 7_774_065)]
+)
+def test_exact_stiffness_with_curvature(pole_pairs: int, density: float, expected: float) -> None:
+    # Rr = 20, Rs = 25 mm, fundamental only. The closed form was confirmed by an eccentric rotor in
+    # scikit-fem (second order, 10 um): 4 573 902 and 7 774 009 N/m per m.
+    found = displacement_stiffness(
+        np.array([20e-3]), np.array([25e-3]), np.array([pole_pairs]), np.array([[density]])
+    )
+    assert found[0] == pytest.approx(expected, rel=2e-6)  # B1 has seven digits
+
+
+@pytest.mark.parametrize("order", [1, 2, 5])
+def test_thin_gap_limit(order: int) -> None:
+    # k/L = pi R B^2/(2 mu0 g), half of it for two poles without a homopolar path. Covo, "Unbalanced
+    # magnetic pull in induction motors with eccentric rotors", AIEE Trans. 73, 1954 (from memory).
+    gap, radius, density = 1e-6, 25e-3, 0.8
+    found = displacement_stiffness(
+        np.array([radius - gap]), np.array([radius]), np.array([order]), np.array([[density]])
+    )
+    thin = np.pi * radius * density**2 / (2.0 * MU_0 * gap) * (0.5 if order == 1 else 1.0)
+    assert found[0] == pytest.approx(thin, rel=1e-4)  # gap over radius, times the order
+
+
+def two_pole(core: float, magnet: float, bore: float, arc: float = 1.0) -> CrossSections:
+    of = machines.task(12, 1, 2)
+    sections = machines.sections(of, machines.designs())
+    shift = bore - float(sections.bore_radius[0])
+    stator = {
+        name: getattr(sections, name) + shift
+        for name in ("bore_radius", "tip_radius", "wedge_radius", "slot_radius", "outer_radius")
+    }
+    return replace(
+        sections,
+        shaft_radius=np.array([0.5 * core]),
+        core_radius=np.array([core]),
+        magnet_radius=np.array([magnet]),
+        rotor_radius=np.array([0.5 * (magnet + bore)]),
+        magnet_arc_ratio=np.array([arc]),
+        **stator,
+    )
+
+
+def smooth_field(sections: CrossSections, direction: str, recoil: float) -> GapField:
+    orders = np.arange(1, 46, 2)
+    rotor = RotorRadii.of(sections, recoil)
+    parts = magnetisation(sections.magnet_arc_ratio, 1.2, 1, orders, direction)
+    bore = source(rotor, *parts, orders, np.zeros((1, orders.size))).bore[:, :, None]
+    return GapField(orders, orders[:, None], 0.5 * bore, 0.5 * bore, bore[:, :, 0])
+
+
+def no_current() -> GapField:
+    zero = np.zeros((1, 1, 1), dtype=complex)
+    return GapField(np.array([1]), np.array([[1]]), zero, zero, zero[:, :, 0])
+
+
+def test_uniform_density_of_a_diametral_cylinder() -> None:
+    # B inside a uniformly magnetised cylinder in an iron tube is uniform along its magnetisation,
+    # (Br/2)(1 + a^2/b^2) for mu_r = 1: 1.016667 T for a = 10, b = 12 mm, 1.2 T (Furlani, Permanent
+    # Magnet and Electromechanical Devices, 2001). Every point of the surface tells it, the edges
+    # too, where the radial component is nearly nothing. The core of 1 um does not matter.
+    sections = two_pole(1e-6, 10e-3, 12e-3)
+    found = lowest_magnet_density(
+        sections,
+        smooth_field(sections, "parallel", 1.0),
+        no_current(),
+        np.arange(1, 46, 2),
+        1.0,
+        1.2,
+    )
+    assert found[0] == pytest.approx(1.016667, rel=1e-6)
+
+
+def test_recoil_permeability_lowers_it() -> None:
+    # Same with mu_r = 1.05 (boundary-value problem): 1.008959 T, uniform as well.
+    sections = two_pole(1e-6, 10e-3, 12e-3)
+    found = lowest_magnet_density(
+        sections,
+        smooth_field(sections, "parallel", 1.05),
+        no_current(),
+        np.arange(1, 46, 2),
+        1.05,
+        1.2,
+    )
+    assert found[0] == pytest.approx(1.008959, rel=1e-6)
+
+
+def test_current_against_the_magnets_lowers_it() -> None:
+    sections = two_pole(10e-3, 18e-3, 20e-3, arc=0.8)
+    orders = np.arange(1, 46, 2)
+    magnets = smooth_field(sections, "radial", 1.05)
+    alone = lowest_magnet_density(sections, magnets, no_current(), orders, 1.05, None)
+    part = -0.1 * magnets.rising[:, :1]  # a tenth of the fundamental against it
+    against = GapField(np.array([1]), np.array([[1]]), part, part, part[:, :, 0])
+    loaded = lowest_magnet_density(sections, magnets, against, orders, 1.05, None)
+    amplitude = 2.0 * abs(magnets.rising[0, 0, 0]) * (18 / 20 + 20 / 18) / 18e-3
+    assert 0.0 < alone[0] - loaded[0] <= 0.1 * amplitude

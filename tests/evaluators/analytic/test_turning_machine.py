@@ -1,0 +1,254 @@
+"""The whole analytic field of turning machines: laws that hold for every family and position."""
+
+from __future__ import annotations
+
+from dataclasses import fields
+
+import machines
+import numpy as np
+import pytest
+from numpy.typing import NDArray
+
+from evaluators.analytic.gap import SlottedGap
+from evaluators.analytic.model import AnalyticModel, Motion, Resolution, Waves
+from evaluators.analytic.rotor import MU_0, RotorRadii
+from evaluators.analytic.rotor_state import at_order
+from evaluators.analytic.slots import mouth
+from evaluators.machine.families import enumerate_families
+from evaluators.machine.field import Excitation, FieldSolution, excitation
+from evaluators.machine.geometry import CrossSections
+from evaluators.machine.winding import Winding
+
+FloatArray = NDArray[np.float64]
+
+EVERY_FAMILY: list[machines.Numbers] = [
+    (w.family.slots, w.family.pole_pairs, w.family.suspension_pole_pairs)
+    for w in enumerate_families((6, 12, 18, 24, 30, 36), range(1, 9))
+    if isinstance(w, Winding)
+]
+# Few modes: the laws below hold for every resolution.
+COARSE = Resolution(slot_modes=3, reach=8, highest_order=96, positions=8)
+
+
+class Case:
+    """One design of one family, solved."""
+
+    def __init__(
+        self,
+        numbers: machines.Numbers,
+        resolution: Resolution = COARSE,
+        *,
+        ideal_iron: bool = False,
+        **changes: float,
+    ) -> None:
+        self.task = machines.task(*numbers, ideal_iron=ideal_iron)
+        self.model = AnalyticModel(self.task, resolution)
+        batch = machines.designs(**changes)
+        self.sections: CrossSections = machines.sections(self.task, batch)
+        self.exciting: Excitation = excitation(
+            self.sections,
+            batch["current_density_A_mm2"] * 1e6,
+            self.task.duty,
+            self.task.construction,
+        )
+
+    def waves(self) -> Waves:
+        return self.model.waves(self.sections, self.exciting)[0]
+
+    def motion(self, positions: FloatArray | None = None) -> Motion:
+        return self.model.motion(self.sections, self.waves(), positions)
+
+    def solve(self) -> FieldSolution:
+        return self.model.solve(self.sections, self.exciting)
+
+
+def wide(slots: int) -> dict[str, float]:
+    """Slots that can be wound in every family."""
+    return {"rotor_radius_mm": 20.0 * max(1.0, slots / 15.0)}
+
+
+# -- the turn -----------------------------------------------------------------------------------
+
+
+@pytest.mark.parametrize("numbers", EVERY_FAMILY, ids=str)
+def test_one_sector_tells_the_whole_turn(numbers: machines.Numbers) -> None:
+    case = Case(numbers, **wide(numbers[0]))
+    sector = case.motion()
+    sectors = case.model.rotation.sectors
+    count = sector.positions.size * sectors
+    assert sector.positions.size * sectors >= 8 * 6 * numbers[1]
+    turn = case.motion(2.0 * np.pi * np.arange(count) / count)
+    rest, direct, mirrored = case.model.whole_turn(sector)
+    # The same sums, so rounding; relative to the mean torque and the largest force.
+    np.testing.assert_allclose(
+        np.tile(sector.torque, (1, sectors)), turn.torque, atol=1e-10 * turn.torque.mean()
+    )
+    np.testing.assert_allclose(
+        np.tile(sector.cogging, (1, sectors)), turn.cogging, atol=1e-10 * turn.torque.mean()
+    )
+    scale = np.abs(turn.direct).max() + np.abs(turn.mirrored).max()
+    np.testing.assert_allclose(direct, turn.direct, atol=1e-10 * scale)
+    np.testing.assert_allclose(mirrored, turn.mirrored, atol=1e-10 * scale)
+    strength = scale * case.exciting.suspension[0]
+    np.testing.assert_allclose(rest, turn.rest, atol=1e-10 * strength)
+    if np.gcd(numbers[0], 2 * numbers[1]) > 1:
+        # Balanced: without suspension current no force, at no position (Zhu, Ishak, Howe, Chen,
+        # "Unbalanced magnetic forces ...", IEEE Trans. Ind. Appl. 43(6), 2007).
+        assert np.abs(turn.rest).max() < 1e-10 * strength
+
+
+@pytest.mark.parametrize("numbers", [(6, 2, 1), (12, 4, 5), (12, 5, 4), (18, 4, 5)], ids=str)
+def test_cogging_has_the_period_of_slots_and_poles(numbers: machines.Numbers) -> None:
+    # lcm(Q, 2p) periods in a turn and nothing else, mean included (Zhu, Howe, "Influence of design
+    # parameters on cogging torque", IEEE Trans. Energy Conv. 15(4), 2000; energy over a turn).
+    case = Case(numbers, Resolution(slot_modes=4, reach=16, highest_order=160, positions=8))
+    periods = int(np.lcm(numbers[0], 2 * numbers[1]))
+    turn = case.motion(2.0 * np.pi * np.arange(8 * periods) / (8 * periods))
+    spectrum = np.abs(np.fft.rfft(turn.cogging[0])) / turn.cogging.size
+    rounding = 1e-10 * turn.torque.mean()
+    allowed = np.arange(spectrum.size) % periods == 0
+    assert spectrum[~allowed].max() < rounding
+    # The mean is that of the harmonics cut off, too.
+    assert spectrum[0] < 1e-6 * turn.torque.mean() + 1e-2 * spectrum[periods]
+    if numbers != (18, 4, 5):  # 72 periods: too small to see
+        assert spectrum[periods] > 1e3 * rounding
+
+
+# -- energy ---------------------------------------------------------------------------------------
+
+
+@pytest.mark.parametrize("numbers", EVERY_FAMILY, ids=str)
+def test_torque_equals_power_of_the_emf(numbers: machines.Numbers) -> None:
+    # T = 1.5 p lambda i with the current in phase with the EMF (energy balance of a round rotor;
+    # any textbook). One side is the stress in the gap, the other the flux of the coils.
+    case = Case(numbers, Resolution(3, 8, 8 * 36 + 40, 8), **wide(numbers[0]))
+    field = case.solve()
+    expected = 1.5 * numbers[1] * field.flux_linkage * case.exciting.torque
+    # Galerkin's method keeps reciprocity, so rounding only; iron as linear voltage does, too.
+    np.testing.assert_allclose(field.torque, expected, rtol=1e-9)
+
+
+@pytest.mark.parametrize("numbers", machines.FAMILIES, ids=str)
+def test_torque_at_every_position(numbers: machines.Numbers) -> None:
+    """Torque less cogging is the sum over phases of i d(linkage)/d(angle), at every instant."""
+    slots, pole_pairs, _ = numbers
+    case = Case(numbers, Resolution(3, 8, 8 * slots + 8 * pole_pairs, 8), **wide(slots))
+    waves, _, phasor, _ = case.model.waves(case.sections, case.exciting)
+    orders = case.model.rotation.magnet_orders
+    flux = case.model.linkage.magnet_harmonics(waves.magnets, orders)[0]
+    motion = case.motion()
+    sequence = case.task.winding.torque_sequence
+    expected = np.zeros(motion.positions.size)
+    for k in range(3):
+        shift = sequence * 2.0 * np.pi * k / 3.0
+        electrical = pole_pairs * motion.positions - shift
+        current = np.real(phasor[0] * np.exp(1j * electrical))
+        harmonic = orders[:, None] // pole_pairs
+        slope = np.real(1j * orders * flux @ np.exp(1j * harmonic * electrical))
+        expected += current * slope
+    found = motion.torque[0] - motion.cogging[0]
+    # The magnets' orders beyond 45 are in neither; rounding only.
+    np.testing.assert_allclose(found, expected, rtol=1e-8)
+
+
+# -- force ----------------------------------------------------------------------------------------
+
+
+@pytest.mark.parametrize("numbers", EVERY_FAMILY, ids=str)
+def test_force_points_where_it_is_commanded(numbers: machines.Numbers) -> None:
+    case = Case(numbers, **wide(numbers[0]))
+    motion = case.motion()
+    rest, direct, mirrored = case.model.whole_turn(motion)
+    for direction in (0.0, 0.5 * np.pi, 2.3):
+        phasor = case.exciting.suspension[0] * case.model.command(motion, direction)[0]
+        mean = np.mean(rest + direct * phasor + mirrored * np.conj(phasor))
+        assert np.angle(mean * np.exp(-1j * direction)) == pytest.approx(0.0, abs=1e-9)
+    field = case.solve()
+    # The mean force is proportional to the current.
+    np.testing.assert_allclose(
+        field.force, field.force_per_ampere_turn * case.exciting.suspension, rtol=1e-9
+    )
+
+
+def narrow(**changes: float) -> dict[str, float]:
+    """Straight narrow slots and hardly any torque current."""
+    return {
+        "tooth_width_ratio": 0.9,
+        "tip_span_ratio": 1.0,
+        "current_density_A_mm2": 1e-6,
+        **changes,
+    }
+
+
+@pytest.mark.parametrize("numbers", [(12, 4, 5), (12, 5, 4), (12, 1, 2), (12, 2, 1)], ids=str)
+def test_force_per_ampere_in_closed_form(numbers: machines.Numbers) -> None:
+    """F/L = pi Rs B1 K/2 (coth(nu ln(Rs/Rr)) +- 1) with K = 3 N k_w I/(pi Rs), 10 % wide slots.
+
+    Magnets of mu_r = 1, as the closed form has them.
+    """
+    _, pole_pairs, order = numbers
+    case = Case(numbers, Resolution(6, 60, 200, 8), ideal_iron=True, **narrow())
+    case.model.recoil = 1.0
+    field, sections = case.solve(), case.sections
+    turns = numbers[0] / 3  # one per coil
+    bore = float(sections.bore_radius[0])
+    wave = case.task.winding.suspension_winding_factor * np.sinc(
+        order * sections.slot_opening_angle[0] / (2.0 * np.pi)
+    )
+    sheet = 3.0 * turns * wave / (np.pi * bore)
+    part = 1.0 / np.tanh(order * np.log(bore / sections.core_radius[0]))
+    sign = 1.0 if order > pole_pairs else -1.0
+    expected = 0.5 * np.pi * bore * field.gap_flux_density * sheet * (part + sign)
+    np.testing.assert_allclose(field.force_per_ampere_turn, expected, rtol=0.04)
+
+
+@pytest.mark.parametrize("numbers", [(12, 4, 5), (12, 2, 1), (24, 5, 4)], ids=str)
+def test_main_field_of_the_torque_current(numbers: machines.Numbers) -> None:
+    """Main inductance with curvature, 6 mu0 (N k_w)^2 coth(p ln(Rs/Rr)) / (pi p) per metre.
+
+    From the field of a current sheet (Hughes, Miller, Proc. IEE 124(2), 1977): linkage 2 N k_w A of
+    a balanced phase. Slots of 10 % of the pitch, so tooth faces are nearly the whole bore.
+    """
+    pole_pairs = numbers[1]
+    case = Case(numbers, **narrow(), **wide(numbers[0]))
+    sections = case.sections
+    rotor = RotorRadii.of(sections, 1.0)
+    residues, current = case.model.rotation.current_residues("torque")
+    gap = SlottedGap(
+        rotor, sections.slot_opening_angle, mouth(sections, 6), numbers[0], residues, 60
+    )
+    potential = 2.0 * abs(at_order(gap.of_currents(current), pole_pairs)[0])
+    factor = numbers[0] / 3 * case.task.winding.torque_winding_factor
+    found = 2.0 * factor * potential
+    ratio = np.log(rotor.bore[0] / rotor.core[0])
+    expected = 6.0 * MU_0 * factor**2 / (np.tanh(pole_pairs * ratio) * np.pi * pole_pairs)
+    assert found == pytest.approx(expected, rel=0.01)
+
+
+# -- scaling --------------------------------------------------------------------------------------
+
+SCALING = {
+    # powers of length at the same flux densities: currents go with the length
+    "torque": 2, "cogging": 2, "force": 1, "flux_linkage": 1, "displacement_stiffness": 0,
+    "torque_inductance": 0, "suspension_inductance": 0, "force_per_ampere_turn": 0,
+    "torque_ripple": 0, "force_error_magnitude": 0, "force_error_angle": 0,
+    "gap_flux_density": 0, "tooth_flux_density": 0, "yoke_flux_density": 0, "core_flux_density": 0,
+    "magnet_flux_density": 0, "loss_teeth": 2, "loss_yoke": 2,
+}  # fmt: skip
+
+
+@pytest.mark.parametrize("numbers", [(6, 2, 1), (12, 5, 4)], ids=str)
+def test_twice_as_large_at_the_same_flux_density(numbers: machines.Numbers) -> None:
+    # Magnetostatics knows no length, saturated or not; 2-D quantities per metre scale as stated.
+    small = Case(numbers, tooth_width_ratio=0.35)
+    double = {name: 2.0 * value for name, value in machines.DESIGN.items() if name.endswith("_mm")}
+    large = Case(numbers, tooth_width_ratio=0.35, **double, current_density_A_mm2=3.0)
+    np.testing.assert_allclose(large.exciting.torque, 2.0 * small.exciting.torque, rtol=1e-12)
+    first, second = small.solve(), large.solve()
+    assert first.tooth_flux_density[0] > 1.2  # the iron takes part
+    for item in fields(first):
+        if item.name not in SCALING:
+            assert item.name in ("loss_magnet", "loss_sleeve")  # the skin depth is a length
+            continue
+        ratio = getattr(second, item.name) / getattr(first, item.name)
+        assert ratio[0] == pytest.approx(2.0 ** SCALING[item.name], rel=1e-6), item.name
