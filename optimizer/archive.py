@@ -108,9 +108,7 @@ class Archive:
         traceback: TracebackType | None,
     ) -> None:
         with self._exit:
-            # A part that could not be written would fail again and hide the first error.
-            if not isinstance(error, ArchiveError):
-                self.flush()
+            self.flush()
 
     @property
     def end(self) -> int:

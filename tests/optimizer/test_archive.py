@@ -117,16 +117,17 @@ def test_the_reader_gives_chosen_columns_rows_and_the_front(tmp_path, plates):
 
 def test_a_front_older_than_the_parts_is_not_believed(tmp_path, plates):
     run(plates, tmp_path, SETTINGS)
-    old = (tmp_path / "front.parquet").read_bytes()
+    path, check = tmp_path / "front.parquet", tmp_path / ".front.crc"
+    old, old_check = path.read_bytes(), check.read_bytes()
     run(plates, tmp_path, Settings(**{**vars(SETTINGS), "budget": 600}))
     new = open_archive(tmp_path).front()
-    path = tmp_path / "front.parquet"
-    good = path.read_bytes()
+    good, good_check = path.read_bytes(), check.read_bytes()
     # An old one, and one with a byte changed in its footer, where page checksums do not reach.
     flipped = good.replace(b"objective:near", b"objective:neas")
     assert flipped != good
-    for data in (old, flipped):
+    for data, its_check in ((old, old_check), (flipped, good_check)):
         path.write_bytes(data)
+        check.write_bytes(its_check)
         assert open_archive(tmp_path).front().equals(new)
 
 
@@ -253,6 +254,7 @@ def test_small_parts_are_merged_and_rows_twice_count_once(tmp_path, plates, rows
     assert rows_of(killed).equals(rows_of(whole))
     assert run(plates, killed, SETTINGS).new == 0
     assert rows_of(killed).equals(rows_of(whole))
+    assert [pq.read_metadata(path).num_rows for path in part_paths(killed)] == [BUDGET]
 
 
 def test_parts_are_written_about_once_a_second(tmp_path, plates):

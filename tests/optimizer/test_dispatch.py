@@ -28,7 +28,7 @@ class Squares:
     variables = (Variable("x", 0.0, 1000.0),)
     objectives = ("square",)
     constraints = ()
-    columns = (Column("worker", kind="int64"),)
+    columns = (Column("worker", kind="int64"), Column("batch", kind="int64"))
 
     def __init__(self, trouble=None) -> None:
         self.trouble = trouble
@@ -37,7 +37,8 @@ class Squares:
         if self.trouble is not None:
             self.trouble(x[:, 0])
         workers = np.full(len(x), os.getpid())
-        return Outcome(x**2, np.zeros((len(x), 0)), columns={"worker": workers})
+        columns = {"worker": workers, "batch": np.full(len(x), len(x))}
+        return Outcome(x**2, np.zeros((len(x), 0)), columns=columns)
 
 
 def chunks(count: int = 8, size: int = 5) -> list[Chunk]:
@@ -155,6 +156,8 @@ def test_a_worker_killed_from_outside_costs_no_row(pool) -> None:
     squares, reasons = gathered(done)
     assert squares == [float(i * i) for i in range(100)]
     assert not any(reasons)
+    # Each chunk as a whole, lest the last bits depend on when someone was killed.
+    assert all((one.outcome.columns["batch"] == 5).all() for one in done)
 
 
 def test_a_pool_that_was_idle_when_its_worker_died_goes_on(pool) -> None:

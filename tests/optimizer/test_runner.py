@@ -62,7 +62,7 @@ def test_a_run_in_pieces_equals_a_run_at_once(
     whole, pieces, other = tmp_path / "whole", tmp_path / "pieces", tmp_path / "other"
     expected = run(failing_plates, whole, settings())
     if state == "of another run":
-        run(failing_plates, other, Settings(budget=400, seed=99))
+        run(failing_plates, other, Settings(budget=100, seed=99))
     older = None
     total = 0
     # Budgets that end within chunks and generations, and stops within generations.
@@ -91,6 +91,15 @@ def test_a_run_in_pieces_equals_a_run_at_once(
     )
     first, second = (open_archive(f).front()["evaluation"] for f in (pieces, whole))
     assert first.equals(second)
+
+
+def test_a_stop_ends_before_the_next_chunk(tmp_path, plates) -> None:
+    calls = []
+    evaluate = plates.evaluate
+    plates.evaluate = lambda x: calls.append(len(x)) or evaluate(x)
+    summary = run(plates, tmp_path, settings(), stop=lambda: len(calls) == 6)
+    assert summary.stopped
+    assert summary.new == 6 * 25
 
 
 def test_the_snapshot_saves_the_replay(tmp_path, plates, monkeypatch) -> None:

@@ -49,6 +49,21 @@ def test_crossover_spreads_as_deb_and_agrawal_define() -> None:
     assert abs(above - 0.5) < 5 * 0.5 / np.sqrt(len(crossed))  # five standard deviations
 
 
+def test_crossover_near_a_bound_is_cut_there() -> None:
+    # Parents at .001 and .101: downwards the spread ends at 1 + 2 (.001 / .1) = 1.02, and what
+    # lies beyond is shared out in proportion: the distribution is divided by its value there.
+    a, b = np.full((ROWS, 1), 0.001), np.full((ROWS, 1), 0.101)
+    child = simulated_binary(a, b, generator())[:, 0]
+    spread = (0.051 - child[(child < 0.051) & (child != 0.001)]) / 0.05
+    power, end = ETA_CROSSOVER + 1.0, 1.02
+
+    def distribution(s: np.ndarray) -> np.ndarray:
+        whole = np.where(s < 1.0, 0.5 * s**power, 1.0 - 0.5 * np.maximum(s, 1.0) ** -power)
+        return whole / (1.0 - 0.5 * end**-power)
+
+    assert stats.kstest(spread, distribution).pvalue > RARE
+
+
 def test_mutation_moves_as_deb_and_goyal_define() -> None:
     # In the middle of the box with one variable, which always moves. Down by d has the
     # distribution ((1 - d)^(eta + 1) - 0.5^(eta + 1)) / (1 - 0.5^(eta + 1)) / 2.
