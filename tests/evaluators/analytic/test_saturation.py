@@ -1,0 +1,115 @@
+"""Saturation: describing functions by hand, and what iron must do to a machine."""
+
+from __future__ import annotations
+
+import machines
+import numpy as np
+import pytest
+
+from evaluators.analytic.model import AnalyticModel, Resolution
+from evaluators.analytic.saturation import mean_differential_reluctivity, secant_reluctivity
+from evaluators.machine import materials
+from evaluators.machine.field import FieldSolution, excitation
+from evaluators.machine.magnetization import MagnetizationCurve
+from evaluators.machine.materials import ElectricalSteel
+
+COARSE = Resolution(slot_modes=4, reach=12, highest_order=96, positions=8)
+
+
+def cubic(linear: float, third: float, reach: float) -> MagnetizationCurve:
+    """H = linear B + third B^3 up to `reach`."""
+    slope = linear + 3.0 * third * reach**2
+    return MagnetizationCurve(
+        [0.0, linear * reach + third * reach**3], [0.0, reach], np.array([linear, slope])
+    )
+
+
+def test_describing_function_of_a_cubic() -> None:
+    # sin^3 = (3 sin - sin 3)/4, so the fundamental of H over B is a + 3/4 c B^2; the mean of
+    # dH/dB = a + 3 c B^2 sin^2 is a + 3/2 c B^2. Gauss points are exact for both.
+    linear, third = 100.0, 70.0
+    curve = cubic(linear, third, 2.0)
+    peak = np.array([0.1, 0.9, 1.7])
+    np.testing.assert_allclose(curve.field(peak), linear * peak + third * peak**3, rtol=1e-12)
+    np.testing.assert_allclose(
+        secant_reluctivity(curve, peak), linear + 0.75 * third * peak**2, rtol=1e-8
+    )
+    np.testing.assert_allclose(
+        mean_differential_reluctivity(curve, peak), linear + 1.5 * third * peak**2, rtol=1e-8
+    )
+
+
+@pytest.mark.parametrize("peak", [0.3, 1.2, 1.6, 2.0])
+def test_describing_function_of_a_sheet(peak: float) -> None:
+    curve = materials.load(ElectricalSteel, "NO20-1200").magnetization
+    angle = 2.0 * np.pi * np.arange(20_000) / 20_000
+    field = curve.field(peak * np.sin(angle))
+    fundamental = 2.0 * np.mean(field * np.sin(angle)) / peak
+    # Eight points over the knee of a measured curve.
+    found = secant_reluctivity(curve, np.array([peak]))[0]
+    assert found == pytest.approx(fundamental, rel=0.02)
+    slope = np.mean(curve.differential_reluctivity(peak * np.sin(angle)))
+    assert mean_differential_reluctivity(curve, np.array([peak]))[0] == pytest.approx(
+        slope, rel=0.05
+    )
+
+
+def solve(
+    numbers: machines.Numbers, *, ideal_iron: bool = False, **changes: float
+) -> FieldSolution:
+    of = machines.task(*numbers, ideal_iron=ideal_iron)
+    batch = machines.designs(**changes)
+    sections = machines.sections(of, batch)
+    exciting = excitation(sections, batch["current_density_A_mm2"] * 1e6, of.duty, of.construction)
+    return AnalyticModel(of, COARSE).solve(sections, exciting)
+
+
+@pytest.mark.parametrize("numbers", [(12, 4, 5), (6, 4, 5), (12, 1, 2)], ids=str)
+def test_good_iron_changes_little_and_bad_iron_much(numbers: machines.Numbers) -> None:
+    ideal = solve(numbers, ideal_iron=True)
+    ample = solve(numbers, tooth_width_ratio=0.6, yoke_ratio=2.0)
+    ample_ideal = solve(numbers, ideal_iron=True, tooth_width_ratio=0.6, yoke_ratio=2.0)
+    # Below the knee iron of mu_r ~ 5000 takes about 1 % of the voltage of a 5 mm gap.
+    assert 0.97 < ample.torque[0] / ample_ideal.torque[0] < 1.0
+    thin_yoke = solve(numbers, yoke_ratio=0.4)
+    assert thin_yoke.torque[0] < 0.8 * ideal.torque[0]
+    assert thin_yoke.yoke_flux_density[0] < 2.4  # the flux gives way
+    thin_teeth = solve(numbers, tooth_width_ratio=0.15, yoke_ratio=4.0)
+    thin_ideal = solve(numbers, ideal_iron=True, tooth_width_ratio=0.15, yoke_ratio=4.0)
+    assert thin_teeth.flux_linkage[0] < thin_ideal.flux_linkage[0]
+    if numbers != (6, 4, 5):  # the teeth of a pole pitch of 4/3 slots carry little flux
+        assert thin_ideal.tooth_flux_density[0] > 2.5
+        assert thin_teeth.flux_linkage[0] < 0.8 * thin_ideal.flux_linkage[0]
+
+
+@pytest.mark.parametrize("name", ["yoke_ratio", "tooth_width_ratio", "core_ratio"])
+def test_less_iron_gives_less_flux(name: str) -> None:
+    values = np.array([0.3, 0.4, 0.5, 0.7])
+    flux = np.array([solve((12, 2, 1), **{name: value}).flux_linkage[0] for value in values])
+    if name == "core_ratio":  # the shaft is magnetic here and carries flux as the core does
+        np.testing.assert_allclose(flux, flux[0], rtol=1e-9)
+    elif name == "yoke_ratio":
+        assert (np.diff(flux) > 0.0).all()
+    else:
+        # Against the same slots with perfect iron, as the slots shrink with growing teeth.
+        ideal = [
+            solve((12, 2, 1), ideal_iron=True, **{name: value}).flux_linkage[0] for value in values
+        ]
+        assert (np.diff(flux / ideal) > 0.0).all()
+
+
+def test_more_current_saturates_more() -> None:
+    density = np.array([1.0, 10.0, 30.0, 60.0])
+    found = [solve((12, 2, 1), current_density_A_mm2=value) for value in density]
+    torque = np.array([field.torque[0] for field in found]) / density
+    assert (np.diff(torque) < 0.0).all()
+    for name in ("torque_inductance", "suspension_inductance", "force_per_ampere_turn"):
+        values = np.array([getattr(field, name)[0] for field in found])
+        assert (np.diff(values) < 0.0).all(), name
+
+
+def test_small_signal_iron_is_worse_than_the_secant() -> None:
+    # Past the knee the slope of B over H falls before the secant does.
+    curve = materials.load(ElectricalSteel, "NO20-1200").magnetization
+    peak = np.array([1.5, 1.8, 2.0])
+    assert (mean_differential_reluctivity(curve, peak) > secant_reluctivity(curve, peak)).all()
