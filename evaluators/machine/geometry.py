@@ -305,9 +305,10 @@ def cross_sections(
     tooth = value["tooth_width_ratio"] * 2.0 * bore * np.sin(half_pitch)
     outer = slot + value["yoke_ratio"] * tooth * family.slots / (2.0 * np.pi * family.pole_pairs)
     span = value["tip_span_ratio"]
-    straight = np.arcsin(np.clip(0.5 * tooth / bore, 0.0, 1.0))
-    closing = straight + (span - 1.0) * (half_pitch - straight)
-    tip_half = np.where(span <= 1.0, 0.5 * span * tooth, bore * np.sin(closing))
+    with np.errstate(invalid="ignore"):  # infinite numbers are refused below
+        straight = np.arcsin(np.clip(0.5 * tooth / bore, 0.0, 1.0))
+        closing = straight + (span - 1.0) * (half_pitch - straight)
+        tip_half = np.where(span <= 1.0, 0.5 * span * tooth, bore * np.sin(closing))
 
     reasons = [""] * rows
 
