@@ -9,6 +9,7 @@ from typing import Any
 import click
 
 from studies.commands.check import check
+from studies.commands.choose import choose
 from studies.commands.compare import compare
 from studies.commands.export import export
 from studies.commands.families import families
@@ -104,6 +105,7 @@ for _command in (
     status,
     compare,
     inspect,
+    choose,
     export,
     sensitivity,
     tolerance,

@@ -20,16 +20,20 @@ CURRENT = "current_density_A_mm2"
 LENGTH = "stack_length_mm"
 TURNS = "turns_per_coil"
 ROUNDS = 3  # evaluations of each machine; the length then agrees to about 1e-4
+GROUPS = "parallel_groups"
 TURN_POWERS = {
-    "back_emf_V": 1,
-    "phase_voltage_V": 1,
-    "voltage_use": 1,
-    "phase_current_A": -1,
-    "force_per_ampere_N_A": 1,
-    "torque_inductance_mH": 2,
-    "suspension_inductance_mH": 2,
+    "back_emf_V": (0, 1),
+    "phase_voltage_V": (0, 1),
+    "voltage_use": (0, 1),
+    "phase_current_A": (-1, 0),
+    "torque_current_A": (0, -1),
+    "suspension_current_A": (-1, 0),
+    "force_per_ampere_N_A": (1, 0),
+    "torque_inductance_mH": (0, 2),
+    "suspension_inductance_mH": (2, 0),
 }
-"""Metrics that follow from the number of turns, and its exponent."""
+"""Metrics that follow from the winding's turns: exponents of turns per coil, and of turns per coil
+over parallel groups. Copper area and all else are taken as they are."""
 
 
 @dataclass(frozen=True)
@@ -103,12 +107,16 @@ def _held(
 
 def hold_turns(chosen: Chosen, outcome: Outcome) -> Outcome:
     """The outcome with the design's turns: metrics, margins and objectives."""
-    factor = chosen.metric(TURNS) / np.asarray(outcome.columns[TURNS])
     columns = {name: np.asarray(values) for name, values in outcome.columns.items()}
-    for name, power in TURN_POWERS.items():
+    turns = chosen.metric(TURNS) / columns[TURNS]
+    groups = np.ones(len(outcome))
+    if GROUPS in columns and chosen.found.row.get(GROUPS) is not None:
+        groups = chosen.metric(GROUPS) / columns[GROUPS]
+        columns[GROUPS] = columns[GROUPS] * groups
+    for name, (by_turns, by_series) in TURN_POWERS.items():
         if name in columns:
-            columns[name] = columns[name] * factor**power
-    columns[TURNS] = columns[TURNS] * factor
+            columns[name] = columns[name] * turns**by_turns * (turns / groups) ** by_series
+    columns[TURNS] = columns[TURNS] * turns
     problem = chosen.problem
     constraints = np.column_stack(
         [margin(limit, columns[limit.metric]) for limit in problem.limits]
