@@ -17,11 +17,13 @@ from studies.commands.inspect import inspect
 from studies.commands.materials import materials
 from studies.commands.metrics import metrics
 from studies.commands.new import new
+from studies.commands.report import report
 from studies.commands.resume import resume
 from studies.commands.sensitivity import sensitivity
 from studies.commands.status import status
 from studies.commands.sweep import sweep
 from studies.commands.tolerance import tolerance
+from studies.commands.watch import watch
 from studies.errors import EXIT_BAD_INPUT, EXIT_FAILED, EXIT_INTERRUPTED, StudiesError
 
 
@@ -103,7 +105,9 @@ for _command in (
     sweep,
     resume,
     status,
+    watch,
     compare,
+    report,
     inspect,
     choose,
     export,

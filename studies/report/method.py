@@ -1,0 +1,191 @@
+"""The page of method: what was asked, how it was found, what the words mean, and what to mind."""
+
+from __future__ import annotations
+
+from html import escape
+from math import pi
+
+from evaluators.machine.metrics import METRICS
+from evaluators.machine.variables import VARIABLES
+from studies.comparison import BINDING, REFERENCE
+from studies.convert import MATERIAL_KINDS
+from studies.definition import Study
+from studies.inspection import CAUTIONS
+from studies.layout import Results, program_version
+from studies.report.collect import ReportData
+from studies.report.columns import UNITS
+from studies.report.html import bullets, element, paragraph, table
+from studies.tables import number
+
+READING = (
+    "Front: the designs of one family that meet all limits and that no other design of that family "
+    "beats in one objective without losing in another.",
+    "Compromise: the design of a front nearest to the best value of every objective, once each "
+    "objective is scaled from the best (0) to the worst (1) value of all fronts together.",
+    "Hypervolume: share of a box that a front dominates; the box reaches from 0 to "
+    f"{REFERENCE:g} in every objective on that same scale (Zitzler and Thiele 1999).",
+    "Reserve: distance to a limit over the size of the limit; a limit binds where less than "
+    f"{BINDING:.0%} is left.",
+    "Force errors: a constant force is commanded for one whole turn. The mean force vector is the "
+    "reference; the error magnitude is the largest relative deviation of the length of the force, "
+    "the error angle the largest deviation of its direction.",
+    "Screened values come from the evaluator named with the family. Verified values come from a "
+    "finer one and are drawn as crosses joined to the screened design, where there are any.",
+    "Angles are mechanical unless called electrical. The x axis is the axis of tooth 1, "
+    "counter-clockwise is positive, forces are those on the rotor.",
+    "Fronts with more designs than the report shows are thinned evenly; best values, statistics "
+    "and distributions are of the whole front.",
+)
+
+
+def method_html(data: ReportData) -> str:
+    """The whole section."""
+    return "".join(
+        [
+            element("h3", "Cautions"),
+            bullets(CAUTIONS, "cautions"),
+            element("h3", "How to read this report"),
+            bullets(READING),
+            *(_study(results) for results in data.opened),
+            _origin(data),
+            element("h3", "Metrics"),
+            table(
+                ["metric", "unit", "meaning", "source"],
+                [
+                    [item.name, UNITS.get(item.unit, item.unit), item.definition, item.source]
+                    for item in METRICS
+                    if any(column.name == item.name for column in data.columns)
+                ],
+                words=4,
+            ),
+            element("h3", "Design variables"),
+            table(
+                ["variable", "unit", "meaning"],
+                [
+                    [item.name, UNITS.get(item.unit, item.unit), item.definition]
+                    for item in VARIABLES
+                ],
+                words=3,
+            ),
+        ]
+    )
+
+
+def _study(results: Results) -> str:
+    study = results.study
+    return "".join(
+        [
+            element("h3", f"What was asked: {escape(study.name)}"),
+            paragraph(study.description) if study.description else "",
+            '<div class="two"><div>',
+            table(["duty and conditions", "value"], task_rows(study), words=1),
+            "</div><div>",
+            table(["objective", "sense", "made of"], _goals(study), words=3),
+            table(["limit"], [[limit.text()] for limit in study.limits])
+            if study.limits
+            else paragraph("No limits."),
+            table(["material", "name"], material_rows(study), words=2),
+            "</div></div>",
+            _bounds(study),
+        ]
+    )
+
+
+def task_rows(study: Study) -> list[list[str]]:
+    """Duty, conditions and construction as a reader says them."""
+    duty, conditions, construction = study.duty, study.conditions, study.construction
+    interference = construction.sleeve_interference
+    return [
+        ["shaft power", f"{duty.power / 1e3:g} kW"],
+        ["speed", f"{duty.speed * 30.0 / pi:.6g} r/min"],
+        ["overspeed", f"{duty.overspeed_ratio:g} times the speed"],
+        ["DC link", f"{duty.dc_link_voltage:g} V"],
+        ["voltage kept back for control", f"{100.0 * duty.voltage_reserve:g} %"],
+        ["slot current for suspension", f"{100.0 * duty.suspension_share:g} %"],
+        ["shaft", duty.orientation],
+        ["balance grade", f"G {1e3 * duty.balance_grade:g}"],
+        ["winding temperature", f"{conditions.winding_temperature:g} °C"],
+        ["magnet temperature", f"{conditions.magnet_temperature:g} °C"],
+        ["sleeve temperature", f"{conditions.sleeve_temperature:g} °C"],
+        ["gas in the gap", f"{conditions.gas_temperature:g} °C, {conditions.gas_pressure:.6g} Pa"],
+        ["magnetisation", construction.magnetisation],
+        ["copper fill", f"{construction.copper_fill:g}"],
+        ["magnet segments of a pole", f"{construction.magnet_segments}"],
+        ["axial magnet segment", f"{1e3 * construction.magnet_axial_segment:g} mm"],
+        ["strand diameter", f"{1e3 * construction.strand_diameter:g} mm"],
+        ["end-turn extension", f"{1e3 * construction.end_turn_extension:g} mm"],
+        ["slot insulation", f"{1e3 * construction.slot_insulation:g} mm"],
+        [
+            "sleeve interference",
+            "as the contact pressure needs it"
+            if interference is None
+            else f"{1e6 * interference:g} µm",
+        ],
+        ["rotor overhang", f"{1e3 * construction.rotor_overhang:g} mm"],
+    ]
+
+
+def material_rows(study: Study) -> list[list[str]]:
+    """Which material each part is of."""
+    return [
+        [key.replace("_", " "), str(getattr(study.materials, key).name)] for key in MATERIAL_KINDS
+    ]
+
+
+def _goals(study: Study) -> list[list[str]]:
+    return [
+        [
+            goal.name,
+            "larger is better" if goal.maximise else "smaller is better",
+            " + ".join(
+                name if weight == 1.0 else f"{weight:g} × {name}" for name, weight in goal.terms
+            ),
+        ]
+        for goal in study.objectives
+    ]
+
+
+def _bounds(study: Study) -> str:
+    def said(family: str, name: str) -> str:
+        low, high = study.bounds[family][name]
+        if low == high:
+            return f"fixed at {number(low)}"
+        return f"{number(low)} to {number(high)}"
+
+    columns: dict[tuple[str, ...], list[str]] = {}
+    for family in study.families:
+        key = tuple(said(family, item.name) for item in VARIABLES)
+        columns.setdefault(key, []).append(family)
+    heads = ["all families"] if len(columns) == 1 else [", ".join(v) for v in columns.values()]
+    rows = [
+        [item.name, *(key[position] for key in columns)] for position, item in enumerate(VARIABLES)
+    ]
+    return (
+        "<details><summary>Bounds of the variables</summary>"
+        + table(["variable", *heads], rows)
+        + "</details>"
+    )
+
+
+def _origin(data: ReportData) -> str:
+    """Evaluators, seeds and budgets, one line a family."""
+    rows = []
+    for family in data.families:
+        settings = family.member.stored.reader.settings
+        evaluations = family.member.stored.counts[0]
+        rows.append(
+            [
+                family.label,
+                f"{settings.get('evaluator', '-')} {settings.get('evaluator_version', '')}".strip(),
+                str(settings.get("seed", "-")),
+                f"{evaluations:,}",
+                str(settings.get("search", "-")),
+                family.results.study.digest[:16],
+            ]
+        )
+    head = ["family", "evaluator", "seed", "evaluations", "search", "study file, SHA-256"]
+    return (
+        element("h3", "Where the numbers come from")
+        + paragraph(f"Written by hovergap {program_version()}.")
+        + table(head, rows, words=2)
+    )
