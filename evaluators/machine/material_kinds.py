@@ -12,6 +12,8 @@ from evaluators.machine.losses.iron import IronLossCoefficients
 from evaluators.machine.magnetization import MagnetizationCurve
 from evaluators.machine.quantity import MU_0, FloatArray, Quantity
 
+ABSOLUTE_ZERO_C = -273.15
+
 
 @dataclass(frozen=True)
 class Limits:
@@ -79,6 +81,21 @@ class Material:
             if isinstance(quantity, Quantity):
                 known = known & quantity.covers(temperature_C)
         return np.asarray(known)
+
+
+    @property
+    def temperature_range(self) -> tuple[float, float]:
+        """Lowest and highest temperature in degC that every table covers and the limit allows."""
+        low, high = ABSOLUTE_ZERO_C, float("inf")
+        for entry in fields(self):
+            quantity = getattr(self, entry.name)
+            if not isinstance(quantity, Quantity):
+                continue
+            if entry.name == "maximum_temperature":
+                high = min(high, quantity.value)
+            elif quantity.table_C:
+                low, high = max(low, quantity.table_C[0]), min(high, quantity.table_C[-1])
+        return low, high
 
 
 @dataclass(frozen=True, kw_only=True)

@@ -1,0 +1,1 @@
+"""Heat: conduction, convection, the lumped network of the machine, and insulation classes."""
