@@ -1,1 +1,4 @@
-"""The machine itself: winding, geometry, materials, losses, mechanics, cost, and the metrics they yield."""
+"""The machine itself: winding, geometry, materials, losses, strength, heat, levitation, cost.
+
+`performance` turns a field solution into the metrics that `metrics` registers.
+"""

@@ -5,11 +5,16 @@ from __future__ import annotations
 import math
 from collections.abc import Mapping
 from dataclasses import dataclass, field, fields
+from typing import Literal
 
 import numpy as np
 from numpy.typing import ArrayLike
 
 from evaluators.machine.quantity import FloatArray, floats
+
+Scenario = Literal["low", "base", "high"]
+SCENARIOS: tuple[Scenario, ...] = ("low", "base", "high")
+"""Markets a price list tells apart."""
 
 
 @dataclass(frozen=True)
@@ -25,31 +30,50 @@ class Price:
         dust, wire ends), from 0 to below 1.
     processing_per_kg
         Currency units per kilogram in the machine for turning material into a part.
+    low_per_kg, high_per_kg
+        `per_kg` in a cheap and in a dear market; None for the same.
 
     Raises
     ------
     ValueError
-        If a number is negative or not finite, or the waste share reaches 1.
+        If a number is negative or not finite, the waste share reaches 1, or the three prices do
+        not rise.
     """
 
     per_kg: float
     waste_share: float = 0.0
     processing_per_kg: float = 0.0
+    low_per_kg: float | None = None
+    high_per_kg: float | None = None
 
     def __post_init__(self) -> None:
-        for name in ("per_kg", "processing_per_kg"):
+        for name in ("per_kg", "processing_per_kg", "low_per_kg", "high_per_kg"):
             value = getattr(self, name)
-            if not (math.isfinite(value) and value >= 0.0):
+            if value is not None and not (math.isfinite(value) and value >= 0.0):
                 msg = f"{name} = {value} must be 0 or more"
                 raise ValueError(msg)
         if not 0.0 <= self.waste_share < 1.0:
             msg = f"waste_share = {self.waste_share} must be 0 or more and below 1"
             raise ValueError(msg)
+        if not self._bought("low") <= self.per_kg <= self._bought("high"):
+            msg = (
+                f"low_per_kg = {self._bought('low')}, per_kg = {self.per_kg} and high_per_kg = "
+                f"{self._bought('high')} must not fall"
+            )
+            raise ValueError(msg)
 
     @property
     def per_kg_installed(self) -> float:
+        """Currency units per kilogram that is in the machine, base scenario."""
+        return self.installed("base")
+
+    def installed(self, scenario: Scenario) -> float:
         """Currency units per kilogram that is in the machine."""
-        return self.per_kg / (1.0 - self.waste_share) + self.processing_per_kg
+        return self._bought(scenario) / (1.0 - self.waste_share) + self.processing_per_kg
+
+    def _bought(self, scenario: Scenario) -> float:
+        other = {"low": self.low_per_kg, "base": None, "high": self.high_per_kg}[scenario]
+        return self.per_kg if other is None else other
 
 
 @dataclass(frozen=True)
@@ -80,7 +104,9 @@ class Prices:
         return tuple(entry.name for entry in fields(cls) if entry.name != "currency")
 
 
-def material_costs(masses: Mapping[str, ArrayLike], prices: Prices) -> dict[str, FloatArray]:
+def material_costs(
+    masses: Mapping[str, ArrayLike], prices: Prices, scenario: Scenario = "base"
+) -> dict[str, FloatArray]:
     """Return the cost of each material in currency units.
 
     Parameters
@@ -88,6 +114,10 @@ def material_costs(masses: Mapping[str, ArrayLike], prices: Prices) -> dict[str,
     masses
         Net masses in kg by the names of `Prices.materials`, shape (n,) each; materials left out
         cost nothing.
+    prices
+        Price list.
+    scenario
+        Market whose prices count.
 
     Returns
     -------
@@ -104,17 +134,19 @@ def material_costs(masses: Mapping[str, ArrayLike], prices: Prices) -> dict[str,
         msg = f"no price for {unknown[0]!r}; priced are {', '.join(Prices.materials())}"
         raise ValueError(msg)
     return {
-        name: floats(mass) * float(getattr(prices, name).per_kg_installed)
+        name: floats(mass) * float(getattr(prices, name).installed(scenario))
         for name, mass in masses.items()
     }
 
 
-def active_material_cost(masses: Mapping[str, ArrayLike], prices: Prices) -> FloatArray:
+def active_material_cost(
+    masses: Mapping[str, ArrayLike], prices: Prices, scenario: Scenario = "base"
+) -> FloatArray:
     """Return the cost of all active materials in currency units, shape (n,).
 
     Arguments and exceptions as for `material_costs`.
     """
     total: FloatArray = np.zeros(())
-    for cost in material_costs(masses, prices).values():
+    for cost in material_costs(masses, prices, scenario).values():
         total = np.asarray(total + cost)
     return total

@@ -12,7 +12,7 @@ FloatArray = NDArray[np.float64]
 
 
 def active_masses(
-    task: Task, sections: CrossSections, length: FloatArray
+    task: Task, sections: CrossSections, length: FloatArray, copper_area: FloatArray
 ) -> tuple[dict[str, FloatArray], FloatArray]:
     """Masses of n machines, and that of their rotors alone.
 
@@ -23,6 +23,8 @@ def active_masses(
         Of n designs.
     length : array (n,)
         Stack length, m.
+    copper_area : array (n,)
+        Bare copper of all slots together, m2.
 
     Returns
     -------
@@ -35,7 +37,6 @@ def active_masses(
     rotor_length = length + construction.rotor_overhang
     stacking = float(parts.stator_steel.stacking_factor.value)
     rotor_stacking = float(parts.rotor_steel.stacking_factor.value)
-    copper_area = task.winding.family.slots * sections.slot_area * construction.copper_fill
     mean_length = length + sections.end_turn_length(construction)
     stator = sections.stator_area * length * stacking * float(parts.stator_steel.density.value)
     core = sections.core_area * rotor_length * rotor_stacking

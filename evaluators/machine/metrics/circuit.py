@@ -1,0 +1,170 @@
+"""Metrics of winding, currents, voltages and losses."""
+
+from __future__ import annotations
+
+from evaluators.machine.metrics.definition import CHIBA, DESIGN, Metric
+
+METRICS: tuple[Metric, ...] = (
+    # -- circuit --
+    Metric("turns_per_coil", "1", "circuit", "whole turns of one coil", DESIGN),
+    Metric(
+        "phase_current_A",
+        "A",
+        "circuit",
+        "root-mean-square current of one conductor, torque and suspension current together",
+        DESIGN,
+        True,
+    ),
+    Metric(
+        "back_emf_V",
+        "V",
+        "circuit",
+        "peak fundamental EMF of one phase at the duty speed",
+        "Faraday's law",
+    ),
+    Metric(
+        "phase_voltage_V",
+        "V",
+        "circuit",
+        "peak fundamental phase voltage at the duty",
+        "phasor diagram of the non-salient machine",
+        True,
+    ),
+    Metric(
+        "voltage_use",
+        "1",
+        "circuit",
+        "phase voltage at the duty over what the inverter makes after its reserve",
+        "two-level inverter, linear modulation (common practice)",
+        True,
+    ),
+    Metric("torque_inductance_mH", "mH", "circuit", "inductance to the torque current", DESIGN),
+    Metric(
+        "suspension_inductance_mH", "mH", "circuit", "inductance to the suspension current", DESIGN
+    ),
+    # -- losses --
+    Metric(
+        "loss_copper_W",
+        "W",
+        "losses",
+        "copper loss of both currents with end turns and strand eddy currents, at temperature",
+        "IEC 60028; round wire in a transverse field (Landau, Lifshitz)",
+        True,
+    ),
+    Metric("loss_teeth_W", "W", "losses", "iron loss of the teeth", "Bertotti 1988", True),
+    Metric("loss_yoke_W", "W", "losses", "iron loss of the stator yoke", "Bertotti 1988", True),
+    Metric("loss_iron_W", "W", "losses", "iron loss of teeth and yoke", "Bertotti 1988", True),
+    Metric(
+        "loss_magnet_W",
+        "W",
+        "losses",
+        "eddy-current loss of the magnets",
+        "strip formula with reaction factor per field harmonic",
+        True,
+    ),
+    Metric(
+        "loss_sleeve_W",
+        "W",
+        "losses",
+        "eddy-current loss of a conducting sleeve",
+        "thin shell per field harmonic",
+        True,
+    ),
+    Metric(
+        "loss_air_friction_W",
+        "W",
+        "losses",
+        "air friction of gap and rotor faces",
+        "Bilgen and Boulos 1973; Daily and Nece 1960",
+        True,
+    ),
+    Metric("loss_total_W", "W", "losses", "sum of all losses", DESIGN, True),
+    Metric("efficiency", "1", "losses", "shaft power over shaft power plus losses", DESIGN, False),
+    # -- inverter and wires --
+    Metric(
+        "parallel_groups",
+        "1",
+        "circuit",
+        "groups of a phase in parallel (2) or in series (1) for the torque current",
+        CHIBA,
+    ),
+    Metric(
+        "strands_per_turn",
+        "1",
+        "circuit",
+        "parallel strands of one turn",
+        DESIGN,
+    ),
+    Metric(
+        "wire_diameter_mm",
+        "mm",
+        "circuit",
+        "bare diameter of a strand, a standard size",
+        "IEC 60317-0-1 (sizes from memory)",
+    ),
+    Metric(
+        "copper_fill",
+        "1",
+        "circuit",
+        "bare copper of the wires that fit over the slot area",
+        "IEC 60317-0-1 (sizes from memory)",
+        False,
+    ),
+    Metric(
+        "slot_occupation",
+        "1",
+        "circuit",
+        "places in the slot that wires take over those it has; above 1 they do not fit",
+        "IEC 60317-0-1 (sizes from memory)",
+        True,
+    ),
+    Metric(
+        "conductor_density_A_mm2",
+        "A/mm2",
+        "circuit",
+        "root-mean-square current density in the copper of the wires that fit",
+        DESIGN,
+        True,
+    ),
+    Metric(
+        "torque_current_A",
+        "A",
+        "circuit",
+        "root-mean-square torque current of one terminal",
+        DESIGN,
+        True,
+    ),
+    Metric(
+        "suspension_current_A",
+        "A",
+        "circuit",
+        "root-mean-square suspension current of one terminal",
+        DESIGN,
+        True,
+    ),
+    Metric(
+        "power_factor",
+        "1",
+        "circuit",
+        "displacement power factor of the torque current",
+        "phasor diagram of the non-salient machine",
+        False,
+    ),
+    Metric(
+        "inverter_rating_kVA",
+        "kVA",
+        "circuit",
+        "three phases of peak voltage times the peak of torque and suspension current "
+        "together, halved",
+        DESIGN,
+        True,
+    ),
+    Metric(
+        "loss_strand_eddy_W",
+        "W",
+        "losses",
+        "part of the copper loss that eddy currents in the strands make",
+        "Dowell, Proc. IEE 113(8), 1966",
+        True,
+    ),
+)
