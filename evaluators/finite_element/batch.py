@@ -90,6 +90,19 @@ class Perturbation:
     nodes: ComplexArray
 
 
+@dataclass(frozen=True)
+class Equations:
+    """Equations of a sector and the solver of their tangent."""
+
+    system: System
+    solver: newton.LinearSolver
+
+    @property
+    def topology(self) -> Topology:
+        """Index arrays of the sector."""
+        return self.system.topology
+
+
 class BatchField:
     """Field of one batch of LANES cross-sections of a model's family.
 
@@ -131,8 +144,9 @@ class BatchField:
                 model.task.construction.magnetisation,
             )
         )
-        self.torque_system = System(model.torque, self.mesh, model.stator_curve)
-        self.torque_solver = make_solver(model.torque.pattern)
+        self.torque = Equations(
+            System(model.torque, self.mesh, model.stator_curve), make_solver(model.torque.pattern)
+        )
         self.load = slot_load(self.mesh, model.torque.lattice)
         self.response = np.zeros((model.orders + 1, LANES))
         self.source = np.zeros((model.magnet_orders.size, LANES), dtype=np.complex128)
@@ -151,21 +165,28 @@ class BatchField:
             -1j * (radial[row] * self.remanence[0] + tangential[row] * self.remanence[1])
         )
         self.gap.set_response(self.response)
-        self.torque_system.set_gap(self.gap.stiffness(self.model.symmetry.torque))
+        self.torque.system.set_gap(self.gap.stiffness(self.model.symmetry.torque))
 
-    def magnet_load(self, angles: FloatArray) -> FloatArray:
+    def equations(self, topology: Topology) -> Equations:
+        """Equations and solver of another sector than that of the torque field."""
+        system = System(topology, self.mesh, self.model.stator_curve)
+        system.set_gap(self.gap.stiffness(topology.lattice.sector))
+        return Equations(system, self.make_solver(topology.pattern))
+
+    def magnet_load(self, angles: FloatArray, slots: int) -> FloatArray:
         """Right-hand side of the magnets at rotor `angles` (t,), (t, slots, 2 C, LANES)."""
         model = self.model
-        slots = model.symmetry.torque.slots
         relative = angles[:, None] - model.pitch * np.arange(slots)
         load = self.gap.source_load(self.source, model.magnet_orders, relative.ravel())
         return load.reshape(angles.size, slots, *load.shape[1:])
 
-    def torque_currents(self, angles: FloatArray, ampere_turns: FloatArray) -> FloatArray:
-        """Slot currents of the torque sector, (t, slots, LANES), A."""
+    def torque_currents(
+        self, angles: FloatArray, ampere_turns: FloatArray, slots: int
+    ) -> FloatArray:
+        """Currents of the first `slots` slots, in phase with the EMF, (t, slots, LANES), A."""
         model = self.model
         phasor = np.exp(1j * (model.pole_pairs * angles + model.symmetry.torque_phase))
-        slot = model.task.winding.torque_slot_mmf[: model.symmetry.torque.slots]
+        slot = model.task.winding.torque_slot_mmf[:slots]
         return np.real(np.outer(phasor, slot))[:, :, None] * ampere_turns
 
     def add_currents(self, load: FloatArray, topology: Topology, currents: FloatArray) -> None:
@@ -175,38 +196,50 @@ class BatchField:
 
     # -- torque field -------------------------------------------------------------------------
 
-    def solve(
+    def solve_torque(
         self, angles: FloatArray, ampere_turns: FloatArray, start: FloatArray | None = None
     ) -> Solution:
         """Torque field at rotor `angles` (t,), each started from those before.
 
         `ampere_turns` (LANES,) are the peak ampere-turns of a coil, zero for no load.
         """
-        model = self.model
-        topology = model.torque
-        magnets = self.magnet_load(angles)
-        currents = self.torque_currents(angles, ampere_turns)
+        currents = self.torque_currents(angles, ampere_turns, self.torque.topology.lattice.slots)
+        return self.solve(self.torque, angles, currents, start)
+
+    def solve(
+        self,
+        equations: Equations,
+        angles: FloatArray,
+        currents: FloatArray,
+        start: FloatArray | None = None,
+    ) -> Solution:
+        """Field of magnets and slot `currents` (t, slots, LANES) at rotor `angles` (t,)."""
+        topology = equations.topology
+        magnets = self.magnet_load(angles, topology.lattice.slots)
         nodes = np.empty((angles.size, topology.size, LANES))
         converged = np.ones(LANES, dtype=np.bool_)
         for t in range(angles.size):
             load = np.zeros((topology.size, LANES))
             load[topology.lattice.bore] = magnets[t]
             self.add_currents(load, topology, currents[t])
-            if t >= 3:
-                guess = 3.0 * (nodes[t - 1] - nodes[t - 2]) + nodes[t - 3]
-            elif t == 2:
-                guess = 2.0 * nodes[1] - nodes[0]
+            if t == 0:
+                guess = np.zeros_like(load) if start is None else start
             elif t == 1:
                 guess = nodes[0]
+            elif t == 2:
+                guess = 2.0 * nodes[1] - nodes[0]
             else:
-                guess = np.zeros_like(load) if start is None else start
+                guess = 3.0 * (nodes[t - 1] - nodes[t - 2]) + nodes[t - 3]
             nodes[t], state = newton.solve(
-                self.torque_system, self.torque_solver, guess, load, model.discretisation.newton
+                equations.system,
+                equations.solver,
+                guess,
+                load,
+                self.model.discretisation.newton,
             )
             converged &= state.converged
-        return Solution(
-            nodes, self.slot_means(topology, nodes), self.torque_waves(angles, nodes), converged
-        )
+        waves = self.waves(topology, angles, nodes)
+        return Solution(nodes, self.slot_means(topology, nodes), waves, converged)
 
     def settle_rotor_iron(
         self, angle: float, ampere_turns: FloatArray, rounds: int = 3
@@ -219,7 +252,7 @@ class BatchField:
         orders = model.magnet_orders[:3]
         start: FloatArray | None = None
         for _ in range(rounds):
-            solution = self.solve(np.array([angle]), ampere_turns, start)
+            solution = self.solve_torque(np.array([angle]), ampere_turns, start)
             start = solution.nodes[0]
             inside = self.rotor_field(orders, solution.waves)
             square = rotor.mean_square_density(inside, self.rotor, orders, self.reluctivity)
@@ -245,13 +278,13 @@ class BatchField:
 
     # -- waves --------------------------------------------------------------------------------
 
-    def torque_waves(self, angles: FloatArray, nodes: FloatArray) -> Waves:
-        """Fourier coefficients of the torque field on the bore."""
+    def waves(self, topology: Topology, angles: FloatArray, nodes: FloatArray) -> Waves:
+        """Fourier coefficients on the bore of a field with the magnets."""
         model = self.model
-        sector = model.symmetry.torque
+        sector = topology.lattice.sector
         orders = self.gap.class_orders(sector)
         orders = orders[orders <= self.highest_wave]
-        bore = nodes[:, model.torque.lattice.bore]
+        bore = nodes[:, topology.lattice.bore]
         potential = self.gap.coefficients(bore, sector, orders)
         tangential = self.response[orders] * potential
         magnet = np.searchsorted(orders, model.magnet_orders[model.magnet_orders <= orders[-1]])
@@ -280,33 +313,26 @@ class BatchField:
 
     # -- small fields on top ------------------------------------------------------------------
 
-    def suspension_system(self) -> tuple[System, newton.LinearSolver]:
-        """Equations and solver of the sector of the suspension field."""
-        system = System(self.model.suspension, self.mesh, self.model.stator_curve)
-        system.set_gap(self.gap.stiffness(self.model.symmetry.suspension))
-        return system, self.make_solver(self.model.suspension.pattern)
-
     def perturb(
         self,
-        system: System,
-        solver: newton.LinearSolver,
-        angles: FloatArray,
+        equations: Equations,
         nodes: FloatArray,
         loads: list[tuple[FloatArray, FloatArray]],
     ) -> ComplexArray:
         """Solve with the tangent of a torque field for complex loads, (t, size, LANES).
 
-        `loads` gives real and imaginary part per position, each (size, LANES).
+        `nodes` (t, ...) is the torque field; `loads` gives real and imaginary part per position,
+        each (size, LANES).
         """
-        source, factor = self.model.to_suspension
-        result = np.empty((angles.size, system.topology.size, LANES), dtype=np.complex128)
-        nothing = np.zeros((system.topology.size, LANES))
-        for t in range(angles.size):
-            potential = nodes[t][source] * factor[:, None]
-            _, values = system.tangent(potential, nothing)
-            solver.factorise(values)
-            real, imag = loads[t]
-            result[t] = solver.solve(real) + 1j * solver.solve(imag)
+        topology = equations.topology
+        source, factor = self.model.unfold(topology)
+        small, large = self.torque.topology.lattice, topology.lattice
+        past = float(small.sector.sign) ** (large.slots // small.slots)
+        result = np.empty((len(nodes), topology.size, LANES), dtype=np.complex128)
+        for t, (real, imag) in enumerate(loads):
+            field = nodes[t][source] * factor[:, None]
+            equations.solver.factorise(equations.system.tangent_at(field, past))
+            result[t] = equations.solver.solve(real) + 1j * equations.solver.solve(imag)
         return result
 
     def coefficients_both_sides(

@@ -59,7 +59,7 @@ def _fluxes(lattice: Lattice, nodes: FloatArray | ComplexArray) -> tuple[FloatAr
     body = lattice.node[first : last + 1 : 2]
     left = 2 * res.tooth + wide * np.arange(lattice.slots)
     right = wide - 2 * res.tooth + wide * (np.arange(lattice.slots) - 1)
-    sign = np.where(right < 0, float(lattice.sign), 1.0)[:, None]
+    sign = np.where(right < 0, float(lattice.sector.sign), 1.0)[:, None]
     tooth = nodes[:, body[:, left]] - sign * nodes[:, body[:, right % lattice.columns]]
     behind = (left[:, None] + np.arange(wide - 4 * res.tooth + 1)).ravel()
     yoke = nodes[:, lattice.node[last, behind][lattice.node[last, behind] >= 0]]

@@ -16,10 +16,9 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-from evaluators.finite_element import newton, stress
-from evaluators.finite_element.batch import BatchField, Solution
+from evaluators.finite_element import stress
+from evaluators.finite_element.batch import BatchField, Equations, Solution
 from evaluators.finite_element.lanes import LANES
-from evaluators.finite_element.system import System
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
@@ -31,8 +30,7 @@ def stiffness(
     batch: BatchField,
     solution: Solution,
     positions: list[int],
-    system: System,
-    solver: newton.LinearSolver,
+    equations: Equations,
 ) -> FloatArray:
     """Pull per displacement at some of the positions of a torque field, (t, LANES), N/m per m.
 
@@ -43,7 +41,6 @@ def stiffness(
     radius = batch.sections.bore_radius
     highest = batch.highest_wave
     waves = solution.waves
-    angles = waves.angles[positions]
     potential = stress.spread(waves.orders, waves.potential[positions], highest + 1)
     tangential = stress.spread(waves.orders, waves.tangential[positions], highest + 1)
     field = stress.rotating(potential[:, 1:-1], tangential[:, 1:-1], radius)
@@ -71,7 +68,7 @@ def stiffness(
             load[topology.lattice.bore] = batch.gap.source_load(shift[t], orders, slot_angles)
             pair.append(load)
         loads.append((pair[0], pair[1]))
-    small = batch.perturb(system, solver, angles, solution.nodes[positions], loads)
+    small = batch.perturb(equations, solution.nodes[positions], loads)
     bore = small[:, topology.lattice.bore]
     result = np.zeros((len(positions), LANES))
     for shift, part, axis in ((shifts[0], bore.real, 1.0), (shifts[1], bore.imag, 1j)):

@@ -103,6 +103,7 @@ class FiniteElementEvaluator:
                     : len(sections)
                 ]
                 for item in fields(FieldSolution)
+                if getattr(parts[0], item.name) is not None
             }
         )
 

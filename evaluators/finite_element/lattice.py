@@ -18,6 +18,8 @@ from functools import cached_property
 import numpy as np
 from numpy.typing import NDArray
 
+from evaluators.finite_element.symmetry import Sector
+
 FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
 
@@ -96,15 +98,19 @@ class Resolution:
 
 @dataclass(frozen=True)
 class Lattice:
-    """Unknowns and cells of a sector of `slots` slots whose continuation has factor `sign`.
+    """Unknowns and cells of a sector.
 
     Unknowns are numbered in elimination order. `node` gives the number of a lattice point, -1 where
     there is none or where A = 0.
     """
 
     resolution: Resolution
-    slots: int
-    sign: int
+    sector: Sector
+
+    @property
+    def slots(self) -> int:
+        """Slots of the sector."""
+        return self.sector.slots
 
     @cached_property
     def columns(self) -> int:
@@ -143,15 +149,18 @@ class Lattice:
         )
 
     @cached_property
-    def cell_signs(self) -> FloatArray:
-        """Factor of the unknown at each cell node, (slots, R, C, 8): `sign` past the sector."""
+    def beyond(self) -> NDArray[np.bool_]:
+        """Whether a cell node lies past the sector, on its first column, (slots, R, C, 8)."""
         c = np.arange(self.slots * self.resolution.columns)[:, None]
-        beyond = 2 * c + COLUMN_OFFSET == self.columns
-        factor = np.where(beyond, float(self.sign), 1.0)
-        shaped = factor.reshape(self.slots, 1, -1, 8)
+        last = (2 * c + COLUMN_OFFSET == self.columns).reshape(self.slots, 1, -1, 8)
         return np.ascontiguousarray(
-            np.broadcast_to(shaped, (self.slots, self.resolution.rows, *shaped.shape[2:]))
+            np.broadcast_to(last, (self.slots, self.resolution.rows, *last.shape[2:]))
         )
+
+    @cached_property
+    def cell_signs(self) -> FloatArray:
+        """Factor of the unknown at each cell node, (slots, R, C, 8)."""
+        return np.where(self.beyond, float(self.sector.sign), 1.0)
 
     @cached_property
     def iron(self) -> NDArray[np.bool_]:

@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from evaluators.finite_element import newton
 from evaluators.finite_element.lattice import Lattice, Resolution
-from evaluators.finite_element.symmetry import Symmetry, symmetry
+from evaluators.finite_element.symmetry import Sector, Symmetry, symmetry
 from evaluators.finite_element.system import CurveTable, Topology
 from evaluators.machine.task import Task
 
@@ -94,19 +94,22 @@ class FieldModel:
     @cached_property
     def torque(self) -> Topology:
         """Topology of the sector of the torque field."""
-        sector = self.symmetry.torque
-        return Topology(Lattice(self.discretisation.resolution, sector.slots, sector.sign))
+        return Topology(Lattice(self.discretisation.resolution, self.symmetry.torque))
 
     @cached_property
     def suspension(self) -> Topology:
         """Topology of the sector of the suspension field."""
-        sector = self.symmetry.suspension
-        return Topology(Lattice(self.discretisation.resolution, sector.slots, sector.sign))
+        return Topology(Lattice(self.discretisation.resolution, self.symmetry.suspension))
 
     @cached_property
-    def to_suspension(self) -> tuple[IntArray, FloatArray]:
-        """Unknown of the torque sector behind each one of the suspension sector, and its sign."""
-        small, large = self.torque.lattice, self.suspension.lattice
+    def whole(self) -> Topology:
+        """Topology of the whole circle, for torque and suspension field together."""
+        sector = Sector(self.slots, 1, 1)
+        return Topology(Lattice(self.discretisation.resolution, sector))
+
+    def unfold(self, target: Topology) -> tuple[IntArray, FloatArray]:
+        """Unknown of the torque sector behind each one of a larger sector, and its sign."""
+        small, large = self.torque.lattice, target.lattice
         sign = self.symmetry.torque.sign
         source = np.empty(large.size, dtype=np.int64)
         factor = np.empty(large.size)

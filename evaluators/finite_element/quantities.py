@@ -48,17 +48,15 @@ class Force:
         return np.asarray(self.rest + self.direct * phasor + self.mirrored * np.conj(phasor))
 
 
-def suspension_force(
+def force_parts(
     batch: BatchField, solution: Solution, small: ComplexArray
-) -> tuple[Force, bool]:
-    """Force of a torque field and of the small suspension field on top, over the whole turn.
+) -> tuple[ComplexArray, ComplexArray, ComplexArray]:
+    """Force at the positions of a torque field: rest, direct and mirrored as in `Force`.
 
     `small` (t, size, LANES) is the field of the complex slot currents `suspension_slot_mmf` of one
-    ampere-turn on the sector of the suspension field. Also tells whether the mean force follows the
-    phasor (True) or its conjugate.
+    ampere-turn on the sector of the suspension field.
     """
     model = batch.model
-    symmetry = model.symmetry
     radius = batch.sections.bore_radius
     highest = batch.highest_wave
     main = solution.waves
@@ -67,38 +65,42 @@ def suspension_force(
         stress.spread(main.orders, main.tangential, highest),
         radius,
     )
-    sector = symmetry.suspension
+    sector = model.symmetry.suspension
     orders = batch.gap.class_orders(sector)
     orders = orders[orders <= highest]
     plus, minus = batch.coefficients_both_sides(
         small, sector, model.suspension.lattice.bore, orders
     )
     response = batch.response[orders].astype(np.complex128)
-    field = 0.5 * stress.rotating(
-        stress.spread(orders, plus, highest, minus),
-        stress.spread(orders, response * plus, highest, response * minus),
-        radius,
-    )
-    mirror = 0.5 * stress.rotating(
-        stress.spread(orders, np.conj(minus), highest, np.conj(plus)),
-        stress.spread(orders, response * np.conj(minus), highest, response * np.conj(plus)),
-        radius,
-    )
+
+    def half_field(positive: ComplexArray, negative: ComplexArray) -> ComplexArray:
+        return 0.5 * stress.rotating(
+            stress.spread(orders, positive, highest, negative),
+            stress.spread(orders, response * positive, highest, response * negative),
+            radius,
+        )
+
     phase = np.exp(1j * model.pole_pairs * main.angles)[:, None]
     rest = stress.pair(turning, turning, radius)
-    direct = 2.0 * stress.pair(turning, field, radius) * phase
-    mirrored = 2.0 * stress.pair(turning, mirror, radius) * np.conj(phase)
-    force = whole_turn(batch, main.angles, rest, direct, mirrored)
-    forward = model.task.winding.family.suspension_pole_pairs > model.pole_pairs
-    return force, forward
+    direct = 2.0 * stress.pair(turning, half_field(plus, minus), radius) * phase
+    mirrored = 2.0 * stress.pair(turning, half_field(np.conj(minus), np.conj(plus)), radius)
+    return rest, direct, np.asarray(mirrored * np.conj(phase))
+
+
+def suspension_force(
+    batch: BatchField, solution: Solution, small: ComplexArray
+) -> tuple[Force, bool]:
+    """Force over the whole turn, see `force_parts`.
+
+    Also tells whether the mean force follows the phasor (True) or its conjugate.
+    """
+    force = whole_turn(batch, *force_parts(batch, solution, small))
+    family = batch.model.task.winding.family
+    return force, family.suspension_pole_pairs > family.pole_pairs
 
 
 def whole_turn(
-    batch: BatchField,
-    angles: FloatArray,
-    rest: ComplexArray,
-    direct: ComplexArray,
-    mirrored: ComplexArray,
+    batch: BatchField, rest: ComplexArray, direct: ComplexArray, mirrored: ComplexArray
 ) -> Force:
     """Continue 60 electrical degrees to the whole turn and interpolate.
 
@@ -119,7 +121,6 @@ def whole_turn(
         parts[2].append(picture * np.conj(phase) * mirrored)
     whole = [interpolate(np.concatenate(part)) for part in parts]
     count = whole[0].shape[0]
-    del angles
     return Force(2.0 * np.pi * np.arange(count) / count, whole[0], whole[1], whole[2])
 
 

@@ -67,12 +67,14 @@ def tangent(
     force = np.zeros(size + 1)
     rows, columns, entries = [], [], []
     padded = np.append(potential, 0.0)
-    for (nodes, signs, _, geometry), iron in (
+    own = float(topology.lattice.sector.sign)
+    for (nodes, beyond, _, geometry), iron in (
         (topology.iron_cells, True),
         (topology.air_cells, False),
     ):
         if not len(nodes):
             continue
+        signs = np.where(beyond, own, 1.0)
         g, w = gradient[geometry], weight[geometry]
         flux = np.einsum("cqad,ca->cqd", g, signs * padded[nodes])
         square = np.sum(flux**2, axis=2)

@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from evaluators.finite_element import losses, newton, stress
-from evaluators.finite_element.batch import BatchField, Solution, SolverFactory
+from evaluators.finite_element.batch import BatchField, Equations, Solution, SolverFactory
 from evaluators.finite_element.densities import Densities, densities
 from evaluators.finite_element.displacement import stiffness
 from evaluators.finite_element.lanes import LANES
@@ -66,14 +66,18 @@ def solve(
     """Solve all static fields of LANES designs."""
     batch = BatchField(model, sections, make_solver)
     start = batch.settle_rotor_iron(float(model.angles[0]), exciting.torque)
-    loaded = batch.solve(model.angles, exciting.torque, start)
-    unloaded = batch.solve(model.cogging_angles, np.zeros(LANES), loaded.nodes[0])
-    system, solver = batch.suspension_system()
-    load = suspension_loads(batch)
-    small = batch.perturb(system, solver, model.angles, loaded.nodes, [load] * model.angles.size)
+    loaded = batch.solve_torque(model.angles, exciting.torque, start)
+    unloaded = batch.solve_torque(model.cogging_angles, np.zeros(LANES), loaded.nodes[0])
+    suspension = batch.equations(model.suspension)
+    small = suspension_field(batch, suspension, loaded)
     some = [0, model.cogging_angles.size // 2]
-    pull = stiffness(batch, unloaded, some, system, solver).mean(axis=0)
+    pull = stiffness(batch, unloaded, some, suspension).mean(axis=0)
     return StaticFields(batch, loaded, unloaded, small, pull)
+
+
+def suspension_field(batch: BatchField, equations: Equations, solution: Solution) -> ComplexArray:
+    """Field of one ampere-turn of suspension on top of a torque field, (t, size, LANES)."""
+    return batch.perturb(equations, solution.nodes, [suspension_loads(batch)] * len(solution.nodes))
 
 
 @dataclass(frozen=True)

@@ -101,12 +101,26 @@ def reluctivity(square, knots, cubic, piece):  # type: ignore[no-untyped-def]
 
 @njit(cache=True, error_model="numpy")
 def _iron(  # type: ignore[no-untyped-def]
-    potential, cells, signs, entries, geometry, gradient, weight, curve, values, residual, tangent
+    potential,
+    past,
+    cells,
+    beyond,
+    own,
+    entries,
+    geometry,
+    gradient,
+    weight,
+    curve,
+    values,
+    residual,
+    tangent,
 ):
     """Add the iron: `residual` of the potential and, if `tangent`, the tangent into `values`.
 
     potential, residual : (size + 1, LANES), the last row belongs to A = 0
-    cells, signs : (k, 8); entries : (k, 36), one past the end for A = 0; geometry : (k,)
+    past, own : factor past the sector of the potential and of the equations; they differ where
+        the tangent at one field is wanted for another
+    cells, beyond : (k, 8); entries : (k, 36), one past the end for A = 0; geometry : (k,)
     gradient : (g, POINTS, 8, 2, LANES); weight : (g, POINTS, LANES)
     """
     knots, cubic, piece = curve
@@ -123,7 +137,7 @@ def _iron(  # type: ignore[no-untyped-def]
     for k in range(cells.shape[0]):
         for a in range(8):
             i = cells[k, a]
-            sign = signs[k, a]
+            sign = past if beyond[k, a] else 1.0
             for lane in range(LANES):
                 local[a, lane] = sign * potential[i, lane]
         force[:, :] = 0.0
@@ -159,7 +173,7 @@ def _iron(  # type: ignore[no-untyped-def]
                 add_products(force[a], flux[0], g[a, 0], flux[1], g[a, 1])
         for a in range(8):
             i = cells[k, a]
-            sign = signs[k, a]
+            sign = own if beyond[k, a] else 1.0
             for lane in range(LANES):
                 residual[i, lane] += sign * force[a, lane]
         if tangent:
@@ -167,7 +181,7 @@ def _iron(  # type: ignore[no-untyped-def]
             for a in range(8):
                 for b in range(a + 1):
                     t = entries[k, e]
-                    sign = signs[k, a] * signs[k, b]
+                    sign = own if beyond[k, a] != beyond[k, b] else 1.0
                     for lane in range(LANES):
                         values[t, lane] += sign * stiff[e, lane]
                     e += 1
@@ -213,11 +227,11 @@ class Topology:
 
         def chosen(
             mask: NDArray[np.bool_],
-        ) -> tuple[IndexArray, FloatArray, IndexArray, IndexArray]:
+        ) -> tuple[IndexArray, NDArray[np.bool_], IndexArray, IndexArray]:
             every = np.broadcast_to(mask, cells.shape[:3])
             return (
                 np.ascontiguousarray(nodes[every], dtype=np.uint32),
-                np.ascontiguousarray(lattice.cell_signs[every]),
+                np.ascontiguousarray(lattice.beyond[every]),
                 np.ascontiguousarray(place[every], dtype=np.uint32),
                 np.ascontiguousarray(geometry[every], dtype=np.uint32),
             )
@@ -261,13 +275,19 @@ class System:
         shape = (-1, POINTS, 8, 2, LANES)
         self.gradient = mesh.gradient.reshape(shape)
         self.weight = mesh.weight.reshape(-1, POINTS, LANES)
-        entries = topology.pattern.entries
-        self.air = np.zeros((entries + 1, LANES))
+        self.air = np.zeros((topology.pattern.entries + 1, LANES))
         air = CurveTable.linear(1.0)
+        self.own = float(topology.lattice.sector.sign)
         nothing = np.zeros((topology.size + 1, LANES))
+        nodes, beyond, entries, geometry = topology.air_cells
         _iron(
             nothing,
-            *topology.air_cells,
+            1.0,
+            nodes,
+            beyond,
+            self.own,
+            entries,
+            geometry,
             self.gradient,
             self.weight,
             air.arrays,
@@ -284,14 +304,18 @@ class System:
 
     def residual(self, potential: FloatArray, load: FloatArray) -> FloatArray:
         """Residual K(A) A - load, (size, LANES)."""
-        return self._evaluate(potential, load, tangent=False)[0]
+        return self._evaluate(potential, load, self.own, tangent=False)[0]
 
     def tangent(self, potential: FloatArray, load: FloatArray) -> tuple[FloatArray, FloatArray]:
         """Residual (size, LANES) and entries of the tangent matrix (entries, LANES)."""
-        return self._evaluate(potential, load, tangent=True)
+        return self._evaluate(potential, load, self.own, tangent=True)
+
+    def tangent_at(self, potential: FloatArray, past: float) -> FloatArray:
+        """Entries of the tangent matrix at a field whose factor past the sector is `past`."""
+        return self._evaluate(potential, np.zeros_like(potential), past, tangent=True)[1]
 
     def _evaluate(
-        self, potential: FloatArray, load: FloatArray, *, tangent: bool
+        self, potential: FloatArray, load: FloatArray, past: float, *, tangent: bool
     ) -> tuple[FloatArray, FloatArray]:
         size = self.topology.size
         padded = np.zeros((size + 1, LANES))
@@ -301,9 +325,15 @@ class System:
         topology = self.topology
         _multiply(self.linear, topology.row, topology.column, padded, residual)
         values = self.linear.copy() if tangent else self.linear
+        nodes, beyond, entries, geometry = topology.iron_cells
         _iron(
             padded,
-            *topology.iron_cells,
+            past,
+            nodes,
+            beyond,
+            self.own,
+            entries,
+            geometry,
             self.gradient,
             self.weight,
             self.curve.arrays,

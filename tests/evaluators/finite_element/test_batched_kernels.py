@@ -12,6 +12,7 @@ from evaluators.finite_element.lanes import LANES
 from evaluators.finite_element.lattice import Lattice, Resolution
 from evaluators.finite_element.model import Discretisation, FieldModel
 from evaluators.finite_element.reference import SciPySolver, full_matrix, tangent
+from evaluators.finite_element.symmetry import Sector
 from evaluators.finite_element.system import CurveTable, Topology, reluctivity
 from evaluators.machine.field import Excitation, excitation
 
@@ -38,7 +39,7 @@ def current_of(batch: BatchField) -> Excitation:
 @pytest.mark.parametrize("slots", [1, 3, 6])
 @pytest.mark.parametrize("sign", [1, -1])
 def test_factorisation_solves_any_matrix_of_the_pattern(slots: int, sign: int) -> None:
-    topology = Topology(Lattice(COARSE.resolution, slots, sign))
+    topology = Topology(Lattice(COARSE.resolution, Sector(slots, 2, sign)))
     pattern = topology.pattern
     generator = np.random.default_rng(slots)
     values = generator.uniform(-1.0, 1.0, (pattern.entries, LANES))
@@ -59,7 +60,7 @@ def test_factorisation_solves_any_matrix_of_the_pattern(slots: int, sign: int) -
 
 def test_pattern_holds_the_fill_in() -> None:
     """The factor's pattern must contain that of L from a dense elimination."""
-    topology = Topology(Lattice(Resolution(1, 1, 1, 1, 1, 1), 2, 1))
+    topology = Topology(Lattice(Resolution(1, 1, 1, 1, 1, 1), Sector(2, 2, 1)))
     pattern: factor.Pattern = topology.pattern
     dense = np.zeros((pattern.size, pattern.size))
     dense[pattern.row, pattern.column] = -1.0
@@ -86,9 +87,9 @@ def test_curve_table_is_the_magnetization_curve(batch: BatchField) -> None:
 
 def test_assembly(batch: BatchField) -> None:
     """Residual and tangent of one lane at a random, partly saturated state."""
-    system, topology = batch.torque_system, batch.model.torque
+    system, topology = batch.torque.system, batch.model.torque
     generator = np.random.default_rng(1)
-    nodes = batch.solve(np.zeros(1), current_of(batch).torque).nodes[0]
+    nodes = batch.solve_torque(np.zeros(1), current_of(batch).torque).nodes[0]
     nodes = nodes * generator.uniform(0.7, 1.3, nodes.shape)
     residual, values = system.tangent(nodes, np.zeros_like(nodes))
     curve = batch.model.task.materials.stator_steel.magnetization.laminated(batch.model.stacking)
@@ -115,8 +116,8 @@ def test_assembly(batch: BatchField) -> None:
 
 
 def test_tangent_is_the_derivative_of_the_residual(batch: BatchField) -> None:
-    system, topology = batch.torque_system, batch.model.torque
-    nodes = batch.solve(np.zeros(1), current_of(batch).torque).nodes[0]
+    system, topology = batch.torque.system, batch.model.torque
+    nodes = batch.solve_torque(np.zeros(1), current_of(batch).torque).nodes[0]
     nothing = np.zeros_like(nodes)
     direction = np.random.default_rng(2).normal(size=nodes.shape) * np.abs(nodes).max()
     step = 1e-6
@@ -142,19 +143,20 @@ def test_whole_analysis_with_scipy(batch: BatchField) -> None:
     for name, value in vars(a).items():
         # Both stop after the same steps; what differs is rounding, amplified in differences such
         # as cogging.
-        assert value == pytest.approx(getattr(b, name), rel=1e-7), name
+        if value is not None:
+            assert value == pytest.approx(getattr(b, name), rel=1e-7), name
 
 
 def test_newton_converges_quadratically(batch: BatchField) -> None:
     current = current_of(batch)
     load = np.zeros((batch.model.torque.size, LANES))
-    load[batch.model.torque.lattice.bore] = batch.magnet_load(np.zeros(1))[0]
+    load[batch.model.torque.lattice.bore] = batch.magnet_load(np.zeros(1), 3)[0]
     batch.add_currents(
-        load, batch.model.torque, batch.torque_currents(np.zeros(1), current.torque)[0]
+        load, batch.model.torque, batch.torque_currents(np.zeros(1), current.torque, 3)[0]
     )
     settings = newton.Settings(tolerance=1e-12)
     solver = newton.BatchSolver(batch.model.torque.pattern)
-    _, state = newton.solve(batch.torque_system, solver, np.zeros_like(load), load, settings)
+    _, state = newton.solve(batch.torque.system, solver, np.zeros_like(load), load, settings)
     assert np.all(state.converged)
     history = np.array(state.history) / np.linalg.norm(load, axis=0)
     for lane in range(LANES):
@@ -171,8 +173,8 @@ def test_lanes_do_not_disturb_each_other(batch: BatchField) -> None:
     order = np.array([3, 0, 0, 5, 1, 7, 7, 2])
     mixed = BatchField(batch.model, batch.sections.rows(order))
     angles = batch.model.angles
-    nodes = batch.solve(angles, current.torque)
-    other = mixed.solve(angles, current.torque[order])
+    nodes = batch.solve_torque(angles, current.torque)
+    other = mixed.solve_torque(angles, current.torque[order])
     assert np.array_equal(nodes.nodes[..., order], other.nodes)
     torque = stress.torque(nodes.waves.orders, nodes.waves.potential, nodes.waves.tangential)
     turned = stress.torque(other.waves.orders, other.waves.potential, other.waves.tangential)

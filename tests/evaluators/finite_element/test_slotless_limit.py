@@ -27,7 +27,7 @@ MACHINE = {2: ((12, 2, 1), 20.0, 24.0, 25.0), 1: ((12, 1, 2), 10.0, 18.0, 20.0)}
 
 
 def no_load(batch: BatchField, angle: float = 0.0) -> Solution:
-    return batch.solve(np.array([angle]), NO_CURRENT)
+    return batch.solve_torque(np.array([angle]), NO_CURRENT)
 
 
 @pytest.mark.parametrize(("magnetisation", "p"), BORE_FIELD)
@@ -60,7 +60,7 @@ def test_error_falls_with_refinement(slotless_machine: SlotlessMaker) -> None:
 
 def test_hardly_any_torque_at_no_load(slotless_machine: SlotlessMaker) -> None:
     batch = slotless_machine(*MACHINE[2])
-    waves = batch.solve(np.array([0.0, 0.05, 0.1]), NO_CURRENT).waves
+    waves = batch.solve_torque(np.array([0.0, 0.05, 0.1]), NO_CURRENT).waves
     torque = stress.torque(waves.orders, waves.potential, waves.tangential)
     # The torque of a 20 kA/m sheet is 40 N m/m; the mesh's own slot pitch makes 6e-4 of that
     # (measured), from orders that it resolves by a few elements.
@@ -86,10 +86,7 @@ def test_force_of_a_current_sheet(
     load[topology.lattice.bore] = batch.gap.source_load(
         sheet, orders, -model.pitch * np.arange(sector.slots)
     )
-    system, solver = batch.suspension_system()
-    small = batch.perturb(
-        system, solver, main.waves.angles, main.nodes, [(load, np.zeros_like(load))]
-    )
+    small = batch.perturb(batch.equations(topology), main.nodes, [(load, np.zeros_like(load))])
     answer = batch.gap.coefficients(small[:, topology.lattice.bore].real, sector, orders)
     highest = batch.highest_wave
     fields = [
@@ -116,7 +113,7 @@ def test_stiffness_of_concentric_cylinders(
     slotless_machine: SlotlessMaker, numbers: tuple[int, int, int]
 ) -> None:
     batch = slotless_machine(numbers, 20.0, 24.0, 25.0, recoil=1.0, fundamental_only=True)
-    system, solver = batch.suspension_system()
-    found = stiffness(batch, no_load(batch, 0.2), [0], system, solver)
+    equations = batch.equations(batch.model.suspension)
+    found = stiffness(batch, no_load(batch, 0.2), [0], equations)
     # Measured 1e-5.
     assert found[0] == pytest.approx(np.full(LANES, STIFFNESS[numbers]), rel=1e-4)
