@@ -38,7 +38,9 @@ class Interruption:
         traceback: TracebackType | None,
     ) -> None:
         for item, handler in self._before.items():
-            signal.signal(item, handler)  # type: ignore[arg-type]
+            # Once all is stored, a further Ctrl-C must not spoil the last words and exit code.
+            ended = self.asked and item == signal.SIGINT
+            signal.signal(item, signal.SIG_IGN if ended else handler)  # type: ignore[arg-type]
 
     def _handle(self, number: int, frame: FrameType | None) -> None:
         del frame

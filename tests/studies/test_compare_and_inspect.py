@@ -95,6 +95,22 @@ def test_comparison_numbers_against_brute_force(hovergap: Run, swept: Path) -> N
         assert found["additive_epsilon"][a][b] == pytest.approx(shift, abs=1e-12)  # rounding
 
 
+def test_binding_limits_are_those_with_less_than_a_hundredth_left(
+    hovergap: Run, write_study: Write
+) -> None:
+    """The toy is best at the smallest radius, so a least tip speed binds most of the front."""
+    file = write_study(("{ at_most = 70.0 }", "{ at_least = 50.0 }"))
+    assert hovergap("sweep", file, "--budget", "400", "--workers", "1").exit_code == 0
+    found = json.loads(hovergap("compare", "results/small", "--json").output)
+    for item in found["families"]:
+        table = open_archive(Path("results/small") / item["family"]).front()
+        speeds = table["tip_speed_m_s"].to_numpy()
+        close = (speeds - 50.0) / 50.0 <= 0.01
+        assert item["binding_limits"]["tip_speed_m_s_at_least"] == close.mean()
+        assert 0.0 < close.mean() < 1.0
+        assert speeds[close].max() > 50.0
+
+
 def test_dominated_family_is_said_plainly(hovergap: Run, write_study: Write) -> None:
     """The toy's ripple grows with the slots and nothing else does: more slots are dominated."""
     ideal = [
@@ -224,6 +240,14 @@ def test_inspect_says_whether_a_design_is_on_the_front(hovergap: Run, swept: Pat
     assert "no other design of its family beats it" in hovergap("inspect", swept, chosen).output
     table = open_archive(swept / "Q6p2s1").table(["evaluation", "feasible"])
     broken = next(row["evaluation"] for row in table.to_pylist() if not row["feasible"])
+    fronted = {item["evaluation"] for item in open_archive(swept / "Q6p2s1").front().to_pylist()}
+    beaten = next(
+        row["evaluation"]
+        for row in table.to_pylist()
+        if row["feasible"] and row["evaluation"] not in fronted
+    )
+    output = hovergap("inspect", swept, f"Q6p2s1-{beaten}").output
+    assert "another design of its family beats it" in output
     output = hovergap("inspect", swept, f"Q6p2s1-{broken}").output
     assert "breaks at least one limit" in output
     assert re.search(r"tip_speed_m_s .* BROKEN", output)

@@ -1,13 +1,14 @@
 """A quick invented evaluator for tests of the study room; its numbers follow no physics.
 
-Settings: ``delay_s`` sleeps that long for every call; ``die`` raises OSError(ENOSPC)-like faults is
-not its job. Designs with a rotor radius above ``invalid_above_mm`` are rows with a reason.
+Settings: every call makes the file ``begun`` and sleeps for ``delay_s``; designs with a rotor
+radius above ``invalid_above_mm`` are rows with a reason; only ``metrics`` are returned.
 """
 
 from __future__ import annotations
 
 import time
 from collections.abc import Mapping
+from pathlib import Path
 
 import numpy as np
 from numpy.typing import NDArray
@@ -17,7 +18,7 @@ from evaluators.machine.metrics import METRICS
 from evaluators.machine.task import Task
 
 FloatArray = NDArray[np.float64]
-SETTINGS = ("delay_s", "invalid_above_mm", "metrics")
+SETTINGS = ("begun", "delay_s", "invalid_above_mm", "metrics")
 
 
 class ToyEvaluator:
@@ -32,6 +33,7 @@ class ToyEvaluator:
             raise EvaluatorError(msg)
         self.task = task
         self.delay = float(settings.get("delay_s", 0.0))  # type: ignore[arg-type]
+        self.begun = str(settings.get("begun", ""))
         self.invalid_above = float(settings.get("invalid_above_mm", 1e9))  # type: ignore[arg-type]
         wanted = settings.get("metrics", [item.name for item in METRICS])
         self.names = tuple(wanted)  # type: ignore[arg-type]
@@ -41,6 +43,8 @@ class ToyEvaluator:
         return self.names
 
     def evaluate(self, designs: Mapping[str, FloatArray]) -> Evaluations:
+        if self.begun:
+            Path(self.begun).touch()
         time.sleep(self.delay)
         radius = designs["rotor_radius_mm"]
         density = designs["current_density_A_mm2"]
