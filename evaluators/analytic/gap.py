@@ -98,6 +98,26 @@ class GapField:
     falling: ComplexArray
     slot: ComplexArray
 
+    def of(self, rows: IntArray) -> GapField:
+        """The classes in the given rows only."""
+        return GapField(
+            classes=self.classes[rows],
+            orders=self.orders[rows],
+            rising=self.rising[:, rows],
+            falling=self.falling[:, rows],
+            slot=self.slot[:, rows],
+        )
+
+    def times(self, factor: ComplexArray) -> GapField:
+        """The field times `factor`, (c,) or (n, c)."""
+        return GapField(
+            classes=self.classes,
+            orders=self.orders,
+            rising=self.rising * factor[..., None],
+            falling=self.falling * factor[..., None],
+            slot=self.slot * factor,
+        )
+
 
 class SlottedGap:
     """The slotted gap of n designs, ready to answer sources in given classes of orders.
@@ -195,15 +215,7 @@ class SlottedGap:
         """Add what the stator's iron does to the field of perfect teeth and yoke."""
         if not np.any(self._stator):
             return field
-        reaction = self.reaction
-        lost = self._stator * field.slot / (1.0 + self._stator * reaction.slot)
-        return GapField(
-            classes=self.classes,
-            orders=self.orders,
-            rising=field.rising - lost[:, :, None] * reaction.rising,
-            falling=field.falling - lost[:, :, None] * reaction.falling,
-            slot=field.slot - lost * reaction.slot,
-        )
+        return with_stator(field, self.reaction, self._stator)
 
     def of_magnets(self, smooth: ComplexArray) -> GapField:
         """Field of magnet harmonics, one per class.
@@ -247,6 +259,26 @@ class SlottedGap:
         load = load - MU_0 * self._share[:, None, :] * current[..., None]
         answer = np.linalg.solve(self._matrix, load[..., None])[..., 0]
         return self._field(0.0, np.concatenate([uniform[..., None], answer], axis=2))
+
+
+def with_stator(field: GapField, reaction: GapField, voltage: FloatArray) -> GapField:
+    """The field under perfect teeth and yoke with iron that takes voltage.
+
+    Parameters
+    ----------
+    field, reaction : GapField
+        Of the same classes in the same order; the reaction as of `SlottedGap.reaction`.
+    voltage : array (n, c)
+        From `Iron.stator_voltage`.
+    """
+    lost = voltage * field.slot / (1.0 + voltage * reaction.slot)
+    return GapField(
+        classes=field.classes,
+        orders=field.orders,
+        rising=field.rising - lost[:, :, None] * reaction.rising,
+        falling=field.falling - lost[:, :, None] * reaction.falling,
+        slot=field.slot - lost * reaction.slot,
+    )
 
 
 def _mode_integrals(half: FloatArray, orders: IntArray, modes: int) -> FloatArray:

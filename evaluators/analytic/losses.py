@@ -3,33 +3,30 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
 
 from evaluators.analytic.linkage import Linkage
 from evaluators.analytic.rotation import Rotation
+from evaluators.analytic.waves import Waves
 from evaluators.machine.field import Excitation
 from evaluators.machine.geometry import CrossSections
 from evaluators.machine.losses.eddy import RotorEddyLoss, rotor_eddy_loss
 from evaluators.machine.losses.iron import iron_loss_from_waveform
 from evaluators.machine.task import Task
 
-if TYPE_CHECKING:
-    from evaluators.analytic.model import Waves
-
 FloatArray = NDArray[np.float64]
 
 
 @dataclass(frozen=True)
 class IronState:
-    """Iron loss (W/m) and largest mean flux densities (T), (n,) each."""
+    """Iron loss in W/m, and the largest flux that the suspension current adds in Wb/m, (n,)."""
 
     teeth: FloatArray
     yoke: FloatArray
-    tooth_peak: FloatArray
-    yoke_peak: FloatArray
+    tooth_extra: FloatArray
+    yoke_extra: FloatArray
 
 
 def iron(
@@ -41,7 +38,7 @@ def iron(
     exciting: Excitation,
     stacking: float,
 ) -> IronState:
-    """Loss and peaks of stator iron at the duty, from mean densities over tooth and yoke.
+    """Loss of the stator iron at the duty, from mean densities over tooth and yoke.
 
     The suspension's flux has the same frequency in the stator and any phase to the main flux, so
     it counts by its square in the loss and by its peak in the density. In a thick yoke the
@@ -74,8 +71,8 @@ def iron(
     return IronState(
         teeth=loss(teeth, tooth_extra, width) * density * sections.teeth_area,
         yoke=loss(yoke, yoke_extra, thickness / np.sqrt(spread)) * density * sections.yoke_area,
-        tooth_peak=(np.abs(teeth).max(axis=2) + tooth_extra).max(axis=1) / width,
-        yoke_peak=(np.abs(yoke).max(axis=2) + yoke_extra).max(axis=1) / thickness,
+        tooth_extra=tooth_extra.max(axis=1),
+        yoke_extra=yoke_extra.max(axis=1),
     )
 
 
@@ -106,13 +103,9 @@ def rotor_eddy(
         rising, falling = parts
         return rising * ratio[:, :, None] + falling / ratio[:, :, None]
 
-    def pair(parts: NDArray[np.complex128]) -> NDArray[np.complex128]:
-        classes = parts.shape[2] // 2
-        return np.stack([parts[..., :classes].sum(axis=2), parts[..., classes:].sum(axis=2)], 2)
-
     main = at_surface(rotation.dense(waves.magnets))
-    both = pair(at_surface(rotation.dense(waves.current)))
-    control = pair(at_surface(rotation.dense(waves.suspension)))
+    both = at_surface(rotation.pair(waves.current))
+    control = at_surface(rotation.pair(waves.suspension))
     main[:, :, 0] += both[..., 0]
     main[:, :, half] += both[..., 1]
     square = np.abs(main) ** 2

@@ -2,16 +2,17 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
-from evaluators.analytic import losses, rotor_state, stress
-from evaluators.analytic.gap import GapField, Iron, SlottedGap
+from evaluators.analytic import losses, rotor_state
+from evaluators.analytic.gap import GapField, Iron, SlottedGap, with_stator
 from evaluators.analytic.linkage import Linkage
+from evaluators.analytic.motion import Motion, move
 from evaluators.analytic.rotation import Rotation
-from evaluators.analytic.rotor import MagnetSource, RotorRadii, magnetisation, source
+from evaluators.analytic.rotor import MU_0, MagnetSource, RotorRadii, magnetisation, source
 from evaluators.analytic.rotor_state import at_order
 from evaluators.analytic.saturation import (
     Paths,
@@ -21,7 +22,8 @@ from evaluators.analytic.saturation import (
     fundamental_at_core,
     saturate,
 )
-from evaluators.analytic.slots import SlotMouth, mouth
+from evaluators.analytic.slots import mouth
+from evaluators.analytic.waves import PerfectStator, Waves
 from evaluators.machine.field import Excitation, FieldSolution
 from evaluators.machine.geometry import CrossSections
 from evaluators.machine.task import Task
@@ -51,38 +53,8 @@ class Resolution:
 
     slot_modes: int = 5
     reach: int = 16
-    highest_order: int = 96
+    highest_order: int = 64
     positions: int = 24
-
-
-@dataclass(frozen=True)
-class Waves:
-    """Gap fields of n designs (magnets, torque current, suspension current) and their slots.
-
-    The suspension field is that of phasor one, per ampere-turn, and made with the small-signal
-    iron; torque and magnet fields hold at the duty.
-    """
-
-    magnets: GapField
-    current: GapField
-    suspension: GapField
-    slot: SlotMouth
-
-
-@dataclass(frozen=True)
-class Motion:
-    """Torque and force over one sector of the turn, (n, positions).
-
-    `direct` and `mirrored` are the force per ampere-turn on the suspension phasor i and on its
-    conjugate; `rest` is the force without suspension current.
-    """
-
-    positions: FloatArray
-    torque: FloatArray
-    cogging: FloatArray
-    rest: ComplexArray
-    direct: ComplexArray
-    mirrored: ComplexArray
 
 
 class AnalyticModel:
@@ -95,7 +67,7 @@ class AnalyticModel:
         highest = min(max(15 * family.pole_pairs, 45), self.reach * family.slots)
         self.rotation = Rotation(
             winding=task.winding,
-            highest_order=max(resolution.highest_order, 3 * family.slots),
+            highest_order=max(resolution.highest_order, 3 * family.slots, highest),
             magnet_orders=np.arange(family.pole_pairs, highest + 1, 2 * family.pole_pairs),
         )
         self.linkage = Linkage(task.winding)
@@ -116,33 +88,25 @@ class AnalyticModel:
 
     def waves(
         self, sections: CrossSections, exciting: Excitation
-    ) -> tuple[Waves, MagnetSource, ComplexArray, SaturatedIron]:
-        """Gap fields at the duty, the smooth-bore source, and the torque phasor (n,).
+    ) -> tuple[Waves, MagnetSource, SaturatedIron]:
+        """Gap fields at the duty, the source of the magnets, and the iron of one permeability.
 
         Iron is found first with perfect iron's flux, then the field once more with that iron.
         """
-        magnet_orders = self.rotation.magnet_orders
+        rotation, magnet_orders = self.rotation, self.rotation.magnet_orders
+        slots, reach = rotation.slots, self.resolution.reach
         radii = RotorRadii.of(sections, self.recoil)
         slot = mouth(sections, self.resolution.slot_modes)
+        opening = sections.slot_opening_angle
         magnetised = magnetisation(
             sections.magnet_arc_ratio,
             self.remanence,
-            self.rotation.pole_pairs,
+            rotation.pole_pairs,
             magnet_orders,
             self.task.construction.magnetisation,
         )
-        residues, current = self.rotation.current_residues("torque")
-        control, control_current = self.rotation.current_residues("suspension")
-
-        def gap(classes: NDArray[np.int64]) -> SlottedGap:
-            return SlottedGap(
-                radii,
-                sections.slot_opening_angle,
-                slot,
-                self.rotation.slots,
-                classes,
-                self.reach,
-            )
+        residues, current = rotation.current_residues("torque")
+        control, control_current = rotation.current_residues("suspension")
 
         def torque_phasor(magnets: GapField) -> ComplexArray:
             flux = self.linkage.magnets(magnets, magnet_orders)
@@ -150,25 +114,45 @@ class AnalyticModel:
             return np.asarray(1j * exciting.torque * flux / np.abs(flux))
 
         perfect = Iron.perfect(len(sections))
-        core = perfect.core_admittance(self.recoil, magnet_orders)
-        smooth = source(radii, *magnetised, magnet_orders, core)
-        for_magnets, for_current = gap(magnet_orders), gap(residues)
+        smooth = source(
+            radii, *magnetised, magnet_orders, perfect.core_admittance(self.recoil, magnet_orders)
+        )
+        for_magnets = SlottedGap(radii, opening, slot, slots, magnet_orders, reach)
+        for_slots = SlottedGap(radii, opening, slot, slots, np.arange(slots), reach)
         magnets = for_magnets.of_magnets(smooth.bore)
         phasor = torque_phasor(magnets)
-        driven = for_current.of_currents(np.conj(phasor)[:, None] * current)
-        reaction = np.real(for_magnets.reaction.slot[:, 0])
+        unit = for_slots.reaction.of(residues)
+        driven = unit.times(MU_0 * np.conj(phasor)[:, None] * current)
+        reaction = np.real(for_slots.reaction.slot[:, rotation.pole_pairs % slots])
         paths = self._paths(sections, radii, magnets, driven, smooth, perfect, reaction)
-        iron = saturate(
-            sections, radii, (magnetised[0][:, :1], magnetised[1][:, :1]), paths, self.steels
-        )
+        fundamental = (magnetised[0][:, :1], magnetised[1][:, :1])
+        iron = saturate(sections, radii, fundamental, paths, self.steels)
 
-        core = iron.main.core_admittance(self.recoil, magnet_orders)
-        smooth = source(radii, *magnetised, magnet_orders, core)
-        magnets = for_magnets.with_iron(iron.main).of_magnets(smooth.bore)
-        phasor = torque_phasor(magnets)
-        driven = for_current.with_iron(iron.main).of_currents(np.conj(phasor)[:, None] * current)
-        suspension = gap(control).with_iron(iron.small).of_currents(control_current)
-        return Waves(magnets, driven, suspension, slot), smooth, phasor, iron
+        core = replace(iron.main, tooth=perfect.tooth, yoke=perfect.yoke)
+        admittance = core.core_admittance(self.recoil, magnet_orders)
+        smooth = source(radii, *magnetised, magnet_orders, admittance)
+        for_slots = for_slots.with_iron(core)
+        reaction_of = for_slots.reaction
+        magnets = for_magnets.with_iron(core).of_magnets(smooth.bore)
+        under_magnets = reaction_of.of(magnet_orders % slots)
+        main = iron.main.stator_voltage(slots, magnet_orders)
+        saturated = with_stator(magnets, under_magnets, main)
+        phasor = torque_phasor(saturated)
+        unit = reaction_of.of(residues)
+        driven = unit.times(MU_0 * np.conj(phasor)[:, None] * current)
+        under_control = reaction_of.of(control)
+        suspension = under_control.times(MU_0 * control_current)
+        waves = Waves(
+            magnets=saturated,
+            current=with_stator(driven, unit, iron.main.stator_voltage(slots, residues)),
+            suspension=with_stator(
+                suspension, under_control, iron.small.stator_voltage(slots, control)
+            ),
+            slot=slot,
+            phasor=phasor,
+            perfect=PerfectStator(magnets, driven, suspension, reaction_of),
+        )
+        return waves, smooth, iron
 
     def _paths(
         self,
@@ -203,89 +187,25 @@ class AnalyticModel:
             core_peak=core_peak(sections, at_core, self.steels)[1],
         )
 
-    # -- torque and force over the turn -------------------------------------------------------
-
     def motion(
         self, sections: CrossSections, waves: Waves, positions: FloatArray | None = None
     ) -> Motion:
         """Torque and force at rotor `positions` (k,), default one sector of the turn."""
-        rotation = self.rotation
         if positions is None:
-            positions = rotation.positions(self.resolution.positions)
-        turning = np.exp(1j * rotation.magnet_exponents[:, None] * positions)
-        pair = np.exp(1j * rotation.pole_pairs * np.array([-1.0, 1.0])[:, None] * positions)
-        magnet_rising, magnet_falling = (part @ turning for part in rotation.dense(waves.magnets))
-        rising, falling = (_collapse(part) @ pair for part in rotation.dense(waves.current))
-        rising, falling = magnet_rising + rising, magnet_falling + falling
-        control_rising, control_falling = (
-            _collapse(part) for part in rotation.dense(waves.suspension)
-        )
-        bore = sections.bore_radius
-        # The column of exp(-j p angle) goes with the conjugate of the phasor, the other with it.
-        on_mirrored = stress.force(
-            rising, control_falling[:, :, 0, None] * pair[0], bore
-        ) + stress.force(control_rising[:, :, 1, None] * pair[1], falling, bore)
-        on_direct = stress.force(
-            rising, control_falling[:, :, 1, None] * pair[1], bore
-        ) + stress.force(control_rising[:, :, 0, None] * pair[0], falling, bore)
-        return Motion(
-            positions=positions,
-            torque=stress.torque(rising, falling),
-            cogging=stress.torque(magnet_rising, magnet_falling),
-            rest=stress.force(rising, falling, bore),
-            direct=on_direct,
-            mirrored=on_mirrored,
-        )
-
-    def whole_turn(self, motion: Motion) -> tuple[ComplexArray, ComplexArray, ComplexArray]:
-        """Force parts (rest, direct, mirrored) over the whole turn, (n, sectors * positions)."""
-        sectors = self.rotation.sectors
-        turn = 2.0 * np.pi / sectors * np.arange(sectors)
-        parts = (motion.rest, motion.direct, motion.mirrored)
-        whole = [
-            (part[:, None, :] * np.exp(1j * exponent * turn)[None, :, None]).reshape(
-                part.shape[0], -1
-            )
-            for part, exponent in zip(parts, self.rotation.force_exponents, strict=True)
-        ]
-        return whole[0], whole[1], whole[2]
-
-    def command(self, motion: Motion, direction: float) -> ComplexArray:
-        """Suspension phasor of one ampere-turn that makes the mean force point to `direction`."""
-        direct, mirrored = motion.direct.mean(axis=1), motion.mirrored.mean(axis=1)
-        if self._direct_commands:
-            return np.asarray(np.exp(1j * direction) * np.conj(direct) / np.abs(direct))
-        return np.asarray(np.exp(-1j * direction) * mirrored / np.abs(mirrored))
-
-    @property
-    def _direct_commands(self) -> bool:
-        """Whether the mean force follows the phasor itself (else its conjugate)."""
-        family = self.task.winding.family
-        return family.suspension_pole_pairs > family.pole_pairs
-
-    def force_waves(self, motion: Motion, exciting: Excitation) -> ComplexArray:
-        """Force over the whole turn, commanded along x and along y, (n, 2, positions), N/m."""
-        rest, direct, mirrored = self.whole_turn(motion)
-        commanded = []
-        for direction in (0.0, 0.5 * np.pi):
-            phasor = (exciting.suspension * self.command(motion, direction))[:, None]
-            commanded.append(rest + direct * phasor + mirrored * np.conj(phasor))
-        return np.stack(commanded, axis=1)
+            positions = self.rotation.positions(self.resolution.positions)
+        return move(self.rotation, self.steels.stator, sections, waves, positions)
 
     # -- everything ---------------------------------------------------------------------------
 
     def solve(self, sections: CrossSections, exciting: Excitation) -> FieldSolution:
         """Field of n designs, per metre of stack."""
-        waves, smooth, phasor, iron_state = self.waves(sections, exciting)
+        waves, smooth, iron_state = self.waves(sections, exciting)
         motion = self.motion(sections, waves)
         mean_torque = motion.torque.mean(axis=1)
-        forces = self.force_waves(motion, exciting)
+        forces = motion.force_waves(exciting)
         mean_force = forces.mean(axis=2, keepdims=True)
         error = np.abs(np.abs(forces) - np.abs(mean_force)) / np.abs(mean_force)
         angle = np.abs(np.angle(forces * np.conj(mean_force)))
-        per_turn = np.abs(
-            motion.direct.mean(axis=1) if self._direct_commands else motion.mirrored.mean(axis=1)
-        )
 
         radii = RotorRadii.of(sections, self.recoil)
         pole_pairs = self.rotation.pole_pairs
@@ -313,13 +233,13 @@ class AnalyticModel:
             force=np.abs(mean_force[:, :, 0]).mean(axis=1),
             force_error_magnitude=error.max(axis=(1, 2)),
             force_error_angle=angle.max(axis=(1, 2)),
-            force_per_ampere_turn=per_turn,
+            force_per_ampere_turn=motion.force_per_ampere_turn,
             displacement_stiffness=rotor_state.stiffness_of(
                 sections, waves.magnets, self.rotation.magnet_orders
             ),
             flux_linkage=np.abs(linkage.magnets(waves.magnets, self.rotation.magnet_orders)),
             torque_inductance=linkage.inductance(
-                "torque", waves.current, slot.permeance, self.rotation, phasor
+                "torque", waves.current, slot.permeance, self.rotation, waves.phasor
             ),
             suspension_inductance=linkage.inductance(
                 "suspension", waves.suspension, slot.permeance, self.rotation, None
@@ -328,8 +248,8 @@ class AnalyticModel:
             * pole_pairs
             * np.abs(at_order(waves.magnets, pole_pairs))
             / sections.bore_radius,
-            tooth_flux_density=iron.tooth_peak,
-            yoke_flux_density=iron.yoke_peak,
+            tooth_flux_density=(motion.tooth_flux + iron.tooth_extra) / sections.tooth_width,
+            yoke_flux_density=(motion.yoke_flux + iron.yoke_extra) / sections.yoke_thickness,
             core_flux_density=core_peak(sections, at_core, self.steels)[0],
             magnet_flux_density=rotor_state.lowest_magnet_density(
                 sections,
@@ -344,9 +264,3 @@ class AnalyticModel:
             loss_magnet=eddy.magnet.sum(axis=1),
             loss_sleeve=eddy.sleeve.sum(axis=1),
         )
-
-
-def _collapse(dense: ComplexArray) -> ComplexArray:
-    """Sum the residue classes of a current field: all vary as exp(-+j p angle), (n, N, 2)."""
-    classes = dense.shape[2] // 2
-    return np.stack([dense[..., :classes].sum(axis=2), dense[..., classes:].sum(axis=2)], axis=2)

@@ -144,6 +144,12 @@ class Rotation:
         count = -(-per_sixth_period * 6 * self.pole_pairs // self.sectors)
         return np.asarray(2.0 * np.pi / self.sectors * np.arange(count) / count)
 
+    @property
+    def slot_period(self) -> tuple[int, int]:
+        """After how many slots the field of magnets and torque current repeats, and its sign."""
+        number = gcd(self.slots, 2 * self.pole_pairs)
+        return self.slots // number, -1 if (2 * self.pole_pairs // number) % 2 else 1
+
     # -- dense coefficients ----------------------------------------------------------------
 
     def dense(self, field: GapField) -> tuple[ComplexArray, ComplexArray]:
@@ -167,3 +173,21 @@ class Rotation:
             dense[:, -order[back] - 1, classes + column[back]] = np.conj(part[:, back])
             result.append(dense)
         return result[0], result[1]
+
+    def pair(self, field: GapField) -> tuple[ComplexArray, ComplexArray]:
+        """As `dense` for a current field, all of whose classes turn alike: (n, N, 2)."""
+        result = []
+        order = field.orders
+        ahead = (order >= 1) & (order <= self.highest_order)
+        back = (order <= -1) & (order >= -self.highest_order)
+        for part in (field.rising, field.falling):
+            both = np.zeros((part.shape[0], self.highest_order, 2), dtype=np.complex128)
+            both[:, order[ahead] - 1, 0] = part[:, ahead]
+            both[:, -order[back] - 1, 1] = np.conj(part[:, back])
+            result.append(both)
+        return result[0], result[1]
+
+    def by_order(self, field: GapField) -> tuple[ComplexArray, ComplexArray]:
+        """Rising and falling coefficients of the orders 1..N themselves, (n, N) each."""
+        rising, falling = self.pair(field)
+        return rising[:, :, 0], falling[:, :, 0]

@@ -32,11 +32,11 @@ def waveforms(model: AnalyticModel, design: Mapping[str, float]) -> tuple[Wavefo
     sectors = model.rotation.sectors
     count = motion.positions.size * sectors
     angle = 2.0 * np.pi * np.arange(count) / count
-    rest = model.whole_turn(motion)[0][0]
-    force_x, force_y = model.force_waves(motion, exciting)[0]
+    rest = motion.whole_turn()[0][0]
+    force_x, force_y = motion.force_waves(exciting)[0]
     turning = np.exp(1j * task.winding.family.pole_pairs * angle)
     command_x, command_y = (
-        np.real(exciting.suspension[0] * model.command(motion, direction)[0] * turning)
+        np.real(exciting.suspension[0] * motion.command(direction)[0] * turning)
         for direction in (0.0, 0.5 * np.pi)
     )
     teeth, yoke = model.linkage.iron_flux(waves.magnets, waves.current, model.rotation)
