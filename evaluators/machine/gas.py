@@ -61,3 +61,65 @@ def _sutherland(reference: Quantity, constant: Quantity, kelvin: FloatArray) -> 
     start = reference.at_C + ZERO_CELSIUS_K
     s = constant.value
     return np.asarray(reference.value * (kelvin / start) ** 1.5 * (start + s) / (kelvin + s))
+
+
+LOCAL_GROWTH_OF_CONDUCTIVITY = 2000.0  # K; makes conductivity grow nearly as T^1.4 near 330 K
+
+
+def vapour(
+    name: str,
+    *,
+    temperature_C: float,
+    pressure_Pa: float,
+    density: float,
+    viscosity: float,
+    thermal_conductivity: float,
+    specific_heat: float,
+    source: str,
+    year: int,
+) -> Gas:
+    """Return a gas from its properties at one state, a refrigerant vapour for instance.
+
+    Away from that state: density as p/T (with the gas constant that the stated density implies, so
+    that a vapour near saturation starts from its true density), viscosity in proportion to the
+    absolute temperature, conductivity a little faster, as vapours do (common practice). Within
+    30 K of the stated temperature that is good to some 4 percent; state the properties near the
+    temperature of the gap.
+
+    Parameters
+    ----------
+    name
+        For messages and tables.
+    temperature_C, pressure_Pa
+        State of the properties, in °C and Pa.
+    density, viscosity, thermal_conductivity, specific_heat
+        kg/m3, Pa s, W/(m K), J/(kg K) at constant pressure.
+    source, year
+        Where the properties come from.
+
+    Raises
+    ------
+    ValueError
+        If a property is implausible, naming it with value and range.
+    """
+    kelvin = temperature_C + ZERO_CELSIUS_K
+    for key, value in (("temperature", kelvin), ("pressure", pressure_Pa), ("density", density)):
+        if not value > 0.0:
+            msg = f"{name}: {key} = {value:g} must be positive"
+            raise ValueError(msg)
+
+    def stated(value: float, unit: str) -> Quantity:
+        return Quantity(value, unit, source, year, at_C=temperature_C)
+
+    return Gas(
+        name=name,
+        description=f"{name}, from its properties at {temperature_C:g} degC",
+        density=stated(density * ATMOSPHERE_PA / pressure_Pa, "kg/m3"),
+        gas_constant=stated(pressure_Pa / (density * kelvin), "J/(kg K)"),
+        specific_heat=stated(specific_heat, "J/(kg K)"),
+        viscosity=stated(viscosity, "Pa s"),
+        # Sutherland's constant equal to the temperature: locally in proportion to it.
+        viscosity_temperature=stated(kelvin, "K"),
+        thermal_conductivity=stated(thermal_conductivity, "W/(m K)"),
+        conductivity_temperature=stated(LOCAL_GROWTH_OF_CONDUCTIVITY, "K"),
+    )

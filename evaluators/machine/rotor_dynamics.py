@@ -78,12 +78,14 @@ def beam_matrices(
 
 
 def natural_speeds(stiffness: FloatArray, masses: FloatArray) -> FloatArray:
-    """Return all natural angular frequencies in rad/s, rising, (n, size).
+    """Return all natural angular frequencies in rad/s, rising, (..., n, size).
 
     Parameters
     ----------
-    stiffness, masses : array (n, size, size)
-        Symmetric, the mass matrix positive definite. Rigid modes come out as zero up to rounding.
+    stiffness : array (..., n, size, size)
+        Symmetric. Rigid modes come out as zero up to rounding.
+    masses : array (n, size, size)
+        Symmetric and positive definite.
     """
     lower = np.linalg.inv(np.linalg.cholesky(masses))
     scaled = lower @ stiffness @ np.swapaxes(lower, -1, -2)

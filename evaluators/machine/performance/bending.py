@@ -24,8 +24,8 @@ RPM = 30.0 / np.pi
 def metrics(task: Task, sections: CrossSections, state: Operating) -> dict[str, FloatArray]:
     """Metrics of bending speeds and of their margin to the speed range of the duty."""
     stiffness, masses = _beam(task, sections, state)
-    free = natural_speeds(stiffness, masses)[:, FIRST_BENDING]
-    supported = natural_speeds(_supported(task, state, stiffness), masses)[:, FIRST_BENDING]
+    both = np.stack([stiffness, _supported(task, state, stiffness)])
+    free, supported = natural_speeds(both, masses)[..., FIRST_BENDING]
     duty = task.duty
     margin = separation_margin(
         supported,

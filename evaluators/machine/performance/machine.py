@@ -33,6 +33,7 @@ LONGEST_STACK = 20.0  # m; a longer one means that the cross-section makes no to
 # Whole strands change the copper area after the turns are chosen, and with it temperatures and
 # voltage a little; so much of the voltage is kept for that.
 VOLTAGE_KEPT = 2e-3
+ROUGHLY = 0.3  # K, to which temperatures settle before the turns are chosen
 
 
 @dataclass(frozen=True)
@@ -61,12 +62,10 @@ def performance(
     """
     whole = _strands(task, sections, np.ones(len(sections)))  # as if turns could be broken
     start = study_temperatures(task, len(sections))
-    first = settle(task, sections, exciting, field, whole, start)
+    first = settle(task, sections, exciting, field, whole, start, ROUGHLY)
     turns = _turns(task, sections, exciting, first, whole)
     strands = _strands(task, sections, turns.per_coil)
     state = settle(task, sections, exciting, field, strands, first.temperatures)
-    reasons = _reasons(task, sections, state)
-    kept = np.where(reasons == "", 1.0, np.nan)
     metrics: dict[str, FloatArray] = {}
     metrics |= fields.metrics(task, sections, state)
     metrics |= circuit.metrics(task, sections, exciting, state, turns, strands)
@@ -77,6 +76,8 @@ def performance(
     metrics |= levitation.metrics(task, sections, exciting, state, turns, metrics)
     metrics |= heat.metrics(task, sections, state)
     metrics |= magnets.metrics(task, sections, exciting, state, strands)
+    reasons = _reasons(task, state, metrics[mechanics.FREE_RING])
+    kept = np.where(reasons == "", 1.0, np.nan)
     return Performance({metric.name: metrics[metric.name] * kept for metric in METRICS}, reasons)
 
 
@@ -110,9 +111,9 @@ def _turns(
     )
 
 
-def _reasons(task: Task, sections: CrossSections, state: Operating) -> NDArray[np.str_]:
+def _reasons(task: Task, state: Operating, free_ring: FloatArray) -> NDArray[np.str_]:
     """Why a design cannot do the duty at all, (n,), empty where it can."""
-    reasons = mechanics.refusals(task, sections, state).astype(object)
+    reasons = mechanics.refusals(task, free_ring).astype(object)
     for row in np.flatnonzero(~state.settled):
         reasons[row] = (
             f"the temperatures did not settle: after {state.rounds} rounds they still change by "

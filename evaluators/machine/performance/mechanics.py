@@ -22,21 +22,23 @@ from evaluators.machine.task import Task
 
 ASSEMBLY_TEMPERATURE = 20.0  # degC, at which interference is stated
 RPM = 30.0 / np.pi
-WINDOW_ROUNDS = 3  # of the secant; the stress is all but linear in the interference
+WINDOW_ROUNDS = 2  # of the secant
+FREE_RING = "free ring utilisation"
+"""Key of the sleeve's own stress at overspeed over its strength: no metric, but a refusal."""
 
 
 @dataclass(frozen=True)
 class Strength:
-    """Rotor of n designs in four states: cold and hot (rows), at rest and at overspeed.
+    """Rotor of n designs in four states: at rest and at overspeed (first axis), cold and hot.
 
     Attributes
     ----------
     section : RotorSection
         With a leading axis of two temperatures, cold and hot.
-    heating, strength : array (2, n) or (2, 1)
+    heating, strength : array (2, n)
         Above assembly, K; of the sleeve, Pa.
-    overspeed : float
-        rad/s.
+    speeds : array (2, 1, 1)
+        Zero and the overspeed, rad/s.
     isotropic : bool
         Whether the sleeve is a metal, judged by von Mises, or a fibre, judged along it.
     """
@@ -44,7 +46,7 @@ class Strength:
     section: RotorSection
     heating: FloatArray
     strength: FloatArray
-    overspeed: float
+    speeds: FloatArray
     isotropic: bool
 
     @classmethod
@@ -70,17 +72,22 @@ class Strength:
             section=section,
             heating=temperature - ASSEMBLY_TEMPERATURE,
             strength=strength.at(temperature),
-            overspeed=duty.speed * duty.overspeed_ratio,
+            speeds=np.array([0.0, duty.speed * duty.overspeed_ratio]).reshape(2, 1, 1),
             isotropic=parts.sleeve.isotropic,
         )
 
-    def state(self, interference: FloatArray, speed: float) -> SleeveState:
-        """Pressures and stresses, (2, n): cold and hot."""
-        return sleeve_stress(self.section, interference, speed, self.heating)
+    @property
+    def overspeed(self) -> float:
+        """rad/s."""
+        return float(self.speeds[1, 0, 0])
 
-    def sleeve_stress(self, state: SleeveState) -> FloatArray:
+    def states(self, interference: FloatArray) -> SleeveState:
+        """Pressures and stresses of the four states, (2, 2, n)."""
+        return sleeve_stress(self.section, interference, self.speeds, self.heating)
+
+    def sleeve_stress(self, states: SleeveState) -> FloatArray:
         """The stress that decides, Pa."""
-        return state.equivalent_stress if self.isotropic else state.hoop_stress
+        return states.equivalent_stress if self.isotropic else states.hoop_stress
 
     def least_interference(self, pressure: float) -> FloatArray:
         """Interference (n,) m that leaves `pressure` on the core at overspeed, cold and hot."""
@@ -89,11 +96,8 @@ class Strength:
 
     def utilisation(self, interference: FloatArray) -> FloatArray:
         """Largest sleeve stress over strength of the four states, (n,)."""
-        use = [
-            self.sleeve_stress(self.state(interference, speed)) / self.strength
-            for speed in (0.0, self.overspeed)
-        ]
-        return np.asarray(np.max(use, axis=(0, 1)))
+        use = self.sleeve_stress(self.states(interference)) / self.strength
+        return np.asarray(use.max(axis=(0, 1)))
 
     def free_ring_utilisation(self) -> FloatArray:
         """Stress of the sleeve turning by itself at overspeed over its strength, (n,)."""
@@ -101,18 +105,21 @@ class Strength:
         hoop = ring.stress(0.0, 0.0, self.overspeed, self.heating).hoop
         return np.asarray((hoop / self.strength).max(axis=0))
 
-    def largest_interference(self, start: FloatArray) -> FloatArray:
+    def largest_interference(self, least: FloatArray, use_at_least: FloatArray) -> FloatArray:
         """Interference (n,) m at which the sleeve reaches its strength; negative if none does.
 
-        By the secant from two interferences at and above `start`.
+        By secants: the stress of every single state is all but linear in the interference.
         """
-        low, high = start, start + 1e-3 * self.section.sleeve.inner_radius
-        use_low, use_high = self.utilisation(low), self.utilisation(high)
+        low, use_low = least, use_at_least
+        high = least + 1e-3 * self.section.sleeve.inner_radius
         for _ in range(WINDOW_ROUNDS):
-            slope = (use_high - use_low) / np.where(high != low, high - low, 1.0)
-            following = high + (1.0 - use_high) / np.where(slope > 0.0, slope, np.inf)
-            low, use_low = high, use_high
-            high, use_high = following, self.utilisation(following)
+            use_high = self.utilisation(high)
+            change, step = use_high - use_low, high - low
+            able = change * step > 0.0
+            following = high + (1.0 - use_high) * np.where(
+                able, step / np.where(able, change, 1.0), 0.0
+            )
+            low, use_low, high = high, use_high, following
         return np.asarray(high)
 
 
@@ -122,37 +129,44 @@ def metrics(task: Task, sections: CrossSections, state: Operating) -> dict[str, 
     needed = rotor.least_interference(task.construction.contact_pressure)
     given = task.construction.sleeve_interference
     interference = needed if given is None else np.full_like(needed, given)
-    rest, fast = rotor.state(interference, 0.0), rotor.state(interference, rotor.overspeed)
-    both = (rest, fast)
-    stress = np.max([rotor.sleeve_stress(item) for item in both], axis=(0, 1))
-    use = np.max([rotor.sleeve_stress(item) / rotor.strength for item in both], axis=(0, 1))
-    pressure = np.max([item.sleeve_pressure for item in both], axis=(0, 1))
-    core = np.max([np.abs(item.core_hoop_stress) for item in both], axis=(0, 1))
+    states = rotor.states(interference)
+    stress = rotor.sleeve_stress(states)
+    use = (stress / rotor.strength).max(axis=(0, 1))
+    pressure = states.sleeve_pressure.max(axis=(0, 1))
+    core = np.abs(states.core_hoop_stress).max(axis=(0, 1))
+    use_at_least = use if given is None else rotor.utilisation(needed)
+    window = rotor.largest_interference(needed, use_at_least) - needed
     parts = task.materials
     lift_off = lift_off_speed(rotor.section, interference, rotor.heating).min(axis=0)
     hot = held(state.temperature("core"))
     return {
         "tip_speed_m_s": tip_speed(sections.rotor_radius, task.duty.speed),
         "sleeve_interference_um": 1e6 * interference,
-        "interference_window_um": 1e6 * (rotor.largest_interference(needed) - needed),
-        "sleeve_stress_MPa": 1e-6 * stress,
+        "interference_window_um": 1e6 * window,
+        "sleeve_stress_MPa": 1e-6 * stress.max(axis=(0, 1)),
         "sleeve_stress_ratio": use,
-        "sleeve_radial_tension_MPa": 1e-6
-        * np.max([item.radial_tension for item in both], axis=(0, 1)),
-        "contact_pressure_MPa": 1e-6 * fast.core_pressure.min(axis=0),
+        "sleeve_radial_tension_MPa": 1e-6 * states.radial_tension.max(axis=(0, 1)),
+        "contact_pressure_MPa": 1e-6 * states.core_pressure[1].min(axis=0),
         # A speed that is never reached counts as ten times the overspeed.
         "lift_off_speed_ratio": np.minimum(lift_off / rotor.overspeed, 10.0),
         "magnet_pressure_MPa": 1e-6 * pressure,
         "magnet_stress_ratio": pressure / float(parts.magnet.compressive_strength.value),
         "core_stress_MPa": 1e-6 * core,
         "core_stress_ratio": core / parts.shaft.yield_strength.at(hot),
+        FREE_RING: rotor.free_ring_utilisation(),
     }
 
 
-def refusals(task: Task, sections: CrossSections, state: Operating) -> NDArray[np.str_]:
-    """Why no interference can hold a rotor at all, (n,), empty where one might."""
-    rotor = Strength.of(task, sections, state)
-    use = rotor.free_ring_utilisation()
+def refusals(task: Task, use: FloatArray) -> NDArray[np.str_]:
+    """Why no interference can hold a rotor at all, (n,), empty where one might.
+
+    Parameters
+    ----------
+    task : Task
+        For the name of the sleeve's material.
+    use : array (n,)
+        Entry `FREE_RING` of `metrics`.
+    """
     text = np.full(use.shape, "", dtype=object)
     for row in np.flatnonzero(use > 1.0):
         text[row] = (

@@ -110,6 +110,7 @@ def settle(
     field: FieldSolution,
     strands: Strands,
     start: FloatArray,
+    tolerance: float = SETTLED,
 ) -> Operating:
     """State in which losses and temperatures agree.
 
@@ -125,6 +126,8 @@ def settle(
         Wires of the coils.
     start : array (n, nodes)
         First guess of the temperatures, degC; the answer where the study fixed them.
+    tolerance : float
+        Change of the temperatures from one round to the next at which a design has settled, K.
     """
     if task.cooling.temperatures == "fixed":
         return _state(task, sections, exciting, field, strands, start)[0]
@@ -157,13 +160,13 @@ def settle(
         if number > DAMPED_FROM:
             step = 0.5 * step
         # A row that has settled stays, so that no row depends on the others of its batch.
-        step = np.where((change <= SETTLED)[:, None], 0.0, step)
+        step = np.where((change <= tolerance)[:, None], 0.0, step)
         temperatures = temperatures + step
-        change = np.where(change <= SETTLED, change, np.abs(step).max(axis=1))
-        if np.all(change <= SETTLED):
+        change = np.where(change <= tolerance, change, np.abs(step).max(axis=1))
+        if np.all(change <= tolerance):
             break
     last, _ = _state(task, sections, exciting, field, strands, temperatures)
-    return replace(last, settled=change <= SETTLED, change=change, rounds=number, solids=solids)
+    return replace(last, settled=change <= tolerance, change=change, rounds=number, solids=solids)
 
 
 def _sources(state: Operating) -> FloatArray:
