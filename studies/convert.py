@@ -3,10 +3,15 @@
 from __future__ import annotations
 
 from math import pi
+from typing import Any
 
+from evaluators.machine.cooling import Cooling
+from evaluators.machine.demagnetisation import Fault
+from evaluators.machine.layout import RotorLayout
 from evaluators.machine.materials import (
     Conductor,
     ElectricalSteel,
+    Gas,
     Magnet,
     ShaftSteel,
     SleeveMaterial,
@@ -14,16 +19,15 @@ from evaluators.machine.materials import (
 )
 from evaluators.machine.task import Conditions, Construction, Duty, MaterialSet, RippleWeights
 from studies.schema import (
-    KILO,
-    MEGA,
-    MICRO,
-    MILLI,
     ConditionsSection,
     ConstructionSection,
     DutySection,
     MaterialsSection,
     RippleSection,
 )
+from studies.schema_base import KILO, MEGA, MICRO, MILLI, Section
+from studies.schema_machine import FACTORS, CoolingSection, FaultSection, RotorSection
+from studies.suggestions import stem, suffix
 
 RPM = 2.0 * pi / 60.0  # rad/s
 
@@ -34,6 +38,7 @@ MATERIAL_KINDS = {
     "conductor": "conductor",
     "sleeve": "sleeve",
     "shaft": "shaft_steel",
+    "gas": "gas",
 }
 """Kind of material behind each key of the section ``materials``."""
 
@@ -49,6 +54,10 @@ def duty(section: DutySection) -> Duty:
         suspension_share=section.suspension_share,
         orientation=section.orientation,
         balance_grade=section.balance_grade_mm_s * MILLI,
+        rated_suspension_share=section.rated_suspension_share,
+        process_force=section.process_force_N,
+        lowest_speed_ratio=section.lowest_speed_ratio,
+        highest_speed_ratio=section.highest_speed_ratio,
     )
 
 
@@ -73,6 +82,9 @@ def construction(section: ConstructionSection) -> Construction:
         magnet_segments=section.magnet_segments,
         magnet_axial_segment=section.magnet_axial_segment_mm * MILLI,
         strand_diameter=section.strand_diameter_mm * MILLI,
+        wire_grade=section.wire_grade,
+        winding_packing=section.winding_packing,
+        parallel_groups=section.parallel_groups,
         end_turn_extension=section.end_turn_extension_mm * MILLI,
         slot_insulation=section.slot_insulation_mm * MILLI,
         minimum_slot_opening=section.minimum_slot_opening_mm * MILLI,
@@ -88,6 +100,29 @@ def ripple(section: RippleSection) -> RippleWeights:
     return RippleWeights(**section.model_dump())
 
 
+def cooling(section: CoolingSection) -> Cooling:
+    """Cooling in SI units."""
+    return Cooling(**_si(section))
+
+
+def rotor(section: RotorSection) -> RotorLayout:
+    """Rotor layout in SI units."""
+    return RotorLayout(**_si(section))
+
+
+def fault(section: FaultSection) -> Fault:
+    """Fault, the names are the same."""
+    return Fault(**_si(section))
+
+
+def _si(section: Section) -> dict[str, Any]:
+    """Values in SI by the machine's names: the keys without their units."""
+    return {
+        stem(key): value * FACTORS[suffix(key)] if value and suffix(key) in FACTORS else value
+        for key, value in section.model_dump().items()
+    }
+
+
 def material_set(section: MaterialsSection) -> MaterialSet:
     """Load the named materials; the names have been checked."""
     return MaterialSet(
@@ -97,4 +132,5 @@ def material_set(section: MaterialsSection) -> MaterialSet:
         conductor=load(Conductor, section.conductor),
         sleeve=load(SleeveMaterial, section.sleeve),
         shaft=load(ShaftSteel, section.shaft),
+        gas=load(Gas, section.gas),
     )

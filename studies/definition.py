@@ -10,8 +10,11 @@ from typing import Any, TypeVar, cast
 
 from evaluators.interface import installed
 from evaluators.machine import materials
+from evaluators.machine.cooling import Cooling
 from evaluators.machine.cost import Prices
+from evaluators.machine.demagnetisation import Fault
 from evaluators.machine.families import Refusal
+from evaluators.machine.layout import RotorLayout
 from evaluators.machine.task import (
     Conditions,
     Construction,
@@ -48,9 +51,10 @@ from studies.schema import (
     MaterialsSection,
     RippleSection,
     SearchSection,
-    Section,
     StudySection,
 )
+from studies.schema_base import Section
+from studies.schema_machine import CoolingSection, FaultSection, RotorSection
 from studies.sections import Model, validated
 from studies.suggestions import suggest, unknown
 
@@ -69,7 +73,7 @@ class Study:
         Where it was read, as shown in messages.
     content : bytes
         The file as it was read.
-    duty, conditions, construction, materials, prices, ripple
+    duty, conditions, construction, materials, prices, ripple, cooling, rotor, fault
         As `evaluators.machine.task.Task` takes them, SI.
     windings : tuple of Winding
         One for each family, in the order of the file.
@@ -92,6 +96,9 @@ class Study:
     materials: MaterialSet
     prices: Prices
     ripple: RippleWeights
+    cooling: Cooling
+    rotor: RotorLayout
+    fault: Fault
     windings: tuple[Winding, ...]
     refused: tuple[Refusal, ...]
     bounds: Mapping[str, Mapping[str, Bounds]]
@@ -124,6 +131,9 @@ class Study:
             conditions=self.conditions,
             construction=self.construction,
             ripple=self.ripple,
+            cooling=self.cooling,
+            rotor=self.rotor,
+            fault=self.fault,
         )
 
 
@@ -192,6 +202,9 @@ class _Reader:
         ripple = self._built(
             convert.ripple, self._section("ripple_index", RippleSection), "ripple_index"
         )
+        cooling = self._built(convert.cooling, self._section("cooling", CoolingSection), "cooling")
+        rotor = self._built(convert.rotor, self._section("rotor", RotorSection), "rotor")
+        fault = self._built(convert.fault, self._section("fault", FaultSection), "fault")
         chosen = self._materials(self._section("materials", MaterialsSection))
         prices = self._prices()
         search = self._section("search", SearchSection)
@@ -217,6 +230,9 @@ class _Reader:
             materials=cast("MaterialSet", chosen),
             prices=cast("Prices", prices),
             ripple=cast("RippleWeights", ripple),
+            cooling=cast("Cooling", cooling),
+            rotor=cast("RotorLayout", rotor),
+            fault=cast("Fault", fault),
             windings=families.windings,
             refused=families.refused,
             bounds=bounds,

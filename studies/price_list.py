@@ -8,7 +8,7 @@ from pydantic import Field
 
 from evaluators.machine.cost import Price, Prices
 from studies.errors import Finding, Path, quoted
-from studies.schema import Section
+from studies.schema_base import Section
 from studies.sections import validated
 from studies.suggestions import suggest, unknown
 

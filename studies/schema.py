@@ -8,17 +8,11 @@ from __future__ import annotations
 
 from typing import Any, Literal
 
-from pydantic import BaseModel, ConfigDict, Field
+from pydantic import Field
 
 from evaluators.machine.task import Conditions, Construction, Duty, RippleWeights
-
-MEGA, KILO, MILLI, MICRO = 1e6, 1e3, 1e-3, 1e-6
-
-
-class Section(BaseModel):
-    """A table of the study file: no unknown keys, no text for numbers."""
-
-    model_config = ConfigDict(extra="forbid", strict=True, frozen=True)
+from studies.schema_base import KILO, MEGA, MILLI, Section
+from studies.schema_machine import CoolingSection, FaultSection, RotorSection
 
 
 class StudySection(Section):
@@ -63,6 +57,31 @@ class DutySection(Section):
         le=1000.0,
         description="residual unbalance grade G of ISO 21940-11",
     )
+    rated_suspension_share: float = Field(
+        Duty.rated_suspension_share,
+        ge=0.001,
+        le=3.0,
+        description="share of the peak slot current that the suspension inverter can make for "
+        "lift-off and shocks",
+    )
+    process_force_N: float = Field(
+        Duty.process_force,
+        ge=0.0,
+        le=1e7,
+        description="steady radial force of the driven process on the rotor",
+    )
+    lowest_speed_ratio: float = Field(
+        Duty.lowest_speed_ratio,
+        ge=0.0,
+        le=1.0,
+        description="lowest continuous speed over the speed",
+    )
+    highest_speed_ratio: float = Field(
+        Duty.highest_speed_ratio,
+        ge=1.0,
+        le=2.0,
+        description="highest continuous speed over the speed",
+    )
 
 
 def _temperature(default: float, of: str) -> Any:
@@ -70,7 +89,7 @@ def _temperature(default: float, of: str) -> Any:
 
 
 class ConditionsSection(Section):
-    """Temperatures and the gas in the gap."""
+    """Stated temperatures and the pressure in the gap; see `cooling` for solved ones."""
 
     winding_temperature_C: float = _temperature(Conditions.winding_temperature, "winding")
     magnet_temperature_C: float = _temperature(Conditions.magnet_temperature, "magnets")
@@ -110,7 +129,22 @@ class ConstructionSection(Section):
         Construction.strand_diameter / MILLI,
         ge=0.02,
         le=10.0,
-        description="bare diameter of one round strand",
+        description="largest bare diameter of one round strand; a standard size is taken",
+    )
+    wire_grade: int = Field(
+        Construction.wire_grade, ge=1, le=2, description="thickness of enamel by IEC 60317-0-1"
+    )
+    winding_packing: float = Field(
+        Construction.winding_packing,
+        ge=0.2,
+        le=1.155,
+        description="wires times the square of their overall diameter over the insulated slot area",
+    )
+    parallel_groups: int | None = Field(
+        None,
+        ge=1,
+        le=2,
+        description="groups of a phase in parallel (2) or in series (1); chosen if left out",
     )
     end_turn_extension_mm: float = Field(
         Construction.end_turn_extension / MILLI,
@@ -166,6 +200,7 @@ class MaterialsSection(Section):
     conductor: str = Field(description="conductor of the winding")
     sleeve: str = Field(description="sleeve over the magnets")
     shaft: str = Field(description="shaft steel")
+    gas: str = Field("Air", description="gas in the rotor chamber")
 
 
 def _weight(default: float, of: str) -> Any:
@@ -252,6 +287,9 @@ SIMPLE_SECTIONS: dict[str, type[Section]] = {
     "conditions": ConditionsSection,
     "construction": ConstructionSection,
     "materials": MaterialsSection,
+    "cooling": CoolingSection,
+    "rotor": RotorSection,
+    "fault": FaultSection,
     "ripple_index": RippleSection,
     "search": SearchSection,
     "evaluator": EvaluatorSection,

@@ -9,7 +9,7 @@ from pydantic import BaseModel, ValidationError
 from pydantic.fields import FieldInfo
 
 from studies.errors import Finding, Path, quoted
-from studies.suggestions import UNITS, stem, suggest, unknown
+from studies.suggestions import suffix, suggest, unknown
 
 Model = TypeVar("Model", bound=BaseModel)
 
@@ -20,6 +20,13 @@ UNIT_TEXT = {
     "mm_s": "mm/s",
     "A_mm2": "A/mm2",
     "Nm": "N m",
+    "m_s": "m/s",
+    "L_min": "L/min",
+    "L_s": "L/s",
+    "W_m2K": "W/(m2 K)",
+    "W_mK": "W/(m K)",
+    "kg_cm2": "kg cm2",
+    "N_mm": "N/mm",
 }
 TYPE_TEXT = {
     "float_type": "a number",
@@ -55,8 +62,7 @@ def validated(model: type[Model], table: object, path: Path) -> tuple[Model | No
 
 def unit_of(key: str) -> str:
     """Unit that the suffix of `key` states, empty if it has none."""
-    tail = key[len(stem(key)) + 1 :]
-    return UNIT_TEXT.get(tail, tail) if tail.split("_")[0] in UNITS else ""
+    return UNIT_TEXT.get(suffix(key), suffix(key))
 
 
 def range_text(key: str, field: FieldInfo) -> str:

@@ -8,7 +8,8 @@ from collections.abc import Iterable
 from studies.errors import quoted
 
 _UNIT_WORDS = """m mm um cm km nm inch mm2 cm2 m2 L W mW kW MW rpm krpm rps V mV kV A mA kA
-N mN kN Nm mNm H mH uH Hz kHz T mT s ms us min h C K F Pa kPa MPa GPa bar deg rad g kg percent"""
+N mN kN Nm mNm H mH uH Hz kHz T mT s ms us min h C K F Pa kPa MPa GPa bar deg rad g kg percent
+m2K mK"""
 UNITS = frozenset(_UNIT_WORDS.split())
 LISTED = 12  # names are listed in full up to here
 SIMILAR = 0.6  # difflib's own default, which catches one or two slips in a word
@@ -20,6 +21,11 @@ def stem(name: str) -> str:
     while len(parts) > 1 and parts[-1] in UNITS:
         parts.pop()
     return "_".join(parts)
+
+
+def suffix(name: str) -> str:
+    """Unit suffix of `name`: ``rotor_radius_mm`` gives ``mm``; empty if it has none."""
+    return name[len(stem(name)) + 1 :]
 
 
 def suggest(name: str, known: Iterable[str], listing: str = "") -> str:
