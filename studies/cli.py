@@ -20,6 +20,7 @@ from studies.commands.new import new
 from studies.commands.report import report
 from studies.commands.resume import resume
 from studies.commands.sensitivity import sensitivity
+from studies.commands.sheet import sheet
 from studies.commands.status import status
 from studies.commands.sweep import sweep
 from studies.commands.tolerance import tolerance
@@ -108,6 +109,7 @@ for _command in (
     watch,
     compare,
     report,
+    sheet,
     inspect,
     choose,
     export,
