@@ -144,14 +144,14 @@ class StudyWatch:
                     f"{item.evaluations:,}/{self.budget:,}",
                     percent(item.feasible / item.evaluations) if item.evaluations else "-",
                     f"{item.failed:,}",
-                    str(len(item.front)),
-                    *best,
                     "" if done else _per_second(rate),
                     "complete" if done else duration(left),
+                    str(len(item.front)),
+                    *best,
                 ]
             )
         best_of = [f"best {goal.name}" for goal in goals]
-        head = ["family", "evaluations", "feasible", "failed", "front", *best_of, "rate", "left"]
+        head = ["family", "evaluations", "feasible", "failed", "rate", "left", "front", *best_of]
         return [line[:width] for line in text_table(head, rows).split("\n")]
 
 

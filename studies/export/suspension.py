@@ -56,6 +56,8 @@ class SuspensionData:
         Phases angle_x and angle_y of phase one, electrical rad.
     current : float
         Peak amperes at the duty's share of slot current.
+    scale : float
+        What K of the waveforms was multiplied by so that its mean is the stored metric.
     """
 
     angle: FloatArray
@@ -63,6 +65,7 @@ class SuspensionData:
     rest: FloatArray
     current_angle: FloatArray
     current: float
+    scale: float
 
     @property
     def direction_error(self) -> FloatArray:
@@ -73,6 +76,9 @@ class SuspensionData:
 
 def suspension_data(chosen: Chosen) -> SuspensionData:
     """Gather it from the evaluator's waveforms and the stored length and turns.
+
+    Waveforms hold at the magnet temperature the study states, metrics at the one the machine
+    takes; K is scaled from one to the other by the stored mean force per ampere.
 
     Raises
     ------
@@ -103,12 +109,15 @@ def suspension_data(chosen: Chosen) -> SuspensionData:
         for column, command in enumerate("xy"):
             force = length * found[FORCE.format(along=along, command=command)].values
             per_ampere[:, row, column] = (force - rest[:, row]) / amperes[column]
+    mean = per_ampere.mean(axis=0)
+    scale = chosen.metric("force_per_ampere_N_A") / (0.5 * float(np.trace(mean)))
     return SuspensionData(
         angle=angle,
-        per_ampere=per_ampere,
+        per_ampere=scale * per_ampere,
         rest=rest,
         current_angle=np.angle(np.array(phasors)),
         current=float(amperes[0]),
+        scale=scale,
     )
 
 
@@ -177,6 +186,9 @@ def _summary(chosen: Chosen, data: SuspensionData) -> dict[str, Any]:
         "angle_y_electrical_deg": float(np.degrees(data.current_angle[1])),
         "mean_force_per_ampere_N_A": mean.tolist(),
         "mean_force_per_ampere_rows": "force along x, along y; columns: current x, current y",
+        "scaled_by": data.scale,
+        "scaled_because": "waveforms hold at the study's magnet temperature, the mean force per "
+        "ampere at the one the machine takes; forces without suspension current are not scaled",
         "largest_direction_error_deg": float(np.degrees(np.abs(data.direction_error).max())),
         "current_at_duty_share_A": data.current,
         "displacement_stiffness_N_mm": chosen.metric("displacement_stiffness_N_mm"),
