@@ -80,14 +80,20 @@ def mixture_conductivity(
 
 
 def rib_efficiency(
-    coefficient: ArrayLike, conductivity: ArrayLike, thickness: ArrayLike, height: ArrayLike
+    coefficient: ArrayLike,
+    conductivity: ArrayLike,
+    thickness: ArrayLike,
+    height: ArrayLike,
+    width: ArrayLike = np.inf,
 ) -> FloatArray:
-    """Return the efficiency tanh(mL)/(mL) of a long straight rib, m² = 2h/(k t).
+    """Return the efficiency tanh(mL)/(mL) of a straight rib, m² = 2 h (1/t + 1/w)/k.
 
     Adiabatic tip; Incropera et al., *Fundamentals of Heat and Mass Transfer*, extended surfaces
-    (from memory). Coefficient in W/(m2 K), conductivity in W/(m K), thickness and height in m.
+    (from memory). Coefficient in W/(m2 K), conductivity in W/(m K), lengths in m; `width` is that
+    along the frame, infinite by default.
     """
-    m = np.sqrt(2.0 * floats(coefficient) / (floats(conductivity) * floats(thickness)))
+    around = 1.0 / floats(thickness) + 1.0 / floats(width)
+    m = np.sqrt(2.0 * floats(coefficient) * around / floats(conductivity))
     x = m * floats(height)
     small = x < 1e-4
     y = np.where(small, 1.0, x)
