@@ -74,6 +74,7 @@ def short_circuit_peak(
     return np.asarray(-steady.real + np.abs(start) * np.cos(lead) * np.exp(-decay * turned))
 
 
+@dataclass(frozen=True)
 class ArmatureReaction:
     """Field of a winding's torque current against the magnets, for all designs of one family.
 
@@ -81,9 +82,22 @@ class ArmatureReaction:
     permeable, magnets as air: Zhu, Howe, "Instantaneous magnetic field distribution in brushless
     permanent magnet DC motors, Part II: armature-reaction field", *IEEE Trans. Magn.* 29(1), 1993.
     Saturation lowers it, so a margin from it is on the safe side.
+
+    Attributes
+    ----------
+    orders : array (h,)
+        Spatial orders that the winding makes.
+    pattern : array (h, k)
+        Opposing density of each order at k points of poles and positions, per amplitude of the
+        order.
     """
 
-    def __init__(self, winding: Winding) -> None:
+    orders: FloatArray
+    pattern: FloatArray
+
+    @classmethod
+    def of(cls, winding: Winding) -> ArmatureReaction:
+        """Prepare the field of a winding."""
         family = winding.family
         slots, p = family.slots, family.pole_pairs
         orders = np.arange(1, REACH * slots + 1)
@@ -105,8 +119,7 @@ class ArmatureReaction:
         field = 1j * waves[:, :, None, None] * np.exp(1j * orders[:, None, None, None] * theta)
         pattern = 2.0 * np.real(field) * opposed
         present = np.abs(waves).max(axis=1) > 1e-9 * np.abs(waves).max()
-        self._orders = orders[present].astype(np.float64)
-        self._pattern = pattern[present].reshape(int(present.sum()), -1)
+        return cls(orders[present].astype(np.float64), pattern[present].reshape(present.sum(), -1))
 
     def per_ampere_turn(
         self,
@@ -120,10 +133,10 @@ class ArmatureReaction:
         Of the current along the negative magnet axis, over all poles and rotor positions, at the
         outer surface of the magnets. Radii in m, angle in rad, shape (n,).
         """
-        n = self._orders
+        n = self.orders
         bore, surface = bore_radius[:, None], magnet_radius[:, None]
         core = (core_radius[:, None] / bore) ** (2.0 * n)
         out = (surface / bore) ** n
         radial = (bore / surface) * (out + core / out) / (1.0 - core)
         sheet = np.sinc(n * slot_opening_angle[:, None] / (2.0 * np.pi)) / (2.0 * np.pi * bore)
-        return np.asarray((MU_0 * sheet * radial @ self._pattern).max(axis=1))
+        return np.asarray((MU_0 * sheet * radial @ self.pattern).max(axis=1))

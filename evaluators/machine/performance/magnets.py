@@ -69,7 +69,7 @@ def fault_ampere_turns(
 
 @lru_cache(maxsize=32)
 def _cached(winding_key: WindingKey) -> ArmatureReaction:
-    return ArmatureReaction(winding_key.winding)
+    return ArmatureReaction.of(winding_key.winding)
 
 
 class WindingKey:
