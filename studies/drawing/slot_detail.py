@@ -124,7 +124,7 @@ def _parts(shape: SlotShape, winding: Winding) -> list[str]:
     return drawn
 
 
-def _tooth_line(shape: SlotShape, pitch: float, radius: float, half: float) -> tuple[complex, ...]:
+def _tooth_line(pitch: float, radius: float, half: float) -> tuple[complex, complex]:
     """Ends of a line across the tooth on the right at `radius`."""
     axis = cmath.exp(-0.5j * pitch)
     along = math.sqrt(radius**2 - half**2)
@@ -133,11 +133,9 @@ def _tooth_line(shape: SlotShape, pitch: float, radius: float, half: float) -> t
 
 def _across(shape: SlotShape, pitch: float) -> list[tuple[str, complex, complex]]:
     opening = shape.wall(shape.bore_radius)
-    tip = _tooth_line(
-        shape, pitch, 0.5 * (shape.bore_radius + shape.tip_radius), shape.tip_half_width
-    )
+    tip = _tooth_line(pitch, 0.5 * (shape.bore_radius + shape.tip_radius), shape.tip_half_width)
     body = _tooth_line(
-        shape, pitch, 0.5 * (shape.wedge_radius + shape.slot_radius), 0.5 * shape.tooth_width
+        pitch, 0.5 * (shape.wedge_radius + shape.slot_radius), 0.5 * shape.tooth_width
     )
     return [("A", opening, opening.conjugate()), ("B", *tip), ("C", *body)]
 

@@ -18,7 +18,7 @@ from studies.stored import matrix
 
 FloatArray = NDArray[np.float64]
 
-UNITS = {"1": "", "um": "µm", "A/mm2": "A/mm²", "deg": "°", "W/cm2": "W/cm²"}
+UNITS = {"1": "", "degC": "°C", "um": "µm", "A/mm2": "A/mm²", "deg": "°", "W/cm2": "W/cm²"}
 
 
 @dataclass(frozen=True)
@@ -47,6 +47,7 @@ class Column:
 
 def title(name: str, unit: str) -> str:
     """A name without its unit suffix and with blanks: ``loss_total_W`` is "loss total"."""
+    unit = UNITS.get(unit, unit) if unit == "degC" else unit
     suffixes = {unit, *(key for key, said in UNIT_TEXT.items() if said == unit)}
     suffixes |= {unit.replace("/", "_").replace(" ", ""), unit.replace(" ", "").replace("/", "_")}
     for suffix in sorted(suffixes - {"1", ""}, key=len, reverse=True):

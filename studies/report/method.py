@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
+import tomllib
 from html import escape
-from math import pi
 
 from evaluators.machine.metrics import METRICS
 from evaluators.machine.variables import VARIABLES
@@ -15,6 +15,9 @@ from studies.layout import Results, program_version
 from studies.report.collect import ReportData
 from studies.report.columns import UNITS
 from studies.report.html import bullets, element, paragraph, table
+from studies.schema import SIMPLE_SECTIONS
+from studies.sections import unit_of
+from studies.suggestions import stem
 from studies.tables import number
 
 READING = (
@@ -91,38 +94,31 @@ def _study(results: Results) -> str:
     )
 
 
+LEFT_OUT = ("study", "materials", "ripple_index", "search", "evaluator")
+"""Sections of the study file that have a place of their own, or none, in a report."""
+
+
 def task_rows(study: Study) -> list[list[str]]:
-    """Duty, conditions and construction as a reader says them."""
-    duty, conditions, construction = study.duty, study.conditions, study.construction
-    interference = construction.sleeve_interference
-    return [
-        ["shaft power", f"{duty.power / 1e3:g} kW"],
-        ["speed", f"{duty.speed * 30.0 / pi:.6g} r/min"],
-        ["overspeed", f"{duty.overspeed_ratio:g} times the speed"],
-        ["DC link", f"{duty.dc_link_voltage:g} V"],
-        ["voltage kept back for control", f"{100.0 * duty.voltage_reserve:g} %"],
-        ["slot current for suspension", f"{100.0 * duty.suspension_share:g} %"],
-        ["shaft", duty.orientation],
-        ["balance grade", f"G {1e3 * duty.balance_grade:g}"],
-        ["winding temperature", f"{conditions.winding_temperature:g} °C"],
-        ["magnet temperature", f"{conditions.magnet_temperature:g} °C"],
-        ["sleeve temperature", f"{conditions.sleeve_temperature:g} °C"],
-        ["gas in the gap", f"{conditions.gas_temperature:g} °C, {conditions.gas_pressure:.6g} Pa"],
-        ["magnetisation", construction.magnetisation],
-        ["copper fill", f"{construction.copper_fill:g}"],
-        ["magnet segments of a pole", f"{construction.magnet_segments}"],
-        ["axial magnet segment", f"{1e3 * construction.magnet_axial_segment:g} mm"],
-        ["strand diameter", f"{1e3 * construction.strand_diameter:g} mm"],
-        ["end-turn extension", f"{1e3 * construction.end_turn_extension:g} mm"],
-        ["slot insulation", f"{1e3 * construction.slot_insulation:g} mm"],
-        [
-            "sleeve interference",
-            "as the contact pressure needs it"
-            if interference is None
-            else f"{1e6 * interference:g} µm",
-        ],
-        ["rotor overhang", f"{1e3 * construction.rotor_overhang:g} mm"],
-    ]
+    """Duty, conditions and construction: every key of the study file with its value."""
+    written = tomllib.loads(study.content.decode("utf-8-sig"))
+    rows = []
+    for section, model in SIMPLE_SECTIONS.items():
+        if section in LEFT_OUT:
+            continue
+        filled = model.model_validate(written.get(section, {}))
+        for key, field in model.model_fields.items():
+            value = getattr(filled, key)
+            said = "left to the program" if value is None else _said(value, unit_of(key))
+            name = stem(key).replace("_", " ")
+            rows.append([f"{name}: {field.description}", said])
+    return rows
+
+
+def _said(value: object, unit: str) -> str:
+    if isinstance(value, bool):
+        return "yes" if value else "no"
+    number_text = f"{value:.6g}" if isinstance(value, float) else str(value)
+    return f"{number_text} {unit}".rstrip()
 
 
 def material_rows(study: Study) -> list[list[str]]:

@@ -28,7 +28,7 @@ class Cautions:
 
 @dataclass(frozen=True)
 class Grid:
-    """A table; the first `words` columns are set to the left, numbers to the right.
+    """A table; the first `words` and the last `tail` columns are set to the left, others right.
 
     `weights` are the relative widths of the columns on paper, all alike if empty.
     """
@@ -36,7 +36,12 @@ class Grid:
     head: tuple[str, ...]
     rows: tuple[tuple[str, ...], ...]
     words: int = 1
+    tail: int = 0
     weights: tuple[float, ...] = ()
+
+    def left(self, column: int) -> bool:
+        """Whether a column holds words."""
+        return column < self.words or column >= len(self.head) - self.tail
 
 
 @dataclass(frozen=True)

@@ -12,7 +12,6 @@ from math import pi, sqrt
 from typing import Any
 
 from evaluators.machine.geometry import CrossSections
-from evaluators.machine.mass import active_masses
 from evaluators.machine.task import STANDARD_GRAVITY, Task
 from studies.tables import number
 
@@ -73,6 +72,7 @@ def worked_checks(task: Task, sections: CrossSections, row: Mapping[str, Any]) -
         _density,
         _voltage,
         _efficiency,
+        _magnets,
         _weight,
         _force_per_weight,
         _unbalance,
@@ -143,7 +143,7 @@ def _torque(task: Task, sections: CrossSections, row: Mapping[str, Any]) -> Chec
         3.0 * emf / sqrt(2.0) * current / speed,
         metric.torque_Nm,
         "N m",
-        0.05,
+        0.02,
         "power balance of the fundamental; saturation by the current itself",
     )
 
@@ -162,7 +162,7 @@ def _emf(task: Task, sections: CrossSections, row: Mapping[str, Any]) -> Check:
         omega * coils * turns * factor * flux,
         metric.back_emf_V,
         "V",
-        0.1,
+        0.05,
         "slots thin out the flux over their openings",
     )
 
@@ -240,20 +240,33 @@ def _efficiency(task: Task, sections: CrossSections, row: Mapping[str, Any]) -> 
     )
 
 
-def _weight(task: Task, sections: CrossSections, row: Mapping[str, Any]) -> Check:
+def _magnets(task: Task, sections: CrossSections, row: Mapping[str, Any]) -> Check:
     metric = _Numbers(row)
-    length = sections.bore_radius * 0.0 + 1e-3 * metric.stack_length_mm
-    _, rotor = active_masses(task, sections, length, length * 0.0)
-    mass = float(rotor[0])
+    length = 1e-3 * metric.stack_length_mm + task.construction.rotor_overhang
+    area, density = float(sections.magnet_area[0]), float(task.materials.magnet.density.value)
     return Check(
-        "rotor weight from areas and densities",
-        "W = g L Σ ρ A",
-        f"{STANDARD_GRAVITY:.4g} m/s² × {_n(mass)} kg",
-        STANDARD_GRAVITY * mass,
-        metric.rotor_weight_N,
-        "N",
+        "mass of the magnets",
+        "m = ρ A L",
+        f"{_n(density)} kg/m³ × {_n(1e6 * area)} mm² × {_n(1e3 * length)} mm",
+        density * area * length,
+        metric.magnet_mass_kg,
+        "kg",
         1e-3,
         "rounding",
+    )
+
+
+def _weight(task: Task, sections: CrossSections, row: Mapping[str, Any]) -> Check:
+    metric = _Numbers(row)
+    return Check(
+        "rotor weight",
+        "W = g m",
+        f"{STANDARD_GRAVITY:.5g} m/s² × {_n(metric.rotor_mass_kg)} kg",
+        STANDARD_GRAVITY * metric.rotor_mass_kg,
+        metric.rotor_weight_N,
+        "N",
+        1e-6,
+        "the same formula",
     )
 
 

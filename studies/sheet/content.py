@@ -57,7 +57,11 @@ def design_sheet(results: Results, design: str) -> Sheet:
         Text(_verdict(found)),
         Cautions(CAUTIONS),
         Heading("What it must do"),
-        Grid(("duty, conditions, construction", "value"), _pairs(task_rows(study))),
+        Grid(
+            ("duty, conditions, construction", "value"),
+            _pairs(task_rows(study)),
+            weights=(5, 2),
+        ),
         Grid(("part", "material"), _pairs(material_rows(study)), words=2),
         Heading("Cross-section"),
         Drawing(
@@ -251,6 +255,7 @@ def _checks(
         ("check", "with numbers", "by hand", "reported", "difference"),
         tuple(rows),
         words=2,
+        tail=1,
         weights=(4, 5, 2, 2, 4),
     )
 
@@ -270,7 +275,11 @@ def _metrics(found: Inspection) -> Block:
                 )
             )
     return Grid(
-        ("metric", "meaning", "value", "source"), tuple(rows), words=2, weights=(3, 6, 2.4, 4)
+        ("metric", "meaning", "value", "source"),
+        tuple(rows),
+        words=2,
+        tail=1,
+        weights=(3, 6, 2.4, 4),
     )
 
 

@@ -42,7 +42,7 @@ def _block(block: Block) -> str:
 
 def _table(grid: Grid) -> str:
     def cells(row: tuple[str, ...], tag: str) -> str:
-        kinds = [' class="words"' if column < grid.words else "" for column in range(len(row))]
+        kinds = [' class="words"' if grid.left(column) else "" for column in range(len(row))]
         return "".join(
             f"<{tag}{kind}>{escape(text)}</{tag}>" for kind, text in zip(kinds, row, strict=True)
         )

@@ -68,7 +68,7 @@ def _block(block: Block) -> dict[str, Any]:
                 "kind": "grid",
                 "head": list(block.head),
                 "rows": [list(row) for row in block.rows],
-                "words": block.words,
+                "left": [block.left(column) for column in range(len(block.head))],
                 "weights": list(block.weights) or [1.0] * len(block.head),
             }
 
