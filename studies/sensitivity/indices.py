@@ -9,6 +9,7 @@ The estimators are those of SALib (Iwanaga, Usher, Herman, *Socio-Environmental 
 
 from __future__ import annotations
 
+import warnings
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any, Literal
@@ -173,9 +174,17 @@ def delta_indices(
         if _constant(y):
             found.append(tuple(np.zeros(len(bounds)) for _ in range(4)))
             continue
-        result = analysis.analyze(
-            problem, x[chosen], y, num_resamples=DELTA_RESAMPLES, conf_level=CONFIDENCE, seed=seed
-        )
+        with warnings.catch_warnings():
+            # It tells of merged bins and of uneven samples; that these are uneven stands in basis.
+            warnings.simplefilter("ignore")
+            result = analysis.analyze(
+                problem,
+                x[chosen],
+                y,
+                num_resamples=DELTA_RESAMPLES,
+                conf_level=CONFIDENCE,
+                seed=seed,
+            )
         # Older releases know one delta only.
         keys = [k if k in result else k.replace("delta_balanced", "delta") for k in names]
         found.append(tuple(np.asarray(result[k]) for k in keys))
