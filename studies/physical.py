@@ -5,27 +5,34 @@ from __future__ import annotations
 from evaluators.machine.metrics import METRIC
 
 INFINITE = float("inf")
+ABSOLUTE_ZERO_C = -273.15
 
-# Metrics that may be negative. All others are magnitudes, ratios of magnitudes, sizes or losses.
-SIGNED = frozenset({"contact_pressure_MPa", "magnet_flux_density_T"})
+# Words in the names of metrics that may be negative: differences, and pressures that may turn
+# into gaps. All others are magnitudes, ratios of magnitudes, sizes or losses.
+SIGNED_WORDS = frozenset({"margin", "window", "tension", "contact", "interference", "knee"})
 
 # No material carries more than about 2.5 T; fields above this are a slip of the unit.
 LARGEST_FLUX_DENSITY_T = 5.0
 
 LARGEST = {
     "efficiency": 1.0,
+    "copper_fill": 1.0,
+    "power_factor": 1.0,
     "force_error_angle_deg": 180.0,
 }
 
 
 def possible_range(metric: str) -> tuple[float, float]:
     """Smallest and largest value `metric` can take, infinite where open."""
-    low = -INFINITE if metric in SIGNED else 0.0
+    unit, words = METRIC[metric].unit, frozenset(metric.split("_"))
     high = LARGEST.get(metric, INFINITE)
-    if METRIC[metric].unit == "T":
-        high = LARGEST_FLUX_DENSITY_T
-        low = -LARGEST_FLUX_DENSITY_T if metric in SIGNED else 0.0
-    return low, high
+    if unit == "T":
+        # A magnet's flux density counts along its magnetisation and is negative once reversed.
+        signed = bool(words & (SIGNED_WORDS | {"magnet"}))
+        return (-LARGEST_FLUX_DENSITY_T if signed else 0.0), LARGEST_FLUX_DENSITY_T
+    if unit == "degC":
+        return ABSOLUTE_ZERO_C, high
+    return (-INFINITE if words & SIGNED_WORDS else 0.0), high
 
 
 def range_words(metric: str) -> str:

@@ -20,6 +20,12 @@ class PriceEntry(Section):
     """Price of one material in detail."""
 
     per_kg: float = Field(ge=0.0, le=LARGEST_PRICE, description="price of a kilogram bought")
+    low_per_kg: float | None = Field(
+        None, ge=0.0, le=LARGEST_PRICE, description="the same in a cheap market"
+    )
+    high_per_kg: float | None = Field(
+        None, ge=0.0, le=LARGEST_PRICE, description="the same in a dear market"
+    )
     waste_share: float = Field(
         Price.waste_share, ge=0.0, le=0.99, description="share of the bought mass that is lost"
     )
@@ -67,7 +73,10 @@ def check_prices(table: object) -> tuple[Prices | None, list[Finding]]:
             wrong = [Finding(here, item.problem, item.remedy) for item in wrong]
         findings += wrong
         if entry is not None:
-            prices[key] = Price(entry.per_kg, entry.waste_share, entry.processing_per_kg)
+            try:
+                prices[key] = Price(**entry.model_dump())
+            except ValueError as error:
+                findings.append(Finding(here, str(error)))
     required = [item.name for item in fields(Prices) if item.default_factory is MISSING]
     findings += [
         Finding((*path, key), "is missing", "give its price per kilogram")

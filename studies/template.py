@@ -109,7 +109,7 @@ balance_grade_mm_s = 2.5   # ISO 21940-11 grade G 2.5
 
 
 MIDDLE = """
-# Fixed temperatures; check them against your cooling.
+# Temperatures the calculation starts from; those of winding and rotor are then solved.
 [conditions]
 winding_temperature_C = 120.0
 magnet_temperature_C = 100.0
@@ -117,6 +117,13 @@ sleeve_temperature_C = 100.0
 ambient_temperature_C = 40.0
 gas_temperature_C = 80.0
 gas_pressure_kPa = 101.325
+
+# A water jacket round the stack; `method` may also be "forced air" or "coefficient".
+[cooling]
+temperatures = "solved"
+method = "jacket"
+coolant_temperature_C = 45.0
+insulation_class = "F"
 
 [construction]
 magnetisation = "parallel"
@@ -192,7 +199,11 @@ tooth_flux_density_T = {{ at_most = 1.6 }}
 yoke_flux_density_T = {{ at_most = 1.5 }}
 voltage_use = {{ at_most = 1.0 }}
 lift_off_ratio = {{ at_least = 1.5 }}           # lifts off the touchdown bearings with reserve
-surface_loss_W_cm2 = {{ at_most = 2.0 }}        # a water jacket; air alone carries about 0.3
+slot_occupation = {{ at_most = 1.0 }}           # the wires fit
+insulation_margin_K = {{ at_least = 0.0 }}      # hot spot below the insulation class
+rotor_material_margin_K = {{ at_least = 0.0 }}
+fault_demagnetisation_margin_T = {{ at_least = 0.0 }}   # magnets outlive a short circuit
+separation_margin = {{ at_least = 0.0 }}        # bending speed clear of the duty; state [rotor]
 length_ratio = {{ at_most = 2.5 }}
 
 [[objectives]]

@@ -47,6 +47,22 @@ def test_units_reach_the_machine_in_si(write_study: Write) -> None:
     assert [goal.name for goal in study.objectives] == ["loss_total_W", "cost", "ripple_index"]
 
 
+def test_prices_of_cheap_and_dear_markets(write_study: Write) -> None:
+    ranged = "magnet = { per_kg = 80, low_per_kg = 60.0, high_per_kg = 150.0 }"
+    prices = load_study(write_study(("magnet = 80", ranged))).prices
+    assert (prices.magnet.low_per_kg, prices.magnet.high_per_kg) == (60.0, 150.0)
+    falling = "magnet = { per_kg = 80, low_per_kg = 90.0 }"
+    assert "must not fall" in mistakes(write_study(("magnet = 80", falling)))[0]
+
+
+def test_limits_of_metrics_that_may_be_negative(write_study: Write) -> None:
+    signed = ("separation_margin", "insulation_margin_K", "hot_spot_temperature_C",
+              "magnet_flux_density_T", "contact_pressure_MPa")  # fmt: skip
+    text = "\n".join(f"{name} = {{ at_most = -1.0 }}" for name in signed)
+    study = load_study(write_study(("tip_speed_m_s = { at_most = 70.0 }", text)))
+    assert [limit.metric for limit in study.limits] == list(signed)
+
+
 def test_families_by_rule_with_own_bounds_and_pitch(write_study: Write) -> None:
     rule = "slots = [9, 12]\npole_pairs = [2, 3, 4]\n[families.variables.Q12p4s5]\n"
     rule += "rotor_radius_mm = [15, 20]"
