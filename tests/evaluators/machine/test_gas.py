@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 from CoolProp.CoolProp import PropsSI
 
-from evaluators.machine.gas import gas_state
+from evaluators.machine.gas import gas_state, vapour
 from evaluators.machine.materials import Gas, load
 
 
@@ -50,3 +50,44 @@ def test_shape_is_that_of_both_arguments() -> None:
     # Viscosity of an ideal gas does not depend on pressure, density is proportional to it.
     assert np.ptp(state.viscosity[0]) == 0.0
     assert state.density[0, 2] == pytest.approx(100.0 * state.density[0, 0], rel=1e-12)
+
+
+@pytest.mark.parametrize("fluid", ["R134a", "R1234ze(E)", "Propane"])
+@pytest.mark.parametrize("shift", [-25.0, 0.0, 25.0])
+def test_refrigerant_vapour_from_its_properties(fluid: str, shift: float) -> None:
+    """Stated at 60 °C and 2 bar, asked for 25 K to either side and at half the pressure."""
+    at = ("T", 60.0 + 273.15, "P", 2e5, fluid)
+    gas = vapour(
+        fluid,
+        temperature_C=60.0,
+        pressure_Pa=2e5,
+        density=PropsSI("D", *at),
+        viscosity=PropsSI("V", *at),
+        thermal_conductivity=PropsSI("L", *at),
+        specific_heat=PropsSI("C", *at),
+        source="CoolProp",
+        year=2026,
+    )
+    for pressure, slack in ((2e5, 0.0), (1e5, 0.03)):
+        found = gas_state(gas, 60.0 + shift, pressure)
+        there = ("T", 60.0 + shift + 273.15, "P", pressure, fluid)
+        # Exact at the stated state; beside it the growth is a rule, and the vapour is not ideal.
+        near = 1e-9 if shift == 0.0 else 0.045
+        assert float(found.density) == pytest.approx(PropsSI("D", *there), rel=near + slack)
+        assert float(found.viscosity) == pytest.approx(PropsSI("V", *there), rel=near + slack)
+        conductivity = PropsSI("L", *there)
+        assert float(found.thermal_conductivity) == pytest.approx(conductivity, rel=near + slack)
+
+
+def test_impossible_vapour_is_refused() -> None:
+    good = {
+        "temperature_C": 60.0, "pressure_Pa": 2e5, "density": 8.0, "viscosity": 1.3e-5,
+        "thermal_conductivity": 0.016, "specific_heat": 900.0,
+    }  # fmt: skip
+    for key, value, word in (
+        ("density", 0.0, "density = 0 must be positive"),
+        ("viscosity", 1.3e-2, "viscosity = 0.013 Pa s is outside the range"),
+        ("pressure_Pa", -1.0, "pressure = -1 must be positive"),
+    ):
+        with pytest.raises(ValueError, match=word):
+            vapour("test", **{**good, key: value}, source="test", year=2026)

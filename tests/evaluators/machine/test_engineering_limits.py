@@ -1,0 +1,335 @@
+"""The limits as metrics: current, force, strength, bending, demagnetisation, cost."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import machines
+import numpy as np
+import pytest
+
+from evaluators.analytic.evaluator import AnalyticEvaluator
+from evaluators.interface import Evaluations
+from evaluators.machine import materials
+from evaluators.machine.cooling import Cooling
+from evaluators.machine.cost import Price
+from evaluators.machine.demagnetisation import Fault
+from evaluators.machine.layout import RotorLayout
+from evaluators.machine.materials import SleeveMaterial
+from evaluators.machine.metrics import METRIC, METRICS
+from evaluators.machine.performance.mechanics import interference_verdict
+from evaluators.machine.quantity import MU_0
+from evaluators.machine.task import STANDARD_GRAVITY, Task
+
+ROWS = 30
+FIXED = Cooling(temperatures="fixed")
+
+
+def run(task: Task, batch: dict[str, np.ndarray] | None = None) -> dict[str, np.ndarray]:
+    chosen = machines.scattered(ROWS, seed=7) if batch is None else batch
+    found: Evaluations = AnalyticEvaluator(task).evaluate(chosen)
+    assert set(found.status.tolist()) == {"ok"}, found.reason
+    return dict(found.metrics)
+
+
+@pytest.fixture(scope="module")
+def usual() -> dict[str, np.ndarray]:
+    return run(machines.task())
+
+
+# -- circuit ----------------------------------------------------------------------------------
+
+
+def test_emf_times_current_is_torque_times_speed(usual: dict[str, np.ndarray]) -> None:
+    """Power of the air gap by terminals and by Maxwell stress."""
+    electrical = 1.5 * usual["back_emf_V"] * np.sqrt(2.0) * usual["torque_current_A"]
+    mechanical = usual["torque_Nm"] * machines.task().duty.speed
+    # With saturated iron the analytic field leaves up to a tenth between the two routes.
+    linear = (usual["yoke_flux_density_T"] < 1.4) & (usual["tooth_flux_density_T"] < 1.4)
+    assert linear.sum() > 5
+    np.testing.assert_allclose(electrical[linear], mechanical[linear], rtol=0.01)
+
+
+def test_currents_turns_and_wires_are_of_one_winding(usual: dict[str, np.ndarray]) -> None:
+    task = machines.task()
+    sections = machines.sections(task, machines.scattered(ROWS, seed=7))
+    copper = usual["copper_fill"] * sections.slot_area
+    wire = 0.25e-6 * np.pi * usual["wire_diameter_mm"] ** 2
+    strands = 2.0 * usual["turns_per_coil"] * usual["strands_per_turn"] * wire
+    np.testing.assert_allclose(strands, copper, rtol=1e-12)
+    assert np.all(usual["copper_fill"] <= task.construction.copper_fill * (1.0 + 1e-8))
+    current = np.sqrt(
+        (usual["torque_current_A"] / usual["parallel_groups"]) ** 2
+        + usual["suspension_current_A"] ** 2
+    )
+    np.testing.assert_allclose(usual["phase_current_A"], current, rtol=1e-12)
+    density = 2.0 * usual["turns_per_coil"] * current / (copper * 1e6)
+    np.testing.assert_allclose(usual["conductor_density_A_mm2"], density, rtol=1e-9)
+
+
+def test_voltage_is_kept(usual: dict[str, np.ndarray]) -> None:
+    more_than_one = usual["turns_per_coil"] > 1.0
+    assert np.all(usual["voltage_use"][more_than_one] <= 1.0)
+
+
+def test_parallel_groups_halve_voltage_and_double_current() -> None:
+    # Fixed temperatures and few turns, so that nothing but the connection differs.
+    task = replace(machines.task(), cooling=FIXED)
+    series = run(replace(task, construction=replace(task.construction, parallel_groups=1)))
+    parallel = run(replace(task, construction=replace(task.construction, parallel_groups=2)))
+    for name, power in (("back_emf_V", -1), ("torque_inductance_mH", -2), ("torque_current_A", 1)):
+        turns = parallel["turns_per_coil"] / series["turns_per_coil"]
+        scale = {
+            "back_emf_V": turns,
+            "torque_inductance_mH": turns**2,
+            "torque_current_A": 1 / turns,
+        }
+        ratio = parallel[name] / series[name] / scale[name]
+        # Whole strands change the copper area by a percent, which moves nothing here.
+        np.testing.assert_allclose(ratio, 2.0**power, rtol=1e-9)
+
+
+# -- levitation --------------------------------------------------------------------------------
+
+
+def test_levitation_budget_adds_up(usual: dict[str, np.ndarray]) -> None:
+    task = machines.task()
+    touchdown = 0.5e-3 * machines.scattered(ROWS, seed=7)["clearance_mm"]
+    stiffness = 1e3 * usual["displacement_stiffness_N_mm"]
+    np.testing.assert_allclose(usual["magnetic_pull_N"], stiffness * 0.3 * touchdown, rtol=1e-9)
+    np.testing.assert_allclose(usual["zone_a_displacement_um"], 0.3e6 * touchdown, rtol=1e-9)
+    mass = usual["rotor_mass_kg"]
+    np.testing.assert_allclose(usual["rotor_weight_N"], STANDARD_GRAVITY * mass, rtol=1e-12)
+    # ISO 21940-11: the grade times the speed is an acceleration.
+    unbalance = mass * task.duty.balance_grade * task.duty.speed
+    np.testing.assert_allclose(usual["unbalance_force_N"], unbalance, rtol=1e-12)
+    demand = usual["rotor_weight_N"] + unbalance + usual["magnetic_pull_N"]
+    np.testing.assert_allclose(usual["suspension_demand_N"], demand, rtol=1e-12)
+    lift = usual["rotor_weight_N"] + stiffness * touchdown
+    np.testing.assert_allclose(usual["rated_force_N"] / usual["lift_off_ratio"], lift, rtol=1e-9)
+
+
+def test_suspension_force_is_force_per_ampere_times_current(usual: dict[str, np.ndarray]) -> None:
+    current = np.sqrt(2.0) * usual["suspension_current_A"]
+    np.testing.assert_allclose(usual["force_N"], usual["force_per_ampere_N_A"] * current, rtol=2e-3)
+    # The whole slot current is ten times the share of 0.1.
+    np.testing.assert_allclose(usual["rated_force_N"], 10.0 * usual["force_N"], rtol=2e-3)
+
+
+def test_slew_rate_uses_what_the_duty_leaves(usual: dict[str, np.ndarray]) -> None:
+    duty = machines.task().duty
+    left = duty.dc_link_voltage / np.sqrt(3.0) - usual["phase_voltage_V"]
+    left = left - usual["residual_voltage"] * usual["back_emf_V"]
+    per_ms = usual["force_per_ampere_N_A"] * left / usual["suspension_inductance_mH"]
+    np.testing.assert_allclose(
+        usual["force_slew_N_ms"], usual["parallel_groups"] * per_ms, rtol=1e-9
+    )
+    high = run(machines.task(duty={"voltage_reserve": 0.3}))
+    assert np.median(high["control_bandwidth_Hz"] / usual["control_bandwidth_Hz"]) > 1.5
+
+
+def test_vertical_shaft_and_process_force() -> None:
+    vertical = run(machines.task(duty={"orientation": "vertical"}))
+    pushed = run(machines.task(duty={"orientation": "vertical", "process_force": 12.0}))
+    lying = run(machines.task())
+    extra = pushed["suspension_demand_N"] - vertical["suspension_demand_N"]
+    np.testing.assert_allclose(extra, 12.0, rtol=1e-9)
+    weight = lying["suspension_demand_N"] - vertical["suspension_demand_N"]
+    np.testing.assert_allclose(weight, lying["rotor_weight_N"], rtol=1e-9)
+
+
+# -- rotor -------------------------------------------------------------------------------------
+
+
+def test_mounted_mass_weighs_and_slows_the_bending(usual: dict[str, np.ndarray]) -> None:
+    layout = RotorLayout(overhung_mass=0.4, overhung_offset=0.01, overhung_transverse_inertia=2e-4)
+    loaded = run(replace(machines.task(), rotor=layout))
+    np.testing.assert_allclose(loaded["rotor_mass_kg"] - usual["rotor_mass_kg"], 0.4, rtol=1e-9)
+    assert np.all(loaded["free_bending_speed_rpm"] < usual["free_bending_speed_rpm"])
+    assert np.all(loaded["bending_speed_rpm"] >= loaded["free_bending_speed_rpm"] * (1 - 1e-9))
+
+
+def test_bending_of_a_plain_shaft() -> None:
+    """Next to no core, magnets and sleeve: the closed form of a free round shaft."""
+    batch = machines.designs(1, core_ratio=0.95, magnet_thickness_mm=0.3, sleeve_thickness_mm=0.1)
+    task = replace(machines.task(), rotor=RotorLayout(shaft_end_ratio=1.0))
+    found = run(task, batch)
+    sections = machines.sections(task, batch)
+    shaft = task.materials.shaft
+    young, rho = float(shaft.young_modulus.at(80.0)), float(shaft.density.value)
+    length = 1e-3 * found["stack_length_mm"] + 4.0 * sections.rotor_radius
+    euler = 4.730041**2 / length**2 * np.sqrt(young / rho) * 0.5 * sections.shaft_radius
+    # Core, magnets and sleeve add a fifth of mass along the stack and no stiffness; shear and
+    # rotation of a stocky shaft take some percent more.
+    assert 0.75 < found["free_bending_speed_rpm"][0] * np.pi / 30.0 / euler[0] < 1.0
+
+
+def test_contact_is_kept_cold_and_hot() -> None:
+    """Heat loosens a nickel sleeve and tightens a fibre: the worse of both counts."""
+    for sleeve in ("NiCr19NbMo", "Carbon fibre, wound"):
+        found = run(machines.task(sleeve=sleeve))
+        np.testing.assert_allclose(found["contact_pressure_MPa"], 2.0, rtol=1e-6)  # the default
+        assert np.all(found["lift_off_speed_ratio"] > 1.0)
+        assert np.all(found["magnet_stress_ratio"] < 1.0)
+
+
+def test_window_ends_at_the_strength() -> None:
+    task = machines.task(sleeve="NiCr19NbMo")
+    usual = run(task)
+    largest = usual["sleeve_interference_um"] + usual["interference_window_um"]
+    row = int(np.argmax(usual["interference_window_um"]))
+    batch = {name: column[[row]] for name, column in machines.scattered(ROWS, seed=7).items()}
+    fitted = replace(task.construction, sleeve_interference=1e-6 * float(largest[row]))
+    found = run(replace(task, construction=fitted), batch)
+    assert found["sleeve_stress_ratio"][0] == pytest.approx(1.0, rel=0.01)  # two secants
+
+
+def test_given_interference_too_small_shows() -> None:
+    loose = run(machines.task(construction={"sleeve_interference": 0.0}))
+    assert np.all(loose["contact_pressure_MPa"] < 0.0)
+    assert np.all(loose["lift_off_speed_ratio"] < 1.0)
+    np.testing.assert_allclose(
+        loose["interference_window_um"], run(machines.task())["interference_window_um"], rtol=0.02
+    )
+
+
+def test_verdict_names_both_interferences() -> None:
+    assert "no interference holds" in interference_verdict(80.0, -30.0)
+    assert "50 um" in interference_verdict(80.0, -30.0)
+    assert "from 80 um" in interference_verdict(80.0, 40.0)
+    assert "120 um" in interference_verdict(80.0, 40.0)
+
+
+def test_sleeve_that_holds_at_no_interference_is_a_failed_row() -> None:
+    """rho (w r)² of the sleeve alone: titanium at 900 m/s carries some 3600 MPa."""
+    task = machines.task(sleeve="TiAl6V4", duty={"speed": 4.0 * machines.task().duty.speed})
+    found = AnalyticEvaluator(task).evaluate(machines.designs(1, rotor_radius_mm=38.0))
+    assert found.status.tolist() == ["failed"]
+    assert "the sleeve holds at no interference" in found.reason[0]
+    assert "'TiAl6V4'" in found.reason[0]
+
+
+# -- magnets -------------------------------------------------------------------------------------
+
+
+def test_margins_to_the_knee(usual: dict[str, np.ndarray]) -> None:
+    magnet = machines.task().materials.magnet
+    hot = np.minimum(usual["magnet_temperature_C"], 300.0)
+    remanence = magnet.remanence.at(hot)
+    knee = remanence - MU_0 * magnet.recoil_permeability.at(hot) * magnet.knee_ratio.at(
+        hot
+    ) * magnet.coercivity.at(hot)
+    np.testing.assert_allclose(usual["knee_flux_density_T"], np.minimum(knee, remanence))
+    np.testing.assert_allclose(
+        usual["demagnetisation_margin_T"],
+        usual["magnet_flux_density_T"] - usual["knee_flux_density_T"],
+        atol=1e-12,
+    )
+    assert np.all(usual["fault_magnet_flux_density_T"] < usual["magnet_flux_density_T"])
+
+
+def test_stated_fault_current_counts_in_proportion() -> None:
+    task = replace(machines.task(), cooling=FIXED)
+    found = [
+        run(replace(task, fault=Fault(kind="current", current_ratio=ratio)))
+        for ratio in (0.0, 1.0, 3.0)
+    ]
+    fall = [item["magnet_flux_density_T"] - item["fault_magnet_flux_density_T"] for item in found]
+    np.testing.assert_allclose(fall[0], 0.0, atol=1e-12)
+    np.testing.assert_allclose(fall[2], 3.0 * fall[1], rtol=1e-9)
+    np.testing.assert_allclose(found[2]["fault_current_ratio"], 3.0)
+
+
+def test_short_circuit_swings_up_to_twice_flux_over_inductance() -> None:
+    found = run(replace(machines.task(), cooling=FIXED))
+    omega = 2.0 * np.pi * machines.task().electrical_frequency
+    steady = found["back_emf_V"] / (omega * 1e-3 * found["torque_inductance_mH"])
+    rated = np.sqrt(2.0) * found["torque_current_A"]
+    peak = found["fault_current_ratio"] * rated
+    assert np.all(peak > 0.9 * steady)
+    # From the duty's current the circle is a little wider than from no load.
+    assert np.all(peak < steady + np.hypot(steady, rated))
+
+
+# -- cost and registry ----------------------------------------------------------------------------
+
+
+def test_cost_scenarios() -> None:
+    task = machines.task()
+    magnet = Price(90.0, low_per_kg=60.0, high_per_kg=150.0)
+    found = run(replace(task, prices=replace(task.prices, magnet=magnet)))
+    np.testing.assert_allclose(
+        found["cost"] - found["cost_low"], 30.0 * found["magnet_mass_kg"], rtol=1e-9
+    )
+    np.testing.assert_allclose(
+        found["cost_high"] - found["cost"], 60.0 * found["magnet_mass_kg"], rtol=1e-9
+    )
+
+
+def test_every_metric_is_explained_and_carries_its_unit() -> None:
+    suffix = {
+        "N m": "Nm", "N/A": "N_A", "N/mm": "N_mm", "N/ms": "N_ms", "A/mm2": "A_mm2", "m/s": "m_s",
+        "W/cm2": "W_cm2", "N m/L": "Nm_L", "degC": "C", "r/min": "rpm",
+    }  # fmt: skip
+    assert len(METRIC) == len(METRICS)
+    for metric in METRICS:
+        assert metric.definition, metric.name
+        assert metric.source, metric.name
+        if metric.unit not in ("1", "money"):
+            assert metric.name.endswith("_" + suffix.get(metric.unit, metric.unit)), metric.name
+
+
+# -- what a study may not ask ------------------------------------------------------------------
+
+
+def test_coolant_colder_than_the_surroundings_is_refused() -> None:
+    task = machines.task()
+    with pytest.raises(
+        ValueError, match=r"coolant_temperature = 15 C must not be below the ambient .* 40 C"
+    ):
+        replace(task, cooling=Cooling(coolant_temperature=15.0))
+    dry = Cooling(coolant_temperature=15.0, condensation_prevented=True)
+    cool = run(replace(task, cooling=dry))
+    assert np.all(cool["magnet_temperature_C"] < run(task)["magnet_temperature_C"])
+
+
+def test_material_outside_its_table_is_refused() -> None:
+    task = machines.task()
+    hot = replace(task.conditions, sleeve_temperature=170.0)
+    with pytest.raises(
+        ValueError,
+        match=r"sleeve_temperature = 170 C .* 'Carbon fibre, wound', which reach from 20 to 150 C",
+    ):
+        replace(task, conditions=hot)
+    metal = materials.load(SleeveMaterial, "NiCr19NbMo")
+    assert (
+        replace(
+            task, conditions=hot, materials=replace(task.materials, sleeve=metal)
+        ).conditions.sleeve_temperature
+        == 170.0
+    )
+    scorched = replace(task.conditions, magnet_temperature=250.0)
+    with pytest.raises(ValueError, match="magnet_temperature = 250 C"):
+        replace(task, conditions=scorched)
+
+
+@pytest.mark.parametrize(("key", "value", "words"), [
+    ("coolant_flow", 0.0, r"coolant_flow \(m3/s\) = 0 must lie between 1e-07 and 1"),
+    ("insulation_class", "C", "insulation_class = 'C' must be A, E, B, F or H"),
+    ("method", "ice", "method = 'ice' must be jacket, forced air or coefficient"),
+    ("joint_conductance", float("nan"), "joint_conductance"),
+])  # fmt: skip
+def test_bad_cooling_is_refused(key: str, value: object, words: str) -> None:
+    with pytest.raises(ValueError, match=words):
+        Cooling(**{key: value})  # type: ignore[arg-type]
+
+
+def test_bad_rotor_and_prices_are_refused() -> None:
+    with pytest.raises(ValueError, match=r"overhung_mass \(kg\) = -1 must lie between 0"):
+        RotorLayout(overhung_mass=-1.0)
+    with pytest.raises(ValueError, match="touchdown_ratio = 2 must lie between 0.05 and 0.95"):
+        RotorLayout(touchdown_ratio=2.0)
+    with pytest.raises(ValueError, match=r"low_per_kg = 12.0, per_kg = 10.0"):
+        Price(10.0, low_per_kg=12.0)
+    with pytest.raises(ValueError, match=r"highest_speed_ratio = 1.5 must not exceed"):
+        machines.task(duty={"highest_speed_ratio": 1.5})

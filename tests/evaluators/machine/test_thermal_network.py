@@ -1,0 +1,95 @@
+"""The lumped heat network: circuit laws, and the network of the machine."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import machines
+import numpy as np
+import pytest
+
+from evaluators.machine.cooling import Cooling
+from evaluators.machine.gas import gas_state
+from evaluators.machine.task import Task
+from evaluators.machine.thermal.machine import NODES, conduction_of, machine_network
+from evaluators.machine.thermal.network import Network, series
+
+
+def test_two_nodes_by_hand() -> None:
+    """10 W over 2 W/K to a node that 4 W/K hold to 20 degC: 22.5 and 27.5 degC."""
+    net = Network(1, ("inside", "outside"))
+    net.connect("inside", "outside", np.array([2.0]))
+    net.connect_to("outside", 20.0, np.array([4.0]))
+    found = net.solve(np.array([[10.0, 0.0]]))
+    np.testing.assert_allclose(found, [[27.5, 22.5]])
+    np.testing.assert_allclose(net.outflow(found), [10.0])
+
+
+def test_growing_source_is_solved_in_one_step() -> None:
+    """5 W at 0 degC and 0.5 W/K more against 1 W/K to 0 degC: (5 + T/2) = T."""
+    net = Network(1, ("wire",))
+    net.connect_to("wire", 0.0, np.array([1.0]))
+    np.testing.assert_allclose(net.solve(np.array([[5.0]]), np.array([[0.5]])), [[10.0]])
+
+
+def test_resistances_in_series() -> None:
+    assert series(1.0, 2.0, 1.0) == pytest.approx(0.25)
+
+
+def build(task: Task, rows: int = 12) -> tuple[Network, np.ndarray]:
+    sections = machines.sections(task, machines.scattered(rows, seed=3))
+    length = np.linspace(0.03, 0.2, rows)
+    gas = gas_state(task.materials.gas, np.full(rows, 80.0))
+    solids = conduction_of(task, sections, np.full(rows, 0.4))
+    return machine_network(task, sections, solids, length, gas, np.full(rows, 80.0)), length
+
+
+def test_machine_conserves_heat_and_is_reciprocal() -> None:
+    net, _ = build(machines.task())
+    rows, count = net.rows, len(NODES)
+    sources = np.random.default_rng(1).uniform(0.0, 100.0, (rows, count))
+    found = net.solve(sources)
+    np.testing.assert_allclose(net.outflow(found), sources.sum(axis=1), rtol=1e-9)
+    # A watt in one node warms another as much as the other way round.
+    rise = np.stack(
+        [net.solve(np.tile(np.eye(count)[k], (rows, 1))) - 40.0 for k in range(count)], axis=1
+    )
+    np.testing.assert_allclose(rise, np.swapaxes(rise, 1, 2), rtol=1e-9)
+    assert np.all(rise > 0.0)
+    # Without losses everything is as cold as the coolant.
+    np.testing.assert_allclose(net.solve(np.zeros((rows, count))), 40.0, rtol=1e-12)
+
+
+def test_heat_of_the_yoke_meets_resistances_in_line() -> None:
+    """A watt in the yoke flows out by yoke, joint, frame and jacket alone, but for side paths."""
+    task = machines.task()
+    task = replace(task, cooling=Cooling(method="coefficient", heat_transfer_coefficient=500.0))
+    net, length = build(task)
+    sections = machines.sections(task, machines.scattered(net.rows, seed=3))
+    outside = sections.outer_radius
+    middle = 0.5 * (sections.slot_radius + outside)
+    steel = task.materials.stator_steel
+    iron = float(steel.thermal_conductivity.at(100.0)) * float(steel.stacking_factor.value)
+    resistance = (
+        np.log(outside / middle) / (2.0 * np.pi * iron * length)
+        + 1.0 / (task.cooling.joint_conductance * 2.0 * np.pi * outside * length)
+        + np.log1p(task.cooling.frame_thickness / outside) / (2.0 * np.pi * 160.0 * length)
+        + 1.0 / (500.0 * 2.0 * np.pi * (outside + task.cooling.frame_thickness) * length)
+    )
+    watt = np.zeros((net.rows, len(NODES)))
+    watt[:, NODES.index("yoke")] = 1.0
+    rise = net.solve(watt)[:, NODES.index("yoke")] - 40.0
+    # Some percent leave through the winding and the end shields.
+    assert np.all(rise <= resistance)
+    np.testing.assert_allclose(rise, resistance, rtol=0.06)
+
+
+def test_blown_gap_cools_the_rotor() -> None:
+    task = machines.task()
+    still, _ = build(task)
+    blown, _ = build(replace(task, cooling=Cooling(gap_flow=2e-3, gap_flow_temperature=40.0)))
+    watt = np.zeros((still.rows, len(NODES)))
+    watt[:, NODES.index("magnets")] = 20.0
+    magnets = NODES.index("magnets")
+    assert np.all(blown.solve(watt)[:, magnets] < still.solve(watt)[:, magnets])
+    np.testing.assert_allclose(blown.outflow(blown.solve(watt)), 20.0, rtol=1e-9)
