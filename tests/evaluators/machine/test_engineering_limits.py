@@ -327,7 +327,7 @@ def test_bad_cooling_is_refused(key: str, value: object, words: str) -> None:
 def test_bad_rotor_and_prices_are_refused() -> None:
     with pytest.raises(ValueError, match=r"overhung_mass \(kg\) = -1 must lie between 0"):
         RotorLayout(overhung_mass=-1.0)
-    with pytest.raises(ValueError, match="touchdown_ratio = 2 must lie between 0.05 and 0.95"):
+    with pytest.raises(ValueError, match=r"touchdown_ratio = 2 must lie between 0.05 and 0.95"):
         RotorLayout(touchdown_ratio=2.0)
     with pytest.raises(ValueError, match=r"low_per_kg = 12.0, per_kg = 10.0"):
         Price(10.0, low_per_kg=12.0)
