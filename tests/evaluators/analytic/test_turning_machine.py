@@ -7,16 +7,15 @@ from dataclasses import fields
 import machines
 import numpy as np
 import pytest
+from analytic_case import AnalyticCase, roomy
 from numpy.typing import NDArray
 
 from evaluators.analytic.gap import SlottedGap
-from evaluators.analytic.model import AnalyticModel, Motion, Resolution, Waves
+from evaluators.analytic.model import Resolution
 from evaluators.analytic.rotor import MU_0, RotorRadii
 from evaluators.analytic.rotor_state import at_order
 from evaluators.analytic.slots import mouth
 from evaluators.machine.families import enumerate_families
-from evaluators.machine.field import Excitation, FieldSolution, excitation
-from evaluators.machine.geometry import CrossSections
 from evaluators.machine.winding import Winding
 
 FloatArray = NDArray[np.float64]
@@ -26,82 +25,42 @@ EVERY_FAMILY: list[machines.Numbers] = [
     for w in enumerate_families((6, 12, 18, 24, 30, 36), range(1, 9))
     if isinstance(w, Winding)
 ]
-# Few modes: the laws below hold for every resolution.
-COARSE = Resolution(slot_modes=3, reach=8, highest_order=96, positions=8)
-
-
-class Case:
-    """One design of one family, solved."""
-
-    def __init__(
-        self,
-        numbers: machines.Numbers,
-        resolution: Resolution = COARSE,
-        *,
-        ideal_iron: bool = False,
-        **changes: float,
-    ) -> None:
-        self.task = machines.task(*numbers, ideal_iron=ideal_iron)
-        self.model = AnalyticModel(self.task, resolution)
-        batch = machines.designs(**changes)
-        self.sections: CrossSections = machines.sections(self.task, batch)
-        self.exciting: Excitation = excitation(
-            self.sections,
-            batch["current_density_A_mm2"] * 1e6,
-            self.task.duty,
-            self.task.construction,
-        )
-
-    def waves(self) -> Waves:
-        return self.model.waves(self.sections, self.exciting)[0]
-
-    def motion(self, positions: FloatArray | None = None) -> Motion:
-        return self.model.motion(self.sections, self.waves(), positions)
-
-    def solve(self) -> FieldSolution:
-        return self.model.solve(self.sections, self.exciting)
-
-
-def wide(slots: int) -> dict[str, float]:
-    """Slots that can be wound in every family."""
-    return {"rotor_radius_mm": 20.0 * max(1.0, slots / 15.0)}
-
 
 # -- the turn -----------------------------------------------------------------------------------
 
 
 @pytest.mark.parametrize("numbers", EVERY_FAMILY, ids=str)
 def test_one_sector_tells_the_whole_turn(numbers: machines.Numbers) -> None:
-    case = Case(numbers, **wide(numbers[0]))
+    case = AnalyticCase(numbers, ideal_iron=True, **roomy(numbers[0]))
     sector = case.motion()
     sectors = case.model.rotation.sectors
     count = sector.positions.size * sectors
     assert sector.positions.size * sectors >= 8 * 6 * numbers[1]
     turn = case.motion(2.0 * np.pi * np.arange(count) / count)
-    rest, direct, mirrored = case.model.whole_turn(sector)
-    # The same sums, so rounding; relative to the mean torque and the largest force.
+    rest, direct, mirrored = sector.whole_turn()
+    # The same circuit, solved to 1e-10 of its potentials; relative to mean torque and force.
     np.testing.assert_allclose(
-        np.tile(sector.torque, (1, sectors)), turn.torque, atol=1e-10 * turn.torque.mean()
+        np.tile(sector.torque, (1, sectors)), turn.torque, atol=1e-6 * turn.torque.mean()
     )
     np.testing.assert_allclose(
-        np.tile(sector.cogging, (1, sectors)), turn.cogging, atol=1e-10 * turn.torque.mean()
+        np.tile(sector.cogging, (1, sectors)), turn.cogging, atol=1e-6 * turn.torque.mean()
     )
     scale = np.abs(turn.direct).max() + np.abs(turn.mirrored).max()
-    np.testing.assert_allclose(direct, turn.direct, atol=1e-10 * scale)
-    np.testing.assert_allclose(mirrored, turn.mirrored, atol=1e-10 * scale)
+    np.testing.assert_allclose(direct, turn.direct, atol=1e-6 * scale)
+    np.testing.assert_allclose(mirrored, turn.mirrored, atol=1e-6 * scale)
     strength = scale * case.exciting.suspension[0]
-    np.testing.assert_allclose(rest, turn.rest, atol=1e-10 * strength)
+    np.testing.assert_allclose(rest, turn.rest, atol=1e-6 * strength)
     if np.gcd(numbers[0], 2 * numbers[1]) > 1:
         # Balanced: without suspension current no force, at no position (Zhu, Ishak, Howe, Chen,
         # "Unbalanced magnetic forces ...", IEEE Trans. Ind. Appl. 43(6), 2007).
-        assert np.abs(turn.rest).max() < 1e-10 * strength
+        assert np.abs(turn.rest).max() < 1e-6 * strength
 
 
 @pytest.mark.parametrize("numbers", [(6, 2, 1), (12, 4, 5), (12, 5, 4), (18, 4, 5)], ids=str)
 def test_cogging_has_the_period_of_slots_and_poles(numbers: machines.Numbers) -> None:
     # lcm(Q, 2p) periods in a turn and nothing else, mean included (Zhu, Howe, "Influence of design
     # parameters on cogging torque", IEEE Trans. Energy Conv. 15(4), 2000; energy over a turn).
-    case = Case(numbers, Resolution(slot_modes=4, reach=16, highest_order=160, positions=8))
+    case = AnalyticCase(numbers, Resolution(slot_modes=4, reach=16, highest_order=160, positions=8))
     periods = int(np.lcm(numbers[0], 2 * numbers[1]))
     turn = case.motion(2.0 * np.pi * np.arange(8 * periods) / (8 * periods))
     spectrum = np.abs(np.fft.rfft(turn.cogging[0])) / turn.cogging.size
@@ -121,19 +80,27 @@ def test_cogging_has_the_period_of_slots_and_poles(numbers: machines.Numbers) ->
 def test_torque_equals_power_of_the_emf(numbers: machines.Numbers) -> None:
     # T = 1.5 p lambda i with the current in phase with the EMF (energy balance of a round rotor;
     # any textbook). One side is the stress in the gap, the other the flux of the coils.
-    case = Case(numbers, Resolution(3, 8, 8 * 36 + 40, 8), **wide(numbers[0]))
+    resolution = Resolution(3, 8, 8 * 36 + 40, 8)
+    case = AnalyticCase(numbers, resolution, ideal_iron=True, **roomy(numbers[0]))
     field = case.solve()
     expected = 1.5 * numbers[1] * field.flux_linkage * case.exciting.torque
-    # Galerkin's method keeps reciprocity, so rounding only; iron as linear voltage does, too.
-    np.testing.assert_allclose(field.torque, expected, rtol=1e-9)
+    # Galerkin's method keeps reciprocity; the sheets' permeability of ten million leaves 1e-7.
+    np.testing.assert_allclose(field.torque, expected, rtol=1e-6)
+    # The linkage is that of iron of one permeability, the torque that of every tooth by itself: up
+    # to a tenth apart in the strongly saturated machines with many slots among these.
+    case = AnalyticCase(numbers, resolution, **roomy(numbers[0]))
+    field = case.solve()
+    expected = 1.5 * numbers[1] * field.flux_linkage * case.exciting.torque
+    np.testing.assert_allclose(field.torque, expected, rtol=0.1)
 
 
 @pytest.mark.parametrize("numbers", machines.FAMILIES, ids=str)
 def test_torque_at_every_position(numbers: machines.Numbers) -> None:
     """Torque less cogging is the sum over phases of i d(linkage)/d(angle), at every instant."""
     slots, pole_pairs, _ = numbers
-    case = Case(numbers, Resolution(3, 8, 8 * slots + 8 * pole_pairs, 8), **wide(slots))
-    waves, _, phasor, _ = case.model.waves(case.sections, case.exciting)
+    resolution = Resolution(3, 8, 8 * slots + 8 * pole_pairs, 8)
+    case = AnalyticCase(numbers, resolution, ideal_iron=True, **roomy(slots))
+    waves = case.waves()
     orders = case.model.rotation.magnet_orders
     flux = case.model.linkage.magnet_harmonics(waves.magnets, orders)[0]
     motion = case.motion()
@@ -142,13 +109,13 @@ def test_torque_at_every_position(numbers: machines.Numbers) -> None:
     for k in range(3):
         shift = sequence * 2.0 * np.pi * k / 3.0
         electrical = pole_pairs * motion.positions - shift
-        current = np.real(phasor[0] * np.exp(1j * electrical))
+        current = np.real(waves.phasor[0] * np.exp(1j * electrical))
         harmonic = orders[:, None] // pole_pairs
         slope = np.real(1j * orders * flux @ np.exp(1j * harmonic * electrical))
         expected += current * slope
     found = motion.torque[0] - motion.cogging[0]
-    # The magnets' orders beyond 45 are in neither; rounding only.
-    np.testing.assert_allclose(found, expected, rtol=1e-8)
+    # The magnets' orders beyond 45 are in neither; iron of mu_r = 1e7 is linear up to 1e-7.
+    np.testing.assert_allclose(found, expected, rtol=1e-6)
 
 
 # -- force ----------------------------------------------------------------------------------------
@@ -156,11 +123,11 @@ def test_torque_at_every_position(numbers: machines.Numbers) -> None:
 
 @pytest.mark.parametrize("numbers", EVERY_FAMILY, ids=str)
 def test_force_points_where_it_is_commanded(numbers: machines.Numbers) -> None:
-    case = Case(numbers, **wide(numbers[0]))
+    case = AnalyticCase(numbers, **roomy(numbers[0]))
     motion = case.motion()
-    rest, direct, mirrored = case.model.whole_turn(motion)
+    rest, direct, mirrored = motion.whole_turn()
     for direction in (0.0, 0.5 * np.pi, 2.3):
-        phasor = case.exciting.suspension[0] * case.model.command(motion, direction)[0]
+        phasor = case.exciting.suspension[0] * motion.command(direction)[0]
         mean = np.mean(rest + direct * phasor + mirrored * np.conj(phasor))
         assert np.angle(mean * np.exp(-1j * direction)) == pytest.approx(0.0, abs=1e-9)
     field = case.solve()
@@ -187,7 +154,7 @@ def test_force_per_ampere_in_closed_form(numbers: machines.Numbers) -> None:
     Magnets of mu_r = 1, as the closed form has them.
     """
     _, pole_pairs, order = numbers
-    case = Case(numbers, Resolution(6, 60, 200, 8), ideal_iron=True, **narrow())
+    case = AnalyticCase(numbers, Resolution(6, 60, 200, 8), ideal_iron=True, **narrow())
     case.model.recoil = 1.0
     field, sections = case.solve(), case.sections
     turns = numbers[0] / 3  # one per coil
@@ -210,7 +177,7 @@ def test_main_field_of_the_torque_current(numbers: machines.Numbers) -> None:
     a balanced phase. Slots of 10 % of the pitch, so tooth faces are nearly the whole bore.
     """
     pole_pairs = numbers[1]
-    case = Case(numbers, **narrow(), **wide(numbers[0]))
+    case = AnalyticCase(numbers, **narrow(), **roomy(numbers[0]))
     sections = case.sections
     rotor = RotorRadii.of(sections, 1.0)
     residues, current = case.model.rotation.current_residues("torque")
@@ -240,9 +207,9 @@ SCALING = {
 @pytest.mark.parametrize("numbers", [(6, 2, 1), (12, 5, 4)], ids=str)
 def test_twice_as_large_at_the_same_flux_density(numbers: machines.Numbers) -> None:
     # Magnetostatics knows no length, saturated or not; 2-D quantities per metre scale as stated.
-    small = Case(numbers, tooth_width_ratio=0.35)
+    small = AnalyticCase(numbers, tooth_width_ratio=0.35)
     double = {name: 2.0 * value for name, value in machines.DESIGN.items() if name.endswith("_mm")}
-    large = Case(numbers, tooth_width_ratio=0.35, **double, current_density_A_mm2=3.0)
+    large = AnalyticCase(numbers, tooth_width_ratio=0.35, **double, current_density_A_mm2=3.0)
     np.testing.assert_allclose(large.exciting.torque, 2.0 * small.exciting.torque, rtol=1e-12)
     first, second = small.solve(), large.solve()
     assert first.tooth_flux_density[0] > 1.2  # the iron takes part

@@ -1,0 +1,124 @@
+"""What the field model hands over, computed again from its waves by plain sums over the turn."""
+
+from __future__ import annotations
+
+import numpy as np
+import pytest
+from analytic_case import AnalyticCase
+from numpy.typing import NDArray
+
+from evaluators.analytic.gap import GapField
+from evaluators.analytic.model import Resolution
+from evaluators.analytic.rotor import MU_0
+from evaluators.machine.winding import Connection
+
+FloatArray = NDArray[np.float64]
+FINE = Resolution(slot_modes=4, reach=10, highest_order=96, positions=12)
+
+
+@pytest.fixture(scope="module", params=[(6, 2, 1), (12, 4, 5), (12, 5, 4), (12, 1, 2)], ids=str)
+def case(request: pytest.FixtureRequest) -> AnalyticCase:
+    """Ideal iron: one permeability tells all positions."""
+    return AnalyticCase(request.param, FINE, ideal_iron=True, duty={"suspension_share": 0.25})
+
+
+def test_excitation_fills_the_slot(case: AnalyticCase) -> None:
+    sections, exciting = case.sections, case.exciting
+    # Two coil sides with 42 % copper at 6 A/mm2 root-mean-square; a quarter for suspension.
+    peak = np.sqrt(2.0) * 6e6 * 0.42 * sections.slot_area / 2.0
+    np.testing.assert_allclose(exciting.torque + exciting.suspension, peak, rtol=1e-12)
+    np.testing.assert_allclose(exciting.suspension, 0.25 * peak, rtol=1e-12)
+
+
+def test_torque_and_ripple(case: AnalyticCase) -> None:
+    field, motion = case.solve(), case.motion()
+    assert field.torque[0] == pytest.approx(motion.torque[0].mean())
+    swing = motion.torque[0].max() - motion.torque[0].min()
+    assert field.torque_ripple[0] == pytest.approx(swing / motion.torque[0].mean())
+    cogging = motion.cogging[0]
+    assert field.cogging[0] == pytest.approx(cogging.max() - cogging.min())
+    assert field.torque_ripple[0] > 0.0
+
+
+def test_force_and_its_errors(case: AnalyticCase) -> None:
+    """Position by position over the whole turn, commanded along x and along y."""
+    exciting, field = case.exciting, case.solve()
+    count = 12 * 6 * case.task.winding.family.pole_pairs
+    turn = 2.0 * np.pi * np.arange(count) / count
+    motion = case.motion(turn)
+    size, worst_magnitude, worst_angle = [], 0.0, 0.0
+    for direction in (0.0, 0.5 * np.pi):
+        phasor = exciting.suspension[0] * motion.command(direction)[0]
+        force = motion.rest[0] + phasor * motion.direct[0] + np.conj(phasor) * motion.mirrored[0]
+        mean = np.mean(force)
+        size.append(abs(mean))
+        for value in force:
+            worst_magnitude = max(worst_magnitude, abs(abs(value) / abs(mean) - 1.0))
+            worst_angle = max(worst_angle, abs(np.angle(value / mean)))
+    # The mean over a turn does not depend on the positions; extremes are met by the same ones.
+    assert field.force[0] == pytest.approx(np.mean(size), rel=1e-9)
+    assert field.force_error_magnitude[0] == pytest.approx(worst_magnitude, rel=1e-6)
+    assert field.force_error_angle[0] == pytest.approx(worst_angle, rel=1e-6)
+    assert field.force_per_ampere_turn[0] * exciting.suspension[0] == pytest.approx(size[0])
+
+
+@pytest.mark.parametrize("connection", ["torque", "suspension"])
+def test_inductance_by_slots(case: AnalyticCase, connection: Connection) -> None:
+    """Flux linkage of phase one summed over its coil sides, with the current in each slot."""
+    waves, field = case.waves(), case.solve()
+    winding = case.task.winding
+    number = np.arange(winding.family.slots)
+    wave = waves.current if connection == "torque" else waves.suspension
+    current = complex(waves.phasor[0]) if connection == "torque" else 1.0 + 0j
+    turned = np.exp(2j * np.pi * wave.classes[:, None] * number / number.size)
+
+    def linkage(electrical: float) -> float:
+        in_slot = np.real(current * winding.slot_mmf(connection) * np.exp(1j * electrical))
+        potential = 2.0 * np.real(np.exp(-1j * electrical) * (wave.slot[0] @ turned))
+        potential = potential + MU_0 * waves.slot.permeance[0] * in_slot
+        return sum(
+            (side.torque_direction if connection == "torque" else side.suspension_direction)
+            * float(potential[side.slot])
+            for side in winding.coil_sides
+            if side.phase == 0
+        )
+
+    # Re(phasor exp(j t)) at t = 0 and a quarter of a period later.
+    found = (linkage(0.0) - 1j * linkage(0.5 * np.pi)) / current
+    expected = field.torque_inductance if connection == "torque" else field.suspension_inductance
+    assert expected[0] == pytest.approx(found.real, rel=1e-9)
+
+
+def test_flux_linkage_and_iron_density_by_slots(case: AnalyticCase) -> None:
+    model, sections, exciting, waves = case.model, case.sections, case.exciting, case.waves()
+    field, winding, phasor = case.solve(), case.task.winding, complex(waves.phasor[0])
+    slots, pair = winding.family.slots, winding.family.pole_pairs
+    samples = 2 * 96
+    electrical = 2.0 * np.pi * np.arange(samples) / samples
+    number = np.arange(slots)
+
+    def potential(wave: GapField, exponents: NDArray[np.int64]) -> FloatArray:
+        turned = np.exp(2j * np.pi * wave.classes[:, None] * number / slots)
+        moving = np.exp(-1j * exponents[:, None] * electrical)
+        return 2.0 * np.real(np.einsum("c,cs,ct->st", wave.slot[0], turned, moving))
+
+    magnets = potential(waves.magnets, model.rotation.magnet_orders // pair)
+    linkage = sum(
+        side.torque_direction * magnets[side.slot] for side in winding.coil_sides if side.phase == 0
+    )
+    fundamental = 2.0 * np.mean(linkage * np.exp(-1j * electrical))
+    assert field.flux_linkage[0] == pytest.approx(abs(fundamental), rel=1e-9)
+    # The torque current leads the linkage by a quarter period: in phase with the EMF.
+    assert phasor / fundamental / 1j == pytest.approx(abs(phasor / fundamental), rel=1e-9)
+
+    both = magnets + potential(waves.current, np.ones_like(waves.current.classes))
+    tooth = np.abs(both - np.roll(both, 1, axis=0)).max() / sections.tooth_width[0]
+    yoke = np.abs(both).max() / sections.yoke_thickness[0]
+    # On top comes the suspension's peak: at most all of it, somewhere some of it.
+    turned = np.exp(2j * np.pi * waves.suspension.classes[:, None] * number / slots)
+    extra = 2.0 * exciting.suspension[0] * np.abs(waves.suspension.slot[0] @ turned).max()
+    most = yoke + extra / sections.yoke_thickness[0]
+    # Positions and instants need not meet the same peak: 0.5 %.
+    assert yoke * 0.995 < field.yoke_flux_density[0] < most * 1.005
+    most = tooth + 2.0 * extra / sections.tooth_width[0]
+    assert tooth * 0.995 < field.tooth_flux_density[0] < most * 1.005
