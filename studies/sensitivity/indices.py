@@ -10,7 +10,8 @@ The estimators are those of SALib (Iwanaga, Usher, Herman, *Socio-Environmental 
 from __future__ import annotations
 
 import warnings
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Callable, Iterator, Mapping, Sequence
+from contextlib import contextmanager
 from dataclasses import dataclass
 from typing import Any, Literal
 
@@ -174,9 +175,7 @@ def delta_indices(
         if _constant(y):
             found.append(tuple(np.zeros(len(bounds)) for _ in range(4)))
             continue
-        with warnings.catch_warnings():
-            # It tells of merged bins and of uneven samples; that these are uneven stands in basis.
-            warnings.simplefilter("ignore")
+        with _quiet():
             result = analysis.analyze(
                 problem,
                 x[chosen],
@@ -197,6 +196,20 @@ def delta_indices(
         dropped=int(np.count_nonzero(~usable)),
         basis=basis,
     )
+
+
+@contextmanager
+def _quiet() -> Iterator[None]:
+    """Keep warnings of merged bins and uneven samples back, and undo what the library sets.
+
+    That the samples are uneven stands in the basis of the indices.
+    """
+    layout = warnings.formatwarning
+    try:
+        with warnings.catch_warnings(record=True):
+            yield
+    finally:
+        warnings.formatwarning = layout
 
 
 def _constant(y: FloatArray) -> bool:

