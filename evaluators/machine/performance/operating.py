@@ -147,15 +147,11 @@ def settle(
         net = machine_network(
             task, sections, solids, now.length, gas, held(now.temperature("end_space"))
         )
-        sources = _sources(now)
-        updated = net.solve(sources - slopes * temperatures, slopes)
+        updated = net.solve(_sources(now) - slopes * temperatures, slopes)
+        # Colder than any coolant: the growth of the copper loss outruns the cooling. From the
+        # ceiling on, losses grow no more.
         outrun = np.any(updated < coldest - 1.0, axis=1)
-        if outrun.any():
-            plateau = np.where(outrun[:, None], 2.0 * CEILING, temperatures)
-            hot, _ = _state(task, sections, exciting, field, strands, plateau)
-            updated = np.where(
-                outrun[:, None], np.maximum(net.solve(_sources(hot)), CEILING), updated
-            )
+        updated = np.where(outrun[:, None], CEILING, updated)
         step = updated - temperatures
         if number > DAMPED_FROM:
             step = 0.5 * step

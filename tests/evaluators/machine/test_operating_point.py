@@ -62,9 +62,11 @@ def solved() -> Solved:
     return Solved(machines.task(), machines.scattered(40, seed=2))
 
 
-def test_losses_leave_through_the_coolant(solved: Solved) -> None:
+@pytest.mark.parametrize("sleeve", ["Carbon fibre, wound", "NiCr19NbMo"])
+def test_losses_leave_through_the_coolant(sleeve: str) -> None:
     """First law: what is lost in the machine flows to the coolant, friction included."""
-    task = solved.task
+    task = machines.task(sleeve=sleeve)
+    solved = Solved(task, machines.scattered(20, seed=4))
     state = solved.settle(task)
     assert np.all(state.settled)
     assert state.solids is not None

@@ -11,6 +11,7 @@ import pytest
 from evaluators.machine.cooling import Cooling
 from evaluators.machine.gas import gas_state
 from evaluators.machine.task import Task
+from evaluators.machine.thermal.coolant import frame_conductance
 from evaluators.machine.thermal.machine import NODES, conduction_of, machine_network
 from evaluators.machine.thermal.network import Network, series
 
@@ -93,3 +94,22 @@ def test_blown_gap_cools_the_rotor() -> None:
     magnets = NODES.index("magnets")
     assert np.all(blown.solve(watt)[:, magnets] < still.solve(watt)[:, magnets])
     np.testing.assert_allclose(blown.outflow(blown.solve(watt)), 20.0, rtol=1e-9)
+
+
+def test_blown_gap_takes_up_what_its_mean_temperature_says() -> None:
+    """Twice the heat capacity of the flow times the mean rise over the inlet: first law."""
+    task = replace(machines.task(), cooling=Cooling(gap_flow=2e-3, gap_flow_temperature=90.0))
+    net, _ = build(task)
+    found = net.solve(np.zeros((net.rows, len(NODES))))
+    gas = gas_state(task.materials.gas, 80.0)
+    carried = 2.0 * float(gas.density * gas.specific_heat) * 2e-3
+    brought = carried * (90.0 - found[:, NODES.index("gap")])
+    assert np.all(brought > 1.0)  # warm gas heats the machine ...
+    outside, frame = machines.sections(task, machines.scattered(net.rows, seed=3)), "frame"
+    length = np.linspace(0.03, 0.2, net.rows)
+    jacket = frame_conductance(
+        task.cooling, outside.outer_radius + task.cooling.frame_thickness, length
+    )
+    # ... and all of it leaves through the jacket.
+    taken = jacket * (found[:, NODES.index(frame)] - 40.0)
+    np.testing.assert_allclose(taken, brought, rtol=1e-9)
