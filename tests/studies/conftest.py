@@ -10,10 +10,14 @@ import sys
 from collections.abc import Callable
 from importlib.metadata import entry_points
 from pathlib import Path
+from typing import Any
 
 import pytest
 from click.testing import CliRunner, Result
 
+from optimizer.archive import open_archive
+
+TIME_COLUMNS = ("time_s", "finished_at")
 HERE = Path(__file__).parent
 PROJECT = HERE.parents[1]
 
@@ -126,6 +130,19 @@ def write_study(tmp_path: Path) -> Callable[..., Path]:
         return file
 
     return write
+
+
+@pytest.fixture
+def rows() -> Callable[[Path], list[dict[str, Any]]]:
+    """All rows of an archive without the columns of time."""
+
+    def read(folder: Path) -> list[dict[str, Any]]:
+        return [
+            {key: value for key, value in row.items() if key not in TIME_COLUMNS}
+            for row in open_archive(folder).table().to_pylist()
+        ]
+
+    return read
 
 
 @pytest.fixture

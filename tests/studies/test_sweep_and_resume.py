@@ -6,35 +6,21 @@ import errno
 import json
 import os
 import re
-import signal
 import subprocess
-import sys
-import time
 from collections.abc import Callable
 from pathlib import Path
+from typing import Any
 
 import pyarrow.parquet as pq
 import pytest
 from click.testing import Result
 
-from optimizer.archive import open_archive
-from studies.progress import ProgressLine, duration
-
 Run = Callable[..., Result]
 Write = Callable[..., Path]
+Rows = Callable[[Path], list[dict[str, Any]]]
 Process = Callable[..., "subprocess.CompletedProcess[str]"]
 
-TIME_COLUMNS = ("time_s", "finished_at")
 IMPOSSIBLE = ("{ at_most = 70.0 }", "{ at_most = 1.0 }")
-SLOW = ('name = "toy"', 'name = "toy"\n[evaluator.settings]\ndelay_s = 0.05')
-
-
-def rows(folder: Path) -> list[dict[str, object]]:
-    table = open_archive(folder).table()
-    return [  # type: ignore[no-any-return]
-        {key: value for key, value in row.items() if key not in TIME_COLUMNS}
-        for row in table.to_pylist()
-    ]
 
 
 def one_sentence(result: Result, code: int) -> str:
@@ -45,7 +31,7 @@ def one_sentence(result: Result, code: int) -> str:
 
 
 def test_sweep_stores_every_evaluation_and_the_frozen_study(
-    hovergap: Run, write_study: Write
+    hovergap: Run, write_study: Write, rows: Rows
 ) -> None:
     file = write_study()
     result = hovergap("sweep", file, "--workers", "1")
@@ -70,7 +56,7 @@ def test_sweep_stores_every_evaluation_and_the_frozen_study(
     assert "hovergap compare results/small" in result.output
 
 
-def test_options_override_the_study(hovergap: Run, write_study: Write) -> None:
+def test_options_override_the_study(hovergap: Run, write_study: Write, rows: Rows) -> None:
     arguments = ("--family", "Q12p4s5", "--budget", "60", "--seed", "9", "--results", "here")
     result = hovergap("sweep", write_study(), *arguments, "--workers", "1")
     assert result.exit_code == 0, result.output
@@ -81,7 +67,7 @@ def test_options_override_the_study(hovergap: Run, write_study: Write) -> None:
 
 
 def test_maximised_objective_is_stored_with_its_sign_turned(
-    hovergap: Run, write_study: Write
+    hovergap: Run, write_study: Write, rows: Rows
 ) -> None:
     goal = 'metric = "efficiency"\nsense = "maximise"'
     file = write_study(('metric = "cost"\nsense = "minimise"', goal))
@@ -90,7 +76,7 @@ def test_maximised_objective_is_stored_with_its_sign_turned(
     assert row["objective:efficiency"] == -row["efficiency"]  # type: ignore[operator]
 
 
-def test_sweeping_again_asks_for_resume(hovergap: Run, write_study: Write) -> None:
+def test_sweeping_again_asks_for_resume(hovergap: Run, write_study: Write, rows: Rows) -> None:
     file = write_study()
     assert hovergap("sweep", file, "--budget", "30", "--workers", "1").exit_code == 0
     before = rows(Path("results/small/Q6p2s1"))
@@ -103,7 +89,9 @@ def test_sweeping_again_asks_for_resume(hovergap: Run, write_study: Write) -> No
     assert rows(Path("results/small/Q6p2s1")) == before
 
 
-def test_resume_extends_and_equals_one_long_run(hovergap: Run, write_study: Write) -> None:
+def test_resume_extends_and_equals_one_long_run(
+    hovergap: Run, write_study: Write, rows: Rows
+) -> None:
     file = write_study()
     assert hovergap("sweep", file, "--budget", "130", "--workers", "1").exit_code == 0
     result = hovergap("resume", "results/small", "--budget", "200", "--workers", "2")
@@ -139,7 +127,9 @@ def test_resume_of_what_is_no_study(hovergap: Run, write_study: Write, tmp_path:
     assert "study.json: is damaged" in one_sentence(hovergap("resume", "results/small"), 2)
 
 
-def test_results_of_another_study_are_refused(hovergap: Run, write_study: Write) -> None:
+def test_results_of_another_study_are_refused(
+    hovergap: Run, write_study: Write, rows: Rows
+) -> None:
     """A family folder copied from a study with other limits must not be continued."""
     assert hovergap("sweep", write_study(), "--budget", "30", "--workers", "1").exit_code == 0
     frozen = Path("results/small/study.toml")
@@ -163,7 +153,7 @@ def test_unknown_family(hovergap: Run, write_study: Write) -> None:
     assert not Path("results").exists()
 
 
-def test_limit_no_design_can_meet(hovergap: Run, write_study: Write) -> None:
+def test_limit_no_design_can_meet(hovergap: Run, write_study: Write, rows: Rows) -> None:
     result = hovergap("sweep", write_study(IMPOSSIBLE), "--workers", "1")
     assert result.exit_code == 3
     assert "no feasible design was found" in result.output
@@ -196,7 +186,7 @@ def test_designs_that_cannot_be_evaluated(hovergap: Run, write_study: Write) -> 
 
 
 def test_truncated_part_is_named_set_aside_and_evaluated_again(
-    hovergap: Run, write_study: Write
+    hovergap: Run, write_study: Write, rows: Rows
 ) -> None:
     assert hovergap("sweep", write_study(), "--workers", "1").exit_code == 0
     folder = Path("results/small/Q6p2s1")
@@ -215,7 +205,7 @@ def test_truncated_part_is_named_set_aside_and_evaluated_again(
 
 
 def test_full_disk_while_searching(
-    hovergap: Run, write_study: Write, monkeypatch: pytest.MonkeyPatch
+    hovergap: Run, write_study: Write, monkeypatch: pytest.MonkeyPatch, rows: Rows
 ) -> None:
     """The file system says it is full from some write on."""
     real, calls = os.fsync, [0]
@@ -302,99 +292,6 @@ def test_two_processes_cannot_search_one_study(hovergap: Run, write_study: Write
         assert "being searched now" in hovergap("status").output
 
 
-def begin(*arguments: str | Path) -> subprocess.Popen[str]:
-    return subprocess.Popen(
-        [sys.executable, "-m", "studies", *map(str, arguments)],
-        stdout=subprocess.PIPE,
-        stderr=subprocess.PIPE,
-        text=True,
-        start_new_session=True,
-    )
-
-
-def press_ctrl_c(child: subprocess.Popen[str]) -> None:
-    """As a terminal does it: the signal reaches the program and its workers alike."""
-    os.killpg(child.pid, signal.SIGINT)
-
-
-def wait_for_rows(folder: Path, child: subprocess.Popen[str]) -> None:
-    """Wait until something is stored; a child that ends before that fails the test."""
-    for _ in range(600):
-        if list(folder.glob("*/part-*.parquet")):
-            return
-        assert child.poll() is None, child.communicate()
-        time.sleep(0.05)
-    pytest.fail("nothing was stored in 30 s")
-
-
-def test_ctrl_c_ends_cleanly_and_the_printed_command_goes_on(
-    write_study: Write, process: Process, hovergap: Run
-) -> None:
-    child = begin("sweep", write_study(SLOW), "--workers", "2", "--budget", "1500")
-    wait_for_rows(Path("results/small"), child)
-    press_ctrl_c(child)
-    output, errors = child.communicate(timeout=60)
-    assert child.returncode == 130, output + errors
-    assert "Traceback" not in output + errors
-    assert "finishing the designs in hand" in errors
-    stored = rows(Path("results/small/Q6p2s1"))
-    assert 0 < len(stored) < 1500
-    command = next(line.strip() for line in output.splitlines() if line.startswith("  hovergap"))
-    assert command == "hovergap resume results/small"
-    arguments = command.split()[1:]
-    result = hovergap(*arguments, "--budget", str(len(stored) + 25), "--family", "Q6p2s1")
-    assert result.exit_code == 0, result.output
-    assert rows(Path("results/small/Q6p2s1"))[: len(stored)] == stored
-
-
-def test_second_ctrl_c_stops_at_once(write_study: Write) -> None:
-    """One call takes a minute; the second signal must not wait for it."""
-    settings = '[evaluator.settings]\ndelay_s = 60.0\nbegun = "begun"'
-    minute = ('name = "toy"', f'name = "toy"\n{settings}')
-    child = begin("sweep", write_study(minute), "--workers", "1")
-    for _ in range(600):
-        if Path("begun").exists():
-            break
-        assert child.poll() is None, child.communicate()
-        time.sleep(0.05)
-    start = time.monotonic()
-    press_ctrl_c(child)
-    time.sleep(0.5)
-    assert child.poll() is None
-    press_ctrl_c(child)
-    output, errors = child.communicate(timeout=30)
-    assert time.monotonic() - start < 20.0  # far below the minute, far above two slow cores
-    assert child.returncode == 130, output + errors
-    assert "Traceback" not in output + errors
-    assert "hovergap resume results/small" in output
-
-
-def test_killed_then_resumed_equals_uninterrupted(write_study: Write, hovergap: Run) -> None:
-    child = begin("sweep", write_study(SLOW), "--workers", "2", "--budget", "400")
-    wait_for_rows(Path("results/small"), child)
-    child.kill()
-    child.communicate()
-    assert hovergap("resume", "results/small", "--workers", "1").exit_code == 0
-    again = hovergap(
-        "sweep", "small.toml", "--results", "whole", "--budget", "400", "--workers", "2"
-    )
-    assert again.exit_code == 0
-    for family in ("Q6p2s1", "Q12p4s5"):
-        assert rows(Path("results/small") / family) == rows(Path("whole/small") / family)
-
-
-def test_piped_progress_is_plain_lines(write_study: Write, process: Process) -> None:
-    result = process("sweep", write_study(), "--workers", "1")
-    assert result.returncode == 0, result.stderr
-    assert "\r" not in result.stdout
-    assert "\x1b" not in result.stdout
-    assert re.search(
-        r"^Q6p2s1  \d+/200  (left .*  )?feasible \d+\.\d %  hypervolume \d\.\d{3}  front \d+",
-        result.stdout,
-        re.MULTILINE,
-    )
-
-
 def test_parts_open_without_our_code(write_study: Write, hovergap: Run) -> None:
     assert hovergap("sweep", write_study(), "--budget", "50", "--workers", "1").exit_code == 0
     table = pq.read_table(next(Path("results/small/Q6p2s1").glob("part-*.parquet")))
@@ -402,53 +299,3 @@ def test_parts_open_without_our_code(write_study: Write, hovergap: Run) -> None:
     assert {"rotor_radius_mm", "loss_total_W", "objective:cost", "feasible"} <= set(
         table.column_names
     )
-
-
-class Terminal:
-    """A stream that says it is a terminal."""
-
-    def __init__(self) -> None:
-        self.text = ""
-
-    def write(self, text: str) -> int:
-        self.text += text
-        return len(text)
-
-    def flush(self) -> None:
-        pass
-
-    def isatty(self) -> bool:
-        return True
-
-
-def test_terminal_progress_overwrites_one_line(monkeypatch: pytest.MonkeyPatch) -> None:
-    from optimizer.progress import Progress
-
-    monkeypatch.setenv("COLUMNS", "120")
-    stream = Terminal()
-    line = ProgressLine(("A", "B"), stream)  # type: ignore[arg-type]
-    line.begin("A")
-    state = Progress(500, 1000, 125, 3, 40, 0.5, 100.0, 5.0, 12)
-    line.show(state)
-    line.say("done")
-    first, blank, rest = stream.text.removeprefix("\r").split("\r")
-    # 500 left at 100/s, then 1000 of the other family.
-    assert first == (
-        "A  500/1,000  left 0:05, all 0:15  feasible 25.0 %  hypervolume 0.500  front 40  100/s"
-    )
-    assert blank == " " * len(first)
-    assert rest == "done\n"
-    monkeypatch.setenv("COLUMNS", "40")
-    line.begin("B")
-    line.show(state)
-    assert len(stream.text.rpartition("\r")[2]) == 39
-
-
-def test_durations() -> None:
-    assert [duration(s) for s in (0.4, 59.6, 3599.0, 3661.0, float("nan"))] == [
-        "0:00",
-        "1:00",
-        "59:59",
-        "1:01:01",
-        "-",
-    ]
