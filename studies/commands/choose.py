@@ -70,7 +70,7 @@ def choose(
     no_store: bool,
     as_json: bool,
 ) -> None:
-    """Rank everything stored by your preferences and store the decision beside the study.
+    """Rank all designs by your preferences.
 
     Every evaluated design that meets the limits is ranked, not the fronts alone. The decision
     goes to RESULTS/STUDY/decisions, numbered; an older one is never replaced.

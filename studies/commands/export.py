@@ -28,10 +28,11 @@ def export(
     force: bool,
     evaluator: str,
 ) -> None:
-    """Write a design, or without DESIGN_ID the fronts of the study, as files for others.
+    """Write a design or the fronts for others.
 
     A design gives drawings, winding, materials, geometry and currents for a field solver, and
-    the data of the suspension controller. The fronts are written as CSV, Parquet and spreadsheet.
+    the data of the suspension controller. Without DESIGN_ID the
+    fronts of the study are written as CSV, Parquet and spreadsheet.
     """
     from pathlib import Path
 

@@ -47,7 +47,10 @@ def sensitivity(
     output: str | None,
     force: bool,
 ) -> None:
-    """Move each variable of a design on its own, and weigh the variables over the whole box."""
+    """Show what a design depends on.
+
+    Moves each variable of the design on its own, and weighs the variables over the whole box.
+    """
     from pathlib import Path
     from typing import cast
 

@@ -40,9 +40,7 @@ NOTES = (
     type=click.IntRange(10, 1_000_000),
     help="By default 300 with the analytic evaluator, 40 with others; three evaluations each.",
 )
-@click.option(
-    "--lots", type=click.IntRange(2, 10_000), help="By default a tenth of the machines."
-)
+@click.option("--lots", type=click.IntRange(2, 10_000), help="By default a tenth of the machines.")
 @click.option("--seed", type=click.IntRange(0, 2**31 - 1), default=1, show_default=True)
 @click.option("--workers", type=click.IntRange(1, 256), help="Processes.")
 @click.option("--json", "as_json", is_flag=True, help="Print JSON.")
@@ -63,7 +61,10 @@ def tolerance(
     output: str | None,
     force: bool,
 ) -> None:
-    """Scatter dimensions and materials of a design; say how many machines meet all limits."""
+    """Scatter a design and give its yield.
+
+    Dimensions and materials scatter; the yield is the share of machines that meet all limits.
+    """
     import json
     from pathlib import Path
     from typing import cast

@@ -18,9 +18,9 @@ GRACE_S = 3.0  # a sweep may end one process and start the next
 @click.option("--wait", is_flag=True, help="Wait for a sweep that has not begun yet.")
 @click.option("--once", is_flag=True, help="Look once and end.")
 def watch(results_folder: str, interval: float | None, wait: bool, once: bool) -> None:
-    """Watch a sweep that runs in another process; ends with it, or at Ctrl-C.
+    """Watch a sweep that runs in another process.
 
-    Only reads: the sweep is not held up, and goes on when this ends.
+    Ends with it, or at Ctrl-C. Only reads: the sweep is not held up, and goes on when this ends.
     """
     import time
     from pathlib import Path
