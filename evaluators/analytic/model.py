@@ -94,7 +94,7 @@ class AnalyticModel:
         Iron is found first with perfect iron's flux, then the field once more with that iron.
         """
         rotation, magnet_orders = self.rotation, self.rotation.magnet_orders
-        slots, reach = rotation.slots, self.resolution.reach
+        slots, reach = rotation.slots, self.reach
         radii = RotorRadii.of(sections, self.recoil)
         slot = mouth(sections, self.resolution.slot_modes)
         opening = sections.slot_opening_angle
