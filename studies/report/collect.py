@@ -27,6 +27,8 @@ SHOWN = 100
 """Designs of one front shown in full."""
 CONTEXT = 20_000
 """Other feasible designs drawn in the background, of all families together."""
+CONTEXT_NUMBERS = 2_400_000
+"""Numbers kept of them; each takes 2.7 bytes of the page, which shall stay below 10 MB."""
 CHECKPOINTS = 40
 """Points of the curve of search progress."""
 
@@ -121,7 +123,7 @@ def collect(opened: Sequence[Results], shown: int = SHOWN) -> ReportData:
         for family in results.study.families
     }
     feasible = [member.stored.counts[1] for member in comparison.members]
-    step = max(1, -(-sum(feasible) // CONTEXT))
+    step = max(1, -(-sum(feasible) // min(CONTEXT, CONTEXT_NUMBERS // len(columns))))
     families = tuple(
         _family(member, owners[member.stored.folder], comparison, columns, shown, step)
         for member in comparison.members

@@ -44,9 +44,11 @@ def single(values: FloatArray) -> str:
 def coarse(values: FloatArray) -> dict[str, Any]:
     """Numbers in 65,535 steps between their smallest and largest, for curves and background.
 
-    The error is half a step, 8e-6 of the range.
+    The error is half a step, 8e-6 of the range. Equal numbers are kept as one and their count.
     """
     good = np.isfinite(values)
+    if values.size and good.all() and np.ptp(values) == 0.0:
+        return {"low": float(values[0]), "count": int(values.size)}
     low = float(values[good].min()) if good.any() else 0.0
     high = float(values[good].max()) if good.any() else 0.0
     span = high - low or 1.0

@@ -68,7 +68,7 @@ def report_figures(marks: Sequence[Mark], rows: Sequence[str], families: Sequenc
     lines = {"design": [""], "says": [""], "xs": [[0.0, 1.0]], "ys": [[0.0, 1.0]]}
     front = ColumnDataSource({**first, **lines}, name="front")
     # The page decides which rows pass the tightened limits and which are greyed out.
-    passing = CDSView(filter=IndexFilter(indices=[], name="passing"))
+    passing = CDSView(filter=IndexFilter(indices=[0], name="passing"))
     failing = CDSView(filter=IndexFilter(indices=[], name="failing"))
     return Figures(
         {

@@ -4,8 +4,10 @@ const data = JSON.parse(document.getElementById("report-data").textContent);
 const element = (id) => document.getElementById(id);
 const bytes = (text) => Uint8Array.from(atob(text), (letter) => letter.charCodeAt(0));
 const coarse = (part) =>
-  Float64Array.from(new Uint16Array(bytes(part.codes).buffer), (code) =>
-    code === 65535 ? NaN : part.low + code * part.step);
+  part.count
+    ? new Float64Array(part.count).fill(part.low)
+    : Float64Array.from(new Uint16Array(bytes(part.codes).buffer), (code) =>
+      code === 65535 ? NaN : part.low + code * part.step);
 
 const columns = data.columns;
 const families = data.families;

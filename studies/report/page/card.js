@@ -89,7 +89,8 @@ function fillDrawings(row) {
   element("card-winding").innerHTML = cards.windings[familyOf[row]];
   const curves = found.curves;
   element("card-curves-note").textContent = curves
-    ? `Whole stack, by the evaluator ${families[familyOf[row]].curvesBy}.`
+    ? `Whole stack, by the evaluator ${families[familyOf[row]].curvesBy}, at the temperatures ` +
+      "the study states; where the heat network solves them, the metrics hold at its own."
     : "No curves: the evaluator gives none, or they would have taken too long.";
   element("card-linear").textContent = curves && curves.current.length
     ? "Taken as linear in the current, without saturation by the suspension current itself. The " +

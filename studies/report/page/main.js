@@ -47,6 +47,7 @@ function begin() {
   applyLimits();
   select([data.start.row]);
   document.documentElement.dataset.ready = "plots";
+  performance.mark("plots");
   unpack("report-cards").then((found) => {
     cards = found;
     showCard();
