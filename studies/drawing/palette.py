@@ -66,8 +66,5 @@ class Mark:
 
 def family_mark(position: int) -> Mark:
     """Colour and marker of the family at `position`; the first 56 pairs all differ."""
-    turn = position // len(FAMILY_COLOURS)
-    return Mark(
-        FAMILY_COLOURS[position % len(FAMILY_COLOURS)],
-        MARKERS[(position + turn) % len(MARKERS)],
-    )
+    # Seven colours and eight markers share no divisor, so both may simply run round.
+    return Mark(FAMILY_COLOURS[position % len(FAMILY_COLOURS)], MARKERS[position % len(MARKERS)])
