@@ -122,7 +122,7 @@ class BatchField:
         make_solver: SolverFactory = newton.BatchSolver,
     ) -> None:
         self.model, self.sections, self.make_solver = model, sections, make_solver
-        self.mesh = mesh.build(sections, model.discretisation.resolution)
+        self.mesh = mesh.build(sections, model.resolution)
         self.gap = GapCoupling(self.mesh.angle[0], model.slots, model.orders)
         rings = model.discretisation.iron_rings
         share = np.arange(1, rings + 1)[:, None] / rings
@@ -226,10 +226,8 @@ class BatchField:
                 guess = np.zeros_like(load) if start is None else start
             elif t == 1:
                 guess = nodes[0]
-            elif t == 2:
-                guess = 2.0 * nodes[1] - nodes[0]
             else:
-                guess = 3.0 * (nodes[t - 1] - nodes[t - 2]) + nodes[t - 3]
+                guess = 2.0 * nodes[t - 1] - nodes[t - 2]
             nodes[t], state = newton.solve(
                 equations.system,
                 equations.solver,

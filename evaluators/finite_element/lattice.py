@@ -59,6 +59,15 @@ class Resolution:
                 msg = f"resolution: {name} = {value} cells must lie between 1 and 64"
                 raise ValueError(msg)
 
+    @classmethod
+    def suited(cls, slots: int) -> Resolution:
+        """Default for a machine with that many slots: the fewer, the more cells a slot pitch."""
+        if slots <= 8:
+            return cls()
+        if slots <= 15:
+            return cls(tooth=2, slot=3, tip=2, wedge=1, body=3, yoke=2)
+        return cls(tooth=2, slot=2, tip=2, wedge=1, body=2, yoke=2)
+
     def refined(self, factor: int) -> Resolution:
         """The same with `factor` times the cells in every direction."""
         return Resolution(**{item.name: factor * getattr(self, item.name) for item in fields(self)})

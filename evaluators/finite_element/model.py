@@ -24,8 +24,8 @@ class Discretisation:
 
     Attributes
     ----------
-    resolution : Resolution
-        Of the stator mesh.
+    resolution : Resolution, optional
+        Of the stator mesh; left out, `Resolution.suited` to the number of slots.
     positions : int
         Rotor positions in 60 electrical degrees with current.
     cogging_positions : int
@@ -34,14 +34,17 @@ class Discretisation:
         Highest Fourier order on the bore over the number of slots.
     iron_rings : int
         Rings into which shaft and rotor core each are divided.
+    refinement : int
+        Cells in every direction over those of `resolution`.
     newton : newton.Settings
     """
 
-    resolution: Resolution = field(default_factory=Resolution)
+    resolution: Resolution | None = None
     positions: int = 12
     cogging_positions: int = 8
     orders_per_slot: int = 40
     iron_rings: int = 3
+    refinement: int = 1
     newton: newton.Settings = field(default_factory=newton.Settings)
 
     def __post_init__(self) -> None:
@@ -50,6 +53,7 @@ class Discretisation:
             "cogging_positions": (4, 240),
             "orders_per_slot": (8, 400),
             "iron_rings": (1, 20),
+            "refinement": (1, 8),
         }
         for name, (low, high) in limits.items():
             value = getattr(self, name)
@@ -57,11 +61,15 @@ class Discretisation:
                 msg = f"{name} = {value} must lie between {low} and {high}"
                 raise ValueError(msg)
 
+    def cells(self, slots: int) -> Resolution:
+        """Cells of a slot pitch for a machine with `slots` slots."""
+        return (self.resolution or Resolution.suited(slots)).refined(self.refinement)
+
     def refined(self, factor: int) -> Discretisation:
         """Mesh and steps `factor` times as fine."""
         return replace(
             self,
-            resolution=self.resolution.refined(factor),
+            refinement=factor * self.refinement,
             positions=factor * self.positions,
             cogging_positions=factor * self.cogging_positions,
             orders_per_slot=factor * self.orders_per_slot,
@@ -75,6 +83,7 @@ class FieldModel:
         self.task = task
         self.discretisation = discretisation
         family = task.winding.family
+        self.resolution = discretisation.cells(family.slots)
         self.slots, self.pole_pairs = family.slots, family.pole_pairs
         self.pitch = 2.0 * np.pi / family.slots
         self.symmetry: Symmetry = symmetry(task.winding)
@@ -94,18 +103,18 @@ class FieldModel:
     @cached_property
     def torque(self) -> Topology:
         """Topology of the sector of the torque field."""
-        return Topology(Lattice(self.discretisation.resolution, self.symmetry.torque))
+        return Topology(Lattice(self.resolution, self.symmetry.torque))
 
     @cached_property
     def suspension(self) -> Topology:
         """Topology of the sector of the suspension field."""
-        return Topology(Lattice(self.discretisation.resolution, self.symmetry.suspension))
+        return Topology(Lattice(self.resolution, self.symmetry.suspension))
 
     @cached_property
     def whole(self) -> Topology:
         """Topology of the whole circle, for torque and suspension field together."""
         sector = Sector(self.slots, 1, 1)
-        return Topology(Lattice(self.discretisation.resolution, sector))
+        return Topology(Lattice(self.resolution, sector))
 
     def unfold(self, target: Topology) -> tuple[IntArray, FloatArray]:
         """Unknown of the torque sector behind each one of a larger sector, and its sign."""

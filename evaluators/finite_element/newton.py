@@ -75,14 +75,15 @@ class Settings:
     Attributes
     ----------
     tolerance : float
-        Largest step, over the potential, both in the Euclidean norm, after which a full Newton
-        step counts as the last: quadratic convergence makes the error left about its square.
+        Estimated error of the potential over the potential, both in the Euclidean norm. A step
+        reduces the error at least as much as the step before it did, so step^2/step before is an
+        upper estimate of what is left.
     iterations : int
         After which a lane counts as not converged.
     """
 
-    tolerance: float = 1e-3
-    iterations: int = 40
+    tolerance: float = 1e-4
+    iterations: int = 60
 
 
 def solve(
@@ -95,31 +96,34 @@ def solve(
     """Solve K(A) A = load from a start, both (size, LANES)."""
     potential = potential.copy()
     active: BoolArray = np.ones(LANES, dtype=np.bool_)
+    fresh: BoolArray = np.ones(LANES, dtype=np.bool_)  # trial is an accepted point
     step_length = np.ones(LANES)
     direction = np.zeros_like(potential)
     slope = np.zeros(LANES)
+    before = np.zeros(LANES)
     trial = potential.copy()
-    fresh: BoolArray = np.ones(LANES, dtype=np.bool_)  # trial is an accepted point
     history: list[FloatArray] = []
     for _ in range(settings.iterations):
         residual, values = system.tangent(trial, load)
-        new_slope = _dot(direction, residual)
-        with np.errstate(invalid="ignore", divide="ignore"):
-            good = np.abs(new_slope) <= OVERSHOOT * np.abs(slope)
-        accepted = active & (fresh | good | (new_slope <= 0.0))
-        potential[:, accepted] = trial[:, accepted]
-        history.append(np.linalg.norm(residual, axis=0))
         solver.factorise(values)
-        step = solver.solve(-residual)
+        history.append(np.linalg.norm(residual, axis=0))
+        new_slope = _dot(direction, residual)
+        good = np.abs(new_slope) <= OVERSHOOT * np.abs(slope)
+        accepted = active & (fresh | good | (new_slope <= 0.0))
         rejected = active & ~accepted
+        potential[:, accepted] = trial[:, accepted]
+        step = solver.solve(-residual)
+        direction[:, accepted] = step[:, accepted]
         with np.errstate(invalid="ignore", divide="ignore"):
             shorter = np.clip(slope / (slope - new_slope), 0.1, 0.7)
         step_length = np.where(rejected, step_length * shorter, 1.0)
-        direction[:, accepted] = step[:, accepted]
         slope = np.where(accepted, _dot(direction, residual), slope)
         size = np.linalg.norm(direction, axis=0)
         scale = np.linalg.norm(potential, axis=0)
-        finished = accepted & (size <= settings.tolerance * scale)
+        with np.errstate(invalid="ignore", divide="ignore"):
+            left = size * np.fmin(1.0, size / before)
+        finished = accepted & (left <= settings.tolerance * scale)
+        before = np.where(accepted, size, before)
         potential[:, finished] += direction[:, finished]
         active &= ~finished
         fresh = np.zeros(LANES, dtype=np.bool_)

@@ -37,7 +37,7 @@ def slotless(
     model = FieldModel(task, Discretisation(resolution=Resolution().refined(refinement)))
     for name in ("torque", "suspension"):
         sector = getattr(model.symmetry, name)
-        lattice = Lattice(model.discretisation.resolution, sector)
+        lattice = Lattice(model.resolution, sector)
         setattr(model, name, Topology(lattice, iron=np.ones_like(lattice.iron)))
     model.stator_curve = CurveTable.linear(PERFECT)
     model.recoil, model.remanence = recoil, 1.2
