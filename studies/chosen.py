@@ -9,7 +9,7 @@ from functools import cached_property
 import numpy as np
 from numpy.typing import NDArray
 
-from evaluators.interface import Waveform
+from evaluators.interface import Capability, Waveform
 from evaluators.machine.geometry import CrossSections, cross_sections
 from evaluators.machine.task import Task
 from evaluators.machine.variables import VARIABLE_NAMES
@@ -25,7 +25,7 @@ FloatArray = NDArray[np.float64]
 
 QUICK_EVALUATOR = "analytic"  # takes milliseconds a design, so large batches cost little
 QUICK_CHUNK = 256
-SLOW_CHUNK = 4
+SLOW_CHUNK = 8
 
 
 @dataclass(frozen=True)
@@ -89,7 +89,9 @@ class Chosen:
 
     @cached_property
     def waveforms(self) -> Mapping[str, Waveform]:
-        """Waveforms by name, as the evaluator gives them."""
+        """Waveforms by name, as the evaluator gives them; none if it gives none."""
+        if Capability.WAVEFORMS not in self.problem.evaluator.capabilities:
+            return {}
         return {item.name: item for item in self.problem.evaluator.waveforms(self.values)}
 
     @property

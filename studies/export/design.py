@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from evaluators.interface import Capability
 from studies.chosen import Chosen
 from studies.drawing.cross_section import cross_section_svg
 from studies.drawing.outlines import outlines
@@ -12,7 +11,7 @@ from studies.export.files import ExportedFile, text_file
 from studies.export.front import FrontTable
 from studies.export.machine import machine_file
 from studies.export.materials import material_files
-from studies.export.suspension import suspension_files
+from studies.export.suspension import suspension_files, suspension_known
 from studies.export.winding import winding_files
 from studies.layout import Results
 
@@ -22,13 +21,7 @@ DIAGRAM = "winding.svg"
 
 
 def design_files(chosen: Chosen) -> list[ExportedFile]:
-    """Everything there is to hand over of one design.
-
-    Raises
-    ------
-    StudiesError
-        If the evaluator gives waveforms, but not those the suspension data need.
-    """
+    """Everything there is to hand over of one design."""
     parts = outlines(chosen.sections, 0, chosen.task.winding)
     facts = {
         "hovergap design": chosen.design,
@@ -53,7 +46,7 @@ def design_files(chosen: Chosen) -> list[ExportedFile]:
         *winding_files(chosen.task.winding, int(chosen.metric("turns_per_coil"))),
         *material_files(chosen.task),
     ]
-    if Capability.WAVEFORMS in chosen.problem.evaluator.capabilities:
+    if suspension_known(chosen):
         files += suspension_files(chosen)
     return files
 
@@ -72,10 +65,10 @@ def design_notes(chosen: Chosen) -> list[str]:
     broken = chosen.broken_limits
     if broken:
         notes.insert(0, f"THIS DESIGN BREAKS A LIMIT OF ITS STUDY: {'; '.join(broken)}.")
-    if Capability.WAVEFORMS not in chosen.problem.evaluator.capabilities:
+    if not suspension_known(chosen):
         notes.append(
-            "The evaluator gives no waveforms, so the suspension data are left out; export with "
-            "--evaluator analytic to have them."
+            "The evaluator gives no waveforms of the suspension, so the controller's data are left "
+            "out; export with --evaluator analytic to have them."
         )
     return notes
 

@@ -74,6 +74,11 @@ class SuspensionData:
         return np.asarray(np.angle(force * np.array([1.0, -1.0j])))
 
 
+def suspension_known(chosen: Chosen) -> bool:
+    """Whether the evaluator gives all waveforms that are needed."""
+    return set(NEEDED) <= set(chosen.waveforms)
+
+
 def suspension_data(chosen: Chosen) -> SuspensionData:
     """Gather it from the evaluator's waveforms and the stored length and turns.
 
