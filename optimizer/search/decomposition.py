@@ -64,7 +64,7 @@ class DecompositionSearch:
     >>> for _ in range(20):
     ...     x = search.ask()
     ...     search.tell(Outcome(x**2, np.zeros((len(x), 0))))
-    >>> bool(search.front.points[0, 0] < 1e-9)
+    >>> bool(search.front.points[0, 0] < 1e-6)
     True
     """
 
@@ -131,8 +131,10 @@ class DecompositionSearch:
         feasible = outcome.feasible
         numbers = self.evaluations + np.flatnonzero(feasible)
         self.front.add(outcome.objectives[feasible], numbers)
-        # One draw for each row, failed or not, keeps the stream of numbers in step.
+        # Drawn for each row, failed or not, so that the stream of numbers stays in step.
         turn = np.argsort(self._random.random(self.size), kind="stable")
+        draws = self._random.random((self.size, self._population.reach))
+        shuffle = np.argsort(draws, axis=1, kind="stable")
         if len(unit):
             self._scale.see(constraints)
             if not self._population.filled:
@@ -140,7 +142,9 @@ class DecompositionSearch:
             self._scale.set_objectives(self.front, self._population.objectives, objectives)
             turn = (np.cumsum(ok) - 1)[turn[ok[turn]]]
             born = np.flatnonzero(ok)
-            self._population.update(unit, objectives, constraints, self._scale, born, turn)
+            self._population.update(
+                unit, objectives, constraints, self._scale, born, turn, shuffle[ok]
+            )
         self._scale.relax()
         self._asked = None
         self.generation += 1

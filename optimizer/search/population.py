@@ -83,6 +83,7 @@ class Population:
     ) -> None:
         self._inverse = 1.0 / weights
         self._near = np.ascontiguousarray(order[:, :REPLACEMENT])
+        self.reach = self._near.shape[1]
         self._single = weights.shape[1] == 1
         self.unit: FloatArray = np.zeros((0, variables))
         self.objectives: FloatArray = np.zeros((0, weights.shape[1]))
@@ -129,6 +130,7 @@ class Population:
         scale: Scale,
         born: IntArray,
         turn: IntArray,
+        shuffle: IntArray,
     ) -> None:
         """Let children (c, ...) replace members, one after the other.
 
@@ -141,6 +143,8 @@ class Population:
             Weight whose member was the parent; at home there if all weights are the same.
         turn : (c,) array of int
             Order in which they compete.
+        shuffle : (c, reach) array of int
+            Order in which each tries the ``reach`` members near its home.
         """
         violation = _tolerated(scale.violation(constraints), scale.tolerance)
         value = self.scalar(scale.normalised(objectives))
@@ -152,6 +156,7 @@ class Population:
         member_violation = _tolerated(scale.violation(self.constraints), scale.tolerance)
         member_value = self._own(scale.normalised(self.objectives))
         near_of = self._near[born if self._single else np.argmin(value, axis=1)]
+        near_of = np.take_along_axis(near_of, shuffle, axis=1)
         owner = np.full(len(self._near), -1)
         for child in turn.tolist():
             near = near_of[child]

@@ -10,7 +10,7 @@ from optimizer.problem import FloatArray, IntArray
 
 DEFAULT_POPULATION = 100
 # A component of zero would make an objective of no account for its weight.
-SMALLEST_WEIGHT = 1e-3
+SMALLEST_WEIGHT = 1e-6
 
 
 def weight_vectors(objectives: int, population: int | None = None) -> FloatArray:
