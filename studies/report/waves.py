@@ -82,16 +82,22 @@ def turn_curves(
     wanted = ("torque", *ALONG["x"])
     if any(name not in by_name for name in wanted):
         return None
+    torque = by_name["torque"]
+
+    def whole_stack(name: str) -> FloatArray:
+        """A waveform at the rotor angles of the torque."""
+        item = by_name[name]
+        values = item.values
+        if not np.array_equal(item.positions, torque.positions):
+            values = np.interp(torque.positions, item.positions, values, period=2.0 * np.pi)
+        return np.asarray(stack_length * values)
 
     def complex_force(names: tuple[str, str]) -> NDArray[np.complex128]:
-        along, across = (stack_length * by_name[name].values for name in names)
-        return np.asarray(along + 1j * across)
+        return np.asarray(whole_stack(names[0]) + 1j * whole_stack(names[1]))
 
     forces = [complex_force(ALONG["x"])]
     if all(name in by_name for name in ALONG["y"]):
         forces.append(complex_force(ALONG["y"]))
-    torque = by_name["torque"]
-    cogging = by_name.get("cogging torque")
     step = -(-torque.positions.size // MOST_POINTS)
     current = magnitude = error = angle = np.zeros(0)
     if all(name in by_name for name in AT_REST):
@@ -100,8 +106,8 @@ def turn_curves(
     nothing = np.zeros(0)
     return TurnCurves(
         angle=np.degrees(torque.positions[::step]),
-        torque=stack_length * torque.values[::step],
-        cogging=stack_length * cogging.values[::step] if cogging else nothing,
+        torque=whole_stack("torque")[::step],
+        cogging=whole_stack("cogging torque")[::step] if "cogging torque" in by_name else nothing,
         force_x=forces[0][::step],
         force_y=forces[1][::step] if len(forces) > 1 else nothing.astype(np.complex128),
         current=current,

@@ -155,6 +155,14 @@ def test_another_family_is_refused() -> None:
         outlines(sections, 0, design_winding(6, 2, 1))
 
 
+@pytest.mark.parametrize("bulge", [1e-5, 2e-4, 2.6e-4, 1e-3])
+def test_flat_arcs_enclose_a_flat_segment(bulge: float) -> None:
+    """Chord 1, height bulge / 2: two thirds of the rectangle (Archimedes, for flat segments)."""
+    loop = Loop(np.array([[0.0, 0.0], [1.0, 0.0]]), np.array([bulge, 0.0]))
+    # The next term is of the order bulge squared; the difference of two sines loses digits.
+    assert loop.area == pytest.approx(bulge / 3.0, rel=1e-5)
+
+
 def test_loop_checks_itself() -> None:
     with pytest.raises(ValueError, match="vertices"):
         Loop(np.zeros((1, 2)), np.zeros(1))

@@ -6,6 +6,7 @@ import base64
 import gzip
 import json
 import re
+from collections.abc import Callable
 from pathlib import Path
 from typing import Any
 
@@ -15,6 +16,7 @@ import pyarrow.parquet as pq
 import pytest
 from click.testing import CliRunner
 
+from evaluators.interface import Waveform
 from evaluators.machine.metrics import METRIC
 from studies.errors import ResultsError
 from studies.layout import open_results
@@ -22,7 +24,9 @@ from studies.report.collect import ReportData, collect
 from studies.report.columns import title
 from studies.report.encoding import STEPS, coarse, packed, script_json, single
 from studies.report.families import tip_shapes
+from studies.report.html import table
 from studies.report.verified import VERIFIED_FILE, verified_values
+from studies.report.waves import turn_curves
 from studies.stored import stored_family
 
 
@@ -168,6 +172,48 @@ def test_json_cannot_end_its_script() -> None:
 )
 def test_titles_have_no_unit(name: str, expected: str) -> None:
     assert title(name, METRIC[name].unit) == expected
+
+
+def test_tables_hold_text() -> None:
+    said = table(["<i>head"], [["<b>row", "<u>cell"]], "<s>caption")
+    assert not re.search(r"<[bius]>", said)
+    assert said.count("&lt;") == 4
+
+
+def test_curves_of_other_positions_are_brought_to_those_of_the_torque() -> None:
+    """A force that turns once against the rotor: its mean is that of its constant part."""
+
+    def wave(name: str, count: int, shape: Callable[[np.ndarray], np.ndarray]) -> Waveform:
+        angle = 2.0 * np.pi * np.arange(count) / count
+        return Waveform(name, "N/m", "rotor angle, rad", angle, shape(angle))
+
+    found = turn_curves(
+        [
+            wave("torque", 360, lambda a: 2.0 + 0.1 * np.cos(6.0 * a)),
+            wave("force along x, commanded along x", 720, lambda a: 5.0 + 0.5 * np.cos(a)),
+            wave("force along y, commanded along x", 720, lambda a: 0.5 * np.sin(a)),
+            wave("force along x, no suspension current", 720, lambda a: 0.5 * np.cos(a)),
+            wave("force along y, no suspension current", 720, lambda a: 0.5 * np.sin(a)),
+        ],
+        stack_length=0.1,
+        suspension_current=3.0,
+    )
+    assert found is not None
+    assert found.force_x.shape == found.torque.shape == (360,)
+    assert found.cogging.size == found.force_y.size == 0
+    assert found.force_x.mean() == pytest.approx(0.5)
+    # At s times the current the mean is s and the rest stays: sin(angle) = 0.05 / (0.5 s).
+    share = found.current / 3.0
+    np.testing.assert_allclose(found.force, 0.5 * share, rtol=1e-9)
+    turned = share > 0.2  # below, the constant part is too weak to hold the direction
+    expected = np.degrees(np.arcsin(0.1 / share[turned]))
+    # One degree between positions, near a flat maximum.
+    np.testing.assert_allclose(found.error_angle[turned], expected, rtol=1e-3)
+    np.testing.assert_allclose(found.error_magnitude, 0.1 / share, rtol=1e-3)
+
+
+def test_curves_need_torque_and_force() -> None:
+    assert turn_curves([], 1.0, 1.0) is None
 
 
 def test_tip_shapes() -> None:

@@ -15,7 +15,7 @@ from evaluators.machine.geometry import cross_sections
 from evaluators.machine.variables import VARIABLES
 from studies.errors import ResultsError
 from studies.layout import open_results
-from studies.sheet.blocks import Cautions, Drawing, Grid
+from studies.sheet.blocks import Cautions, Drawing, Grid, Heading, Sheet, Text
 from studies.sheet.checks import Check, worked_checks
 from studies.sheet.content import design_sheet
 from studies.sheet.html import sheet_html
@@ -129,6 +129,18 @@ def test_html_is_text_only(results_folder: Path) -> None:
     assert "&lt;img src=x onerror=alert(1)&gt;" in text
     assert re.findall(r"(?:src|href)=\"(?!#|data:)[^\"]*", text) == []
     assert "<script" not in text
+
+
+def test_every_block_is_text() -> None:
+    said = "<b>#panic(1)"
+    svg = '<svg xmlns="http://www.w3.org/2000/svg" viewBox="0 0 2 1"></svg>'
+    grid = Grid((said, said), ((said, said),))
+    blocks = (Heading(said), Text(said), Cautions((said,)), Drawing(svg, said), grid)
+    sheet = Sheet(said, said, said, blocks)
+    html = sheet_html(sheet)
+    assert "<b>" not in html
+    assert html.count("&lt;b&gt;") == 12
+    assert sheet_pdf(sheet).startswith(b"%PDF-")  # a panic would have refused it
 
 
 def test_pdf_is_set_from_data_and_always_the_same(results_folder: Path) -> None:
