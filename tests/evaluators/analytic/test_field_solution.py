@@ -89,20 +89,51 @@ def test_inductance_by_slots(case: AnalyticCase, connection: Connection) -> None
     assert expected[0] == pytest.approx(found.real, rel=1e-9)
 
 
+def slot_potentials(
+    field: GapField, exponents: NDArray[np.int64], slots: int, electrical: FloatArray
+) -> FloatArray:
+    """Potential of every slot at every electrical angle, (slots, angles) Wb/m."""
+    turned = np.exp(2j * np.pi * field.classes[:, None] * np.arange(slots) / slots)
+    moving = np.exp(-1j * exponents[:, None] * electrical)
+    return 2.0 * np.real(np.einsum("c,cs,ct->st", field.slot[0], turned, moving))
+
+
+def test_iron_flux_by_slots(case: AnalyticCase) -> None:
+    """A tooth carries the difference of the slots beside it, the yoke the potential of its slot."""
+    waves, linkage, rotation = case.waves(), case.model.linkage, case.model.rotation
+    slots, pair = rotation.slots, rotation.pole_pairs
+    electrical = 2.0 * np.pi * np.arange(96) / 96
+    ones = np.ones_like(waves.current.classes)
+    potential = slot_potentials(
+        waves.magnets, rotation.magnet_orders // pair, slots, electrical
+    ) + slot_potentials(waves.current, ones, slots, electrical)
+    teeth, yoke = linkage.iron_flux(waves.magnets, waves.current, rotation)
+    some = slots // 3
+    scale = 1e-9 * np.abs(potential).max()
+    np.testing.assert_allclose(yoke[0], potential[:some], atol=scale)
+    np.testing.assert_allclose(teeth[0], (potential - np.roll(potential, 1, 0))[:some], atol=scale)
+    # Every third of the slots sees the same in other phases, so these teeth tell all.
+    every = np.abs(potential - np.roll(potential, 1, 0)).max()
+    assert np.abs(teeth).max() == pytest.approx(every, rel=1e-3)
+
+    tooth_peak, yoke_peak = linkage.suspension_flux(waves.suspension, rotation)
+    electrical = 2.0 * np.pi * np.arange(720) / 720
+    ones = np.ones_like(waves.suspension.classes)
+    control = slot_potentials(waves.suspension, ones, slots, electrical)
+    found = np.abs(control - np.roll(control, 1, 0)).max(axis=1)[:some]
+    np.testing.assert_allclose(tooth_peak[0], found, rtol=1e-4)  # sampled every half degree
+    np.testing.assert_allclose(yoke_peak[0], np.abs(control).max(axis=1)[:some], rtol=1e-4)
+
+
 def test_flux_linkage_and_iron_density_by_slots(case: AnalyticCase) -> None:
     model, sections, exciting, waves = case.model, case.sections, case.exciting, case.waves()
     field, winding, phasor = case.solve(), case.task.winding, complex(waves.phasor[0])
     slots, pair = winding.family.slots, winding.family.pole_pairs
     samples = 2 * 96
     electrical = 2.0 * np.pi * np.arange(samples) / samples
-    number = np.arange(slots)
-
-    def potential(wave: GapField, exponents: NDArray[np.int64]) -> FloatArray:
-        turned = np.exp(2j * np.pi * wave.classes[:, None] * number / slots)
-        moving = np.exp(-1j * exponents[:, None] * electrical)
-        return 2.0 * np.real(np.einsum("c,cs,ct->st", wave.slot[0], turned, moving))
-
-    magnets = potential(waves.magnets, model.rotation.magnet_orders // pair)
+    magnets = slot_potentials(
+        waves.magnets, model.rotation.magnet_orders // pair, slots, electrical
+    )
     linkage = sum(
         side.torque_direction * magnets[side.slot] for side in winding.coil_sides if side.phase == 0
     )
@@ -111,11 +142,12 @@ def test_flux_linkage_and_iron_density_by_slots(case: AnalyticCase) -> None:
     # The torque current leads the linkage by a quarter period: in phase with the EMF.
     assert phasor / fundamental / 1j == pytest.approx(abs(phasor / fundamental), rel=1e-9)
 
-    both = magnets + potential(waves.current, np.ones_like(waves.current.classes))
+    ones = np.ones_like(waves.current.classes)
+    both = magnets + slot_potentials(waves.current, ones, slots, electrical)
     tooth = np.abs(both - np.roll(both, 1, axis=0)).max() / sections.tooth_width[0]
     yoke = np.abs(both).max() / sections.yoke_thickness[0]
     # On top comes the suspension's peak: at most all of it, somewhere some of it.
-    turned = np.exp(2j * np.pi * waves.suspension.classes[:, None] * number / slots)
+    turned = np.exp(2j * np.pi * waves.suspension.classes[:, None] * np.arange(slots) / slots)
     extra = 2.0 * exciting.suspension[0] * np.abs(waves.suspension.slot[0] @ turned).max()
     most = yoke + extra / sections.yoke_thickness[0]
     # Positions and instants need not meet the same peak: 0.5 %.

@@ -6,6 +6,7 @@ import machines
 import numpy as np
 import pytest
 
+from evaluators.analytic.gap import Iron
 from evaluators.analytic.model import AnalyticModel, Resolution
 from evaluators.analytic.saturation import mean_differential_reluctivity, secant_reluctivity
 from evaluators.machine import materials
@@ -55,9 +56,13 @@ def test_describing_function_of_a_sheet(peak: float) -> None:
 
 
 def solve(
-    numbers: machines.Numbers, *, ideal_iron: bool = False, **changes: float
+    numbers: machines.Numbers,
+    *,
+    ideal_iron: bool = False,
+    shaft: str = "42CrMo4",
+    **changes: float,
 ) -> FieldSolution:
-    of = machines.task(*numbers, ideal_iron=ideal_iron)
+    of = machines.task(*numbers, ideal_iron=ideal_iron, shaft=shaft)
     batch = machines.designs(**changes)
     sections = machines.sections(of, batch)
     exciting = excitation(sections, batch["current_density_A_mm2"] * 1e6, of.duty, of.construction)
@@ -113,3 +118,27 @@ def test_small_signal_iron_is_worse_than_the_secant() -> None:
     curve = materials.load(ElectricalSteel, "NO20-1200").magnetization
     peak = np.array([1.5, 1.8, 2.0])
     assert (mean_differential_reluctivity(curve, peak) > secant_reluctivity(curve, peak)).all()
+
+
+def test_core_between_a_hole_and_the_magnets() -> None:
+    """A ~ sinh(n ln(r/Ri)): admittance mu_r/mu_core r A'/(n A) at the outside, by differences."""
+    iron = Iron(np.zeros(2), np.zeros(2), np.array([500.0, 40.0]), np.array([0.6, 0.9]))
+    orders = np.array([1, 4, -4])
+    found = iron.core_admittance(1.07, orders)
+    for row, (permeability, hole) in enumerate(((500.0, 0.6), (40.0, 0.9))):
+        for column, n in enumerate(np.abs(orders)):
+            step = 1e-6
+            potential = np.sinh(n * np.log(np.array([1.0 - step, 1.0, 1.0 + step]) / hole))
+            slope = (potential[2] - potential[0]) / (2.0 * step)
+            expected = 1.07 / permeability * slope / (n * potential[1])
+            # Central differences of step 1e-6: rounding of 1e-10 over 1e-6.
+            assert found[row, column] == pytest.approx(expected, rel=1e-8)
+    assert (Iron.perfect(1).core_admittance(1.07, orders) == 0.0).all()
+
+
+def test_hole_of_a_shaft_without_magnetism_saturates_the_core() -> None:
+    thin, thick = (
+        solve((12, 2, 1), shaft="X5CrNi18-10", core_ratio=ratio) for ratio in (0.95, 0.3)
+    )
+    assert thin.core_flux_density[0] > 1.5 * thick.core_flux_density[0]
+    assert thin.flux_linkage[0] < 0.9 * thick.flux_linkage[0]

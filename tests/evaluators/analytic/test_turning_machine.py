@@ -118,6 +118,45 @@ def test_torque_at_every_position(numbers: machines.Numbers) -> None:
     np.testing.assert_allclose(found, expected, rtol=1e-6)
 
 
+@pytest.mark.parametrize("numbers", [(6, 2, 1), (12, 5, 4), (12, 4, 5)], ids=str)
+@pytest.mark.parametrize("span", [0.7, 1.6])
+def test_cogging_is_the_slope_of_the_energy(numbers: machines.Numbers, span: float) -> None:
+    """Slots act as current sheets K = -H_theta in their mouths would on a smooth bore.
+
+    Magnets and iron being linear, the coenergy that goes with it is half of A of the smooth bore
+    times K, integrated along the bore, and its slope over the angle is the torque.
+    """
+    slots = numbers[0]
+    case = AnalyticCase(
+        numbers, Resolution(4, 8, 9 * slots, 8), ideal_iron=True, tip_span_ratio=span
+    )
+    waves, source, _ = case.model.waves(case.sections, case.exciting)
+    field, orders = waves.magnets, case.model.rotation.magnet_orders
+    bore = float(case.sections.bore_radius[0])
+    size = np.where(field.orders == 0, 0, np.abs(field.orders))
+    across = -size * (field.rising[0] - field.falling[0]) / bore
+    periods = int(np.lcm(slots, 2 * numbers[1]))
+    count = 4 * 24
+    angle = 2.0 * np.pi / periods * np.arange(count) / count
+    points = 2.0 * np.pi * np.arange(1024) / 1024
+    energy = []
+    for turned in angle:
+        smooth = 2.0 * np.real(
+            (source.bore[0] * np.exp(-1j * orders * turned)) @ np.exp(1j * orders[:, None] * points)
+        )
+        rotor = np.exp(-1j * orders * turned)[:, None] * across
+        tangential = 2.0 * np.real(
+            rotor.ravel() @ np.exp(1j * field.orders.ravel()[:, None] * points)
+        )
+        energy.append(-0.5 * np.mean(smooth * tangential) * 2.0 * np.pi * bore / MU_0)
+    spectrum = np.fft.rfft(energy)
+    slope = np.fft.irfft(1j * periods * np.arange(spectrum.size) * spectrum, count)
+    cogging = case.motion(angle).cogging[0]
+    # The same harmonics by another route; iron of mu_r = 1e7.
+    np.testing.assert_allclose(cogging, slope, atol=1e-5 * np.abs(slope).max())
+    assert np.abs(slope).max() > 1e-4
+
+
 # -- force ----------------------------------------------------------------------------------------
 
 
