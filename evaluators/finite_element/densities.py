@@ -9,6 +9,7 @@ from numpy.typing import NDArray
 
 from evaluators.finite_element.batch import BatchField, Solution
 from evaluators.finite_element.lattice import Lattice
+from evaluators.finite_element.rotor import MU_0
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
@@ -70,7 +71,8 @@ def _rotor(batch: BatchField, loaded: Solution) -> tuple[FloatArray, FloatArray]
     """Mean density of the core and lowest one at the magnets' surface, (LANES,) each.
 
     Of the field that stands still in the rotor: magnet harmonics and torque fundamental. In the
-    magnets it is the radial component over the outer surface, up to 98 % of the arc.
+    magnets it is the density along the magnetisation over the outer surface, up to 98 % of the
+    arc, because the series of harmonics rings at the very edge.
     """
     model, sections = batch.model, batch.sections
     orders = model.magnet_orders[model.magnet_orders <= 6 * model.slots]
@@ -83,8 +85,20 @@ def _rotor(batch: BatchField, loaded: Solution) -> tuple[FloatArray, FloatArray]
         core = np.abs(at_core).max(axis=0) / sections.core_radius
     else:
         core = np.abs(at_core - at_shaft).max(axis=0) / sections.core_thickness
-    share = np.linspace(-0.98, 0.98, 25)
-    arc = 0.5 * np.pi * sections.magnet_arc_ratio / model.pole_pairs
-    phase = np.exp(1j * share[:, None, None] * arc * orders[:, None])
-    radial = 2.0 * np.real(np.einsum("aml,ml->al", phase, inside.surface_radial))
-    return core, np.asarray(radial.min(axis=0))
+    angle = (
+        np.linspace(-0.98, 0.98, 25)[:, None]
+        * (0.5 * np.pi / model.pole_pairs)
+        * sections.magnet_arc_ratio
+    )
+    wave = np.exp(1j * angle[:, None, :] * orders[:, None])
+
+    def over_magnet(coefficients: ComplexArray) -> FloatArray:
+        return np.asarray(2.0 * np.real(np.einsum("aml,ml->al", wave, coefficients)))
+
+    along = over_magnet(inside.surface_radial)
+    if model.task.construction.magnetisation == "parallel":
+        # Inside the magnets B_phi is mu H_phi plus the tangential remanence.
+        field = over_magnet(inside.surface_field) / sections.magnet_radius
+        tangential = -MU_0 * model.recoil * field - model.remanence * np.sin(angle)
+        along = along * np.cos(angle) - tangential * np.sin(angle)
+    return core, np.asarray(along.min(axis=0))

@@ -89,14 +89,15 @@ class Inside:
         Potential at the outside of every iron ring.
     iron_response : array (k, m, n)
         h/a there.
-    surface_radial : array (m, n)
-        B_r at the outer surface of the magnets, T.
+    surface_radial, surface_field : arrays (m, n)
+        B_r (T) and h = -r H_phi (A) at the outer surface of the magnets.
     """
 
     core: ComplexArray
     iron: ComplexArray
     iron_response: FloatArray
     surface_radial: ComplexArray
+    surface_field: ComplexArray
 
 
 @dataclass(frozen=True)
@@ -254,6 +255,7 @@ class Rotor:
             iron=iron,
             iron_response=responses,
             surface_radial=1j * order * a / self.magnet_radius,
+            surface_field=rings[0][2] * a + rings[0][3],
         )
 
 
