@@ -68,15 +68,19 @@ def test_refrigerant_vapour_from_its_properties(fluid: str, shift: float) -> Non
         source="CoolProp",
         year=2026,
     )
-    for pressure, slack in ((2e5, 0.0), (1e5, 0.03)):
+    for pressure in (2e5, 1e5):
         found = gas_state(gas, 60.0 + shift, pressure)
         there = ("T", 60.0 + shift + 273.15, "P", pressure, fluid)
-        # Exact at the stated state; beside it the growth is a rule, and the vapour is not ideal.
-        near = 1e-9 if shift == 0.0 else 0.045
-        assert float(found.density) == pytest.approx(PropsSI("D", *there), rel=near + slack)
-        assert float(found.viscosity) == pytest.approx(PropsSI("V", *there), rel=near + slack)
-        conductivity = PropsSI("L", *there)
-        assert float(found.thermal_conductivity) == pytest.approx(conductivity, rel=near + slack)
+        stated = shift == 0.0 and pressure == 2e5
+        # Exact at the stated state. Beside it viscosity follows T closely, conductivity grows a
+        # little differently in each vapour, and density misses what is not ideal.
+        for key, value, near in (
+            ("D", found.density, 0.03),
+            ("V", found.viscosity, 0.015),
+            ("L", found.thermal_conductivity, 0.045),
+        ):
+            tolerance = 1e-9 if stated else near
+            assert float(value) == pytest.approx(PropsSI(key, *there), rel=tolerance)
 
 
 def test_impossible_vapour_is_refused() -> None:
