@@ -5,7 +5,7 @@ from __future__ import annotations
 from studies.export.files import ExportedFile, text_file
 from studies.sensitivity.plots import index_picture, line_pictures
 from studies.sensitivity.study import Sensitivity
-from studies.sensitivity.tables import indices_csv, lines_csv
+from studies.sensitivity.tables import counts_text, indices_csv, lines_csv
 
 PICTURES = {
     "objective_lines.svg": "the objectives along each variable, grey where a limit is broken",
@@ -52,8 +52,7 @@ def sensitivity_notes(found: Sensitivity) -> list[str]:
     ]
     if found.indices is not None:
         notes.append(
-            f"Global indices ({found.indices.method}): {found.indices.basis}; "
-            f"{found.indices.evaluations:,} evaluations, {found.indices.dropped:,} dropped because "
-            "they, or others of their block, failed."
+            f"Global indices ({found.indices.method}): {found.indices.basis}. "
+            + counts_text(found.indices)
         )
     return notes

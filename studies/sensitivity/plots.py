@@ -87,6 +87,7 @@ def _panels(
     zero_is_limit: bool,
 ) -> bytes:
     from matplotlib.figure import Figure
+    from matplotlib.ticker import MaxNLocator
 
     rows = ceil((len(found.lines) + 1) / COLUMNS)
     height = 2.3 * rows + 0.4
@@ -111,6 +112,8 @@ def _panels(
         panel.set_xlabel(f"{line.variable}{' (fixed)' if line.fixed else ''}", fontsize=8)
         panel.set_ylim(-reach, reach)
         panel.margins(x=0.0)
+        panel.xaxis.set_major_locator(MaxNLocator(4))  # ticks are most of the drawing time
+        panel.yaxis.set_major_locator(MaxNLocator(4))
         panel.tick_params(labelsize=7)
     _legend(panels[len(found.lines)], list(curves[0]))
     for panel in panels[len(found.lines) + 1 :]:

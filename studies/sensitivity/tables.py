@@ -7,7 +7,7 @@ from textwrap import fill
 import numpy as np
 
 from evaluators.machine.metrics import METRIC
-from studies.sensitivity.indices import Indices
+from studies.sensitivity.indices import DELTA_ROWS, Indices
 from studies.sensitivity.study import Sensitivity, watched_values
 from studies.tables import csv_text, number, text_table, wide_table
 
@@ -50,12 +50,25 @@ def _signed(value: float) -> str:
     return "-" if np.isnan(value) else f"{value:+.2f}"
 
 
+def counts_text(indices: Indices) -> str:
+    """How many rows the indices rest on."""
+    if indices.method == "sobol":
+        return (
+            f"{indices.evaluations:,} evaluations, {indices.dropped:,} dropped because they, or "
+            "others of their block, failed."
+        )
+    used = min(indices.evaluations - indices.dropped, DELTA_ROWS)
+    return (
+        f"{indices.evaluations:,} stored designs, {indices.dropped:,} dropped because they failed; "
+        f"{used:,} used, evenly spaced."
+    )
+
+
 def indices_text(indices: Indices, shown: tuple[str, ...]) -> str:
     """Indices of the shown metrics, the strongest variable first."""
     lines = [
         fill(f"Global indices ({indices.method}): {indices.basis}.", 96),
-        f"{indices.evaluations:,} evaluations, {indices.dropped:,} dropped because they, or others "
-        "of their block, failed.",
+        counts_text(indices),
     ]
     for name in shown:
         row = indices.metrics.index(name)

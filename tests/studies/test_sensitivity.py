@@ -210,7 +210,7 @@ def test_delta_uses_what_is_stored_and_evaluates_the_lines_only(
     done = hovergap("sensitivity", folder, design, "--points", "3", "--indices", "delta")
     assert done.exit_code == 0, done.output
     assert "designs stored of Q6p2s1" in done.output
-    assert "120 evaluations" in done.output
+    assert "120 stored designs" in done.output
 
 
 def test_too_few_usable_samples_are_refused_in_one_sentence(
