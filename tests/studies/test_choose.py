@@ -264,3 +264,16 @@ def test_decisions_are_numbered_and_never_replaced(tmp_path: Path) -> None:
     assert (tmp_path / "decisions" / "decision-0002.txt").read_text() == "orphan"
     assert json.loads(first.read_text()) == {"n": 1}
     assert not [item for item in (tmp_path / "decisions").iterdir() if item.name[0] == "."]
+
+
+def test_two_processes_that_count_alike_do_not_share_a_number(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    from studies.choice import store
+
+    monkeypatch.setattr(store, "_numbers", lambda place: [])  # both saw an empty folder
+    first, _ = store_decision(tmp_path, {"n": 1}, "one")
+    second, text = store_decision(tmp_path, {"n": 2}, "two")
+    assert (first.name, second.name) == ("decision-0001.json", "decision-0002.json")
+    assert json.loads(first.read_text()) == {"n": 1}
+    assert text.read_text() == "two"
