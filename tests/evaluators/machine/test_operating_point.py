@@ -24,6 +24,11 @@ from evaluators.machine.performance.operating import (
     study_temperatures,
 )
 from evaluators.machine.task import Conditions, Task
+from evaluators.machine.thermal.conduction import (
+    heated_bar_mean_rise,
+    heated_bar_peak_rise,
+    mixture_conductivity,
+)
 from evaluators.machine.thermal.machine import machine_network
 from evaluators.machine.wire import choose_strands
 
@@ -180,3 +185,28 @@ def test_settles_under_any_cooling(
     state = solved.settle(replace(solved.task, cooling=cooling))
     assert np.all(state.settled), state.change
     assert np.all(state.temperatures >= 39.0)  # nothing is colder than coolant and inlet
+
+
+def test_hot_spot_is_the_middle_of_the_slot(solved: Solved) -> None:
+    """Peak less mean of a bar with cold walls, twice as deep as the slot (adiabatic mouth)."""
+    task = solved.task
+    found = solved.metrics(task)
+    sections = solved.sections
+    depth = sections.slot_radius - sections.wedge_radius
+    width = sections.slot_area / depth
+    mixture = mixture_conductivity(
+        found["copper_fill"],
+        float(task.materials.conductor.thermal_conductivity.at(100.0)),
+        task.cooling.impregnation_conductivity,
+    )
+    length = 1e-3 * found["stack_length_mm"]
+    slots = sections.family.slots
+    # Loss per volume of slot part and end turns together: they differ by temperature alone.
+    volume = slots * sections.slot_area * (length + sections.end_turn_length(task.construction))
+    source = found["loss_copper_W"] / volume
+    excess = heated_bar_peak_rise(source, width, 2.0 * depth, mixture)
+    excess = excess - heated_bar_mean_rise(source, width, 2.0 * depth, mixture)
+    rise = found["hot_spot_temperature_C"] - 10.0 - found["winding_temperature_C"]
+    # Slot and end turns differ from their common mean by some kelvin either way.
+    np.testing.assert_allclose(rise, excess, rtol=0.5, atol=6.0)
+    assert np.all(rise > 0.0)

@@ -113,3 +113,36 @@ def test_blown_gap_takes_up_what_its_mean_temperature_says() -> None:
     # ... and all of it leaves through the jacket.
     taken = jacket * (found[:, NODES.index(frame)] - 40.0)
     np.testing.assert_allclose(taken, brought, rtol=1e-9)
+
+
+def test_heat_runs_along_the_copper_as_in_rods() -> None:
+    """Rods heated in the slot and cooled in the end turn, by finite volumes along a closed ring.
+
+    Slot and end turn follow each other round a coil; what is set free in one part is taken out
+    evenly in the other. Poor resin leaves the heat no other way than the copper.
+    """
+    task = machines.task()
+    poor = Cooling(impregnation_conductivity=0.02, liner_conductivity=0.02)
+    task = replace(task, cooling=poor)
+    net, length = build(task)
+    sections = machines.sections(task, machines.scattered(net.rows, seed=3))
+    end = sections.end_turn_length(task.construction)
+    moved = np.zeros((net.rows, len(NODES)))
+    winding, end_turns = NODES.index("winding"), NODES.index("end_turns")
+    moved[:, winding], moved[:, end_turns] = 10.0, -10.0
+    found = net.solve(moved)
+    slots = sections.family.slots
+    copper = 394.0 * (1.0 - 0.00015 * 80.0) * 0.4 * sections.slot_area * slots
+    for row in range(net.rows):
+        cells = 400
+        x = (np.arange(2 * cells) + 0.5) / cells
+        step = np.where(x < 1.0, length[row], end[row]) / cells
+        heat = np.where(x < 1.0, 10.0, -10.0) / cells
+        # Heat flow between cells of one closed ring that holds all the copper.
+        flow = np.cumsum(heat)
+        flow -= flow[cells - 1] / 2.0  # half leaves the slot at either end
+        between = 0.5 * (step + np.roll(step, -1))
+        rise = np.concatenate([[0.0], np.cumsum(-flow * between / copper[row])[:-1]])
+        difference = rise[:cells].mean() - rise[cells:].mean()
+        # A little still leaves through the resin.
+        assert found[row, winding] - found[row, end_turns] == pytest.approx(difference, rel=0.04)
