@@ -161,11 +161,23 @@ class Front:
     """
 
     def __init__(self, objectives: int) -> None:
-        self.points: FloatArray = np.zeros((0, objectives))
-        self.evaluations: IntArray = np.zeros(0, dtype=np.int64)
+        # Columns with room to grow: what is compared lies together, what is added is not copied.
+        self._columns: FloatArray = np.zeros((objectives, 64))
+        self._numbers: IntArray = np.zeros(64, dtype=np.int64)
+        self._count = 0
 
     def __len__(self) -> int:
-        return len(self.points)
+        return self._count
+
+    @property
+    def points(self) -> FloatArray:
+        """Points (n, m); a view that the next :meth:`add` may change."""
+        return self._columns[:, : self._count].T
+
+    @property
+    def evaluations(self) -> IntArray:
+        """Number (n,) of the evaluation that gave each; a view too."""
+        return self._numbers[: self._count]
 
     def add(self, points: FloatArray, evaluations: IntArray) -> None:
         """Add feasible ``points`` (n, m); drop whatever is dominated then."""
@@ -176,18 +188,35 @@ class Front:
         if len(self) < _SORT_BELOW:
             both = np.concatenate([self.points, points])
             mask = non_dominated(both)
-            self.points = both[mask]
-            self.evaluations = np.concatenate([self.evaluations, evaluations])[mask]
+            self.replace(both[mask], np.concatenate([self.evaluations, evaluations])[mask])
             return
         # Sorting a large front anew for a few points is wasteful; compare the few with it.
-        columns = np.ascontiguousarray(self.points.T)
+        columns = self._columns[:, : self._count]
         new = np.array([not _compare(columns, point, np.less_equal).any() for point in points])
         points, evaluations = points[new], evaluations[new]
         beaten = np.zeros(len(self), dtype=np.bool_)
         for point in points:
             beaten |= _compare(columns, point, np.greater_equal)
-        self.points = np.concatenate([self.points[~beaten], points])
-        self.evaluations = np.concatenate([self.evaluations[~beaten], evaluations])
+        if beaten.any():
+            self.replace(self.points[~beaten], self.evaluations[~beaten])
+        self._append(points, evaluations)
+
+    def replace(self, points: FloatArray, evaluations: IntArray) -> None:
+        """Hold these points, which must not dominate one another, instead."""
+        self._count = 0
+        self._append(points, evaluations)
+
+    def _append(self, points: FloatArray, evaluations: IntArray) -> None:
+        end = self._count + len(points)
+        if end > len(self._numbers):
+            room = max(end, 2 * len(self._numbers))
+            columns, numbers = np.zeros((points.shape[1], room)), np.zeros(room, dtype=np.int64)
+            columns[:, : self._count] = self._columns[:, : self._count]
+            numbers[: self._count] = self._numbers[: self._count]
+            self._columns, self._numbers = columns, numbers
+        self._columns[:, self._count : end] = points.T
+        self._numbers[self._count : end] = evaluations
+        self._count = end
 
 
 def _compare(columns: FloatArray, point: FloatArray, relation: np.ufunc) -> BoolArray:

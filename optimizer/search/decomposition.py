@@ -171,8 +171,7 @@ class DecompositionSearch:
         arrays, values = state.arrays, state.values
         self._population.restore(arrays)
         self._scale.restore(values, arrays["largest_violation"])
-        self.front.points = arrays["front_points"].copy()
-        self.front.evaluations = arrays["front_evaluations"].copy()
+        self.front.replace(arrays["front_points"], arrays["front_evaluations"])
         self._random.bit_generator.state = values["random"]
         self.generation = int(values["generation"])
         self._asked = arrays["asked"].copy() if "asked" in arrays else None
