@@ -27,7 +27,7 @@ from studies.report.html import facts, paragraph, swatch
 from studies.report.method import method_html
 from studies.report.waves import TurnCurves, all_curves
 
-PROGRAM = ("base.js", "plots.js", "limits.js", "table.js", "card.js", "main.js")
+PROGRAM = ("base.js", "plots.js", "limits.js", "table.js", "card.js", "print.js", "main.js")
 MOST_AXES = 11
 LONGEST_CURVES_S = 60.0
 """Curves are left to the compromises if the stored evaluations were so slow that all of them

@@ -42,6 +42,7 @@ function begin() {
   connectCard();
   fillChoices();
   connectPlots();
+  connectPrinting();
   drawFront();
   drawAxes();
   applyLimits();

@@ -264,3 +264,15 @@ def test_page_never_scrolls_sideways(opened: Any, width: int) -> None:
         assert opened.execute_script("return document.documentElement.scrollWidth") <= width
     finally:
         opened.execute_cdp_cmd("Emulation.clearDeviceMetricsOverride", {})
+
+
+def test_printing_puts_pictures_of_the_plots_on_paper(opened: Any) -> None:
+    opened.execute_script("window.dispatchEvent(new Event('beforeprint'))")
+    found = opened.execute_script(
+        "return Array.from(document.querySelectorAll('canvas.printed'), c => c.width * c.height)"
+    )
+    # Front, axes, five of the card, progress and distributions.
+    assert len(found) == 9
+    assert min(found) > 0
+    opened.execute_script("window.dispatchEvent(new Event('afterprint'))")
+    assert opened.execute_script("return document.querySelector('canvas.printed')") is None
