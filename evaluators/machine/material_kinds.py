@@ -82,7 +82,6 @@ class Material:
                 known = known & quantity.covers(temperature_C)
         return np.asarray(known)
 
-
     @property
     def temperature_range(self) -> tuple[float, float]:
         """Lowest and highest temperature in degC that every table covers and the limit allows."""

@@ -39,7 +39,7 @@ def test_short_circuit_by_integration(
 
 
 def test_short_circuit_limits() -> None:
-    """Without resistance the current swings to twice psi/L; with much of it, to the steady value."""
+    """Without resistance the current swings to twice psi/L; with much of it, to the steady one."""
     assert short_circuit_peak(100.0, 0.0, 1e-9, 2.0) == pytest.approx(100.0, rel=1e-6)
     steady = 100.0 * 2.0 / (50.0**2 + 2.0**2)
     assert short_circuit_peak(100.0, 0.0, 50.0, 2.0) == pytest.approx(steady, rel=1e-3)
