@@ -53,6 +53,25 @@ class Waves:
 
 
 @dataclass(frozen=True)
+class Induced:
+    """Effect of currents induced in the rotor on a field with the magnets.
+
+    Attributes
+    ----------
+    orders : array (m,)
+        Positive orders.
+    tangential : array (t, m, LANES)
+        What the currents add to the coefficients of h on the bore, A.
+    start : array (t, size, LANES)
+        Potential to start from at every position.
+    """
+
+    orders: IntArray
+    tangential: ComplexArray
+    start: FloatArray
+
+
+@dataclass(frozen=True)
 class Solution:
     """Torque field at some rotor positions.
 
@@ -71,23 +90,6 @@ class Solution:
     linkage: FloatArray
     waves: Waves
     converged: BoolArray
-
-
-@dataclass(frozen=True)
-class Perturbation:
-    """Small fields on top of a torque field, at some rotor positions.
-
-    Attributes
-    ----------
-    waves : Waves
-        Potential per unit of the complex cause; as the causes are complex, positive and negative
-        orders are independent: `orders` runs over both.
-    linkage : array (t, slots, LANES), complex
-    """
-
-    waves: Waves
-    linkage: ComplexArray
-    nodes: ComplexArray
 
 
 @dataclass(frozen=True)
@@ -212,8 +214,12 @@ class BatchField:
         angles: FloatArray,
         currents: FloatArray,
         start: FloatArray | None = None,
+        induced: Induced | None = None,
     ) -> Solution:
-        """Field of magnets and slot `currents` (t, slots, LANES) at rotor `angles` (t,)."""
+        """Field of magnets and slot `currents` (t, slots, LANES) at rotor `angles` (t,).
+
+        `induced` adds currents in the rotor and brings a start for every position.
+        """
         topology = equations.topology
         magnets = self.magnet_load(angles, topology.lattice.slots)
         nodes = np.empty((angles.size, topology.size, LANES))
@@ -222,7 +228,14 @@ class BatchField:
             load = np.zeros((topology.size, LANES))
             load[topology.lattice.bore] = magnets[t]
             self.add_currents(load, topology, currents[t])
-            if t == 0:
+            if induced is not None:
+                load[topology.lattice.bore] += self.gap.source_load(
+                    induced.tangential[t],
+                    induced.orders,
+                    -self.model.pitch * np.arange(topology.lattice.slots, dtype=np.float64),
+                )
+                guess = induced.start[t]
+            elif t == 0:
                 guess = np.zeros_like(load) if start is None else start
             elif t == 1:
                 guess = nodes[0]
@@ -237,6 +250,9 @@ class BatchField:
             )
             converged &= state.converged
         waves = self.waves(topology, angles, nodes)
+        if induced is not None:
+            place = np.searchsorted(waves.orders, induced.orders)
+            waves.tangential[:, place] += induced.tangential
         return Solution(nodes, self.slot_means(topology, nodes), waves, converged)
 
     def settle_rotor_iron(
@@ -322,16 +338,19 @@ class BatchField:
         `nodes` (t, ...) is the torque field; `loads` gives real and imaginary part per position,
         each (size, LANES).
         """
-        topology = equations.topology
-        source, factor = self.model.unfold(topology)
-        small, large = self.torque.topology.lattice, topology.lattice
-        past = float(small.sector.sign) ** (large.slots // small.slots)
-        result = np.empty((len(nodes), topology.size, LANES), dtype=np.complex128)
+        result = np.empty((len(nodes), equations.topology.size, LANES), dtype=np.complex128)
         for t, (real, imag) in enumerate(loads):
-            field = nodes[t][source] * factor[:, None]
-            equations.solver.factorise(equations.system.tangent_at(field, past))
+            self.factorise_at(equations, nodes[t])
             result[t] = equations.solver.solve(real) + 1j * equations.solver.solve(imag)
         return result
+
+    def factorise_at(self, equations: Equations, nodes: FloatArray) -> None:
+        """Factorise the tangent of another sector at a torque field (size, LANES)."""
+        source, factor = self.model.unfold(equations.topology)
+        small, large = self.torque.topology.lattice, equations.topology.lattice
+        past = float(small.sector.sign) ** (large.slots // small.slots)
+        field = nodes[source] * factor[:, None]
+        equations.solver.factorise(equations.system.tangent_at(field, past))
 
     def coefficients_both_sides(
         self, nodes: ComplexArray, sector: Sector, lattice_bore: IntArray, orders: IntArray

@@ -8,7 +8,7 @@ from dataclasses import fields
 import numpy as np
 from numpy.typing import NDArray
 
-from evaluators.finite_element import static
+from evaluators.finite_element import analysis
 from evaluators.finite_element.lanes import LANES
 from evaluators.finite_element.mesh import MeshError
 from evaluators.finite_element.model import FieldModel
@@ -35,7 +35,14 @@ class FiniteElementEvaluator:
 
     name = "finite_element"
     version = "1"
-    capabilities = frozenset({Capability.SATURATION, Capability.WAVEFORMS})
+    capabilities = frozenset(
+        {
+            Capability.SATURATION,
+            Capability.WAVEFORMS,
+            Capability.EDDY_CURRENTS,
+            Capability.NONLINEAR_FORCE,
+        }
+    )
 
     def __init__(self, task: Task, settings: Mapping[str, object] | None = None) -> None:
         self.task = task
@@ -67,16 +74,16 @@ class FiniteElementEvaluator:
             row = valid[chosen]
             part, current = sections.rows(padded), _rows(exciting, padded)
             try:
-                fields_of_batch = static.solve(self.model, part, current)
+                fields_of_batch = analysis.solve(self.model, part, current)
             except MeshError as error:
                 status[row] = Status.FAILED.value
                 reason[row] = str(error)
                 continue
-            field = static.evaluate(fields_of_batch, current).field
-            done = performance(task, part, current, field)
+            found = analysis.evaluate(fields_of_batch, current)
+            done = performance(task, part, current, found.field)
             values = np.array([done.metrics[name] for name in self.metrics])[:, : chosen.size]
             words = done.reasons[: chosen.size].astype(object)
-            words[~fields_of_batch.converged[: chosen.size]] = (
+            words[~found.converged[: chosen.size]] = (
                 "the field did not converge within the allowed Newton iterations"
             )
             good = np.all(np.isfinite(values), axis=0) & (words == "")
@@ -95,8 +102,8 @@ class FiniteElementEvaluator:
         for first in range(0, len(sections), LANES):
             padded = np.resize(np.arange(first, min(first + LANES, len(sections))), LANES)
             current = _rows(exciting, padded)
-            solved = static.solve(self.model, sections.rows(padded), current)
-            parts.append(static.evaluate(solved, current).field)
+            solved = analysis.solve(self.model, sections.rows(padded), current)
+            parts.append(analysis.evaluate(solved, current).field)
         return FieldSolution(
             **{
                 item.name: np.concatenate([getattr(part, item.name) for part in parts])[

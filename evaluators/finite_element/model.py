@@ -36,6 +36,8 @@ class Discretisation:
         Rings into which shaft and rotor core each are divided.
     refinement : int
         Cells in every direction over those of `resolution`.
+    transient : bool
+        Whether currents are induced in the rotor.
     newton : newton.Settings
     """
 
@@ -45,6 +47,7 @@ class Discretisation:
     orders_per_slot: int = 40
     iron_rings: int = 3
     refinement: int = 1
+    transient: bool = False
     newton: newton.Settings = field(default_factory=newton.Settings)
 
     def __post_init__(self) -> None:

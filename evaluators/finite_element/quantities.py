@@ -49,12 +49,16 @@ class Force:
 
 
 def force_parts(
-    batch: BatchField, solution: Solution, small: ComplexArray
+    batch: BatchField,
+    solution: Solution,
+    small: ComplexArray,
+    response: tuple[ComplexArray, ComplexArray] | None = None,
 ) -> tuple[ComplexArray, ComplexArray, ComplexArray]:
     """Force at the positions of a torque field: rest, direct and mirrored as in `Force`.
 
     `small` (t, size, LANES) is the field of the complex slot currents `suspension_slot_mmf` of one
-    ampere-turn on the sector of the suspension field.
+    ampere-turn on the sector of the suspension field. `response` is h/a of the rotor for positive
+    and for negative orders (orders + 1, LANES) if currents are induced.
     """
     model = batch.model
     radius = batch.sections.bore_radius
@@ -71,30 +75,40 @@ def force_parts(
     plus, minus = batch.coefficients_both_sides(
         small, sector, model.suspension.lattice.bore, orders
     )
-    response = batch.response[orders].astype(np.complex128)
+    static = batch.response.astype(np.complex128)
+    ahead, behind = (item[orders] for item in (response or (static, static)))
 
-    def half_field(positive: ComplexArray, negative: ComplexArray) -> ComplexArray:
+    def half_field(
+        a: ComplexArray, h: ComplexArray, a_negative: ComplexArray, h_negative: ComplexArray
+    ) -> ComplexArray:
         return 0.5 * stress.rotating(
-            stress.spread(orders, positive, highest, negative),
-            stress.spread(orders, response * positive, highest, response * negative),
+            stress.spread(orders, a, highest, a_negative),
+            stress.spread(orders, h, highest, h_negative),
             radius,
         )
 
+    field = half_field(plus, ahead * plus, minus, behind * minus)
+    mirror = half_field(
+        np.conj(minus), np.conj(behind * minus), np.conj(plus), np.conj(ahead * plus)
+    )
     phase = np.exp(1j * model.pole_pairs * main.angles)[:, None]
     rest = stress.pair(turning, turning, radius)
-    direct = 2.0 * stress.pair(turning, half_field(plus, minus), radius) * phase
-    mirrored = 2.0 * stress.pair(turning, half_field(np.conj(minus), np.conj(plus)), radius)
+    direct = 2.0 * stress.pair(turning, field, radius) * phase
+    mirrored = 2.0 * stress.pair(turning, mirror, radius)
     return rest, direct, np.asarray(mirrored * np.conj(phase))
 
 
 def suspension_force(
-    batch: BatchField, solution: Solution, small: ComplexArray
+    batch: BatchField,
+    solution: Solution,
+    small: ComplexArray,
+    response: tuple[ComplexArray, ComplexArray] | None = None,
 ) -> tuple[Force, bool]:
     """Force over the whole turn, see `force_parts`.
 
     Also tells whether the mean force follows the phasor (True) or its conjugate.
     """
-    force = whole_turn(batch, *force_parts(batch, solution, small))
+    force = whole_turn(batch, *force_parts(batch, solution, small, response))
     family = batch.model.task.winding.family
     return force, family.suspension_pole_pairs > family.pole_pairs
 

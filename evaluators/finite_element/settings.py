@@ -8,7 +8,9 @@ from evaluators.finite_element.lattice import Resolution
 from evaluators.finite_element.model import Discretisation
 from evaluators.interface import EvaluatorError
 
+ANALYSES = ("static", "transient")
 KNOWN = (
+    "analysis",
     "cells",
     "cogging_positions",
     "iron_rings",
@@ -21,7 +23,8 @@ KNOWN = (
 def read_settings(settings: dict[str, object]) -> Discretisation:
     """Discretisation from settings.
 
-    Known are ``positions``, ``cogging_positions``, ``orders_per_slot``, ``iron_rings`` (see
+    Known are ``analysis`` (``static`` or ``transient``, the latter with currents induced in the
+    rotor), ``positions``, ``cogging_positions``, ``orders_per_slot``, ``iron_rings`` (see
     `Discretisation`), ``refinement`` (cells and positions times this) and ``cells`` (a table with
     the fields of `Resolution`).
 
@@ -39,7 +42,12 @@ def read_settings(settings: dict[str, object]) -> Discretisation:
                     f"{', '.join(KNOWN)}"
                 )
                 raise EvaluatorError(msg)
-            if name == "cells":
+            if name == "analysis":
+                if value not in ANALYSES:
+                    msg = f"setting analysis = {value!r} must be {' or '.join(ANALYSES)}"
+                    raise EvaluatorError(msg)
+                result = replace(result, transient=value == "transient")
+            elif name == "cells":
                 result = replace(result, resolution=_cells(value))
             elif name == "positions":
                 result = replace(result, positions=_whole(name, value))

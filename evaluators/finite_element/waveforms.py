@@ -7,7 +7,7 @@ from collections.abc import Mapping
 import numpy as np
 from numpy.typing import NDArray
 
-from evaluators.finite_element import static
+from evaluators.finite_element import analysis
 from evaluators.finite_element.lanes import LANES
 from evaluators.finite_element.model import FieldModel
 from evaluators.interface import Waveform
@@ -35,7 +35,7 @@ def waveforms(model: FieldModel, design: Mapping[str, float]) -> tuple[Waveform,
     )
     lanes = np.zeros(LANES, dtype=np.int64)
     current = Excitation(exciting.torque[lanes], exciting.suspension[lanes])
-    result = static.evaluate(static.solve(model, sections.rows(lanes), current), current)
+    result = analysis.evaluate(analysis.solve(model, sections.rows(lanes), current), current)
     family = task.winding.family
     forward = family.suspension_pole_pairs > family.pole_pairs
     commands = {

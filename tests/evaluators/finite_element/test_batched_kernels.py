@@ -6,7 +6,7 @@ import machines
 import numpy as np
 import pytest
 
-from evaluators.finite_element import factor, newton, static, stress
+from evaluators.finite_element import analysis, factor, newton, stress
 from evaluators.finite_element.batch import BatchField
 from evaluators.finite_element.lanes import LANES
 from evaluators.finite_element.lattice import Lattice, Resolution
@@ -135,11 +135,11 @@ def test_tangent_is_the_derivative_of_the_residual(batch: BatchField) -> None:
 def test_whole_analysis_with_scipy(batch: BatchField) -> None:
     """Batched LDL^T and SciPy's LU give the same machine."""
     current = current_of(batch)
-    fast = static.solve(batch.model, batch.sections, current)
-    slow = static.solve(batch.model, batch.sections, current, SciPySolver)
+    fast = analysis.solve(batch.model, batch.sections, current)
+    slow = analysis.solve(batch.model, batch.sections, current, SciPySolver)
     assert np.all(fast.converged)
-    a = static.evaluate(fast, current).field
-    b = static.evaluate(slow, current).field
+    a = analysis.evaluate(fast, current).field
+    b = analysis.evaluate(slow, current).field
     for name, value in vars(a).items():
         # Both stop after the same steps; what differs is rounding, amplified in differences such
         # as cogging.

@@ -9,7 +9,7 @@ import numpy as np
 import pytest
 from numpy.typing import NDArray
 
-from evaluators.finite_element import losses, nonlinear_force, static, stress
+from evaluators.finite_element import analysis, losses, nonlinear_force, stress
 from evaluators.finite_element.batch import BatchField, Solution
 from evaluators.finite_element.displacement import stiffness
 from evaluators.finite_element.lanes import LANES
@@ -116,8 +116,8 @@ def test_small_suspension_current_superposes(numbers: machines.Numbers) -> None:
     """The tangent's force is the derivative of the full nonlinear force by the current."""
     batch, current = machine(numbers)
     model = batch.model
-    fields = static.solve(model, batch.sections, current)
-    force = static.evaluate(fields, current).force
+    fields = analysis.solve(model, batch.sections, current)
+    force = analysis.evaluate(fields, current).force
     whole = fields.batch.equations(model.whole)
     source, factor = model.unfold(model.whole)
     t = 2
@@ -150,14 +150,14 @@ def test_sixty_electrical_degrees_make_the_whole_turn(numbers: machines.Numbers)
     """Torque and force at positions elsewhere in the turn, solved there, fit the continuation."""
     batch, current = machine(numbers)
     model = batch.model
-    fields = static.solve(model, batch.sections, current)
-    result = static.evaluate(fields, current)
+    fields = analysis.solve(model, batch.sections, current)
+    result = analysis.evaluate(fields, current)
     for m in (1, 3, 6 * model.pole_pairs - 1):
         there = model.angles + m * model.sixth
         loaded = fields.batch.solve_torque(there, current.torque)
         assert torque_of(loaded) == pytest.approx(torque_of(fields.loaded), rel=1e-6)
         equations = fields.batch.equations(model.suspension)
-        small = static.suspension_field(fields.batch, equations, loaded)
+        small = analysis.suspension_field(fields.batch, equations, loaded)
         _, direct, mirrored = force_parts(fields.batch, loaded, small)
         step = result.force.direct.shape[0] // (6 * model.pole_pairs)
         fine = m * step + np.arange(COARSE.positions) * (step // COARSE.positions)

@@ -1,0 +1,249 @@
+"""The analysis of a batch: all static fields, induced currents on request, and what follows."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from evaluators.finite_element import losses, newton, stress, transient
+from evaluators.finite_element.batch import BatchField, Equations, Solution, SolverFactory
+from evaluators.finite_element.densities import densities
+from evaluators.finite_element.displacement import stiffness
+from evaluators.finite_element.lanes import LANES
+from evaluators.finite_element.model import FieldModel
+from evaluators.finite_element.quantities import (
+    Force,
+    fundamental_linkage,
+    interpolate,
+    loaded_inductance,
+    suspension_force,
+    suspension_inductance,
+    suspension_loads,
+)
+from evaluators.machine.field import Excitation, FieldSolution
+from evaluators.machine.geometry import CrossSections
+
+FloatArray = NDArray[np.float64]
+ComplexArray = NDArray[np.complex128]
+BoolArray = NDArray[np.bool_]
+
+UNSETTLED = 0.02
+"""Disagreement of rotor and stator from which a design with induced currents counts as failed."""
+
+
+@dataclass(frozen=True)
+class StaticFields:
+    """Solved fields of a batch.
+
+    Attributes
+    ----------
+    batch : BatchField
+    loaded, unloaded : Solution
+        With torque current over 60 electrical degrees; without over one cogging period.
+    small : array (t, size, LANES), complex
+        Suspension field of one ampere-turn at the positions of `loaded`.
+    stiffness : array (LANES,)
+        N/m per m.
+    """
+
+    batch: BatchField
+    loaded: Solution
+    unloaded: Solution
+    small: ComplexArray
+    stiffness: FloatArray
+
+    @property
+    def converged(self) -> BoolArray:
+        """Lanes whose every position converged."""
+        return self.loaded.converged & self.unloaded.converged
+
+
+def solve(
+    model: FieldModel,
+    sections: CrossSections,
+    exciting: Excitation,
+    make_solver: SolverFactory = newton.BatchSolver,
+) -> StaticFields:
+    """Solve all static fields of LANES designs."""
+    batch = BatchField(model, sections, make_solver)
+    start = batch.settle_rotor_iron(float(model.angles[0]), exciting.torque)
+    loaded = batch.solve_torque(model.angles, exciting.torque, start)
+    unloaded = batch.solve_torque(model.cogging_angles, np.zeros(LANES), loaded.nodes[0])
+    suspension = batch.equations(model.suspension)
+    small = suspension_field(batch, suspension, loaded)
+    some = [0, model.cogging_angles.size // 2]
+    pull = stiffness(batch, unloaded, some, suspension).mean(axis=0)
+    return StaticFields(batch, loaded, unloaded, small, pull)
+
+
+def suspension_field(batch: BatchField, equations: Equations, solution: Solution) -> ComplexArray:
+    """Field of one ampere-turn of suspension on top of a torque field, (t, size, LANES)."""
+    return batch.perturb(equations, solution.nodes, [suspension_loads(batch)] * len(solution.nodes))
+
+
+@dataclass(frozen=True)
+class Induced:
+    """What the rotor's induced currents add to the static fields.
+
+    Attributes
+    ----------
+    loaded, small
+        In place of those of `StaticFields`.
+    response : pair of arrays, see `transient.InducedSuspension`
+    magnet, sleeve : arrays (LANES,)
+        Loss, W/m; that of the shaft counts with the sleeve's.
+    unsettled : array (LANES,)
+        How far rotor and stator still disagreed at the end, see `transient.InducedTorque`.
+    """
+
+    loaded: Solution
+    small: ComplexArray
+    response: tuple[ComplexArray, ComplexArray]
+    magnet: FloatArray
+    sleeve: FloatArray
+    unsettled: FloatArray
+
+
+def induce(fields: StaticFields, exciting: Excitation) -> Induced:
+    """Add the rotor's induced currents to static fields."""
+    batch = fields.batch
+    rotor = transient.eddy_rotor(batch, _torque(fields.loaded).real.mean(axis=0))
+    main = transient.torque_field(batch, rotor, fields.loaded, exciting.torque)
+    equations = batch.equations(batch.model.suspension)
+    control = transient.suspension_field(batch, equations, rotor, main.solution.nodes)
+    loss = transient.suspension_loss(batch, equations, rotor, control.small, exciting.suspension)
+    return Induced(
+        main.solution,
+        control.small,
+        control.response,
+        main.magnet + loss.magnet.sum(axis=0),
+        main.sleeve + main.shaft + (loss.sleeve + loss.shaft).sum(axis=0),
+        main.unsettled,
+    )
+
+
+@dataclass(frozen=True)
+class Result:
+    """What comes out of a batch: the quantities (LANES,) and the waveforms behind them.
+
+    Attributes
+    ----------
+    field : FieldSolution
+    torque, cogging : arrays (fine positions, LANES)
+        Over 60 electrical degrees and over one cogging period, N m/m.
+    force : Force
+    angle_bias : array (LANES,)
+        Angle by which induced currents turn the mean force against the command of the static
+        field, rad; zero in the static analysis.
+    iron : losses.IronLoss
+    converged : array (LANES,)
+    unsettled : array (LANES,)
+        See `Induced`; zero in the static analysis.
+    """
+
+    field: FieldSolution
+    torque: FloatArray
+    cogging: FloatArray
+    force: Force
+    angle_bias: FloatArray
+    iron: losses.IronLoss
+    converged: BoolArray
+    unsettled: FloatArray
+
+
+def evaluate(fields: StaticFields, exciting: Excitation) -> Result:
+    """All quantities of the solved fields, with induced currents if the model has them."""
+    batch, loaded, small = fields.batch, fields.loaded, fields.small
+    model = batch.model
+    force, forward = suspension_force(batch, loaded, small)
+    bias = np.zeros(LANES)
+    induced = induce(fields, exciting) if model.discretisation.transient else None
+    if induced is not None:
+        still = _main(force, forward)
+        loaded, small = induced.loaded, induced.small
+        force, _ = suspension_force(batch, loaded, small, induced.response)
+        turned = np.angle(_main(force, forward) * np.conj(still))
+        bias = turned if forward else -turned
+    torque = interpolate(_torque(loaded)).real
+    cogging = interpolate(_torque(fields.unloaded)).real
+    mean_torque = torque.mean(axis=0)
+    commanded = np.array(
+        [
+            force.at(exciting.suspension * force.command(direction, forward))
+            for direction in (0.0, 0.5 * np.pi)
+        ]
+    )
+    means = commanded.mean(axis=1, keepdims=True)
+    error = np.abs(np.abs(commanded) - np.abs(means)) / np.abs(means)
+    angle = np.abs(np.angle(commanded * np.conj(means)))
+    seen = densities(batch, loaded, fields.unloaded, small, exciting.suspension)
+    iron = losses.iron_loss(batch, loaded)
+    share = losses.suspension_share(batch, loaded, small, exciting.suspension)
+    if induced is None:
+        magnet, sleeve = _rotor_loss(batch, loaded, small, exciting, mean_torque)
+    else:
+        magnet, sleeve = induced.magnet, induced.sleeve
+    field = FieldSolution(
+        torque=mean_torque,
+        torque_ripple=np.ptp(torque, axis=0) / np.abs(mean_torque),
+        cogging=np.ptp(cogging, axis=0),
+        force=np.abs(means).mean(axis=(0, 1)),
+        force_error_magnitude=error.max(axis=(0, 1)),
+        force_error_angle=angle.max(axis=(0, 1)),
+        force_per_ampere_turn=np.abs(_main(force, forward)),
+        displacement_stiffness=fields.stiffness,
+        flux_linkage=np.abs(fundamental_linkage(batch, fields.unloaded)),
+        torque_inductance=loaded_inductance(batch, loaded, exciting.torque),
+        suspension_inductance=suspension_inductance(batch, small),
+        gap_flux_density=seen.gap,
+        tooth_flux_density=seen.tooth,
+        yoke_flux_density=seen.yoke,
+        core_flux_density=seen.core,
+        magnet_flux_density=seen.magnet,
+        loss_teeth=np.sum(iron.teeth, axis=0) * (1.0 + share[0]),
+        loss_yoke=np.sum(iron.yoke, axis=0) * (1.0 + share[1]),
+        loss_magnet=magnet,
+        loss_sleeve=sleeve,
+    )
+    converged, unsettled = fields.converged, np.zeros(LANES)
+    if induced is not None:
+        unsettled = induced.unsettled
+        converged = converged & loaded.converged & (unsettled <= UNSETTLED)
+    return Result(field, torque, cogging, force, bias, iron, converged, unsettled)
+
+
+def _main(force: Force, forward: bool) -> ComplexArray:
+    """Mean force per ampere-turn, by whichever of phasor and conjugate makes it, (LANES,)."""
+    return np.asarray((force.direct if forward else force.mirrored).mean(axis=0))
+
+
+def _rotor_loss(
+    batch: BatchField,
+    loaded: Solution,
+    small: ComplexArray,
+    exciting: Excitation,
+    torque: FloatArray,
+) -> tuple[FloatArray, FloatArray]:
+    """Loss of magnets and sleeve by the static field's harmonics, (LANES,) each, W/m."""
+    model = batch.model
+    length = model.task.duty.shaft_torque / np.abs(torque)
+    orders = batch.gap.class_orders(model.symmetry.suspension)
+    orders = orders[orders <= 4 * model.slots]
+    plus, minus = batch.coefficients_both_sides(
+        small.mean(axis=0, keepdims=True),
+        model.symmetry.suspension,
+        model.suspension.lattice.bore,
+        orders,
+    )
+    eddy = losses.rotor_loss(
+        batch, loaded, (orders, plus[0], minus[0]), exciting.suspension, length
+    )
+    return eddy.magnet.sum(axis=1), eddy.sleeve.sum(axis=1)
+
+
+def _torque(solution: Solution) -> ComplexArray:
+    waves = solution.waves
+    torque = stress.torque(waves.orders, waves.potential, waves.tangential)
+    return torque.astype(np.complex128)

@@ -1,0 +1,277 @@
+"""Induced currents in the rotor: closed forms, an open benchmark, and the machine's laws."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+from types import SimpleNamespace
+
+import machines
+import numpy as np
+import pytest
+from numpy.typing import NDArray
+
+from evaluators.finite_element import analysis, mesh, newton, stress, transient
+from evaluators.finite_element.batch import BatchField, Equations
+from evaluators.finite_element.eddy import Conductors, EddyRotor
+from evaluators.finite_element.gap import GapCoupling
+from evaluators.finite_element.lanes import LANES
+from evaluators.finite_element.lattice import Lattice, Resolution
+from evaluators.finite_element.model import Discretisation, FieldModel
+from evaluators.finite_element.rotor import NU_0, Rotor
+from evaluators.finite_element.symmetry import Sector
+from evaluators.finite_element.system import CurveTable, System, Topology, slot_load
+from evaluators.machine.field import Excitation, excitation
+
+FloatArray = NDArray[np.float64]
+ONES = np.ones(LANES)
+
+
+def rotor_of(
+    iron: list[float], magnet: float, sleeve: float, bore: float, recoil: float = 1.0
+) -> Rotor:
+    return Rotor(
+        iron_radius=np.array(iron)[:, None] * ONES * 1e-3,
+        magnet_radius=magnet * ONES * 1e-3,
+        sleeve_radius=sleeve * ONES * 1e-3,
+        bore_radius=bore * ONES * 1e-3,
+        magnet_permeability=recoil,
+        sleeve_permeability=1.0,
+    )
+
+
+def conductors(shaft: float = 0.0, magnet: float = 0.0, sleeve: float = 0.0) -> Conductors:
+    """Closed rings of endless length."""
+    return Conductors(shaft, magnet, sleeve, 2.0 * np.pi * ONES, np.inf * ONES, ONES, np.inf * ONES)
+
+
+# Unsegmented magnet ring on iron without conductivity, current sheet of 10 kA/m on the bore, W/m;
+# radii 20, 24, 25 mm, mu_r 1.05, 1.5 uohm m. Bessel functions, Poynting vector and volume integral
+# alike (Smythe, Static and Dynamic Electricity, ch. 10, from memory).
+RING = {
+    (1, 100.0): 148.4842,
+    (1, 1e3): 2741.988,
+    (1, 1e4): 3373.482,
+    (2, 1e3): 741.6309,
+    (4, 1e3): 56.08825,
+    (4, 1e4): 2035.723,
+}
+
+
+@pytest.mark.parametrize(("order", "frequency"), RING)
+def test_closed_ring_on_iron(order: int, frequency: float) -> None:
+    rotor = rotor_of([8.0, 20.0], 24.0, 24.5, 25.0, recoil=1.05)
+    perfect = np.full((2, LANES), NU_0 / 1e9)
+    eddy = EddyRotor(rotor, perfect, 1, conductors(magnet=1.0 / 1.5e-6))
+    orders, speed = np.array([order]), np.array([2.0 * np.pi * frequency])
+    sheet = 0.5 * 25e-3 * 1e4  # two-sided coefficient of h
+    loss = eddy.loss(orders, speed, sheet / eddy.response(orders, speed))
+    # 24 layers of constant coefficient: measured 3e-4 at most.
+    assert loss.magnet[0] == pytest.approx(RING[order, frequency] * ONES, rel=1e-3)
+    assert np.max(np.abs(loss.sleeve)) < 1e-9 * loss.magnet[0, 0]
+
+
+# Solid cylinder, a = 10 mm, 58 MS/m, rotating field of 0.1 T, W/m (Landau, Lifshitz,
+# Electrodynamics of Continuous Media, section 59, problem 2).
+CYLINDER = {10.0: 17.87628, 50.0: 391.2065, 200.0: 2251.503, 1000.0: 5861.523, 5000.0: 13986.55}
+
+
+@pytest.mark.parametrize("frequency", CYLINDER)
+def test_solid_cylinder_in_a_rotating_field(frequency: float) -> None:
+    rotor = rotor_of([10.0], 11.0, 12.0, 15.0)
+    eddy = EddyRotor(rotor, np.full((1, LANES), NU_0), 1, conductors(shaft=58e6))
+    orders, speed = np.array([1]), np.array([2.0 * np.pi * frequency])
+    y = eddy.response(orders, speed)
+    # A = alpha r + beta/r with alpha r = B0 r/2 (two-sided): a = 2 nu0/(nu0 + y) alpha R.
+    potential = 0.5 * 0.1 * 15e-3 * 2.0 * NU_0 / (NU_0 + y)
+    loss = eddy.loss(orders, speed, potential)
+    # Bessel functions throughout; the table's last digit.
+    assert loss.shaft[0] == pytest.approx(CYLINDER[frequency] * ONES, rel=1e-6)
+
+
+def test_segments_without_net_current_lose_what_a_strip_loses() -> None:
+    """Narrow segments, resistance-limited: w^2 B^2 b^2/(24 rho) per volume (strip formula)."""
+    rotor = rotor_of([8.0, 20.0], 20.4, 20.5, 20.6)
+    width = 2.0 * np.pi / 120.0
+    parts = Conductors(0.0, 1.0 / 1.5e-6, 0.0, width * ONES, np.inf * ONES, ONES, np.inf * ONES)
+    eddy = EddyRotor(rotor, np.full((2, LANES), NU_0 / 1e9), 1, parts)
+    orders, speed = np.array([2]), np.array([2.0 * np.pi * 1e3])
+    y = eddy.response(orders, speed)
+    potential = np.full((1, LANES), 1e-4 + 0j)
+    loss = eddy.loss(orders, speed, potential).magnet[0]
+    assert np.all(y.imag > 0.0)
+    # In a thin ring on iron the potential is that of the bore; two-sided B_r is n a/r, peak twice.
+    density = 2.0 * 2 * 1e-4 / 20.2e-3
+    volume = np.pi * (20.4e-3**2 - 20e-3**2)
+    strip = speed**2 * density**2 * (width * 20.2e-3) ** 2 / (24.0 * 1.5e-6) * volume
+    # 1 %: curvature and the change of the field over the ring; measured 0.4 %.
+    assert loss == pytest.approx(strip * ONES, rel=0.01)
+
+
+# -- TEAM workshop problem 30a -------------------------------------------------------------------
+# Davey, "Rotating machine models / Induction motor analyses", compumag.org, problem 30a, three
+# phases: speed in rad/s, torque N m/m, rotor loss W/m, loss of the rotor's steel W/m. The published
+# torque at standstill, 3.825857, is 3e-4 below the harmonic solution with orders to 31, 3.826969.
+TEAM_30A = {
+    0.0: (3.825857, 1455.644, 17.40541),
+    200.0: (6.505013, 1179.541, 16.98615),
+    600.0: (-5.75939, 1314.613, 17.87566),
+    1200.0: (-2.24996, 1878.926, 12.01166),
+}
+
+
+def team_30a(speed: float) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """Torque, rotor loss and loss of the rotor's steel by the code under test."""
+    res = Resolution(tooth=2, slot=6, tip=1, wedge=1, body=6, yoke=12)
+    # Yoke rows: two of steel from 52 to 57 mm, the rest air growing to 1 m.
+    radii = np.concatenate([[52.0, 54.5], 57.0 * (1000.0 / 57.0) ** (np.arange(11) / 10.0)])
+    levels = np.concatenate([[0.0, 1.0], 2.0 + np.arange(7) / 6.0, 3.0 + (radii[1:] - 52) / 948.0])
+    vars(res)["row_levels"] = levels
+    sector = Sector(3, 2, -1)
+    lattice = Lattice(res, sector)
+    rows, _ = np.indices(lattice.iron.shape)
+    steel = (rows >= 8) & (rows < 10)
+    topology = Topology(lattice, iron=steel)
+    half_tooth = np.radians(7.5)
+    sections = SimpleNamespace(
+        bore_radius=31e-3 * ONES,
+        tip_radius=31.5e-3 * ONES,
+        wedge_radius=32e-3 * ONES,
+        slot_radius=52e-3 * ONES,
+        outer_radius=1.0 * ONES,
+        family=SimpleNamespace(slots=6),
+        tooth_half_width=lambda radius: radius * np.sin(half_tooth),
+    )
+    grid = mesh.build(sections, res)
+    gap = GapCoupling(grid.angle[0], 6, 240)
+    rotor = rotor_of([20.0], 30.0, 30.5, 31.0)
+    iron = np.full((1, LANES), NU_0 / 30.0)
+    response = np.zeros((241, LANES))
+    response[1:] = rotor.at_bore(np.arange(1, 241), iron)[0]
+    gap.set_response(response)
+    system = System(topology, grid, CurveTable.linear(30.0))
+    system.set_gap(gap.stiffness(sector))
+    equations = Equations(system, newton.BatchSolver(topology.pattern))
+    eddy = EddyRotor(rotor, iron, 1, conductors(shaft=1.6e6, magnet=3.72e7))
+
+    model = SimpleNamespace(pitch=np.pi / 3.0, slots=6, unfold=None)
+    batch = BatchField.__new__(BatchField)
+    batch.gap, batch.model, batch.response = gap, model, response
+    batch.factorise_at = lambda equations, nodes: equations.solver.factorise(
+        equations.system.tangent_at(nodes, -1.0)
+    )
+    area = 0.5 * np.radians(45.0) * (52e-3**2 - 32e-3**2)
+    phasors = 3.1e6 * np.sqrt(2.0) * area * np.exp(-1j * np.pi / 3.0 * np.arange(3))
+    share = slot_load(grid, lattice)
+    loads = []
+    for part in (phasors.real, phasors.imag):
+        load = np.zeros((topology.size, LANES))
+        for nodes, current in zip(topology.slot_nodes, part, strict=True):
+            np.add.at(load, nodes, share * current)
+        loads.append(load)
+    orders = gap.class_orders(sector)
+    orders = orders[orders <= 31]
+    supply = 2.0 * np.pi * 60.0
+    answers = [eddy.response(orders, supply + sign * orders * speed) for sign in (1, -1)]
+    field = transient.with_response(
+        batch,
+        equations,
+        np.zeros((1, topology.size, LANES)),
+        (loads[0], loads[1]),
+        orders,
+        (answers[0] - response[orders], answers[1] - response[orders]),
+    )
+    plus, minus = batch.coefficients_both_sides(field, sector, lattice.bore, orders)
+    torque = np.zeros(LANES)
+    loss = np.zeros((2, LANES))
+    # The real field's coefficients of positive order: half of plus, half of conj(minus).
+    for sign, part, answer in ((1, plus[0], answers[0]), (-1, np.conj(minus[0]), None)):
+        h = part * (answers[0] if answer is not None else np.conj(answers[1]))
+        torque += stress.torque(orders, 0.5 * part[None], 0.5 * h[None])[0]
+        lost = eddy.loss(orders, supply + sign * orders * speed, 0.5 * part)
+        loss += np.array([lost.total.sum(axis=0), lost.shaft.sum(axis=0)])
+    return torque, loss[0], loss[1]
+
+
+@pytest.mark.parametrize("speed", TEAM_30A)
+def test_team_30a_three_phase(speed: float) -> None:
+    found = team_30a(speed)
+    for value, expected in zip(found, TEAM_30A[speed], strict=True):
+        # Issue of the benchmark: 0.5 %; measured 0.1 %.
+        assert value == pytest.approx(expected * ONES, rel=5e-3)
+
+
+# -- the machine ---------------------------------------------------------------------------------
+
+
+def machine(numbers: machines.Numbers, sleeve: str) -> tuple[analysis.StaticFields, Excitation]:
+    task = machines.task(*numbers, sleeve=sleeve)
+    sections = machines.sections(task, machines.scattered(LANES, seed=3))
+    current = excitation(sections, np.full(LANES, 6e6), task.duty, task.construction)
+    settings = Discretisation(
+        resolution=Resolution(tooth=2, slot=2, tip=1, wedge=1, body=2, yoke=2),
+        positions=8,
+        cogging_positions=4,
+        transient=True,
+        newton=newton.Settings(tolerance=1e-8),
+    )
+    return analysis.solve(FieldModel(task, settings), sections, current), current
+
+
+@pytest.mark.parametrize("numbers", [(12, 4, 5), (12, 5, 4)])
+def test_drag_torque_makes_the_loss(numbers: machines.Numbers) -> None:
+    """Without current all rotor loss comes from the shaft: mean torque times speed = -loss."""
+    fields, _ = machine(numbers, "NiCr19NbMo")
+    batch = fields.batch
+    nothing = np.zeros(LANES)
+    static = batch.solve_torque(batch.model.angles, nothing)
+    rotor = transient.eddy_rotor(batch, ONES)
+    induced = transient.torque_field(batch, rotor, static, nothing)
+    assert np.all(induced.unsettled <= transient.SETTLED)
+    waves = induced.solution.waves
+    torque = stress.torque(waves.orders, waves.potential, waves.tangential).mean(axis=0)
+    loss = induced.shaft + induced.magnet + induced.sleeve
+    # Both sums stop at order 4 Q; rotor and stator agree to 1e-3 of h, measured 1e-3 here.
+    assert torque * batch.model.task.duty.speed == pytest.approx(-loss, rel=5e-3)
+
+
+def test_static_analysis_suffices_for_torque_but_not_for_force() -> None:
+    """Common practice; a titanium sleeve, suspension field of one pole pair against p = 2."""
+    fields, current = machine((6, 2, 1), "TiAl6V4")
+    found = analysis.evaluate(fields, current)
+    assert np.all(found.converged)
+    assert np.all(found.unsettled < 1e-2)
+    static = analysis.evaluate(
+        analysis.StaticFields(
+            **{**vars(fields), "batch": _without_induction(fields.batch, fields)}
+        ),
+        current,
+    )
+    # The torque loses the drag of the rotor's loss and hardly anything else.
+    drag = (found.field.loss_magnet + found.field.loss_sleeve) / fields.batch.model.task.duty.speed
+    assert found.field.torque == pytest.approx(static.field.torque - drag, rel=0.02)
+    assert np.median(np.abs(np.degrees(found.angle_bias))) > 5.0
+    assert np.all(static.angle_bias == 0.0)
+
+
+def _without_induction(batch: BatchField, fields: analysis.StaticFields) -> BatchField:
+    model = batch.model
+    still = FieldModel(model.task, replace(model.discretisation, transient=False))
+    other = BatchField(still, fields.batch.sections)
+    other.set_rotor_iron(batch.reluctivity)
+    return other
+
+
+def test_insulating_rotor_is_the_static_one() -> None:
+    fields, current = machine((12, 4, 5), "Carbon fibre, wound")
+    batch = fields.batch
+    nothing = Conductors(1e-9, 1e-9, 1e-9, 2.0 * np.pi * ONES, np.inf * ONES, ONES, np.inf * ONES)
+    rotor = EddyRotor(
+        batch.rotor, batch.reluctivity, batch.model.discretisation.iron_rings, nothing
+    )
+    induced = transient.torque_field(batch, rotor, fields.loaded, current.torque)
+    equations = batch.equations(batch.model.suspension)
+    control = transient.suspension_field(batch, equations, rotor, fields.loaded.nodes)
+    assert np.max(induced.shaft + induced.magnet + induced.sleeve) < 1e-6
+    # One ring of shaft instead of several: 1e-4 of the response.
+    scale = np.max(np.abs(fields.small))
+    assert np.max(np.abs(control.small - fields.small)) < 1e-3 * scale
