@@ -141,6 +141,17 @@ class EvaluatorConformance:
         assert "\n" not in result.reason[0]
         assert all(np.isnan(column).all() for column in result.metrics.values())
 
+    def test_row_that_cannot_do_the_duty_fails_alone(self, evaluator: Evaluator) -> None:
+        # A real cross-section, but its current does not even overcome the friction in the gap.
+        batch = machines.designs(2)
+        batch["current_density_A_mm2"][1] = 1e-3
+        result = evaluator.evaluate(batch)
+        assert result.status.tolist() == [Status.OK.value, Status.FAILED.value]
+        assert result.reason[1]
+        for column in result.metrics.values():
+            assert np.isfinite(column[0])
+            assert np.isnan(column[1])
+
     def test_empty_batch(self, evaluator: Evaluator) -> None:
         result = evaluator.evaluate(machines.designs(0))
         assert result.status.shape == (0,)

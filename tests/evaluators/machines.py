@@ -75,12 +75,12 @@ def task(
 ) -> Task:
     """A drive of 11 kW at 48 000 r/min with the stated family.
 
-    `ideal_iron` gives the sheets a relative permeability of ten million up to 3 T.
+    `ideal_iron` gives the sheets a relative permeability of ten million up to 30 T.
     """
     steel = materials.load(ElectricalSteel, "NO20-1200")
     if ideal_iron:
-        top = 3.0 / (1e7 * MU_0)
-        steel = replace(steel, magnetization=MagnetizationCurve([0.0, top], [0.0, 3.0]))
+        top = 30.0 / (1e7 * MU_0)
+        steel = replace(steel, magnetization=MagnetizationCurve([0.0, top], [0.0, 30.0]))
     return Task(
         winding=design_winding(slots, pole_pairs, suspension_pole_pairs),
         duty=replace(Duty(power=11e3, speed=48_000 * 2 * pi / 60), **(duty or {})),

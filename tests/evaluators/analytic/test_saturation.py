@@ -5,9 +5,11 @@ from __future__ import annotations
 import machines
 import numpy as np
 import pytest
+from analytic_case import AnalyticCase
 
 from evaluators.analytic.gap import Iron
 from evaluators.analytic.model import AnalyticModel, Resolution
+from evaluators.analytic.rotor import MU_0
 from evaluators.analytic.saturation import mean_differential_reluctivity, secant_reluctivity
 from evaluators.machine import materials
 from evaluators.machine.field import FieldSolution, excitation
@@ -142,3 +144,39 @@ def test_hole_of_a_shaft_without_magnetism_saturates_the_core() -> None:
     )
     assert thin.core_flux_density[0] > 1.5 * thick.core_flux_density[0]
     assert thin.flux_linkage[0] < 0.9 * thick.flux_linkage[0]
+
+
+@pytest.mark.parametrize("numbers", [(12, 4, 5), (12, 2, 1), (6, 4, 5)], ids=str)
+@pytest.mark.parametrize("changes", [{"yoke_ratio": 0.4}, {"tooth_width_ratio": 0.2}], ids=str)
+def test_iron_fits_the_flux_it_lets_through(
+    numbers: machines.Numbers, changes: dict[str, float]
+) -> None:
+    case = AnalyticCase(numbers, COARSE, **changes)
+    perfect = AnalyticCase(numbers, COARSE, ideal_iron=True, **changes)
+    state = case.model.waves(case.sections, case.exciting)[2]
+
+    def fundamental(of: AnalyticCase) -> float:
+        waves = of.waves()
+        main = waves.current.classes == numbers[1] % numbers[0]
+        return abs(waves.magnets.slot[0, 0] + waves.current.slot[0, main][0])
+
+    # The search for the iron treats the core as that of a smooth gap: 0.2 % of the flux.
+    share = fundamental(case) / fundamental(perfect)
+    assert state.share[0] == pytest.approx(share, abs=2e-3)
+    assert share < 0.97
+
+    # Reluctances of one tooth and of one slot pitch of yoke, mu0 nu l / (width), by the geometry.
+    sections, slots = case.sections, numbers[0]
+    teeth, yoke = perfect.model.linkage.iron_flux(
+        perfect.waves().magnets, perfect.waves().current, perfect.model.rotation
+    )
+    width, thickness = float(sections.tooth_width[0]), float(sections.yoke_thickness[0])
+    radius = 0.5 * float(sections.slot_radius[0] + sections.outer_radius[0])
+    height = float(sections.slot_radius[0] - sections.bore_radius[0])
+    for flux, across, along, found in (
+        (teeth, width, height, state.main.tooth),
+        (yoke, thickness, 2.0 * np.pi * radius / slots, state.main.yoke),
+    ):
+        peak = state.share * np.abs(flux).max() / across
+        reluctivity = secant_reluctivity(case.model.steels.stator, peak)
+        assert found[0] == pytest.approx(MU_0 * reluctivity[0] * along / across, rel=1e-3)
