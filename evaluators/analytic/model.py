@@ -237,7 +237,10 @@ class AnalyticModel:
             displacement_stiffness=rotor_state.stiffness_of(
                 sections, waves.magnets, self.rotation.magnet_orders
             ),
-            flux_linkage=np.abs(linkage.magnets(waves.magnets, self.rotation.magnet_orders)),
+            # The part a quarter period behind the current, which makes the EMF and the torque.
+            flux_linkage=np.real(
+                1j * motion.linkage * np.conj(waves.phasor) / np.abs(waves.phasor)
+            ),
             torque_inductance=linkage.inductance(
                 "torque", waves.current, slot.permeance, self.rotation, waves.phasor
             ),

@@ -26,7 +26,8 @@ class Motion:
 
     `direct` and `mirrored` are the force per ampere-turn on the suspension phasor i and on its
     conjugate; `rest` is the force without suspension current. `tooth_flux` and `yoke_flux` (n,)
-    are the largest of any tooth and any piece of yoke, Wb/m, without suspension current.
+    are the largest of any tooth and any piece of yoke, Wb/m, without suspension current; `linkage`
+    (n,) is the phasor of the flux linkage of phase one per turn, magnets and torque current, Wb/m.
     """
 
     rotation: Rotation
@@ -38,6 +39,7 @@ class Motion:
     mirrored: ComplexArray
     tooth_flux: FloatArray
     yoke_flux: FloatArray
+    linkage: ComplexArray
 
     def whole_turn(self) -> tuple[ComplexArray, ComplexArray, ComplexArray]:
         """Force parts (rest, direct, mirrored) over the whole turn, (n, sectors * positions)."""
@@ -141,6 +143,7 @@ def move(
         mirrored=0.5 * (forces[0] + 1j * forces[1]),
         tooth_flux=np.abs(tooth).max(axis=(1, 2)),
         yoke_flux=np.abs(state.potential).max(axis=(1, 2)),
+        linkage=_linkage(rotation, state, positions),
     )
 
 
@@ -171,6 +174,17 @@ def _saturate(
         sign,
     )
     return network.unfold(state, rotation.slots, sign)
+
+
+def _linkage(rotation: Rotation, state: CircuitState, positions: FloatArray) -> ComplexArray:
+    """Linkage phasor of phase one, (n,) Wb/m; the flux of phase one is Re(phasor exp(j p angle)).
+
+    The three phases together turned back by the rotor's angle (Park, Trans. AIEE 48, 1929), whose
+    mean over a sector holds the fundamental alone.
+    """
+    phases = state.potential @ np.conj(rotation.winding.torque_slot_mmf)
+    turned = phases * np.exp(-1j * rotation.pole_pairs * positions)
+    return np.asarray(2.0 / 3.0 * turned.mean(axis=1))
 
 
 def _potentials(

@@ -77,7 +77,8 @@ VARIABLES: tuple[DesignVariable, ...] = (
         "A/mm2",
         0.1,
         60.0,
-        "root-mean-square current density in the copper, torque and suspension current together",
+        "root-mean-square current density of the most loaded conductor, in which the peaks of torque "
+        "and suspension current add up",
     ),
 )
 

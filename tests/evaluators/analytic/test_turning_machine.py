@@ -86,12 +86,11 @@ def test_torque_equals_power_of_the_emf(numbers: machines.Numbers) -> None:
     expected = 1.5 * numbers[1] * field.flux_linkage * case.exciting.torque
     # Galerkin's method keeps reciprocity; the sheets' permeability of ten million leaves 1e-7.
     np.testing.assert_allclose(field.torque, expected, rtol=1e-6)
-    # The linkage is that of iron of one permeability, the torque that of every tooth by itself: up
-    # to a tenth apart in the strongly saturated machines with many slots among these.
+    # Saturated iron stores energy but returns it within a sector; eight positions sample its swing.
     case = AnalyticCase(numbers, resolution, **roomy(numbers[0]))
     field = case.solve()
     expected = 1.5 * numbers[1] * field.flux_linkage * case.exciting.torque
-    np.testing.assert_allclose(field.torque, expected, rtol=0.1)
+    np.testing.assert_allclose(field.torque, expected, rtol=0.01)
 
 
 @pytest.mark.parametrize("numbers", machines.FAMILIES, ids=str)
