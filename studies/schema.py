@@ -263,7 +263,7 @@ class SearchSection(Section):
         None, ge=4, le=10_000, description="designs of one generation; chosen if left out"
     )
     designs_per_call: int = Field(
-        25,
+        50,
         ge=1,
         le=10_000,
         description="designs the evaluator gets at a time; one generation is shared among the "
