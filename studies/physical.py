@@ -7,10 +7,6 @@ from evaluators.machine.metrics import METRIC
 INFINITE = float("inf")
 ABSOLUTE_ZERO_C = -273.15
 
-# Words in the names of metrics that may be negative: differences, and pressures that may turn
-# into gaps. All others are magnitudes, ratios of magnitudes, sizes or losses.
-SIGNED_WORDS = frozenset({"margin", "window", "tension", "contact", "interference", "knee"})
-
 # No material carries more than about 2.5 T; fields above this are a slip of the unit.
 LARGEST_FLUX_DENSITY_T = 5.0
 
@@ -24,15 +20,13 @@ LARGEST = {
 
 def possible_range(metric: str) -> tuple[float, float]:
     """Smallest and largest value `metric` can take, infinite where open."""
-    unit, words = METRIC[metric].unit, frozenset(metric.split("_"))
+    known = METRIC[metric]
     high = LARGEST.get(metric, INFINITE)
-    if unit == "T":
-        # A magnet's flux density counts along its magnetisation and is negative once reversed.
-        signed = bool(words & (SIGNED_WORDS | {"magnet"}))
-        return (-LARGEST_FLUX_DENSITY_T if signed else 0.0), LARGEST_FLUX_DENSITY_T
-    if unit == "degC":
+    if known.unit == "T":
+        return (-LARGEST_FLUX_DENSITY_T if known.signed else 0.0), LARGEST_FLUX_DENSITY_T
+    if known.unit == "degC":
         return ABSOLUTE_ZERO_C, high
-    return (-INFINITE if words & SIGNED_WORDS else 0.0), high
+    return (-INFINITE if known.signed else 0.0), high
 
 
 def range_words(metric: str) -> str:

@@ -83,6 +83,7 @@ METRICS: tuple[Metric, ...] = (
         "part",
         RING,
         False,
+        signed=True,
     ),
     # -- suspension budget --
     Metric(
