@@ -9,6 +9,7 @@ from typing import Any
 
 import numpy as np
 
+from evaluators.machine import description
 from evaluators.machine.geometry import CrossSections, cross_sections
 from evaluators.machine.metrics import METRICS
 from evaluators.machine.variables import VARIABLES
@@ -19,8 +20,8 @@ from studies.layout import Results
 from studies.stored import design_id, split_design_id, stored_family
 
 MILLI = 1e-3
-PHASE_NAMES = "UVW"
-GROUP_NAMES = "ab"
+PHASE_NAMES = description.PHASE_NAMES
+GROUP_NAMES = description.GROUP_NAMES
 LENGTHS = (
     "shaft_radius",
     "core_radius",

@@ -8,8 +8,8 @@ from collections.abc import Callable
 from dataclasses import dataclass
 
 from evaluators.machine.geometry import MILLI, CrossSections
+from evaluators.machine.outlines import Loop, SlotShape, coil_side, slot_ring
 from evaluators.machine.winding import Winding
-from studies.drawing.outlines import Loop, SlotShape, coil_side, slot_ring
 from studies.drawing.palette import PART_COLOURS, PHASE_TINTS
 from studies.drawing.svg import line, loop_path, number, picture
 from studies.drawing.svg import text as words

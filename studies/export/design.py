@@ -2,11 +2,11 @@
 
 from __future__ import annotations
 
+from evaluators.machine.drawing import dxf_bytes
+from evaluators.machine.outlines import outlines
 from studies.chosen import Chosen
 from studies.drawing.cross_section import cross_section_svg
-from studies.drawing.outlines import outlines
 from studies.drawing.winding_diagram import winding_svg
-from studies.export.drawing import dxf_bytes
 from studies.export.files import ExportedFile, text_file
 from studies.export.front import FrontTable
 from studies.export.machine import machine_file
@@ -32,7 +32,7 @@ def design_files(chosen: Chosen) -> list[ExportedFile]:
     files = [
         ExportedFile(
             DRAWING,
-            dxf_bytes(parts, title, facts),
+            dxf_bytes(parts, title, facts, "Read README.txt beside this file."),
             "cross-section to scale in mm, a layer for each part, closed outlines; the dimension "
             "on the layer scale must read the stator's outer diameter",
         ),

@@ -3,11 +3,15 @@
 from __future__ import annotations
 
 from dataclasses import fields
-from typing import Any
 
 import numpy as np
 
-from evaluators.machine.material_kinds import Magnet, Material, Table
+from evaluators.machine.description import (
+    TEMPERATURE_LAW,
+    material_description,
+    materials_by_role,
+)
+from evaluators.machine.material_kinds import Magnet, Table
 from evaluators.machine.quantity import Quantity
 from evaluators.machine.task import Task
 from studies.export.files import ExportedFile, json_file, text_file
@@ -20,27 +24,26 @@ MATERIALS = "materials.json"
 BEYOND_KNEE = "below this the magnet loses remanence"
 
 
-def roles(task: Task) -> dict[str, Material]:
-    """The materials of the machine by their key in the study."""
-    return {item.name: getattr(task.materials, item.name) for item in fields(task.materials)}
-
-
 def material_files(task: Task) -> list[ExportedFile]:
     """All properties as JSON and CSV, and one CSV for each magnetization and loss table."""
+    found = materials_by_role(task)
     files = [
         json_file(
             MATERIALS,
             {
                 "format": FORMAT,
                 "format_version": FORMAT_VERSION,
-                "temperature_law": "value * (1 + per_K * (T - at_C)), or table_value over table_C",
-                "materials": {role: _material(item) for role, item in roles(task).items()},
+                "temperature_law": TEMPERATURE_LAW,
+                "materials": {
+                    role: material_description(item)
+                    for role, item in materials_by_role(task).items()
+                },
             },
             "every property of every material with unit, temperature law, source and year",
         ),
         text_file(PROPERTIES, _properties(task), "the same properties as one table"),
     ]
-    for role, material in roles(task).items():
+    for role, material in found.items():
         for item in fields(material):
             table = getattr(material, item.name)
             if isinstance(table, Table):
@@ -75,27 +78,6 @@ def _magnet_line(task: Task, magnet: Magnet) -> ExportedFile:
     )
 
 
-def _material(material: Material) -> dict[str, Any]:
-    content: dict[str, Any] = {"name": material.name, "description": material.description}
-    for item in fields(material):
-        value = getattr(material, item.name)
-        if isinstance(value, Quantity):
-            content[item.name] = {
-                entry.name: _plain(getattr(value, entry.name)) for entry in fields(value)
-            }
-        elif isinstance(value, Table):
-            content[item.name] = {
-                "source": value.source,
-                "year": value.year,
-                **{name: column.tolist() for name, column in value.columns.items()},
-            }
-    return content
-
-
-def _plain(value: object) -> object:
-    return list(value) if isinstance(value, tuple) else value
-
-
 def _properties(task: Task) -> str:
     head = [
         "used_for",
@@ -110,7 +92,7 @@ def _properties(task: Task) -> str:
         "year",
     ]
     rows: list[list[object]] = []
-    for role, material in roles(task).items():
+    for role, material in materials_by_role(task).items():
         for item in fields(material):
             value = getattr(material, item.name)
             if not isinstance(value, Quantity):

@@ -15,9 +15,9 @@ import numpy as np
 import pytest
 from click.testing import Result
 
+from evaluators.machine.drawing import LAYER_COLOURS
 from evaluators.machine.geometry import CrossSections
 from studies.chosen import Chosen, choose_design
-from studies.export.drawing import LAYER_COLOURS
 from studies.export.suspension import suspension_data
 from studies.layout import open_results
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 import io
 from typing import TYPE_CHECKING, Any
 
-from studies.drawing.outlines import Loop, Outline
+from evaluators.machine.outlines import Loop, Outline
 
 if TYPE_CHECKING:
     from ezdxf.document import Drawing
@@ -25,10 +25,12 @@ LAYER_COLOURS = {
 }
 """Layer of each part and its colour index; scale check and notes have layers of their own."""
 TEXT_SHARE = 0.035  # text height over the outer radius
-NOTE = "Calculated, not released for manufacture. Read README.txt beside this file."
+NOTE = "Calculated, not released for manufacture."
 
 
-def dxf_bytes(parts: tuple[Outline, ...], title: str, facts: dict[str, str]) -> bytes:
+def dxf_bytes(
+    parts: tuple[Outline, ...], title: str, facts: dict[str, str], hint: str = ""
+) -> bytes:
     """Drawing in millimetres, rotor at angle 0, origin on the shaft axis.
 
     Every outline is a closed polyline with bulges; a part with a hole has a second closed polyline
@@ -40,6 +42,8 @@ def dxf_bytes(parts: tuple[Outline, ...], title: str, facts: dict[str, str]) -> 
     title : str
     facts : mapping of str to str
         Custom properties of the file.
+    hint : str
+        Added to the note that this is no released drawing.
     """
     from ezdxf import units
     from ezdxf.enums import TextEntityAlignment
@@ -62,7 +66,7 @@ def dxf_bytes(parts: tuple[Outline, ...], title: str, facts: dict[str, str]) -> 
     radius = max(abs(x) for part in parts for x in part.outer.vertices[:, 0].tolist())
     height = TEXT_SHARE * radius
     _scale_check(doc, radius, height)
-    for line, text in enumerate((title, NOTE)):
+    for line, text in enumerate((title, f"{NOTE} {hint}".rstrip())):
         space.add_text(text, height=height, dxfattribs={"layer": "notes"}).set_placement(
             (0.0, radius * 1.15 - 1.6 * line * height), align=TextEntityAlignment.MIDDLE_CENTER
         )

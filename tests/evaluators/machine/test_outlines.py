@@ -9,9 +9,9 @@ from hypothesis import strategies as st
 
 from evaluators.machine.families import design_winding
 from evaluators.machine.geometry import CrossSections, cross_sections
+from evaluators.machine.outlines import Loop, Outline, outlines
 from evaluators.machine.task import Construction
 from evaluators.machine.winding import Winding
-from studies.drawing.outlines import Loop, Outline, outlines
 
 BASE = {
     "rotor_radius_mm": 20.0,
