@@ -1,1 +1,1 @@
-"""Models of bearingless permanent-magnet machines behind one evaluator interface; knows nothing of searching."""
+"""Models of bearingless permanent-magnet machines behind one interface; knows no searching."""

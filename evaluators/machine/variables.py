@@ -77,8 +77,8 @@ VARIABLES: tuple[DesignVariable, ...] = (
         "A/mm2",
         0.1,
         60.0,
-        "root-mean-square current density of the most loaded conductor, in which the peaks of torque "
-        "and suspension current add up",
+        "root-mean-square current density of the most loaded conductor, in which the peaks of "
+        "torque and suspension current add up",
     ),
 )
 
