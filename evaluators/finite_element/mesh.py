@@ -26,7 +26,7 @@ class MeshError(ValueError):
     """A cell of a design is folded over."""
 
 
-def _reference_shapes(xi: float, eta: float) -> tuple[FloatArray, FloatArray]:
+def shape_functions(xi: float, eta: float) -> tuple[FloatArray, FloatArray]:
     """Shape functions (8,) and their derivatives (8, 2) in the square -1..1."""
     corner_xi, corner_eta = COLUMN_OFFSET - 1.0, ROW_OFFSET - 1.0
     value = np.empty(8)
@@ -48,7 +48,7 @@ def _reference_shapes(xi: float, eta: float) -> tuple[FloatArray, FloatArray]:
 
 
 _GAUSS = 1.0 / np.sqrt(3.0)
-_SHAPES = [_reference_shapes(x, y) for y in (-_GAUSS, _GAUSS) for x in (-_GAUSS, _GAUSS)]
+_SHAPES = [shape_functions(x, y) for y in (-_GAUSS, _GAUSS) for x in (-_GAUSS, _GAUSS)]
 SHAPE = np.array([value for value, _ in _SHAPES])  # (POINTS, 8)
 SLOPE = np.array([slope for _, slope in _SHAPES])  # (POINTS, 8, 2)
 

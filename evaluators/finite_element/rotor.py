@@ -258,6 +258,49 @@ class Rotor:
             surface_field=rings[0][2] * a + rings[0][3],
         )
 
+    def profile(
+        self,
+        orders: IntArray,
+        reluctivity: FloatArray,
+        radial: FloatArray,
+        tangential: FloatArray,
+        potential: ComplexArray,
+        points: int = 12,
+    ) -> tuple[FloatArray, ComplexArray]:
+        """Radii (k, n) from shaft to bore and the potential there, (k, m, n); see `inside`.
+
+        Magnets and gap are sampled at `points` radii each, iron at the faces of its rings.
+        """
+        order = np.asarray(orders, dtype=np.float64)[:, None]
+        inside = self.inside(orders, reluctivity, radial, tangential, potential)
+        inner, outer = self.iron_radius[-1], self.magnet_radius
+        nu = NU_0 / self.magnet_permeability
+        strength, direct = 0.5 * (tangential + order * radial), 0.5 * tangential
+        core = inside.iron_response[-1]
+        offset = -1j * self._magnet_source(order, core, strength, direct)[0]
+        particular = -1j * strength
+        general = inside.core - particular * self._particular(order, inner)[0]
+        rise = (core * general + offset) / (nu * order)
+        radii, values = [np.zeros_like(inner)], [np.zeros_like(inside.core)]
+        radii += list(self.iron_radius)
+        values += list(inside.iron)
+        for share in np.arange(1, points + 1) / points:
+            r = inner + share * (outer - inner)
+            x = order * np.log(r / inner)
+            radii.append(r)
+            values.append(
+                general * np.cosh(x)
+                + rise * np.sinh(x)
+                + particular * self._particular(order, r)[0]
+            )
+        surface, field = values[-1], inside.surface_field
+        for share in np.arange(1, points + 1) / points:
+            r = outer + share * (self.bore_radius - outer)
+            x = order * np.log(r / outer)
+            radii.append(r)
+            values.append(surface * np.cosh(x) + field / (NU_0 * order) * np.sinh(x))
+        return np.array(radii), np.array(values)
+
 
 def _inwards(
     outer: ComplexArray,

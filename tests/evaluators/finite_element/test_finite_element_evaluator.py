@@ -80,3 +80,17 @@ def test_waveforms_agree_with_the_metrics() -> None:
     across = waves["force along y, commanded along x"].values
     # By definition of the command the mean force has no component across it.
     assert abs(across.mean()) < 1e-9 * force.mean()
+
+
+def test_force_curve_starts_at_the_linear_force_and_bends_down() -> None:
+    evaluator = FiniteElementEvaluator(machines.task(), COARSE)
+    batch = machines.designs(1, yoke_ratio=0.8, current_density_A_mm2=12.0)
+    waves = {wave.name: wave for wave in evaluator.waveforms({k: v[0] for k, v in batch.items()})}
+    curve = waves["force against suspension current"]
+    per_ampere = curve.values / curve.positions
+    linear = waves["force along x, commanded along x"].values.mean()
+    share = evaluator.task.duty.suspension_share
+    slope = linear / (share * curve.positions[-1])
+    # An eighth of the slot current hardly bends the curve; the mean is taken over few positions.
+    assert per_ampere[0] == pytest.approx(slope, rel=0.02)
+    assert np.all(np.diff(per_ampere) < 0.0)
