@@ -82,7 +82,7 @@ def test_waveforms_agree_with_the_metrics() -> None:
     assert abs(across.mean()) < 1e-9 * force.mean()
 
 
-def test_force_curve_starts_at_the_linear_force_and_bends_down() -> None:
+def test_force_curve_starts_at_the_linear_force_and_bends() -> None:
     evaluator = FiniteElementEvaluator(machines.task(), COARSE)
     batch = machines.designs(1, yoke_ratio=0.8, current_density_A_mm2=12.0)
     waves = {wave.name: wave for wave in evaluator.waveforms({k: v[0] for k, v in batch.items()})}
@@ -93,4 +93,8 @@ def test_force_curve_starts_at_the_linear_force_and_bends_down() -> None:
     slope = linear / (share * curve.positions[-1])
     # An eighth of the slot current hardly bends the curve; the mean is taken over few positions.
     assert per_ampere[0] == pytest.approx(slope, rel=0.02)
-    assert np.all(np.diff(per_ampere) < 0.0)
+    # Suspension current first relieves the side that the torque current saturates, then saturates
+    # the other: the force per ampere passes a maximum (here 3 % above its start).
+    top = int(np.argmax(per_ampere))
+    assert np.all(np.diff(per_ampere[top:]) < 0.0)
+    assert np.ptp(per_ampere) > 0.01 * slope
