@@ -30,7 +30,7 @@ ComplexArray = NDArray[np.complex128]
 
 ITERATIONS = 12
 TOLERANCE = 1e-10  # of the largest potential of a design; Newton passes it in one step more
-CIRCULATING = 1e2
+CIRCULATING = 1e5
 """Answer of the gap to equal currents in all slots over the largest other: flux that circles in
 the yoke does not cross the gap, so in truth it is without bound."""
 
