@@ -24,6 +24,7 @@ from studies.commands.sheet import sheet
 from studies.commands.status import status
 from studies.commands.sweep import sweep
 from studies.commands.tolerance import tolerance
+from studies.commands.verify import verify
 from studies.commands.watch import watch
 from studies.errors import EXIT_BAD_INPUT, EXIT_FAILED, EXIT_INTERRUPTED, StudiesError
 
@@ -108,6 +109,7 @@ for _command in (
     status,
     watch,
     compare,
+    verify,
     report,
     sheet,
     inspect,

@@ -15,6 +15,7 @@ from studies.crosschecks import Objective
 from studies.errors import ResultsError
 from studies.layout import Results
 from studies.stored import FloatArray, Stored, least_violating, stored_families
+from studies.verified import VerifiedStored, with_verified
 
 REFERENCE = 1.1  # in every objective, once the joint fronts span 0 to 1
 BINDING = 0.01  # a limit binds a design that keeps less than this share of it in reserve
@@ -82,12 +83,22 @@ class Comparison:
     dominated: tuple[tuple[str, str], ...]
 
 
-def compare_families(opened: Sequence[Results]) -> Comparison:
+def compare_families(
+    opened: Sequence[Results], verified_by: str = "", *, verified_only: bool = False
+) -> Comparison:
     """Compare all families stored in one or several studies.
 
     The scale is common: 0 is the smallest and 1 the largest value of each objective over all
     fronts together. Hypervolume is the share of the box from 0 to `REFERENCE` in every objective
     that a front dominates.
+
+    Parameters
+    ----------
+    opened : sequence of Results
+    verified_by : str
+        Evaluator whose verified values count where there are any; see `VerifiedStored`.
+    verified_only : bool
+        Leave out designs that were not verified by it.
 
     Raises
     ------
@@ -107,9 +118,17 @@ def compare_families(opened: Sequence[Results]) -> Comparison:
             )
             raise ResultsError(msg)
     several = len(opened) > 1
+
+    def counted(stored: Stored) -> Stored:
+        return with_verified(stored, verified_by, verified_only) if verified_by else stored
+
     # Folder names serve as labels where two studies carry one name.
     found = [
-        (f"{results.folder.name}/{stored.family}" if several else stored.family, results, stored)
+        (
+            f"{results.folder.name}/{stored.family}" if several else stored.family,
+            results,
+            counted(stored),
+        )
         for results in opened
         for stored in stored_families(results)
     ]
@@ -213,6 +232,7 @@ def _member_json(comparison: Comparison, member: Member) -> dict[str, Any]:
         "feasible_share": feasible / evaluations if evaluations else None,
         "failed": failed,
         "front_size": len(member.stored.front_ids),
+        "verified": _verified_json(member.stored),
         "hypervolume": member.hypervolume,
         "joint_front_share": member.joint_share,
         "binding_limits": member.binding,
@@ -234,7 +254,7 @@ def _member_json(comparison: Comparison, member: Member) -> dict[str, Any]:
             "metrics": {name: row[name] for name in METRIC if name in row},
             "losses": {name: row[name] for name in LOSSES if name in row},
         }
-    else:
+    elif not feasible:
         nearest = least_violating(member.stored, list(member.limits), 1)
         if nearest:
             entry["nearest_to_feasible"] = {
@@ -242,6 +262,20 @@ def _member_json(comparison: Comparison, member: Member) -> dict[str, Any]:
                 "violated": {k: v for k, v in nearest[0].margins.items() if v > 0.0},
             }
     return entry
+
+
+def _verified_json(stored: Stored) -> dict[str, Any] | None:
+    if not isinstance(stored, VerifiedStored):
+        return None
+    counts = stored.verified_counts
+    return {
+        "evaluator": counts.evaluator,
+        "only": stored.only,
+        "searched_front": counts.front,
+        "verified": counts.verified,
+        "broke_limit": counts.broke_limit,
+        "failed": counts.failed,
+    }
 
 
 def _pairs(values: dict[tuple[str, str], float]) -> dict[str, dict[str, float | None]]:

@@ -17,13 +17,14 @@ from studies.comparison import (
 )
 from studies.stored import least_violating
 from studies.tables import csv_text, number, percent, text_table, wide_table
+from studies.verified import VerifiedStored
 
 MUCH = 0.5  # share of a front that is worth a sentence when another family covers it
 
 
 def comparison_text(comparison: Comparison) -> str:
     """Everything, section by section."""
-    sections = [_overview(comparison), _statement(comparison)]
+    sections = [_overview(comparison), _verified(comparison), _statement(comparison)]
     if any(member.compromise is not None for member in comparison.members):
         if len(comparison.members) > 1:
             sections += [
@@ -84,11 +85,39 @@ def _overview(comparison: Comparison) -> str:
     return f"{table}\n{fill(note, 100)}"
 
 
+def _verified(comparison: Comparison) -> str:
+    """How much of the fronts was verified; empty if verified values do not count."""
+    rows = []
+    partly = False
+    for member in comparison.members:
+        if isinstance(member.stored, VerifiedStored):
+            counts = member.stored.verified_counts
+            cells = (counts.front, counts.verified, counts.broke_limit, counts.failed)
+            rows.append([member.label, counts.evaluator, *map(str, cells)])
+            partly |= not member.stored.only and counts.verified < counts.front
+    if not rows:
+        return ""
+    head = ["family", "verified by", "searched front", "verified", "broke a limit", "failed"]
+    note = (
+        "Verified values count, and designs that broke a limit or failed when verified are left "
+        "out."
+    )
+    if partly:
+        note += (
+            " The other designs keep the values of the search, which may flatter them: verify "
+            "whole fronts with `hovergap verify --front`, or compare verified designs alone with "
+            "--verified-only."
+        )
+    return f"{text_table(head, rows, left=2)}\n{fill(note, 100)}"
+
+
 def _statement(comparison: Comparison) -> str:
     """Which families are dominated by which, and which have nothing to show."""
     lines = []
     for member in comparison.members:
-        if member.compromise is None:
+        if member.compromise is None and member.stored.counts[1]:
+            lines.append(f"{member.label} has no verified design that meets all limits.")
+        elif member.compromise is None:
             near = least_violating(member.stored, list(member.limits), 1)
             nearest = ""
             if near:

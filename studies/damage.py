@@ -10,6 +10,19 @@ import click
 from studies.errors import EXIT_FAILED, EXIT_OK
 
 
+def report_verified_damage(parts: Iterable[Path]) -> int:
+    """Say which parts of verified values are damaged; exit code 1 if any is."""
+    code = EXIT_OK
+    for part in parts:
+        click.echo(
+            f"{part}: is damaged, so its verified values are missing above; "
+            f"`hovergap verify {part.parents[2]}` sets it aside and verifies them again",
+            err=True,
+        )
+        code = EXIT_FAILED
+    return code
+
+
 def report_damage(parts: Iterable[Path | str]) -> int:
     """Say which parts are damaged; exit code 1 if any is, because rows are missing then."""
     code = EXIT_OK

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 import math
 from collections.abc import Mapping
 from dataclasses import dataclass
@@ -18,6 +19,7 @@ from studies.crosschecks import Limit
 from studies.errors import ResultsError
 from studies.layout import Results
 from studies.stored import design_id, split_design_id, stored_family
+from studies.verified import VerifiedRow, all_verified, deviation
 
 MILLI = 1e-3
 PHASE_NAMES = description.PHASE_NAMES
@@ -68,6 +70,8 @@ class Inspection:
     limits : tuple of Limit
     on_front : bool
     currency : str
+    verified : tuple of VerifiedRow
+        What other evaluators said of it.
     """
 
     design: str
@@ -78,6 +82,7 @@ class Inspection:
     limits: tuple[Limit, ...]
     on_front: bool
     currency: str
+    verified: tuple[VerifiedRow, ...] = ()
 
     @property
     def evaluated(self) -> bool:
@@ -119,6 +124,7 @@ def inspect_design(results: Results, design: str) -> Inspection:
         limits=results.study.limits,
         on_front=evaluation in front,
         currency=results.study.prices.currency,
+        verified=tuple(all_verified(stored.folder, evaluation)),
     )
 
 
@@ -162,6 +168,7 @@ def inspection_json(found: Inspection) -> dict[str, Any]:
             }
             for limit in found.limits
         ],
+        "verified": [_verified_json(found, item) for item in found.verified],
         "winding": {
             "family": family.id,
             "coil_pitch": family.coil_pitch,
@@ -181,4 +188,25 @@ def inspection_json(found: Inspection) -> dict[str, Any]:
             ],
         },
         "cautions": list(CAUTIONS),
+    }
+
+
+def _verified_json(found: Inspection, verified: VerifiedRow) -> dict[str, Any]:
+    values = verified.values
+    metrics = verified.metrics
+    change = {
+        name: deviation(value, float(found.row[name]))
+        for name, value in metrics.items()
+        if found.row.get(name) is not None
+    }
+    return {
+        "evaluator": values["evaluator"],
+        "evaluator_version": values["evaluator_version"],
+        "settings": json.loads(values["settings"]),
+        "status": values["status"],
+        "reason": values["reason"],
+        "feasible": verified.feasible,
+        "metrics": metrics,
+        "deviations": {name: value for name, value in change.items() if math.isfinite(value)},
+        "finished_at": str(values["finished_at"]),
     }

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from textwrap import fill
 
 from evaluators.machine.metrics import METRICS
@@ -15,6 +16,7 @@ from studies.inspection import (
     reserve,
 )
 from studies.tables import number, percent, text_table
+from studies.verified import VerifiedRow, deviation
 
 DIRECTION = {1: "+", -1: "-"}
 
@@ -24,6 +26,7 @@ def inspection_text(found: Inspection) -> str:
     sections = [_head(found), _variables(found)]
     if found.evaluated:
         sections += [_limits(found), _losses(found), _metrics(found)]
+        sections += [_verified(found, item) for item in found.verified]
     sections += [_winding(found), _cautions()]
     return "\n\n".join(section for section in sections if section)
 
@@ -85,6 +88,31 @@ def _metrics(found: Inspection) -> str:
             unit = {"1": "", "money": found.currency}.get(metric.unit, metric.unit)
             rows.append([metric.group, metric.name, number(value), unit])
     return text_table(["group", "metric", "value", "unit"], rows, left=2)
+
+
+def _verified(found: Inspection, verified: VerifiedRow) -> str:
+    """Stored and verified values side by side, and the limits that the verified ones break."""
+    values = verified.values
+    settings = "" if values["settings"] == "{}" else f" with settings {values['settings']}"
+    head = f"Verified by {verified.evaluator}{settings}"
+    if not verified.ok:
+        return f"{head}: could not be evaluated ({values['status']}): {values['reason']}"
+    broken = [
+        f"{limit.text()}, is {number(verified.number(limit.metric))}"
+        for limit in found.limits
+        if verified.number(f"margin:{limit.name}") > 0.0
+    ]
+    verdict = f"BREAKS {'; '.join(broken)}" if broken else "meets all limits"
+    rows = []
+    for metric in METRICS:
+        new, old = verified.number(metric.name), found.row.get(metric.name)
+        if old is None or not math.isfinite(new) or new == old:
+            continue
+        unit = {"1": "", "money": found.currency}.get(metric.unit, metric.unit)
+        share = "" if metric.signed else percent(deviation(new, old))
+        rows.append([metric.name, unit, number(old), number(new), share])
+    table = text_table(["metric", "unit", "stored", "verified", "deviation"], rows, left=2)
+    return f"{head}: {verdict}. Metrics that differ:\n{table}"
 
 
 def _winding(found: Inspection) -> str:

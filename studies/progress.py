@@ -6,6 +6,7 @@ import math
 import shutil
 import sys
 import time
+from collections.abc import Callable
 from typing import TextIO
 
 from optimizer.progress import Progress
@@ -14,43 +15,33 @@ PLAIN_INTERVAL_S = 5.0
 SCREEN_INTERVAL_S = 0.1
 
 
-class ProgressLine:
-    """Shows the progress of one family after the other.
+class StatusLine:
+    """One line kept up to date on a terminal; elsewhere a plain line now and then.
 
     Parameters
     ----------
-    families : tuple of str
-        All families of this sweep, in order, for the time left in all.
     stream : TextIO, optional
         By default standard output.
     """
 
-    def __init__(self, families: tuple[str, ...], stream: TextIO | None = None) -> None:
+    def __init__(self, stream: TextIO | None = None) -> None:
         self.stream = stream or sys.stdout
         self.terminal = self.stream.isatty()
-        self._families = families
-        self._family = ""
         self._shown_at = -math.inf
         self._width = 0
 
-    def begin(self, family: str) -> None:
-        """Turn to the next family."""
-        self._family = family
-        self._shown_at = -math.inf
-
-    def show(self, state: Progress) -> None:
-        """Show the state if the last showing is long enough ago."""
+    def put(self, text: Callable[[], str]) -> None:
+        """Show what `text` returns if the last showing is long enough ago."""
         interval = SCREEN_INTERVAL_S if self.terminal else PLAIN_INTERVAL_S
         now = time.monotonic()
         if now - self._shown_at < interval:
             return
         self._shown_at = now
-        text = self._text(state)
         if self.terminal:
             columns = shutil.get_terminal_size().columns - 1
-            self._overwrite(text[:columns])
+            self._overwrite(text()[:columns])
         else:
-            self._write(f"{text}\n")
+            self._write(f"{text()}\n")
 
     def say(self, text: str) -> None:
         """Write lines of their own, taking the place of a kept line."""
@@ -67,6 +58,32 @@ class ProgressLine:
     def _write(self, text: str) -> None:
         self.stream.write(text)
         self.stream.flush()
+
+
+class ProgressLine(StatusLine):
+    """Shows the progress of one family after the other.
+
+    Parameters
+    ----------
+    families : tuple of str
+        All families of this sweep, in order, for the time left in all.
+    stream : TextIO, optional
+        By default standard output.
+    """
+
+    def __init__(self, families: tuple[str, ...], stream: TextIO | None = None) -> None:
+        super().__init__(stream)
+        self._families = families
+        self._family = ""
+
+    def begin(self, family: str) -> None:
+        """Turn to the next family."""
+        self._family = family
+        self._shown_at = -math.inf
+
+    def show(self, state: Progress) -> None:
+        """Show the state if the last showing is long enough ago."""
+        self.put(lambda: self._text(state))
 
     def _text(self, state: Progress) -> str:
         done = state.evaluations
@@ -86,8 +103,13 @@ class ProgressLine:
             f"front {state.front_size}",
         ]
         if known:
-            parts.append(f"{state.rate:.0f}/s" if state.rate >= 10.0 else f"{state.rate:.2f}/s")
+            parts.append(speed(state.rate))
         return "  ".join(parts)
+
+
+def speed(rate: float) -> str:
+    """Evaluations a second."""
+    return f"{rate:.0f}/s" if rate >= 10.0 else f"{rate:.2f}/s"
 
 
 def duration(seconds: float) -> str:

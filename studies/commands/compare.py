@@ -15,6 +15,9 @@ import click
 @click.option(
     "--front-csv", type=click.Path(), help="Write every design of all fronts to this file."
 )
+@click.option("--verified", is_flag=True, help="Count with verified values where there are any.")
+@click.option("--verified-only", is_flag=True, help="Compare verified designs alone.")
+@click.option("--verified-by", default="", help="The evaluator whose verified values count.")
 @click.pass_context
 def compare(
     context: click.Context,
@@ -22,16 +25,23 @@ def compare(
     as_json: bool,
     csv_file: str | None,
     front_csv: str | None,
+    verified: bool,
+    verified_only: bool,
+    verified_by: str,
 ) -> None:
     """Compare the families of one or several studies by their fronts."""
     from studies import comparison_text
     from studies.comparison import as_json as comparison_json
     from studies.comparison import compare_families
-    from studies.damage import report_damage
+    from studies.damage import report_damage, report_verified_damage
     from studies.layout import open_results
+    from studies.verified import VerifiedStored, evaluator_for
 
     distinct = dict.fromkeys(str(Path(folder)) for folder in folders)
-    comparison = compare_families([open_results(Path(folder)) for folder in distinct])
+    opened = [open_results(Path(folder)) for folder in distinct]
+    wanted = verified or verified_only or bool(verified_by)
+    name = evaluator_for(opened, verified_by) if wanted else ""
+    comparison = compare_families(opened, name, verified_only=verified_only)
     for member in comparison.members:
         member.stored.counts  # noqa: B018  all parts are read, so that damage shows
     if csv_file:
@@ -43,7 +53,13 @@ def compare(
     else:
         click.echo(comparison_text.comparison_text(comparison))
     damaged = [part for member in comparison.members for part in member.stored.reader.damaged]
-    context.exit(report_damage(damaged))
+    verified_damage = [
+        part
+        for member in comparison.members
+        if isinstance(member.stored, VerifiedStored)
+        for part in member.stored.values.damaged
+    ]
+    context.exit(max(report_damage(damaged), report_verified_damage(verified_damage)))
 
 
 def _write(file: Path, text: str) -> None:

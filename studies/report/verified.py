@@ -1,22 +1,12 @@
-"""Values of front designs computed again by a finer evaluator, where somebody stored them.
-
-They lie beside the front as ``verified.parquet``: one row a design with its ``evaluation``,
-``evaluator``, ``evaluator_version`` and any metrics by name.
-"""
+"""Values of designs computed again by another evaluator, as the report shows them."""
 
 from __future__ import annotations
 
-import math
 from dataclasses import dataclass
 from pathlib import Path
 
-import pyarrow as pa
-import pyarrow.parquet as pq
-
-from evaluators.machine.metrics import METRIC
 from studies.errors import ResultsError
-
-VERIFIED_FILE = "verified.parquet"
+from studies.verified import read_verified, verified_evaluators
 
 
 @dataclass(frozen=True)
@@ -31,28 +21,27 @@ class Verified:
 def verified_values(folder: Path) -> dict[int, Verified]:
     """Verified values of one family by evaluation number; empty if there are none.
 
+    Of several evaluators the one used last counts; designs it could not evaluate are left out.
+
     Raises
     ------
     ResultsError
-        If the file is there but cannot be read.
+        If some of them cannot be read.
     """
-    file = folder / VERIFIED_FILE
-    if not file.is_file():
+    names = verified_evaluators(folder)
+    if not names:
         return {}
-    try:
-        rows = pq.read_table(file, page_checksum_verification=True).to_pylist()
-        return {
-            int(row["evaluation"]): Verified(
-                str(row["evaluator"]),
-                str(row["evaluator_version"]),
-                {
-                    name: float(value)
-                    for name, value in row.items()
-                    if name in METRIC and value is not None and math.isfinite(value)
-                },
-            )
-            for row in rows
-        }
-    except (OSError, pa.ArrowException, KeyError, TypeError, ValueError) as error:
-        msg = f"{file}: cannot be read as verified values: {error}"
-        raise ResultsError(msg) from None
+    found = read_verified(folder, names[-1])
+    if found.damaged:
+        msg = (
+            f"{found.damaged[0]}: cannot be read as verified values; `hovergap verify "
+            f"{folder.parent}` sets it aside and verifies its designs again"
+        )
+        raise ResultsError(msg)
+    return {
+        evaluation: Verified(
+            str(row.values["evaluator"]), str(row.values["evaluator_version"]), row.metrics
+        )
+        for evaluation, row in found.rows.items()
+        if row.ok
+    }

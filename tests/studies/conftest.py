@@ -93,7 +93,11 @@ def site(tmp_path_factory: pytest.TempPathFactory) -> Path:
     info = folder / "toy_evaluator-1.0.dist-info"
     info.mkdir()
     (info / "METADATA").write_text("Metadata-Version: 2.1\nName: toy-evaluator\nVersion: 1.0\n")
-    points = ["[hovergap.evaluators]", "toy = toy_evaluator:ToyEvaluator"]
+    points = [
+        "[hovergap.evaluators]",
+        "toy = toy_evaluator:ToyEvaluator",
+        "toy_finer = toy_evaluator:FinerToyEvaluator",
+    ]
     if "analytic" not in {point.name for point in entry_points(group="hovergap.evaluators")}:
         # The tests also run from a checkout that is not installed.
         points.append("analytic = evaluators.analytic.evaluator:AnalyticEvaluator")

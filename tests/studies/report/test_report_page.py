@@ -12,12 +12,12 @@ from typing import Any
 
 import numpy as np
 import pyarrow as pa
-import pyarrow.parquet as pq
 import pytest
 from click.testing import CliRunner
 
 from evaluators.interface import Waveform
 from evaluators.machine.metrics import METRIC
+from optimizer.parts import write_part
 from studies.errors import ResultsError
 from studies.layout import open_results
 from studies.report.collect import ReportData, collect
@@ -25,9 +25,10 @@ from studies.report.columns import title
 from studies.report.encoding import STEPS, coarse, packed, script_json, single
 from studies.report.families import tip_shapes
 from studies.report.html import table
-from studies.report.verified import VERIFIED_FILE, verified_values
+from studies.report.verified import verified_values
 from studies.report.waves import turn_curves
 from studies.stored import stored_family
+from studies.verified import verified_folder
 
 
 def content(page: str, name: str) -> Any:
@@ -225,16 +226,19 @@ def test_verified_values_are_read_where_they_are(tmp_path: Path) -> None:
     table = pa.table(
         {
             "evaluation": [7],
+            "status": ["ok"],
             "evaluator": ["finer"],
             "evaluator_version": ["2"],
             "torque_Nm": [1.25],
             "cost": pa.array([None], pa.float64()),
         }
     )
-    pq.write_table(table, tmp_path / VERIFIED_FILE, write_page_checksum=True)
+    folder = verified_folder(tmp_path, "finer")
+    folder.mkdir()
+    path = write_part(folder, 0, table)
     found = verified_values(tmp_path)[7]
     assert (found.evaluator, found.metrics) == ("finer", {"torque_Nm": 1.25})
-    (tmp_path / VERIFIED_FILE).write_bytes(b"PAR1 no")
+    path.write_bytes(b"PAR1 no")
     with pytest.raises(ResultsError, match="verified"):
         verified_values(tmp_path)
 

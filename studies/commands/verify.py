@@ -1,0 +1,70 @@
+"""``hovergap verify``: designs evaluated again by another evaluator."""
+
+from __future__ import annotations
+
+import click
+
+
+@click.command()
+@click.argument("results_folder", metavar="RESULTS/STUDY", type=click.Path())
+@click.option(
+    "--top",
+    type=click.IntRange(1, 1_000_000),
+    help="The designs of each front nearest to the ideal, and the best of each objective besides.  "
+    "[default: 10]",
+)
+@click.option("--front", is_flag=True, help="All designs of the fronts instead.")
+@click.option("--family", multiple=True, help="Only this family; repeatable.")
+@click.option("--evaluator", default="finite_element", show_default=True, help="What verifies.")
+@click.option(
+    "--setting",
+    "settings",
+    metavar="NAME=VALUE",
+    multiple=True,
+    help="A setting of that evaluator, such as analysis=transient; repeatable.",
+)
+@click.option("--workers", type=click.IntRange(1, 256), help="Processes.")
+@click.pass_context
+def verify(
+    context: click.Context,
+    results_folder: str,
+    top: int | None,
+    front: bool,
+    family: tuple[str, ...],
+    evaluator: str,
+    settings: tuple[str, ...],
+    workers: int | None,
+) -> None:
+    """Evaluate stored designs again with another evaluator.
+
+    Both values are kept side by side, with their deviation, beside the results. Ctrl-C keeps what
+    is done; the same command goes on. `hovergap compare --verified` counts with them.
+    """
+    import shlex
+    from pathlib import Path
+
+    from studies import verification as room
+    from studies.damage import report_damage
+    from studies.errors import EXIT_NOTHING_FEASIBLE, StudiesError
+    from studies.layout import open_results
+
+    if front and top is not None:
+        msg = "--top and --front exclude each other: --front verifies every design of the fronts"
+        raise StudiesError(msg)
+    results = open_results(Path(results_folder))
+    count = None if front else top or 10
+    made = room.plans(results, family, evaluator, room.read_settings(settings), count)
+    if not any(len(plan) for plan in made.plans):
+        click.echo(
+            f"{results.folder}: no design meets all limits, so there is nothing to verify; "
+            "`hovergap compare` says what comes nearest",
+            err=True,
+        )
+        context.exit(report_damage(made.damaged) or EXIT_NOTHING_FEASIBLE)
+    again = ["hovergap", "verify", str(results.folder)]
+    again += ["--front"] if front else ["--top", str(count)]
+    again += [word for item in family for word in ("--family", item)]
+    again += ["--evaluator", evaluator] if evaluator != "finite_element" else []
+    again += [word for item in settings for word in ("--setting", item)]
+    code = room.verify_all(results, made.plans, workers, shlex.join(again))
+    context.exit(code or report_damage(made.damaged))

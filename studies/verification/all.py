@@ -1,0 +1,133 @@
+"""Verifying the families of a study one after the other."""
+
+from __future__ import annotations
+
+import shlex
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+import pyarrow as pa
+
+from optimizer.meter import Meter
+from studies.chosen import dispatcher_for
+from studies.comparison import compare_families
+from studies.errors import EXIT_OK
+from studies.interruption import Interruption
+from studies.layout import Results
+from studies.problem import machine_problem
+from studies.sweep import chosen_families
+from studies.verification.run import Plan, verify_family
+from studies.verification.selection import nearest_and_extreme, verifying_problem
+from studies.verification.text import VerifyLine, family_text
+
+
+@dataclass(frozen=True)
+class Plans:
+    """What there is to do in each family, and parts of the archives that are damaged."""
+
+    plans: tuple[Plan, ...]
+    damaged: tuple[Path, ...]
+
+
+def plans(
+    results: Results,
+    families: Sequence[str],
+    evaluator: str,
+    settings: Mapping[str, Any],
+    count: int | None,
+) -> Plans:
+    """Choose the designs and build the evaluators.
+
+    Parameters
+    ----------
+    results : Results
+    families : sequence of str
+        Empty for all.
+    evaluator : str
+    settings : mapping
+        Of that evaluator.
+    count : int or None
+        Designs nearest to the ideal in each family, extremes besides; None for whole fronts.
+
+    Raises
+    ------
+    StudiesError
+        If nothing is stored, a family is unknown, or the evaluator does not serve.
+    evaluators.interface.EvaluatorError
+        If the evaluator is not installed or rejects a setting.
+    """
+    wanted = chosen_families(results.study, families)
+    comparison = compare_families([results])
+    made = []
+    damaged: list[Path] = []
+    for member in comparison.members:
+        stored = member.stored
+        if stored.family not in wanted:
+            continue
+        rows = stored.front
+        if count is not None and rows.num_rows:
+            rows = rows.take(pa.array(nearest_and_extreme(comparison, member, count)))
+        problem = verifying_problem(
+            machine_problem(results.study, stored.family),
+            evaluator,
+            settings,
+            str(stored.reader.settings.get("evaluator_version", "")),
+        )
+        made.append(Plan(stored.family, stored.folder, problem, rows))
+        damaged += stored.reader.damaged
+    return Plans(tuple(made), tuple(damaged))
+
+
+def verify_all(results: Results, made: Sequence[Plan], workers: int | None, again: str) -> int:
+    """Verify family after family and say how it went.
+
+    Parameters
+    ----------
+    results : Results
+    made : sequence of Plan
+    workers : int or None
+    again : str
+        The command that goes on if this is stopped.
+
+    Returns
+    -------
+    int
+        Exit code: 0, or 128 plus a signal if stopped.
+
+    Raises
+    ------
+    OptimizerError
+        If the values cannot be stored or are in use.
+    """
+    made = [plan for plan in made if len(plan)]
+    line = VerifyLine({plan.family: len(plan) for plan in made})
+    meter = Meter(None, sum(map(len, made)))
+    unfinished = len(made)
+    with (
+        Interruption() as interruption,
+        dispatcher_for(made[0].problem, workers) as dispatcher,
+    ):
+        try:
+            for plan in made:
+
+                def progress(done: int, new: int, family: str = plan.family) -> None:
+                    meter.evaluated(new)
+                    line.show(family, done, meter.rate())
+
+                meter.start()
+                done = verify_family(plan, dispatcher, interruption, progress, line.say)
+                line.finish(plan.family)
+                line.say(f"{family_text(done, results.study)}\n")
+                unfinished -= done.complete
+                if interruption.asked:
+                    break
+        except KeyboardInterrupt:
+            line.say("stopped at once; the designs in hand were given up")
+    if interruption.asked and unfinished:
+        line.say(f"Everything verified so far is stored. Go on with:\n  {again}")
+        return interruption.exit_code
+    command = shlex.join(["hovergap", "compare", str(results.folder), "--verified"])
+    line.say(f"Compare the families by these values with: {command}")
+    return EXIT_OK
