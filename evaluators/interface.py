@@ -120,13 +120,45 @@ class EvaluatorError(ValueError):
     """An evaluator is unknown, cannot be loaded, or does not accept its settings."""
 
 
+class ConsentError(EvaluatorError):
+    """An evaluator would start a program that the user has not allowed."""
+
+
+@runtime_checkable
+class StartsProgram(Protocol):
+    """What an evaluator adds that starts a program named in its settings.
+
+    A study file must not start programs on its own: such an evaluator starts nothing, and raises
+    `ConsentError`, until `allow_program` was called.
+    """
+
+    @property
+    def program(self) -> tuple[str, ...]:
+        """The program and its arguments."""
+        ...
+
+    def allow_program(self) -> None:
+        """Give the user's consent; raises `EvaluatorError` if there is no such program."""
+        ...
+
+
 def installed() -> dict[str, EntryPoint]:
     """Evaluators found by entry point, this package's own and third parties' alike."""
     return {point.name: point for point in entry_points(group=ENTRY_POINT_GROUP)}
 
 
-def build(name: str, task: Task, settings: Mapping[str, object] | None = None) -> Evaluator:
+def build(
+    name: str,
+    task: Task,
+    settings: Mapping[str, object] | None = None,
+    allow_program: bool = False,
+) -> Evaluator:
     """Build the evaluator called `name` for `task`.
+
+    Parameters
+    ----------
+    allow_program : bool
+        The user's consent to start the program that the settings name, see `StartsProgram`.
 
     Raises
     ------
@@ -139,4 +171,7 @@ def build(name: str, task: Task, settings: Mapping[str, object] | None = None) -
         msg = f"no evaluator is called {name!r}; installed are: {known}"
         raise EvaluatorError(msg)
     factory = cast("EvaluatorFactory", found[name].load())
-    return factory(task, dict(settings or {}))
+    evaluator = factory(task, dict(settings or {}))
+    if allow_program and isinstance(evaluator, StartsProgram):
+        evaluator.allow_program()
+    return evaluator

@@ -9,7 +9,8 @@ from __future__ import annotations
 
 import importlib
 import tomllib
-from importlib.metadata import entry_points
+from collections.abc import Iterable
+from importlib.metadata import EntryPoint, distributions, entry_points
 from pathlib import Path
 
 import pytest
@@ -32,9 +33,15 @@ def declared_entry_points(tmp_path_factory: pytest.TempPathFactory) -> Path:
     return info.parent
 
 
+def distributions_points(folder: Path) -> Iterable[EntryPoint]:
+    (distribution,) = distributions(path=[str(folder)])
+    return distribution.entry_points
+
+
 @pytest.fixture
 def entry_points_found(declared_entry_points: Path, monkeypatch: pytest.MonkeyPatch) -> None:
-    """Make the declared evaluators discoverable also from a checkout that is not installed."""
-    if not entry_points(group=GROUP):
+    """Make all declared evaluators discoverable, whatever is installed of this checkout."""
+    declared = {point.name for point in distributions_points(declared_entry_points)}
+    if not declared <= {point.name for point in entry_points(group=GROUP)}:
         monkeypatch.syspath_prepend(str(declared_entry_points))
         importlib.invalidate_caches()
