@@ -275,3 +275,38 @@ def test_insulating_rotor_is_the_static_one() -> None:
     # One ring of shaft instead of several: 1e-4 of the response.
     scale = np.max(np.abs(fields.small))
     assert np.max(np.abs(control.small - fields.small)) < 1e-3 * scale
+
+
+@pytest.mark.parametrize("numbers", [(6, 2, 1), (12, 4, 5)])
+def test_frequencies_of_the_suspension_field(numbers: machines.Numbers) -> None:
+    """Watched from the rotor over one turn, order by order, by Fourier transform in time."""
+    fields, _ = machine(numbers, "NiCr19NbMo")
+    batch = fields.batch
+    model = batch.model
+    rotor = transient.eddy_rotor(batch, ONES)
+    equations = batch.equations(model.suspension)
+    ahead, behind = transient.suspension_field(
+        batch, equations, rotor, fields.loaded.nodes[:1]
+    ).response
+    plus, minus = 0.7 + 0.2j, 0.3 - 0.5j  # any amplitudes of the two complex orders
+    steps = 64
+    angle = 2.0 * np.pi * np.arange(steps) / steps
+    turning = np.exp(1j * model.pole_pairs * angle)
+    for order in transient.reacting_orders(batch, equations)[:4]:
+        # Coefficient of exp(j n phi) of the real field in the stator, then in the rotor's frame.
+        potential = 0.5 * (plus * turning + np.conj(minus * turning))
+        seen = np.fft.fft(potential * np.exp(1j * order * angle)) / steps
+        cycles = np.fft.fftfreq(steps, 1.0 / steps)
+        found = np.zeros((steps, LANES), dtype=np.complex128)
+        for amplitude, cycle in zip(seen, cycles, strict=True):
+            if abs(amplitude) > 1e-12:
+                speed = np.array([cycle * model.task.duty.speed])
+                answer = rotor.response(np.array([order]), speed)[0]
+                wave = np.exp(1j * (cycle - order) * angle)
+                found += amplitude * wave[:, None] * answer
+        expected = 0.5 * (
+            plus * turning[:, None] * ahead[order]
+            + np.conj(minus * turning[:, None] * behind[order])
+        )
+        # Standing still, the response of several iron rings is that of one to 1e-3.
+        assert found == pytest.approx(expected, rel=2e-3)
