@@ -3,7 +3,7 @@
 The slots' potentials are a_j = sum over classes of slot exp(j 2 pi c j / Q) exp(-j nu angle) plus
 its conjugate. A coil links the potential of its go slot minus that of its return slot; a tooth
 carries that of the slot after it minus the one before; the yoke behind a slot carries that of the
-slot.
+slot, each with what the slot's own current adds on the way down to the bottom.
 """
 
 from __future__ import annotations
@@ -14,6 +14,7 @@ from numpy.typing import NDArray
 from evaluators.analytic.gap import GapField
 from evaluators.analytic.rotation import Rotation
 from evaluators.analytic.rotor import MU_0
+from evaluators.analytic.slots import SlotMouth
 from evaluators.machine.winding import Connection, Winding
 
 FloatArray = NDArray[np.float64]
@@ -84,22 +85,54 @@ class Linkage:
         return np.asarray(np.real(gap + MU_0 * permeance * leakage))
 
     def iron_coefficients(
-        self, field: GapField, classes: IntArray, teeth: int
+        self, tooth_slot: ComplexArray, yoke_slot: ComplexArray, classes: IntArray
     ) -> tuple[ComplexArray, ComplexArray]:
-        """Coefficients of tooth and yoke flux by class, (n, teeth, c) each, Wb/m."""
-        tooth = np.arange(teeth)
+        """Coefficients of tooth and yoke flux by class, (n, teeth, c) each, Wb/m.
+
+        From the slots' potentials along the teeth and at the bottom, (n, c) each.
+        """
+        tooth = np.arange(self.distinct_teeth)
         after = np.exp(2j * np.pi * classes * tooth[:, None] / self.slots)
         before = np.exp(2j * np.pi * classes * (tooth[:, None] - 1) / self.slots)
-        slot = field.slot[:, None, :]
-        return np.asarray(slot * (after - before)), np.asarray(slot * after)
+        return (
+            np.asarray(tooth_slot[:, None, :] * (after - before)),
+            np.asarray(yoke_slot[:, None, :] * after),
+        )
 
     @property
     def distinct_teeth(self) -> int:
         """Teeth that tell all others: a third of them, as the phases are alike."""
         return self.slots // 3
 
+    def _of_current(
+        self,
+        connection: Connection,
+        field: GapField,
+        phasor: ComplexArray | float,
+        slot: SlotMouth,
+        rotation: Rotation,
+    ) -> tuple[ComplexArray, ComplexArray]:
+        """`iron_coefficients` of a current, the slots' own leakage included, summed over classes.
+
+        `phasor` (n,) is the current's, in ampere-turns; the result (n, teeth) goes with
+        exp(-j p angle).
+        """
+        residues, unit = rotation.current_residues(connection)
+        current = MU_0 * np.conj(np.asarray(phasor)).reshape(-1, 1) * unit
+        along, bottom = (
+            field.slot + np.reshape(permeance, (-1, 1)) * current
+            for permeance in (slot.tooth_permeance, slot.yoke_permeance)
+        )
+        teeth, yoke = self.iron_coefficients(along, bottom, residues)
+        return teeth.sum(axis=2), yoke.sum(axis=2)
+
     def iron_flux(
-        self, magnets: GapField, current: GapField, rotation: Rotation
+        self,
+        magnets: GapField,
+        current: GapField,
+        phasor: ComplexArray,
+        slot: SlotMouth,
+        rotation: Rotation,
     ) -> tuple[FloatArray, FloatArray]:
         """Flux of the distinct teeth and of the yoke behind them over one electrical period.
 
@@ -107,26 +140,24 @@ class Linkage:
         -------
         teeth, yoke : arrays (n, teeth, SAMPLES), Wb/m
         """
-        residues, _ = rotation.current_residues("torque")
         phase = 2.0 * np.pi * np.arange(SAMPLES) / SAMPLES
         electrical = rotation.magnet_orders // rotation.pole_pairs
         turning = np.exp(-1j * electrical[:, None] * phase)
         result = []
         for magnet_part, current_part in zip(
-            self.iron_coefficients(magnets, rotation.magnet_orders, self.distinct_teeth),
-            self.iron_coefficients(current, residues, self.distinct_teeth),
+            self.iron_coefficients(magnets.slot, magnets.slot, rotation.magnet_orders),
+            self._of_current("torque", current, phasor, slot, rotation),
             strict=True,
         ):
             total = magnet_part.copy()
-            total[:, :, 0] += current_part.sum(axis=2)
+            total[:, :, 0] += current_part
             result.append(2.0 * np.real(total @ turning))
         return result[0], result[1]
 
     def suspension_flux(
-        self, suspension: GapField, rotation: Rotation
+        self, suspension: GapField, slot: SlotMouth, rotation: Rotation
     ) -> tuple[FloatArray, FloatArray]:
         """Peak flux of teeth and yoke per ampere-turn of suspension current, (n, teeth), Wb/m."""
-        residues, _ = rotation.current_residues("suspension")
-        teeth, yoke = self.iron_coefficients(suspension, residues, self.distinct_teeth)
+        teeth, yoke = self._of_current("suspension", suspension, 1.0, slot, rotation)
         # Phasor and conjugate add up at some position of every turn: the waves differ in speed.
-        return 2.0 * np.abs(teeth.sum(axis=2)), 2.0 * np.abs(yoke.sum(axis=2))
+        return 2.0 * np.abs(teeth), 2.0 * np.abs(yoke)

@@ -46,8 +46,10 @@ def iron(
     components is 2 t^2 p coth(p x) / (Ro^2 - Ri^2), x = ln(Ro/Ri), times that of the mean over the
     thickness t (plane field in a ring, closed form).
     """
-    teeth, yoke = linkage.iron_flux(waves.magnets, waves.current, rotation)
-    tooth_extra, yoke_extra = linkage.suspension_flux(waves.suspension, rotation)
+    teeth, yoke = linkage.iron_flux(
+        waves.magnets, waves.current, waves.phasor, waves.slot, rotation
+    )
+    tooth_extra, yoke_extra = linkage.suspension_flux(waves.suspension, waves.slot, rotation)
     tooth_extra = tooth_extra * exciting.suspension[:, None]
     yoke_extra = yoke_extra * exciting.suspension[:, None]
     thickness, width = sections.yoke_thickness, sections.tooth_width

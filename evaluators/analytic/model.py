@@ -22,7 +22,7 @@ from evaluators.analytic.saturation import (
     fundamental_at_core,
     saturate,
 )
-from evaluators.analytic.slots import mouth
+from evaluators.analytic.slots import SlotMouth, mouth
 from evaluators.analytic.waves import PerfectStator, Waves
 from evaluators.machine.field import Excitation, FieldSolution
 from evaluators.machine.geometry import CrossSections
@@ -124,7 +124,9 @@ class AnalyticModel:
         unit = for_slots.reaction.of(residues)
         driven = unit.times(MU_0 * np.conj(phasor)[:, None] * current)
         reaction = np.real(for_slots.reaction.slot[:, rotation.pole_pairs % slots])
-        paths = self._paths(sections, radii, magnets, driven, smooth, perfect, reaction)
+        paths = self._paths(
+            sections, radii, magnets, driven, phasor, slot, smooth, perfect, reaction
+        )
         fundamental = (magnetised[0][:, :1], magnetised[1][:, :1])
         iron = saturate(sections, radii, fundamental, paths, self.steels)
 
@@ -160,6 +162,8 @@ class AnalyticModel:
         radii: RotorRadii,
         magnets: GapField,
         driven: GapField,
+        phasor: ComplexArray,
+        slot: SlotMouth,
         smooth: MagnetSource,
         perfect: Iron,
         reaction: FloatArray,
@@ -176,7 +180,7 @@ class AnalyticModel:
             self.rotation.pole_pairs,
             perfect.core_admittance(self.recoil, order),
         )
-        teeth, yoke = self.linkage.iron_flux(magnets, driven, self.rotation)
+        teeth, yoke = self.linkage.iron_flux(magnets, driven, phasor, slot, self.rotation)
         main = driven.classes == self.rotation.pole_pairs % self.rotation.slots
         return Paths(
             magnet=magnets.slot[:, 0],

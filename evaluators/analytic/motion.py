@@ -11,10 +11,13 @@ from evaluators.analytic import network, stress
 from evaluators.analytic.gap import GapField
 from evaluators.analytic.network import CircuitState, StatorCircuit
 from evaluators.analytic.rotation import Rotation
+from evaluators.analytic.rotor import MU_0
+from evaluators.analytic.slots import SlotMouth
 from evaluators.analytic.waves import Waves
 from evaluators.machine.field import Excitation
 from evaluators.machine.geometry import CrossSections
 from evaluators.machine.magnetization import MagnetizationCurve
+from evaluators.machine.winding import Connection
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
@@ -91,7 +94,9 @@ def move(
 ) -> Motion:
     """Torque and force of n designs at rotor `positions` (k,), rad."""
     perfect, bore = waves.perfect, sections.bore_radius
-    answer = network.circulant(np.real(perfect.reaction.slot))
+    # A voltage lost around a slot weakens the leakage across it as a current would.
+    leakage = np.reshape(waves.slot.yoke_permeance, (-1, 1, 1)) * np.eye(rotation.slots)
+    answer = network.circulant(np.real(perfect.reaction.slot)) + leakage
     state = _saturate(rotation, curve, sections, waves, answer, positions)
 
     turning = np.exp(1j * rotation.magnet_exponents[:, None] * positions)
@@ -117,10 +122,16 @@ def move(
 
     control = rotation.pair(perfect.suspension)
     phasors = (1.0, 1.0j)
+    own = [
+        _slot_currents(rotation, "suspension", positions, np.full(bore.size, i)) for i in phasors
+    ]
+    small = [
+        _potentials(rotation, perfect.suspension, positions, i)
+        + _scaled(waves.slot.yoke_permeance, c)
+        for i, c in zip(phasors, own, strict=True)
+    ]
     lost = network.small_lost(
-        state,
-        answer,
-        np.stack([_potentials(rotation, perfect.suspension, positions, i) for i in phasors], 3),
+        state, answer, np.stack(small, 3), np.stack([_late(waves.slot, c) for c in own], 3)
     )
     forces = []
     for number, phasor in enumerate(phasors):
@@ -132,7 +143,6 @@ def move(
             stress.force(rising, down + iron_down, bore) + stress.force(up + iron_up, falling, bore)
         )
     still = [part @ turning for part in rotation.dense(waves.magnets)]
-    tooth = state.potential - np.roll(state.potential, 1, axis=2)
     return Motion(
         rotation=rotation,
         positions=positions,
@@ -141,9 +151,9 @@ def move(
         rest=stress.force(rising, falling, bore),
         direct=0.5 * (forces[0] - 1j * forces[1]),
         mirrored=0.5 * (forces[0] + 1j * forces[1]),
-        tooth_flux=np.abs(tooth).max(axis=(1, 2)),
+        tooth_flux=np.abs(state.tooth_flux).max(axis=(1, 2)),
         yoke_flux=np.abs(state.potential).max(axis=(1, 2)),
-        linkage=_linkage(rotation, state, positions),
+        linkage=_linkage(rotation, state, waves.slot, positions),
     )
 
 
@@ -157,14 +167,15 @@ def _saturate(
 ) -> CircuitState:
     """Slot potentials of magnets and torque current; only one period of the slots is solved."""
     period, sign = rotation.slot_period
+    own = _slot_currents(rotation, "torque", positions, waves.phasor)
+    leakage = _scaled(waves.slot.yoke_permeance, own)[:, :, :period]
 
     def potentials(magnets: GapField, current: GapField) -> FloatArray:
         turning = np.exp(-1j * rotation.magnet_orders[:, None] * positions)
         around = np.exp(2j * np.pi * magnets.classes[:, None] * np.arange(period) / rotation.slots)
         wave = np.swapaxes(magnets.slot[:, :, None] * turning, 1, 2) @ around
-        return np.asarray(
-            2.0 * np.real(wave) + _potentials(rotation, current, positions, 1.0)[:, :, :period]
-        )
+        driven = _potentials(rotation, current, positions, 1.0)[:, :, :period]
+        return np.asarray(2.0 * np.real(wave) + driven + leakage)
 
     state = network.solve(
         StatorCircuit.of(sections, curve),
@@ -172,17 +183,43 @@ def _saturate(
         potentials(waves.perfect.magnets, waves.perfect.current),
         potentials(waves.magnets, waves.current),
         sign,
+        _late(waves.slot, own)[:, :, :period],
     )
     return network.unfold(state, rotation.slots, sign)
 
 
-def _linkage(rotation: Rotation, state: CircuitState, positions: FloatArray) -> ComplexArray:
+def _slot_currents(
+    rotation: Rotation, connection: Connection, positions: FloatArray, phasor: ComplexArray
+) -> FloatArray:
+    """Currents of the slots for phasors (n,) of ampere-turns, (n, k, Q) A."""
+    turning = phasor[:, None] * np.exp(1j * rotation.pole_pairs * positions)
+    return np.real(turning[:, :, None] * rotation.winding.slot_mmf(connection))
+
+
+def _scaled(permeance: FloatArray | float, current: FloatArray) -> FloatArray:
+    """Leakage flux mu0 P I of the slots, (n, k, Q) Wb/m, for P (n,)."""
+    return MU_0 * np.reshape(permeance, (-1, 1, 1)) * current
+
+
+def _late(slot: SlotMouth, current: FloatArray) -> FloatArray:
+    """Leakage that the tooth before each slot carries at its root but not in the mean."""
+    flux = _scaled(np.subtract(slot.yoke_permeance, slot.tooth_permeance), current)
+    return flux - np.roll(flux, 1, axis=2)
+
+
+def _linkage(
+    rotation: Rotation, state: CircuitState, slot: SlotMouth, positions: FloatArray
+) -> ComplexArray:
     """Linkage phasor of phase one, (n,) Wb/m; the flux of phase one is Re(phasor exp(j p angle)).
 
     The three phases together turned back by the rotor's angle (Park, Trans. AIEE 48, 1929), whose
-    mean over a sector holds the fundamental alone.
+    mean over a sector holds the fundamental alone. Its part in phase with the current leaves out
+    that the slot's own leakage links the winding less than it fills the slot bottom. The voltage of
+    the teeth weakens the leakage that they carry in the mean, by reciprocity.
     """
-    phases = state.potential @ np.conj(rotation.winding.torque_slot_mmf)
+    late = np.subtract(slot.yoke_permeance, slot.tooth_permeance)
+    linked = state.potential + np.reshape(late, (-1, 1, 1)) * state.lost_in_teeth
+    phases = linked @ np.conj(rotation.winding.torque_slot_mmf)
     turned = phases * np.exp(-1j * rotation.pole_pairs * positions)
     return np.asarray(2.0 / 3.0 * turned.mean(axis=1))
 

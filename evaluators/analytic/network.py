@@ -1,10 +1,11 @@
 """Teeth and yoke as a nonlinear circuit around the slots, at every rotor position.
 
 Seen from the gap, iron that takes magnetic voltage is a current in each slot, minus the voltage
-lost on the way around it (`evaluators.analytic.gap`). With a_j the potential of slot j, tooth j
-carries a_j - a_(j-1) and the yoke behind slot j carries a_j, so
+lost on the way around it (`evaluators.analytic.gap`). With a_j the potential at the bottom of slot
+j, the yoke behind it carries a_j and tooth j carries a_j - a_(j-1), less the part d_j of the slots'
+own leakage that enters it only towards its root, so
 
-    a = alone - G V(a),   V_j = U(a_j - a_(j-1)) - U(a_(j+1) - a_j) + Y(a_j),
+    a = alone - G V(a),   V_j = U(a_j - a_(j-1) - d_j) - U(a_(j+1) - a_j - d_(j+1)) + Y(a_j),
 
 where `alone` is the potential under perfect iron, G the answer of the gap to slot currents, and U
 and Y the voltages of a tooth and of one slot pitch of yoke by the steel's curve. Newton's method
@@ -16,7 +17,7 @@ of Saturated Electric Machines, 1989).
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, fields
 
 import numpy as np
 from numpy.typing import NDArray
@@ -28,7 +29,8 @@ from evaluators.machine.magnetization import MagnetizationCurve
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
 
-ITERATIONS = 12
+ITERATIONS = 30
+SHORTENED = 4
 TOLERANCE = 1e-10  # of the largest potential of a design; Newton passes it in one step more
 CIRCULATING = 1e5
 """Answer of the gap to equal currents in all slots over the largest other: flux that circles in
@@ -55,6 +57,16 @@ class StatorCircuit:
             yoke_thickness=sections.yoke_thickness,
             yoke_length=2.0 * np.pi * radius / sections.family.slots,
             curve=curve,
+        )
+
+    def rows(self, selection: NDArray[np.int64]) -> StatorCircuit:
+        """The circuits of the selected designs, repeated if named twice."""
+        return StatorCircuit(
+            self.tooth_width[selection],
+            self.tooth_length[selection],
+            self.yoke_thickness[selection],
+            self.yoke_length[selection],
+            self.curve,
         )
 
     def voltages(
@@ -84,15 +96,19 @@ class CircuitState:
     Attributes
     ----------
     potential : array (n, k, Q), Wb/m
-        Of the slots.
-    lost : array (n, k, Q), Wb/m
-        mu0 times the voltage lost around each slot.
+        At the bottom of the slots.
+    tooth_flux : array (n, k, Q), Wb/m
+        Mean over the length of the tooth before each slot.
+    lost, lost_in_teeth : array (n, k, Q), Wb/m
+        mu0 times the voltage lost around each slot, and the part of it in the two teeth.
     tooth_slope, yoke_slope : arrays (n, k, Q)
         mu0 times differential reluctance.
     """
 
     potential: FloatArray
+    tooth_flux: FloatArray
     lost: FloatArray
+    lost_in_teeth: FloatArray
     tooth_slope: FloatArray
     yoke_slope: FloatArray
 
@@ -118,25 +134,77 @@ def fold(matrix: FloatArray, period: int, sign: int) -> FloatArray:
     return np.asarray(weighted.reshape(rows, period, -1, period).sum(axis=2))
 
 
-def _jacobian(
-    answer: FloatArray, tooth_slope: FloatArray, yoke_slope: FloatArray, sign: int
-) -> FloatArray:
-    """1 + G dV/da, (n, k, q, q); tooth j lies before slot j."""
-    period = answer.shape[-1]
-    before = tooth_slope
-    after = np.roll(tooth_slope, -1, axis=-1)
+def _reluctance(tooth_slope: FloatArray, yoke_slope: FloatArray, sign: int) -> FloatArray:
+    """dV/da, (..., q, q); tooth j lies before slot j."""
+    period = tooth_slope.shape[-1]
     slot = np.arange(period)
-    reluctance = np.zeros((*tooth_slope.shape, period))
-    reluctance[..., slot, slot] = before + after + yoke_slope
-    wrap = np.where(slot == 0, sign, 1)
+    matrix = np.zeros((*tooth_slope.shape, period))
+    matrix[..., slot, slot] = tooth_slope + np.roll(tooth_slope, -1, axis=-1) + yoke_slope
     # Slot j loses voltage to slot j - 1 through tooth j and to slot j + 1 through tooth j + 1.
-    reluctance[..., slot, slot - 1] -= before * wrap
-    reluctance[..., slot - 1, slot] -= before * wrap
-    return np.asarray(np.eye(period) + answer[:, None] @ reluctance)
+    beside = tooth_slope * np.where(slot == 0, sign, 1)
+    matrix[..., slot, slot - 1] -= beside
+    matrix[..., slot - 1, slot] -= beside
+    return matrix
+
+
+@dataclass(frozen=True)
+class _Points:
+    """Every design at every position as one row, (m, q): what Newton's method works on."""
+
+    circuit: StatorCircuit
+    answer: FloatArray
+    alone: FloatArray
+    late: FloatArray
+    sign: int
+
+    def rows(self, selection: NDArray[np.int64]) -> _Points:
+        return _Points(
+            self.circuit.rows(selection),
+            self.answer[selection],
+            self.alone[selection],
+            self.late[selection],
+            self.sign,
+        )
+
+    def state(self, potential: FloatArray) -> CircuitState:
+        before = np.roll(potential, 1, axis=-1)
+        before[..., 0] *= self.sign
+        tooth_flux = potential - before - self.late
+        tooth, tooth_slope, yoke, yoke_slope = self.circuit.voltages(tooth_flux, potential)
+        after = np.roll(tooth, -1, axis=-1)
+        after[..., -1] *= self.sign
+        in_teeth = tooth - after
+        lost = in_teeth + yoke
+        return CircuitState(potential, tooth_flux, lost, in_teeth, tooth_slope, yoke_slope)
+
+    def residual(self, state: CircuitState) -> FloatArray:
+        driven = (self.answer @ state.lost[..., None])[..., 0]
+        return np.asarray(state.potential - self.alone + driven)
+
+    def step(self, state: CircuitState) -> FloatArray:
+        """One damped step: shortened, by row, until the residual falls or four times."""
+        residual = self.residual(state)
+        size = np.abs(residual).max(axis=1)
+        slope = _reluctance(state.tooth_slope, state.yoke_slope, self.sign)
+        matrix = np.eye(slope.shape[-1]) + self.answer @ slope
+        whole = np.linalg.solve(matrix, residual[..., None])[..., 0]
+        length = np.ones_like(size)
+        for _ in range(SHORTENED):
+            trial = state.potential - length[:, None] * whole
+            worse = np.abs(self.residual(self.state(trial))).max(axis=1) > size
+            if not np.any(worse):
+                break
+            length = np.where(worse, 0.4 * length, length)
+        return np.asarray(trial)
 
 
 def solve(
-    circuit: StatorCircuit, answer: FloatArray, alone: FloatArray, start: FloatArray, sign: int
+    circuit: StatorCircuit,
+    answer: FloatArray,
+    alone: FloatArray,
+    start: FloatArray,
+    sign: int,
+    late: FloatArray | float = 0.0,
 ) -> CircuitState:
     """Slot potentials at every position.
 
@@ -150,45 +218,33 @@ def solve(
         First guess.
     sign : int
         +1 or -1: the pattern repeats, or repeats reversed, after q slots.
+    late : array (n, k, q), optional, Wb/m
+        Leakage d that enters the tooth before each slot only towards its root.
     """
-    potential = start
-    turned = np.swapaxes(answer, 1, 2)
-
-    def lost_at(a: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
-        previous = np.roll(a, 1, axis=-1)
-        previous[..., 0] *= sign
-        tooth, tooth_slope, yoke, yoke_slope = circuit.voltages(a - previous, a)
-        after = np.roll(tooth, -1, axis=-1)
-        after[..., -1] *= sign
-        return tooth - after + yoke, tooth_slope, yoke_slope
-
-    scale = np.abs(alone).max(axis=(1, 2), keepdims=True)
-    lost, tooth_slope, yoke_slope = lost_at(potential)
-    residual = potential - alone + lost @ turned
-    size = np.abs(residual).max(axis=2, keepdims=True)
+    shape = alone.shape
+    owner = np.repeat(np.arange(shape[0]), shape[1])
+    points = _Points(
+        circuit.rows(owner),
+        answer[owner],
+        alone.reshape(owner.size, -1),
+        np.broadcast_to(late, shape).reshape(owner.size, -1),
+        sign,
+    )
+    allowed = TOLERANCE * np.abs(alone).max(axis=(1, 2))[owner]
+    potential = start.reshape(owner.size, -1).copy()
+    # What has converged stays as it is: no design depends on its batch, and work shrinks.
+    active = np.arange(owner.size)
     for _ in range(ITERATIONS):
-        # What has converged stays as it is, so that no design depends on its batch.
-        done = size <= TOLERANCE * scale
-        if np.all(done):
+        part = points.rows(active)
+        state = part.state(potential[active])
+        unsettled = np.abs(part.residual(state)).max(axis=1) > allowed[active]
+        if not np.any(unsettled):
             break
-        matrix = _jacobian(answer, tooth_slope, yoke_slope, sign)
-        step = np.linalg.solve(matrix, residual[..., None])[..., 0]
-        length = np.ones_like(size)
-        for _ in range(4):
-            trial = potential - length * step
-            trial_lost, trial_tooth, trial_yoke = lost_at(trial)
-            trial_residual = trial - alone + trial_lost @ turned
-            trial_size = np.abs(trial_residual).max(axis=2, keepdims=True)
-            worse = (trial_size > size) & ~done
-            if not np.any(worse):
-                break
-            length = np.where(worse, 0.4 * length, length)
-        potential, lost = np.where(done, potential, trial), np.where(done, lost, trial_lost)
-        residual = np.where(done, residual, trial_residual)
-        size = np.where(done, size, trial_size)
-        tooth_slope = np.where(done, tooth_slope, trial_tooth)
-        yoke_slope = np.where(done, yoke_slope, trial_yoke)
-    return CircuitState(potential, lost, tooth_slope, yoke_slope)
+        active = active[unsettled]
+        part = points.rows(active)
+        potential[active] = part.step(part.state(potential[active]))
+    state = points.state(potential)
+    return CircuitState(*(getattr(state, item.name).reshape(shape) for item in fields(state)))
 
 
 def unfold(state: CircuitState, slots: int, sign: int) -> CircuitState:
@@ -202,13 +258,20 @@ def unfold(state: CircuitState, slots: int, sign: int) -> CircuitState:
     same = np.ones(slots)
     return CircuitState(
         potential=wide(state.potential, signs),
+        tooth_flux=wide(state.tooth_flux, signs),
         lost=wide(state.lost, signs),
+        lost_in_teeth=wide(state.lost_in_teeth, signs),
         tooth_slope=wide(state.tooth_slope, same),
         yoke_slope=wide(state.yoke_slope, same),
     )
 
 
-def small_lost(state: CircuitState, answer: FloatArray, alone: FloatArray) -> FloatArray:
+def small_lost(
+    state: CircuitState,
+    answer: FloatArray,
+    alone: FloatArray,
+    late: FloatArray | None = None,
+) -> FloatArray:
     """mu0 times the voltage that small additional potentials lose, (n, k, Q, r) Wb/m.
 
     Parameters
@@ -218,8 +281,18 @@ def small_lost(state: CircuitState, answer: FloatArray, alone: FloatArray) -> Fl
     answer : array (n, Q, Q)
     alone : array (n, k, Q, r), Wb/m
         Small potentials under perfect iron, r of them.
+    late : array (n, k, Q, r), optional, Wb/m
+        Their leakage that enters the teeth only towards the root.
     """
-    matrix = _jacobian(answer, state.tooth_slope, state.yoke_slope, 1)
-    small = np.linalg.solve(matrix, alone)
-    through = state.tooth_slope[..., None] * (small - np.roll(small, 1, axis=2))
-    return np.asarray(through - np.roll(through, -1, axis=2) + state.yoke_slope[..., None] * small)
+    if late is None:
+        late = np.zeros_like(alone)
+
+    def around(tooth: FloatArray) -> FloatArray:
+        voltage = state.tooth_slope[..., None] * tooth
+        return np.asarray(voltage - np.roll(voltage, -1, axis=2))
+
+    load = alone + answer[:, None] @ around(late)
+    slope = _reluctance(state.tooth_slope, state.yoke_slope, 1)
+    small = np.linalg.solve(np.eye(slope.shape[-1]) + answer[:, None] @ slope, load)
+    through = small - np.roll(small, 1, axis=2) - late
+    return around(through) + state.yoke_slope[..., None] * small

@@ -14,6 +14,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from functools import lru_cache
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -46,23 +47,28 @@ class SlotMouth:
     permeance : array (n,)
         Of A, mean over the winding minus mean over the mouth, over mu0 I with f = 0: the slot's
         leakage permeance number.
+    tooth_permeance, yoke_permeance : arrays (n,)
+        The same for A along the tooth body, mean over its length, and at the slot bottom: what a
+        slot's own current adds to the flux of the teeth beside it and of the yoke behind it.
     """
 
     compliance: FloatArray
     current_share: FloatArray
     permeance: FloatArray
+    tooth_permeance: FloatArray | float = 0.0
+    yoke_permeance: FloatArray | float = 0.0
 
 
 def mouth(sections: CrossSections, modes: int) -> SlotMouth:
     """Answer of the slot of each design, by `modes` modes beside the uniform one."""
     rows = len(sections)
     decay = 0.5 * np.pi * np.arange(1, modes + 1)
-    body_length, body_permeance = _body(sections)
+    body = _body(sections)
     compliance = np.zeros((rows, modes, modes))
     diagonal = np.arange(modes)
-    compliance[:, diagonal, diagonal] = 1.0 / (decay * np.tanh(decay * body_length[:, None]))
+    compliance[:, diagonal, diagonal] = 1.0 / (decay * np.tanh(decay * body.length[:, None]))
     share = np.zeros((rows, modes))
-    permeance = body_permeance.copy()
+    permeance = body.winding.copy()
     identity = np.eye(modes)
 
     edges = _edges(sections)
@@ -91,7 +97,14 @@ def mouth(sections: CrossSections, modes: int) -> SlotMouth:
         )
         permeance += gain
     compliance = 0.5 * (compliance + np.swapaxes(compliance, 1, 2))
-    return SlotMouth(compliance=compliance, current_share=share, permeance=permeance)
+    through_mouth = permeance - body.winding
+    return SlotMouth(
+        compliance=compliance,
+        current_share=share,
+        permeance=permeance,
+        tooth_permeance=through_mouth + body.tooth,
+        yoke_permeance=through_mouth + body.yoke,
+    )
 
 
 def _edges(sections: CrossSections) -> FloatArray:
@@ -101,18 +114,28 @@ def _edges(sections: CrossSections) -> FloatArray:
     return np.concatenate([wedge, tip[:, 1:]], axis=1)
 
 
-def _body(sections: CrossSections) -> tuple[FloatArray, FloatArray]:
-    """Length of the wound part in half-widths, and its leakage permeance number, (n,) each.
+class _Body(NamedTuple):
+    """Wound part of the slot, (n,) each: length in half-widths; leakage permeance numbers."""
+
+    length: FloatArray
+    winding: FloatArray
+    tooth: FloatArray
+    yoke: FloatArray
+
+
+def _body(sections: CrossSections) -> _Body:
+    """Length of the wound part, and its leakage: mean over winding, over tooth, and whole.
 
     With the current spread evenly over the slot, the current enclosed below radius r is
-    s(r) = area(r)/area, and the mean linkage is the integral of s^2 dr / (r * slot angle)
-    (slot leakage of any width profile; Pyrhonen et al. 2014, ch. 4).
+    s(r) = area(r)/area. The leakage that has crossed the slot up to r is the integral of
+    s dr / (r * slot angle), and the mean linkage is that of s^2 dr / (r * slot angle) (slot
+    leakage of any width profile; Pyrhonen et al. 2014, ch. 4).
     """
     nodes, weights = np.polynomial.legendre.leggauss(BODY_NODES)
     depth = 0.5 * (sections.slot_radius - sections.wedge_radius)[:, None]
     radius = sections.wedge_radius[:, None] + depth * (1.0 + nodes)
     angle = sections.slot_angle(radius)
-    length = np.sum(weights * depth / (0.5 * angle * radius), axis=1)
+    step = weights * depth / (angle * radius)
     half = 0.5 * sections.tooth_width[:, None]
     ring = np.pi / sections.family.slots * (sections.slot_radius[:, None] ** 2 - radius**2)
     bottom = sections.slot_radius[:, None]
@@ -121,8 +144,13 @@ def _body(sections: CrossSections) -> tuple[FloatArray, FloatArray]:
         return np.asarray(r**2 * np.arcsin(half / r) + half * np.sqrt(r**2 - half**2))
 
     enclosed = (ring - tooth(bottom) + tooth(radius)) / sections.slot_area[:, None]
-    permeance = np.sum(weights * depth * enclosed**2 / (angle * radius), axis=1)
-    return length, permeance
+    return _Body(
+        length=np.sum(2.0 * step, axis=1),
+        winding=np.sum(step * enclosed**2, axis=1),
+        # Leakage that crosses at a depth is carried by the rest of the tooth behind it.
+        tooth=np.sum(step * enclosed * 0.5 * (1.0 - nodes), axis=1),
+        yoke=np.sum(step * enclosed, axis=1),
+    )
 
 
 def _widen(

@@ -39,7 +39,9 @@ def waveforms(model: AnalyticModel, design: Mapping[str, float]) -> tuple[Wavefo
         np.real(exciting.suspension[0] * motion.command(direction)[0] * turning)
         for direction in (0.0, 0.5 * np.pi)
     )
-    teeth, yoke = model.linkage.iron_flux(waves.magnets, waves.current, model.rotation)
+    teeth, yoke = model.linkage.iron_flux(
+        waves.magnets, waves.current, waves.phasor, waves.slot, model.rotation
+    )
     orders = model.rotation.magnet_orders
     flux = model.linkage.magnet_harmonics(waves.magnets, orders)[0]
     phase = np.exp(1j * orders[:, None] * angle)

@@ -167,8 +167,9 @@ def test_iron_fits_the_flux_it_lets_through(
 
     # Reluctances of one tooth and of one slot pitch of yoke, mu0 nu l / (width), by the geometry.
     sections, slots = case.sections, numbers[0]
+    waves = perfect.waves()
     teeth, yoke = perfect.model.linkage.iron_flux(
-        perfect.waves().magnets, perfect.waves().current, perfect.model.rotation
+        waves.magnets, waves.current, waves.phasor, waves.slot, perfect.model.rotation
     )
     width, thickness = float(sections.tooth_width[0]), float(sections.yoke_thickness[0])
     radius = 0.5 * float(sections.slot_radius[0] + sections.outer_radius[0])
