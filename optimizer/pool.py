@@ -111,17 +111,7 @@ class Pool:
         """Store the problem where each worker reads it once."""
         if self._sent is not None and self._sent[0] is problem:
             return self._sent[1]
-        from cloudpickle import dumps
-
-        try:
-            data = dumps(problem)
-        except Exception as error:  # pickling calls code of the problem, which raises anything
-            msg = f"the problem cannot be sent to worker processes: {error}"
-            raise ProblemError(msg) from error
-        handle, name = tempfile.mkstemp(dir=self._folder, suffix=".problem")
-        with os.fdopen(handle, "wb") as file:
-            file.write(data)
-        self._sent = (problem, Path(name))
+        self._sent = (problem, send_problem(problem, self._folder))
         return self._sent[1]
 
     def _submit(self, path: Path, chunk: Chunk) -> Future[Finished]:
@@ -178,3 +168,24 @@ class Pool:
         except BrokenProcessPool:
             self._drop()
             return None
+
+
+def send_problem(problem: Problem, folder: Path) -> Path:
+    """Store a problem in a private folder, where worker processes read it.
+
+    Raises
+    ------
+    ProblemError
+        If it cannot be pickled.
+    """
+    from cloudpickle import dumps
+
+    try:
+        data = dumps(problem)
+    except Exception as error:  # pickling calls code of the problem, which raises anything
+        msg = f"the problem cannot be sent to worker processes: {error}"
+        raise ProblemError(msg) from error
+    handle, name = tempfile.mkstemp(dir=folder, suffix=".problem")
+    with os.fdopen(handle, "wb") as file:
+        file.write(data)
+    return Path(name)

@@ -7,7 +7,9 @@ import pickle
 import signal
 import threading
 import time
+from multiprocessing.connection import Connection
 from pathlib import Path
+from typing import Any
 
 from threadpoolctl import threadpool_limits
 
@@ -15,6 +17,7 @@ from optimizer.dispatch import Chunk, Finished, evaluate_chunk
 from optimizer.errors import ProblemError
 from optimizer.problem import Problem
 
+READY = "ready"
 _PARENT_CHECK_S = 1.0
 _problems: dict[str, Problem] = {}
 
@@ -33,6 +36,36 @@ def evaluate_in_worker(path: str, chunk: Chunk) -> Finished:
     The file is read once for each problem; it lies in a private folder of the parent, so
     nothing foreign is unpickled.
     """
+    return evaluate_chunk(_problem(path), chunk)
+
+
+def serve_rows(pipe: Connection[Any, Any], parent: int, path: str) -> None:
+    """Evaluate one chunk after the other that comes through the pipe, until it is closed.
+
+    The process leads a group of its own, so that it can be killed with all it has started.
+    """
+    if hasattr(os, "setpgid"):
+        os.setpgid(0, 0)
+    start_worker(parent)
+    try:
+        problem = _problem(path)
+    except ProblemError as error:
+        pipe.send(error)
+        return
+    pipe.send(READY)
+    while True:
+        try:
+            chunk = pipe.recv()
+        except (EOFError, OSError):
+            return
+        try:
+            answer: Finished | ProblemError = evaluate_chunk(problem, chunk)
+        except ProblemError as error:
+            answer = error
+        pipe.send(answer)
+
+
+def _problem(path: str) -> Problem:
     problem = _problems.get(path)
     if problem is None:
         _problems.clear()
@@ -42,9 +75,7 @@ def evaluate_in_worker(path: str, chunk: Chunk) -> Finished:
             msg = f"the problem cannot be rebuilt in a worker process: {error}"
             raise ProblemError(msg) from error
         _problems[path] = problem
-    # A limit on the time of one evaluation belongs here, round this call: the worker is the
-    # place where an evaluation can be given up without harm to others.
-    return evaluate_chunk(problem, chunk)
+    return problem
 
 
 def _end_with(parent: int) -> None:
