@@ -16,6 +16,7 @@ from evaluators.machine.variables import VARIABLE_NAMES
 from optimizer.dispatch import Chunk, Dispatcher, Serial
 from optimizer.pool import Pool
 from optimizer.problem import Outcome, join_outcomes
+from studies.consent import require_consent
 from studies.errors import ResultsError, StudiesError
 from studies.inspection import Inspection, inspect_design
 from studies.layout import Results
@@ -101,7 +102,9 @@ class Chosen:
         return [item.text() for item in self.found.limits if row[f"margin:{item.name}"] > 0.0]
 
 
-def choose_design(results: Results, design: str, evaluator: str = "") -> Chosen:
+def choose_design(
+    results: Results, design: str, evaluator: str = "", allow_program: bool = False
+) -> Chosen:
     """Look up a design; `evaluator` names another than the study's.
 
     Raises
@@ -118,7 +121,7 @@ def choose_design(results: Results, design: str, evaluator: str = "") -> Chosen:
             f"{found.row['reason']}); choose a design with status ok"
         )
         raise ResultsError(msg)
-    problem = machine_problem(results.study, found.winding.family.id)
+    problem = machine_problem(results.study, found.winding.family.id, allow_program)
     return Chosen(results, found, with_evaluator(problem, evaluator))
 
 
@@ -136,8 +139,9 @@ def dispatcher_for(problem: MachineProblem, workers: int | None) -> Dispatcher:
     Raises
     ------
     StudiesError
-        If `workers` is below 1.
+        If `workers` is below 1, or a program would be started without consent.
     """
+    require_consent(problem)
     if workers is not None and workers < 1:
         msg = f"workers is {workers}; at least 1 is wanted"
         raise StudiesError(msg)

@@ -28,6 +28,7 @@ class MachineProblem:
     margin g, feasible at g <= 0: (value - limit) / scale for ``at_most``, (limit - value) / scale
     for ``at_least``, where scale is the size of the limit, or 1 for a limit of zero. The
     evaluator is built on first use in each process and does not travel between processes.
+    `allow_program` is the user's consent to start the program that the settings name, if any.
     """
 
     task: Task
@@ -36,6 +37,7 @@ class MachineProblem:
     limits: tuple[Limit, ...]
     evaluator_name: str
     evaluator_settings: dict[str, Any]
+    allow_program: bool = False
     _built: dict[str, interface.Evaluator] = field(default_factory=dict, repr=False, compare=False)
 
     @property
@@ -49,7 +51,7 @@ class MachineProblem:
         """
         if not self._built:
             self._built["evaluator"] = interface.build(
-                self.evaluator_name, self.task, self.evaluator_settings
+                self.evaluator_name, self.task, self.evaluator_settings, self.allow_program
             )
         return self._built["evaluator"]
 
@@ -127,7 +129,7 @@ def margin(limit: Limit, value: FloatArray) -> FloatArray:
     return np.asarray(over / limit.scale)
 
 
-def machine_problem(study: Study, family: str) -> MachineProblem:
+def machine_problem(study: Study, family: str, allow_program: bool = False) -> MachineProblem:
     """Problem of the family with this id."""
     bounds = study.bounds[family]
     return MachineProblem(
@@ -137,4 +139,5 @@ def machine_problem(study: Study, family: str) -> MachineProblem:
         limits=study.limits,
         evaluator_name=study.evaluator.name,
         evaluator_settings=dict(study.evaluator.settings),
+        allow_program=allow_program,
     )

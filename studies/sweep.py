@@ -15,6 +15,7 @@ from optimizer.lock import writer_lock
 from optimizer.pool import Pool
 from optimizer.progress import Settings, Summary
 from optimizer.runner import run
+from studies.consent import program_of, require_consent
 from studies.definition import Study
 from studies.errors import EXIT_NOTHING_FEASIBLE, EXIT_OK, StudiesError
 from studies.infeasible import explain
@@ -56,11 +57,20 @@ def counted(families: Sequence[str]) -> str:
     return "1 family" if len(families) == 1 else f"{len(families)} families"
 
 
-def problems_of(study: Study, families: Sequence[str]) -> dict[str, MachineProblem]:
-    """Problems of the families, checked against their evaluator before anything is spent."""
-    problems = {family: machine_problem(study, family) for family in families}
+def problems_of(
+    study: Study, families: Sequence[str], allow_program: bool = False
+) -> dict[str, MachineProblem]:
+    """Problems of the families, checked against their evaluator before anything is spent.
+
+    Raises
+    ------
+    StudiesError
+        If the evaluator lacks a metric, or would start a program without `allow_program`.
+    """
+    problems = {family: machine_problem(study, family, allow_program) for family in families}
     for problem in problems.values():
         problem.check()
+        require_consent(problem)
     return problems
 
 
@@ -123,6 +133,7 @@ def search_families(results: Results, problems: dict[str, MachineProblem], worke
         line.say(
             "Everything evaluated so far is stored. Go on with:\n  "
             + resume_command(results.folder, families, results.request.families)
+            + (" --allow-program" if any(map(program_of, problems.values())) else "")
         )
         return interruption.exit_code
     return _closing(line, results, summaries)

@@ -12,18 +12,24 @@ def check(study_file: str) -> None:
 
     Every mistake is reported at once, with its line and with what would be right.
     """
+    from studies.consent import program_of
     from studies.library import find_study
     from studies.problem import machine_problem
     from studies.tables import text_table
 
     study = find_study(study_file)
+    program = ""
     for family in study.families:
-        machine_problem(study, family).check()
+        problem = machine_problem(study, family)
+        problem.check()
+        program = program_of(problem)
     click.echo(f"{study.name}: {study.description or 'no description'}")
     click.echo(
         f"{len(study.families)} families, {study.search.evaluations_per_family:,} evaluations "
         f"each, seed {study.search.seed}, evaluator {study.evaluator.name}"
     )
+    if program:
+        click.echo(f"a sweep starts, only with --allow-program, for every design: {program}")
     rows = []
     for winding in study.windings:
         bounds = study.bounds[winding.family.id].values()

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import click
 
+from studies.commands.options import allow_program_option
 from studies.commands.sweep import LARGEST_BUDGET, MOST_WORKERS
 
 
@@ -16,6 +17,7 @@ from studies.commands.sweep import LARGEST_BUDGET, MOST_WORKERS
     help="Evaluations of each family from now on; more than before extends the search.",
 )
 @click.option("--workers", type=click.IntRange(1, MOST_WORKERS), help="Processes.")
+@allow_program_option
 @click.option(
     "--study",
     "study_file",
@@ -30,6 +32,7 @@ def resume(
     family: tuple[str, ...],
     budget: int | None,
     workers: int | None,
+    allow_program: bool,
     study_file: str,
 ) -> None:
     """Go on with a sweep that was stopped, or extend it with --budget.
@@ -40,6 +43,7 @@ def resume(
     from pathlib import Path
 
     from studies import sweep as room
+    from studies.consent import announce_program
     from studies.layout import open_results, save_request
 
     results = open_results(Path(results_folder))
@@ -54,13 +58,15 @@ def resume(
             "it.\n"
         )
     families = room.chosen_families(study, family or results.request.families)
-    problems = room.problems_of(study, families)
+    problems = room.problems_of(study, families, allow_program)
     if budget is not None:
         results = save_request(results, replace(results.request, evaluations_per_family=budget))
     wanted = tuple(
         item for item in study.families if item in families or item in results.request.families
     )
     results = save_request(results, replace(results.request, families=wanted))
+    if allow_program:
+        announce_program(problems.values())
     click.echo(
         f"{study.name}: {room.counted(families)}, "
         f"{results.request.evaluations_per_family:,} evaluations each, in {results.folder}"

@@ -4,6 +4,8 @@ from __future__ import annotations
 
 import click
 
+from studies.commands.options import allow_program_option
+
 
 @click.command()
 @click.argument("results_folder", metavar="RESULTS/STUDY", type=click.Path())
@@ -31,6 +33,7 @@ import click
 )
 @click.option("--seed", type=click.IntRange(0, 2**31 - 1), default=1, show_default=True)
 @click.option("--workers", type=click.IntRange(1, 256), help="Processes.")
+@allow_program_option
 @click.option(
     "--output", type=click.Path(file_okay=False), help="Write tables and pictures to this folder."
 )
@@ -44,6 +47,7 @@ def sensitivity(
     samples: int,
     seed: int,
     workers: int | None,
+    allow_program: bool,
     output: str | None,
     force: bool,
 ) -> None:
@@ -55,6 +59,7 @@ def sensitivity(
     from typing import cast
 
     from studies import chosen as designs
+    from studies.consent import announce_program
     from studies.errors import StudiesError
     from studies.export.files import write_folder
     from studies.layout import open_results
@@ -62,7 +67,10 @@ def sensitivity(
     from studies.sensitivity.indices import TooFewError
     from studies.sensitivity.tables import sensitivity_text
 
-    chosen = designs.choose_design(open_results(Path(results_folder)), design, evaluator)
+    results = open_results(Path(results_folder))
+    chosen = designs.choose_design(results, design, evaluator, allow_program)
+    if allow_program:
+        announce_program([chosen.problem], err=False)
     with designs.dispatcher_for(chosen.problem, workers) as dispatcher:
         try:
             found = room.sensitivity(

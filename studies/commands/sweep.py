@@ -4,6 +4,8 @@ from __future__ import annotations
 
 import click
 
+from studies.commands.options import allow_program_option
+
 LARGEST_BUDGET = 10_000_000
 MOST_WORKERS = 256
 
@@ -27,6 +29,7 @@ MOST_WORKERS = 256
     type=click.IntRange(1, MOST_WORKERS),
     help="Processes; by default one for each processor. The results do not depend on it.",
 )
+@allow_program_option
 @click.option("--seed", type=click.IntRange(0, 2**31 - 1), help="Seed of the search.")
 @click.pass_context
 def sweep(
@@ -36,6 +39,7 @@ def sweep(
     family: tuple[str, ...],
     budget: int | None,
     workers: int | None,
+    allow_program: bool,
     seed: int | None,
 ) -> None:
     """Search every family of a study and keep every evaluation.
@@ -46,12 +50,13 @@ def sweep(
     from pathlib import Path
 
     from studies import sweep as room
+    from studies.consent import announce_program
     from studies.layout import Request, create
     from studies.library import find_study
 
     study = find_study(study_file)
     families = room.chosen_families(study, family)
-    problems = room.problems_of(study, families)
+    problems = room.problems_of(study, families, allow_program)
     shipped = study.file.endswith(room.SHIPPED_MARK)
     request = Request(
         origin=study.file if shipped else str(Path(study.file).absolute()),
@@ -60,6 +65,8 @@ def sweep(
         seed=study.search.seed if seed is None else seed,
     )
     results = create(Path(results_folder), study, request)
+    if allow_program:
+        announce_program(problems.values())
     click.echo(
         f"{study.name}: {room.counted(families)}, {request.evaluations_per_family:,} evaluations "
         f"each, into {results.folder}"

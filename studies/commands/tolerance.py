@@ -4,6 +4,8 @@ from __future__ import annotations
 
 import click
 
+from studies.commands.options import allow_program_option
+
 NOTES = (
     "Each dimension scatters on its own; materials, fill and interference are shared by the "
     "machines of a lot. Latin hypercube sampling, seeded. Not included: a rotor out of centre, "
@@ -43,6 +45,7 @@ NOTES = (
 @click.option("--lots", type=click.IntRange(2, 10_000), help="By default a tenth of the machines.")
 @click.option("--seed", type=click.IntRange(0, 2**31 - 1), default=1, show_default=True)
 @click.option("--workers", type=click.IntRange(1, 256), help="Processes.")
+@allow_program_option
 @click.option("--json", "as_json", is_flag=True, help="Print JSON.")
 @click.option("--output", type=click.Path(file_okay=False), help="Write tables to this folder.")
 @click.option("--force", is_flag=True, help="Replace files that are there already.")
@@ -57,6 +60,7 @@ def tolerance(
     lots: int | None,
     seed: int,
     workers: int | None,
+    allow_program: bool,
     as_json: bool,
     output: str | None,
     force: bool,
@@ -70,13 +74,17 @@ def tolerance(
     from typing import cast
 
     from studies import chosen as designs
+    from studies.consent import announce_program
     from studies.errors import StudiesError
     from studies.layout import open_results
     from studies.tolerance import report
     from studies.tolerance.run import built_machines
     from studies.tolerance.scatter import Distribution, defaults, draw, overridden
 
-    chosen = designs.choose_design(open_results(Path(results_folder)), design, evaluator)
+    results = open_results(Path(results_folder))
+    chosen = designs.choose_design(results, design, evaluator, allow_program)
+    if allow_program:
+        announce_program([chosen.problem], err=as_json)
     scatters = overridden(defaults(chosen.task.materials), entries)
     if only:
         scatters = tuple(item for item in scatters if item.reason == "given")

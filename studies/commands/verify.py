@@ -4,6 +4,8 @@ from __future__ import annotations
 
 import click
 
+from studies.commands.options import allow_program_option
+
 
 @click.command()
 @click.argument("results_folder", metavar="RESULTS/STUDY", type=click.Path())
@@ -24,6 +26,7 @@ import click
     help="A setting of that evaluator, such as analysis=transient; repeatable.",
 )
 @click.option("--workers", type=click.IntRange(1, 256), help="Processes.")
+@allow_program_option
 @click.pass_context
 def verify(
     context: click.Context,
@@ -34,6 +37,7 @@ def verify(
     evaluator: str,
     settings: tuple[str, ...],
     workers: int | None,
+    allow_program: bool,
 ) -> None:
     """Evaluate stored designs again with another evaluator.
 
@@ -44,6 +48,7 @@ def verify(
     from pathlib import Path
 
     from studies import verification as room
+    from studies.consent import announce_program
     from studies.damage import report_damage
     from studies.errors import EXIT_NOTHING_FEASIBLE, StudiesError
     from studies.layout import open_results
@@ -53,7 +58,8 @@ def verify(
         raise StudiesError(msg)
     results = open_results(Path(results_folder))
     count = None if front else top or 10
-    made = room.plans(results, family, evaluator, room.read_settings(settings), count)
+    given = room.read_settings(settings)
+    made = room.plans(results, family, evaluator, given, count, allow_program)
     if not any(len(plan) for plan in made.plans):
         click.echo(
             f"{results.folder}: no design meets all limits, so there is nothing to verify; "
@@ -61,10 +67,13 @@ def verify(
             err=True,
         )
         context.exit(report_damage(made.damaged) or EXIT_NOTHING_FEASIBLE)
+    if allow_program:
+        announce_program(plan.problem for plan in made.plans)
     again = ["hovergap", "verify", str(results.folder)]
     again += ["--front"] if front else ["--top", str(count)]
     again += [word for item in family for word in ("--family", item)]
     again += ["--evaluator", evaluator] if evaluator != "finite_element" else []
     again += [word for item in settings for word in ("--setting", item)]
+    again += ["--allow-program"] if allow_program else []
     code = room.verify_all(results, made.plans, workers, shlex.join(again))
     context.exit(code or report_damage(made.damaged))

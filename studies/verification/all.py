@@ -37,6 +37,7 @@ def plans(
     evaluator: str,
     settings: Mapping[str, Any],
     count: int | None,
+    allow_program: bool = False,
 ) -> Plans:
     """Choose the designs and build the evaluators.
 
@@ -50,6 +51,8 @@ def plans(
         Of that evaluator.
     count : int or None
         Designs nearest to the ideal in each family, extremes besides; None for whole fronts.
+    allow_program : bool
+        The user's consent to start the program that the evaluator's settings name.
 
     Raises
     ------
@@ -70,7 +73,7 @@ def plans(
         if count is not None and rows.num_rows:
             rows = rows.take(pa.array(nearest_and_extreme(comparison, member, count)))
         problem = verifying_problem(
-            machine_problem(results.study, stored.family),
+            machine_problem(results.study, stored.family, allow_program),
             evaluator,
             settings,
             str(stored.reader.settings.get("evaluator_version", "")),
