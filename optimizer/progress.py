@@ -104,6 +104,8 @@ class Summary:
         Wall time of this run.
     stopped : bool
         Whether ``stop`` ended it before the budget was used.
+    ended : str
+        Which stop rule ended it before that, in words; empty if none did.
     damaged : tuple of Path
         Where parts that could not be read were set aside; their rows were evaluated again.
     folder : Path
@@ -122,3 +124,4 @@ class Summary:
     stopped: bool
     damaged: tuple[Path, ...]
     folder: Path
+    ended: str = ""

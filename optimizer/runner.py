@@ -24,6 +24,7 @@ from optimizer.progress import Progress, Settings, Summary
 from optimizer.schema import Rows
 from optimizer.search import DecompositionSearch
 from optimizer.snapshot import digest, read_snapshot, write_snapshot
+from optimizer.stopping import StopRules, Watch
 from optimizer.tally import Tally
 
 SNAPSHOT_INTERVAL_S = 10.0
@@ -36,6 +37,7 @@ def run(
     dispatcher: Dispatcher | None = None,
     progress: Callable[[Progress], None] | None = None,
     stop: Callable[[], bool] | None = None,
+    rules: StopRules | None = None,
 ) -> Summary:
     """Search a problem, or continue to, and keep every evaluation in an archive.
 
@@ -53,6 +55,9 @@ def run(
         Called with a :class:`Progress` several times a second, and at the end.
     stop : callable, optional
         Asked before each chunk is started; True lets the chunks in flight finish and ends.
+    rules : StopRules, optional
+        What ends the run before its budget is used. Rows found in the archive are never given
+        up: a rule is applied only where new ones would be added.
 
     Returns
     -------
@@ -93,6 +98,7 @@ def run(
     check_problem(problem)
     with Archive(Path(folder), problem, settings) as archive, single_threaded():
         session = _Session(problem, settings, archive, dispatcher or Serial(), progress, stop)
+        session.watch = Watch(rules or StopRules())
         session.resume()
         try:
             session.work()
@@ -120,7 +126,8 @@ class _Session:
         self._tally, self._digest = Tally(), ""
         self._end = max(settings.budget, archive.end)
         self._begun: Generation | None = None
-        self._stopped = False
+        self._stopped, self._ended = False, ""
+        self.watch = Watch(StopRules())
         self._saved_at, self._saved = time.monotonic(), -1
         self._meter = Meter(progress, self._end)
 
@@ -134,6 +141,7 @@ class _Session:
         try:
             search.restore(state)
             tally.restore(told["tally"])
+            self.watch.restore(told["watch"])
             wanted = str(told["digest"])
         except (KeyError, TypeError, ValueError, AttributeError):
             return  # of another version
@@ -151,6 +159,10 @@ class _Session:
         """Go through the generations until the budget is used, or until told to stop."""
         search = self._search
         while search.evaluations < self._end and not self._asked_to_stop():
+            if search.evaluations >= self._archive.end:
+                self._ended = self.watch.reason(search.evaluations, self._tally)
+                if self._ended:
+                    return
             generation = Generation(
                 search.generation,
                 search.evaluations,
@@ -169,6 +181,7 @@ class _Session:
             self._begun = None
             self._tally.add(generation.first + np.arange(len(generation)), outcome)
             self._digest = digest(self._digest, generation.x, outcome)
+            self.watch.told(search.generation, self._tally, search.front)
             self._meter.show(search.evaluations, self._tally, search.front)
             if time.monotonic() - self._saved_at > SNAPSHOT_INTERVAL_S:
                 self._archive.flush()  # the snapshot must not know more than the parts
@@ -199,6 +212,7 @@ class _Session:
             stopped=self._stopped,
             damaged=self._archive.damaged,
             folder=self._archive.folder,
+            ended=self._ended,
         )
 
     def _new_search(self) -> DecompositionSearch:
@@ -227,7 +241,8 @@ class _Session:
 
         def chunks() -> Iterator[Chunk]:
             for start in wanted:
-                if self._asked_to_stop():
+                self._ended = self.watch.overdue()
+                if self._ended or self._asked_to_stop():
                     return
                 yield Chunk(start, generation.x[start : start + size])
 
@@ -274,7 +289,11 @@ class _Session:
 
     def _save(self) -> None:
         if self._saved != self._search.generation:
-            told = {"tally": self._tally.values(), "digest": self._digest}
+            told = {
+                "tally": self._tally.values(),
+                "watch": self.watch.values(),
+                "digest": self._digest,
+            }
             write_snapshot(self._archive.folder, self._search.state(), told)
             self._saved = self._search.generation
         self._saved_at = time.monotonic()
