@@ -47,6 +47,7 @@ from optimizer.schema import (
     archive_schema,
     differences,
     from_table,
+    full_outcome,
     identity_of,
     join_rows,
     needed_columns,
@@ -134,6 +135,22 @@ class Archive:
     def complete(self, rows: int) -> bool:
         """Whether the first ``rows`` evaluations are all stored."""
         return len(self._place) >= rows and bool((self._place[:rows] >= 0).all())
+
+    def recall(self, evaluations: IntArray) -> Outcome:
+        """Return stored outcomes with all columns, in the order given.
+
+        Raises
+        ------
+        ArchiveError
+            If what is waiting cannot be written, or a row is not there.
+        """
+        self.flush()
+        table = open_archive(self.folder).rows_of(evaluations)
+        places = np.searchsorted(table["evaluation"].to_numpy(), evaluations)
+        if table.num_rows != len(np.unique(evaluations)):
+            msg = f"{self.folder}: rows stored before are gone; run the same command again"
+            raise ArchiveError(msg)
+        return full_outcome(table, self._problem).rows(places)
 
     def add(self, rows: Rows) -> None:
         """Take finished rows; they are written now, or together with others about a second later.

@@ -122,12 +122,16 @@ class ArchiveReader:
         ArchiveError
             If it is not there.
         """
-        found = self._retried(lambda: self._rows(np.array([evaluation])))
+        found = self.rows_of(np.array([evaluation]))
         if found.num_rows:
             values: dict[str, Any] = found.slice(0, 1).to_pylist()[0]
             return values
         msg = f"{self.folder} has no evaluation {evaluation}; it has {self.rows} rows"
         raise ArchiveError(msg)
+
+    def rows_of(self, evaluations: IntArray) -> pa.Table:
+        """Return all columns of those of some rows that are there, in order of ``evaluation``."""
+        return self._retried(lambda: self._rows(evaluations))
 
     def _rows(self, evaluations: IntArray) -> pa.Table:
         """Return all columns of some rows, without reading the other parts in full."""

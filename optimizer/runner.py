@@ -16,11 +16,12 @@ from pathlib import Path
 import numpy as np
 
 from optimizer.archive import Archive
-from optimizer.dispatch import Chunk, Dispatcher, Finished, Serial, single_threaded
+from optimizer.dispatch import Chunk, Dispatcher, Serial, single_threaded
 from optimizer.generation import Generation
 from optimizer.meter import Meter
-from optimizer.problem import IntArray, Outcome, Problem, check_problem
+from optimizer.problem import BoolArray, IntArray, Outcome, Problem, check_problem
 from optimizer.progress import Progress, Settings, Summary
+from optimizer.repeats import Repeats, as_repeat
 from optimizer.schema import Rows
 from optimizer.search import DecompositionSearch
 from optimizer.snapshot import digest, read_snapshot, write_snapshot
@@ -126,6 +127,7 @@ class _Session:
         self._tally, self._digest = Tally(), ""
         self._end = max(settings.budget, archive.end)
         self._begun: Generation | None = None
+        self._repeats = Repeats()
         self._stopped, self._ended = False, ""
         self.watch = Watch(StopRules())
         self._saved_at, self._saved = time.monotonic(), -1
@@ -147,11 +149,13 @@ class _Session:
             return  # of another version
         if not self._archive.complete(search.evaluations):
             return
-        chain = ""
+        chain, repeats = "", Repeats()
         for first in range(0, search.evaluations, search.size):
             _, x, outcome = self._archive.stored(first, search.size)
             chain = digest(chain, x, outcome)
+            repeats.sources(first, x)
         if chain == wanted:
+            self._repeats = repeats
             self._search, self._tally, self._digest = search, tally, chain
             self._saved = search.generation
 
@@ -173,7 +177,9 @@ class _Session:
             self._begun = generation
             present, x, outcome = self._archive.stored(generation.first, len(generation))
             generation.recall(present, x, outcome, str(self._archive.folder))
-            self._evaluate(generation)
+            sources = self._repeats.sources(generation.first, generation.x)
+            self._evaluate(generation, sources < 0)
+            self._repeat(generation, sources)
             if not generation.present.all():
                 return
             outcome = generation.outcome()
@@ -229,34 +235,56 @@ class _Session:
             self._stopped = True
         return self._stopped
 
-    def _evaluate(self, generation: Generation) -> None:
-        """Evaluate and store what is missing; a chunk is always evaluated as a whole.
+    def _evaluate(self, generation: Generation, fresh: BoolArray) -> None:
+        """Evaluate and store what is missing; the ``fresh`` rows of a chunk are always one call.
 
-        So its results do not depend on which rows of it are missing, or lie below the budget.
+        So its results do not depend on which of them are missing, or lie below the budget.
         """
         size = self._settings.chunk
-        wanted = dict(generation.chunks(size, self._end))
+        wanted = {
+            start: rows[fresh[rows]]
+            for start, rows in generation.chunks(size, self._end)
+            if fresh[rows].any()
+        }
         if not wanted:
             return
+        called = {start: _within(fresh, start, size) for start in wanted}
 
         def chunks() -> Iterator[Chunk]:
-            for start in wanted:
+            for start, rows in called.items():
                 self._ended = self.watch.overdue()
                 if self._ended or self._asked_to_stop():
                     return
-                yield Chunk(start, generation.x[start : start + size])
+                yield Chunk(start, generation.x[rows])
 
         self._meter.start()
         for finished in self._dispatcher.run(self._problem, chunks()):
             rows = wanted[finished.start]
-            self._store(generation, rows, finished)
-            told = self._search.evaluations + int(generation.present.sum())
-            self._meter.show(told, self._tally, self._search.front)
+            outcome, time_s = finished.outcome, finished.seconds / len(finished.outcome)
+            if len(rows) < len(outcome):
+                outcome = outcome.rows(np.searchsorted(called[finished.start], rows))
+            self._store(generation, rows, outcome, time_s, finished.finished_at)
 
-    def _store(self, generation: Generation, rows: IntArray, finished: Finished) -> None:
-        outcome, time_s = finished.outcome, finished.seconds / len(finished.outcome)
-        if len(rows) < len(outcome):
-            outcome = outcome.rows(rows - finished.start)
+    def _repeat(self, generation: Generation, sources: IntArray) -> None:
+        """Answer designs that were evaluated before from the archive."""
+        numbers = generation.first + np.arange(len(generation))
+        missing = ~generation.present & (sources >= 0) & (numbers < self._end)
+        here = sources - generation.first
+        inside = here >= 0
+        missing[inside] &= generation.present[here[inside]]  # or a stop came before its source
+        rows = np.flatnonzero(missing)
+        if len(rows):
+            outcome = as_repeat(self._archive.recall(sources[rows]), sources[rows])
+            self._store(generation, rows, outcome, 0.0, time.time_ns() // 1000)
+
+    def _store(
+        self,
+        generation: Generation,
+        rows: IntArray,
+        outcome: Outcome,
+        time_s: float,
+        finished_at: int,
+    ) -> None:
         generation.fill(rows, outcome)
         self._meter.evaluated(len(rows))
         self._archive.add(
@@ -266,9 +294,11 @@ class _Session:
                 generation.x[rows],
                 outcome,
                 np.full(len(rows), time_s),
-                np.full(len(rows), finished.finished_at),
+                np.full(len(rows), finished_at),
             )
         )
+        told = self._search.evaluations + int(generation.present.sum())
+        self._meter.show(told, self._tally, self._search.front)
 
     def _untold(self) -> Iterator[tuple[IntArray, Outcome]]:
         """Rows known but not told: of the generation begun, and of an archive not read to the end.
@@ -297,3 +327,8 @@ class _Session:
             write_snapshot(self._archive.folder, self._search.state(), told)
             self._saved = self._search.generation
         self._saved_at = time.monotonic()
+
+
+def _within(fresh: BoolArray, start: int, size: int) -> IntArray:
+    """Fresh rows among ``size`` from ``start`` on."""
+    return np.asarray(start + np.flatnonzero(fresh[start : start + size]))

@@ -215,3 +215,15 @@ def from_table(table: pa.Table, problem: Problem) -> tuple[IntArray, FloatArray,
     )
     evaluations = table.column("evaluation").to_numpy().astype(np.int64)
     return evaluations, matrix([v.name for v in problem.variables]), outcome
+
+
+def full_outcome(table: pa.Table, problem: Problem) -> Outcome:
+    """Return the outcomes of a table with reasons and further columns."""
+    _, _, bare = from_table(table, problem)
+    return Outcome(
+        bare.objectives,
+        bare.constraints,
+        bare.status,
+        np.asarray(table.column("reason").to_pylist(), dtype=np.str_),
+        {c.name: table.column(c.name).to_numpy(zero_copy_only=False) for c in problem.columns},
+    )
