@@ -142,7 +142,7 @@ class Rotor:
             (NU_0, np.log(self.bore_radius / self.sleeve_radius)),
         )
 
-    def _particular(self, order: FloatArray, radius: FloatArray) -> tuple[FloatArray, FloatArray]:
+    def particular(self, order: FloatArray, radius: FloatArray) -> tuple[FloatArray, FloatArray]:
         """Value and r times slope of the solution of A'' + A'/r - n^2 A/r^2 = -1/r."""
         one = order == 1.0
         divisor = np.where(one, 1.0, order**2 - 1.0)
@@ -160,9 +160,9 @@ class Rotor:
         """
         nu = NU_0 / self.magnet_permeability
         inner, outer = self.iron_radius[-1], self.magnet_radius
-        value, slope = self._particular(order, inner)
+        value, slope = self.particular(order, inner)
         offset = core * p * value - nu * (p * slope + direct * inner)
-        value, slope = self._particular(order, outer)
+        value, slope = self.particular(order, outer)
         y = across_ring(core, order, nu, self._magnet_width)
         carried = offset * _damping(core, order, nu, self._magnet_width)
         return offset, carried + nu * (p * slope + direct * outer) - y * p * value
@@ -239,8 +239,8 @@ class Rotor:
         a = potential
         for nu_ring, width, y_inner, s_inner in reversed(rings):
             a = _inwards(a, order, nu_ring, width, y_inner, s_inner)
-        outer_value, _ = self._particular(order, self.magnet_radius)
-        inner_value, _ = self._particular(order, self.iron_radius[-1])
+        outer_value, _ = self.particular(order, self.magnet_radius)
+        inner_value, _ = self.particular(order, self.iron_radius[-1])
         general_outer = a - p * outer_value
         general_inner = _inwards(general_outer, order, nu, self._magnet_width, core, offset)
         iron = np.empty(responses.shape, dtype=np.complex128)
@@ -257,49 +257,6 @@ class Rotor:
             surface_radial=1j * order * a / self.magnet_radius,
             surface_field=rings[0][2] * a + rings[0][3],
         )
-
-    def profile(
-        self,
-        orders: IntArray,
-        reluctivity: FloatArray,
-        radial: FloatArray,
-        tangential: FloatArray,
-        potential: ComplexArray,
-        points: int = 12,
-    ) -> tuple[FloatArray, ComplexArray]:
-        """Radii (k, n) from shaft to bore and the potential there, (k, m, n); see `inside`.
-
-        Magnets and gap are sampled at `points` radii each, iron at the faces of its rings.
-        """
-        order = np.asarray(orders, dtype=np.float64)[:, None]
-        inside = self.inside(orders, reluctivity, radial, tangential, potential)
-        inner, outer = self.iron_radius[-1], self.magnet_radius
-        nu = NU_0 / self.magnet_permeability
-        strength, direct = 0.5 * (tangential + order * radial), 0.5 * tangential
-        core = inside.iron_response[-1]
-        offset = -1j * self._magnet_source(order, core, strength, direct)[0]
-        particular = -1j * strength
-        general = inside.core - particular * self._particular(order, inner)[0]
-        rise = (core * general + offset) / (nu * order)
-        radii, values = [np.zeros_like(inner)], [np.zeros_like(inside.core)]
-        radii += list(self.iron_radius)
-        values += list(inside.iron)
-        for share in np.arange(1, points + 1) / points:
-            r = inner + share * (outer - inner)
-            x = order * np.log(r / inner)
-            radii.append(r)
-            values.append(
-                general * np.cosh(x)
-                + rise * np.sinh(x)
-                + particular * self._particular(order, r)[0]
-            )
-        surface, field = values[-1], inside.surface_field
-        for share in np.arange(1, points + 1) / points:
-            r = outer + share * (self.bore_radius - outer)
-            x = order * np.log(r / outer)
-            radii.append(r)
-            values.append(surface * np.cosh(x) + field / (NU_0 * order) * np.sinh(x))
-        return np.array(radii), np.array(values)
 
 
 def _inwards(
