@@ -112,7 +112,7 @@ def search_families(results: Results, problems: dict[str, MachineProblem], worke
                 summary = run(
                     problem,
                     results.family_folder(family),
-                    _settings(results, problem),
+                    search_settings(results, problem),
                     dispatcher,
                     line.show,
                     interruption,
@@ -178,7 +178,8 @@ def changes_since_frozen(results: Results, file: str) -> list[str]:
     return changes(results.study.content, content)
 
 
-def _settings(results: Results, problem: MachineProblem) -> Settings:
+def search_settings(results: Results, problem: MachineProblem) -> Settings:
+    """How the archive of one family is searched."""
     study, evaluator, family = results.study, problem.evaluator, problem.task.winding.family
     return Settings(
         budget=results.request.evaluations_per_family,

@@ -48,36 +48,9 @@ def new(
     study_file: str, power: float, speed: float, dc_link: float, overspeed: float, orientation: str
 ) -> None:
     """Write a commented study sized from power, speed and DC link."""
-    from studies.crosschecks import check_name
-    from studies.definition import study_from
-    from studies.errors import StudiesError, StudyFileError
-    from studies.template import study_text
+    from studies.beginning import begin_study
 
-    file = Path(study_file)
-    name = file.name.removesuffix(".toml")
-    wrong = check_name(name)
-    if wrong or file.suffix != ".toml":
-        problem = wrong[0].problem if wrong else "has no .toml ending"
-        msg = (
-            f"{study_file!r}: the file name, which names the study, {problem}; write for example "
-            "blower.toml"
-        )
-        raise StudiesError(msg)
-    text = study_text(name, power, speed, dc_link, overspeed, orientation)
-    try:
-        study = study_from(text.encode(), study_file)
-    except StudyFileError as error:
-        msg = (
-            f"no sensible machine of {power:g} kW at {speed:g} r/min came out of the first-order "
-            f"sizing:\n{error}"
-        )
-        raise StudiesError(msg) from None
-    try:
-        with file.open("x", encoding="utf-8") as stream:
-            stream.write(text)
-    except FileExistsError:
-        msg = f"{study_file}: exists already and is left alone; choose another name"
-        raise StudiesError(msg) from None
+    study = begin_study(Path(study_file), power, speed, dc_link, overspeed, orientation)
     click.echo(
         f"wrote {study_file}: {len(study.families)} families, "
         f"{study.search.evaluations_per_family:,} evaluations each.\n"

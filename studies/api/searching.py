@@ -1,0 +1,181 @@
+"""Studies written, loaded and searched."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from dataclasses import replace
+from pathlib import Path
+
+import pyarrow as pa
+
+from optimizer.dispatch import Dispatcher, Serial
+from optimizer.lock import writer_lock
+from optimizer.pool import Pool
+from optimizer.progress import Progress, Summary
+from optimizer.runner import run
+from studies import sweep as room
+from studies.api.tables import Folder, table_of
+from studies.beginning import begin_study
+from studies.definition import Study
+from studies.layout import Request, Results, create, open_results, save_request
+from studies.library import find_study
+from studies.problem import MachineProblem
+
+Watch = Callable[[str, Progress], None]
+Stop = Callable[[], bool]
+
+
+def load_study(study: str | Path) -> Study:
+    """Read and check a study file, or the shipped study of that name.
+
+    Raises
+    ------
+    StudiesError
+        If there is none; `StudyFileError` with every mistake if it is wrong.
+
+    Examples
+    --------
+    >>> load_study("compressor").name
+    'compressor'
+    """
+    return find_study(str(study))
+
+
+def new_study(
+    file: str | Path,
+    power_kW: float = 11.0,
+    speed_rpm: float = 48_000.0,
+    dc_link_V: float = 560.0,
+    overspeed_ratio: float = 1.2,
+    orientation: str = "horizontal",
+) -> Study:
+    """Write a commented study to start from, sized from power, speed and DC link.
+
+    Raises
+    ------
+    StudiesError
+        If the file is there already, its name will not do, or no sensible machine comes out.
+    """
+    return begin_study(Path(file), power_kW, speed_rpm, dc_link_V, overspeed_ratio, orientation)
+
+
+def sweep(
+    study: Study | str | Path,
+    results: Folder = "results",
+    *,
+    families: Sequence[str] = (),
+    evaluations: int | None = None,
+    seed: int | None = None,
+    workers: int | None = None,
+    allow_program: bool = False,
+    progress: Watch | None = None,
+    stop: Stop | None = None,
+) -> pa.Table:
+    """Search families of a study and keep every evaluation, as ``hovergap sweep`` does.
+
+    Parameters
+    ----------
+    study : Study, str or path
+    results : path
+        Folder in which the study gets a folder of its own.
+    families : sequence of str
+        Empty for all.
+    evaluations, seed : int, optional
+        Instead of the study's.
+    workers : int, optional
+        Processes; by default one for each processor. The results do not depend on it.
+    allow_program : bool
+        Consent to start the program that the evaluator's settings name.
+    progress : callable, optional
+        Called with the family and its `optimizer.progress.Progress` several times a second.
+    stop : callable, optional
+        Asked often; True lets the designs in hand finish, stores them and ends.
+
+    Returns
+    -------
+    pyarrow.Table
+        One row a family searched: family, evaluations, new, feasible, failed, front_size,
+        hypervolume, seconds, stopped.
+
+    Raises
+    ------
+    StudiesError, optimizer.errors.OptimizerError, evaluators.interface.EvaluatorError
+        As the command says it.
+    """
+    wanted = study if isinstance(study, Study) else load_study(study)
+    chosen = room.chosen_families(wanted, families)
+    problems = room.problems_of(wanted, chosen, allow_program)
+    shipped = wanted.file.endswith(room.SHIPPED_MARK)
+    request = Request(
+        origin=wanted.file if shipped else str(Path(wanted.file).absolute()),
+        families=chosen,
+        evaluations_per_family=evaluations or wanted.search.evaluations_per_family,
+        seed=wanted.search.seed if seed is None else seed,
+    )
+    return _search(create(Path(results), wanted, request), problems, workers, progress, stop)
+
+
+def resume(
+    folder: Folder,
+    *,
+    families: Sequence[str] = (),
+    evaluations: int | None = None,
+    workers: int | None = None,
+    allow_program: bool = False,
+    progress: Watch | None = None,
+    stop: Stop | None = None,
+) -> pa.Table:
+    """Go on with a sweep that was stopped, or extend it with more `evaluations`.
+
+    Parameters and result as of `sweep`; `folder` is the results folder of the study.
+    """
+    results = open_results(Path(folder))
+    study = results.study
+    chosen = room.chosen_families(study, families or results.request.families)
+    problems = room.problems_of(study, chosen, allow_program)
+    request = results.request
+    if evaluations is not None:
+        request = replace(request, evaluations_per_family=evaluations)
+    searched = tuple(name for name in study.families if name in {*chosen, *request.families})
+    results = save_request(results, replace(request, families=searched))
+    return _search(results, problems, workers, progress, stop)
+
+
+def _search(
+    results: Results,
+    problems: dict[str, MachineProblem],
+    workers: int | None,
+    progress: Watch | None,
+    stop: Stop | None,
+) -> pa.Table:
+    count = workers or room.usable_workers()
+    dispatcher: Dispatcher = Serial() if count == 1 else Pool(count)
+    rows = []
+    with writer_lock(results.folder), dispatcher:
+        for family, problem in problems.items():
+
+            def watch(state: Progress, family: str = family) -> None:
+                if progress is not None:
+                    progress(family, state)
+
+            summary = run(
+                problem,
+                results.family_folder(family),
+                room.search_settings(results, problem),
+                dispatcher,
+                watch,
+                stop,
+            )
+            rows.append(_row(family, summary))
+            if summary.stopped:
+                break
+    return table_of(rows)
+
+
+def _row(family: str, summary: Summary) -> dict[str, object]:
+    names = ("evaluations", "new", "feasible", "failed", "front_size", "hypervolume", "seconds")
+    return {
+        "family": family,
+        **{name: getattr(summary, name) for name in names},
+        "stopped": summary.stopped,
+    }
