@@ -13,6 +13,7 @@ from studies.commands.choose import choose
 from studies.commands.compare import compare
 from studies.commands.export import export
 from studies.commands.families import families
+from studies.commands.field import field
 from studies.commands.inspect import inspect
 from studies.commands.materials import materials
 from studies.commands.metrics import metrics
@@ -112,6 +113,7 @@ for _command in (
     verify,
     report,
     sheet,
+    field,
     inspect,
     choose,
     export,
