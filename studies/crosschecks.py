@@ -240,3 +240,22 @@ def check_material(kind: str, name: str, known: Iterable[str], key: str) -> list
     problem = unknown(kind.replace("_", " "), name)
     remedy = suggest(name, names, f"`hovergap materials` lists all, such as {names[0]!r}")
     return [Finding(("materials", key), problem, remedy)]
+
+
+LEAST_SHARE = 100  # evaluations a family needs on average before it can be judged
+
+
+def check_search(table: object, families: int) -> list[Finding]:
+    """Mistakes in [search] that its keys alone do not show."""
+    if not isinstance(table, dict):
+        return []
+    found = []
+    if "stagnation_gain" in table and "stagnation_generations" not in table:
+        problem = "has no effect without stagnation_generations"
+        found.append(Finding(("search", "stagnation_gain"), problem, "state both or leave it out"))
+    total = table.get("total_evaluations")
+    if isinstance(total, int) and 0 < total < LEAST_SHARE * families:
+        problem = f"is too few for {families} families (got {total})"
+        remedy = f"give at least {LEAST_SHARE * families}, or leave out families"
+        found.append(Finding(("search", "total_evaluations"), problem, remedy))
+    return found

@@ -34,6 +34,7 @@ from studies.crosschecks import (
     check_material,
     check_name,
     check_objectives,
+    check_search,
 )
 from studies.errors import Finding, StudyFileError, quoted
 from studies.family_choice import FamilyChoice, check_families
@@ -210,6 +211,7 @@ class _Reader:
         search = self._section("search", SearchSection)
         evaluator = self._evaluator(self._section("evaluator", EvaluatorSection))
         families = self._families()
+        self.findings += check_search(self.table.get("search"), len(families.windings))
         bounds = self._bounds(families)
         limits = self._limits()
         objectives: tuple[Objective, ...] = ()

@@ -11,6 +11,7 @@ from typing import Any, Literal
 from pydantic import Field
 
 from evaluators.machine.task import Conditions, Construction, Duty, RippleWeights
+from optimizer.stopping import DEFAULT_GAIN
 from studies.schema_base import KILO, MEGA, MILLI, Section
 from studies.schema_machine import CoolingSection, FaultSection, RotorSection
 
@@ -270,6 +271,43 @@ class SearchSection(Section):
         "workers in such pieces",
     )
     seed: int = Field(1, ge=0, le=2**31 - 1, description="seed of the search")
+    total_evaluations: int | None = Field(
+        None,
+        ge=1,
+        le=1_000_000_000,
+        description="designs evaluated in all families together; families without prospects make "
+        "room for the others, and evaluations_per_family is the most one gets",
+    )
+    stagnation_generations: int | None = Field(
+        None,
+        ge=1,
+        le=1_000_000,
+        description="generations of little gain in hypervolume that end a family",
+    )
+    stagnation_gain: float = Field(
+        DEFAULT_GAIN,
+        ge=0.0,
+        le=10.0,
+        description="relative gain in hypervolume over those generations that counts as little",
+    )
+    feasible_within: int | None = Field(
+        None,
+        ge=1,
+        le=10_000_000,
+        description="evaluations without a feasible design that end a family",
+    )
+    wall_time_min: float | None = Field(
+        None,
+        ge=0.001,
+        le=1e7,
+        description="longest duration of one sweep or resume, shared among the families",
+    )
+    time_limit_s: float | None = Field(
+        None,
+        ge=0.01,
+        le=1e7,
+        description="longest duration of one evaluation; designs are then evaluated one by one",
+    )
 
 
 class EvaluatorSection(Section):

@@ -6,6 +6,7 @@ from typing import Any
 
 from optimizer.errors import ArchiveError, ArchiveLockedError
 from optimizer.lock import LOCK_NAME, writer_lock
+from studies.ended import ended_families
 from studies.layout import Results
 from studies.stored import stored_families
 
@@ -14,6 +15,7 @@ def study_status(results: Results) -> dict[str, Any]:
     """State of every family as values of JSON."""
     budget = results.request.evaluations_per_family
     stored = {item.family: item for item in stored_families(results)}
+    notes = ended_families(results)
     families: list[dict[str, Any]] = []
     damaged: list[str] = []
     for family in results.study.families:
@@ -25,6 +27,7 @@ def study_status(results: Results) -> dict[str, Any]:
             "feasible": 0,
             "failed": 0,
             "front_size": 0,
+            "ended": False,
             "state": "not begun" if wanted else "left out",
         }
         if family in stored:
@@ -36,11 +39,14 @@ def study_status(results: Results) -> dict[str, Any]:
                 "front_size": stored[family].front.num_rows,
                 "state": "complete" if evaluations >= budget else "begun",
             }
+            note = notes.get(family)
+            if note is not None and evaluations == note.evaluations < budget:
+                entry |= {"state": note.state, "ended": note.final}
             damaged += [str(path) for path in stored[family].reader.damaged]
         families.append(entry)
     if being_written(results):
         state = "being searched now"
-    elif all(entry["state"] in ("complete", "left out") for entry in families):
+    elif all(entry["state"] in ("complete", "left out") or entry["ended"] for entry in families):
         state = "complete"
     else:
         state = f"to be continued with: hovergap resume {results.folder}"

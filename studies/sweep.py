@@ -10,11 +10,8 @@ import tomllib
 from collections.abc import Sequence
 from pathlib import Path
 
-from optimizer.dispatch import Dispatcher, Serial
 from optimizer.lock import writer_lock
-from optimizer.pool import Pool
 from optimizer.progress import Settings, Summary
-from optimizer.runner import run
 from studies.consent import program_of, require_consent
 from studies.definition import Study
 from studies.errors import EXIT_NOTHING_FEASIBLE, EXIT_OK, StudiesError
@@ -24,6 +21,7 @@ from studies.layout import Results, changes
 from studies.library import shipped
 from studies.problem import MachineProblem, machine_problem
 from studies.progress import ProgressLine, duration
+from studies.spending import SPENDING_KEYS, Spending, dispatcher_of
 from studies.suggestions import suggest
 from studies.tables import number, percent, text_table
 
@@ -75,13 +73,14 @@ def problems_of(
 
 
 def study_digest(study: Study) -> str:
-    """SHA-256 of what decides the results: the study without its description and its budget.
+    """SHA-256 of what decides the results: the study without its description and its budgets.
 
     Comments and layout do not count, so they may be edited in the frozen copy too.
     """
     table = tomllib.loads(study.content.decode("utf-8-sig"))
     table["study"].pop("description", None)
-    table.get("search", {}).pop("evaluations_per_family", None)
+    for key in SPENDING_KEYS:
+        table.get("search", {}).pop(key, None)
     for key in ("list", "slots", "pole_pairs"):  # each family has its own archive
         table["families"].pop(key, None)
     text = json.dumps(table, sort_keys=True)
@@ -104,30 +103,31 @@ def search_families(results: Results, problems: dict[str, MachineProblem], worke
     families = tuple(problems)
     line = ProgressLine(families)
     summaries: dict[str, Summary] = {}
-    dispatcher: Dispatcher = Serial() if workers == 1 else Pool(workers)
+    dispatcher = dispatcher_of(results.study, workers)
     with Interruption() as interruption, writer_lock(results.folder), dispatcher:
+        spending = Spending(
+            results,
+            problems,
+            lambda problem: search_settings(results, problem),
+            dispatcher,
+            line.begin,
+            line.show,
+            interruption,
+        )
         try:
-            for family, problem in problems.items():
-                line.begin(family)
-                summary = run(
-                    problem,
-                    results.family_folder(family),
-                    search_settings(results, problem),
-                    dispatcher,
-                    line.show,
-                    interruption,
-                )
+            for family, summary in spending.families():
                 summaries[family] = summary
                 line.say(_family_text(family, summary))
-                if summary.stopped:
-                    break
         except KeyboardInterrupt:
             line.say("stopped at once; the designs in hand were given up")
         unfinished = [
             family
             for family in families
             if family not in summaries
-            or summaries[family].evaluations < results.request.evaluations_per_family
+            or (
+                summaries[family].evaluations < results.request.evaluations_per_family
+                and not summaries[family].ended
+            )
         ]
     if interruption.asked and unfinished:
         line.say(
@@ -204,6 +204,8 @@ def _family_text(family: str, summary: Summary) -> str:
         f"{percent(summary.feasible / max(1, summary.evaluations))}, failed {summary.failed:,}, "
         f"front {summary.front_size}, hypervolume {number(summary.hypervolume)}"
     )
+    if summary.ended and summary.evaluations < summary.budget:
+        text += f"\n{family}: ended early: {summary.ended}"
     for path in summary.damaged:
         text += f"\n{family}: a damaged part was set aside as {path}; its rows were evaluated again"
     return text

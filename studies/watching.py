@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 from optimizer.fronts import Front
 from optimizer.lock import WRITER_NAME
 from optimizer.parts import DamagedPartError, part_paths, read_part
+from studies.ended import ended_families
 from studies.layout import Results
 from studies.progress import duration
 from studies.stored import matrix
@@ -116,8 +117,18 @@ class StudyWatch:
 
     @property
     def complete(self) -> bool:
-        """Whether every family has its evaluations."""
-        return all(item.evaluations >= self.budget for item in self.families)
+        """Whether every family has its evaluations or was ended before."""
+        notes = ended_families(self.results)
+        ended = {
+            item.family
+            for item in self.families
+            if item.family in notes
+            and notes[item.family].final
+            and notes[item.family].evaluations == item.evaluations
+        }
+        return all(
+            item.evaluations >= self.budget or item.family in ended for item in self.families
+        )
 
     def refresh(self) -> None:
         """Read what is new."""
