@@ -8,11 +8,8 @@ from pathlib import Path
 
 import pyarrow as pa
 
-from optimizer.dispatch import Dispatcher, Serial
 from optimizer.lock import writer_lock
-from optimizer.pool import Pool
 from optimizer.progress import Progress, Summary
-from optimizer.runner import run
 from studies import sweep as room
 from studies.api.tables import Folder, table_of
 from studies.beginning import begin_study
@@ -20,6 +17,7 @@ from studies.definition import Study
 from studies.layout import Request, Results, create, open_results, save_request
 from studies.library import find_study
 from studies.problem import MachineProblem
+from studies.spending import Spending, dispatcher_of
 
 Watch = Callable[[str, Progress], None]
 Stop = Callable[[], bool]
@@ -95,7 +93,8 @@ def sweep(
     -------
     pyarrow.Table
         One row a family searched: family, evaluations, new, feasible, failed, front_size,
-        hypervolume, seconds, stopped.
+        hypervolume, seconds, stopped, ended (why it got fewer evaluations than
+        wanted, empty if it got them).
 
     Raises
     ------
@@ -149,26 +148,28 @@ def _search(
     stop: Stop | None,
 ) -> pa.Table:
     count = workers or room.usable_workers()
-    dispatcher: Dispatcher = Serial() if count == 1 else Pool(count)
-    rows = []
+    searched = ""
+
+    def begin(family: str) -> None:
+        nonlocal searched
+        searched = family
+
+    def show(state: Progress) -> None:
+        if progress is not None:
+            progress(searched, state)
+
+    dispatcher = dispatcher_of(results.study, count)
     with writer_lock(results.folder), dispatcher:
-        for family, problem in problems.items():
-
-            def watch(state: Progress, family: str = family) -> None:
-                if progress is not None:
-                    progress(family, state)
-
-            summary = run(
-                problem,
-                results.family_folder(family),
-                room.search_settings(results, problem),
-                dispatcher,
-                watch,
-                stop,
-            )
-            rows.append(_row(family, summary))
-            if summary.stopped:
-                break
+        spending = Spending(
+            results,
+            problems,
+            lambda problem: room.search_settings(results, problem),
+            dispatcher,
+            begin,
+            show,
+            stop or (lambda: False),
+        )
+        rows = [_row(family, summary) for family, summary in spending.families()]
     return table_of(rows)
 
 
@@ -178,4 +179,5 @@ def _row(family: str, summary: Summary) -> dict[str, object]:
         "family": family,
         **{name: getattr(summary, name) for name in names},
         "stopped": summary.stopped,
+        "ended": summary.ended,
     }
