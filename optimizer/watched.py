@@ -240,10 +240,13 @@ class _Worker:
 
     def kill(self) -> None:
         """End it and what it started, whatever they are doing."""
-        try:
-            os.killpg(self.process.pid, signal.SIGKILL)
-        except (OSError, AttributeError):  # has no group yet, or this system has none
-            self.process.kill()
+        if hasattr(os, "killpg"):
+            with contextlib.suppress(ProcessLookupError):  # has no group yet
+                os.killpg(self.process.pid, signal.SIGKILL)
+            with contextlib.suppress(ProcessLookupError):
+                os.kill(self.process.pid, signal.SIGKILL)
+        else:
+            self.process.terminate()
         self.process.join()
         self.pipe.close()
 
@@ -252,8 +255,7 @@ class _Worker:
         self.pipe.close()
         self.process.join(_GRACE_S)
         if self.process.is_alive():
-            self.process.kill()
-            self.process.join()
+            self.kill()
 
 
 def _blank(problem: Problem, reason: str, status: str, seconds: float) -> Finished:

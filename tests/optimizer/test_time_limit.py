@@ -167,10 +167,38 @@ def test_the_rest_of_a_run_and_its_archive_do_not_depend_on_the_workers(tmp_path
     assert [word == "timed out" for word in status] == [400.0 <= value <= 410.0 for value in x]
 
 
+def test_a_caller_that_ends_early_leaves_nobody_at_work() -> None:
+    def hang(x: np.ndarray) -> None:
+        if x[0] > 4.0:
+            time.sleep(3600.0)
+
+    with WatchedPool(2, 3600.0) as pool:
+        work = pool.run(Cubes(hang), chunks())
+        next(work)
+        crew = [worker.process.pid for worker in pool._crew]
+        work.close()  # also workers that have only just been started
+        assert not any(_alive(pid) for pid in crew if pid not in _pids(pool))
+        assert_only(by_row(pool.run(Cubes(), chunks())), {})
+    assert not any(_alive(pid) for pid in crew)
+
+
+def test_a_worker_can_be_killed_as_soon_as_it_is_started() -> None:
+    with WatchedPool(1, LONGEST_S) as pool:
+        pool._take(Cubes())
+        worker = pool._crew[0]
+        worker.kill()  # before it has a group of its own
+        assert not worker.process.is_alive()
+        assert_only(by_row(pool.run(Cubes(), chunks())), {})
+
+
 def test_arguments_out_of_range_are_refused() -> None:
     for workers, limit in ((0, 1.0), (1, 0.0), (1, -1.0), (1, float("nan")), (1, float("inf"))):
         with pytest.raises(ProblemError, match="is wanted"):
             WatchedPool(workers, limit)
+
+
+def _pids(pool: WatchedPool) -> set[int]:
+    return {worker.process.pid for worker in pool._crew}
 
 
 def _alive(pid: int) -> bool:
