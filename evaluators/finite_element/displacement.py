@@ -22,6 +22,7 @@ from evaluators.finite_element.lanes import LANES
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
+IntArray = NDArray[np.int64]
 
 NU_0 = 1.0 / (4e-7 * np.pi)
 
@@ -36,40 +37,19 @@ def stiffness(
 
     Mean of displacements along x and y.
     """
-    model = batch.model
-    sector = model.symmetry.suspension
     radius = batch.sections.bore_radius
+    sector = batch.model.symmetry.suspension
     highest = batch.highest_wave
     waves = solution.waves
-    potential = stress.spread(waves.orders, waves.potential[positions], highest + 1)
-    tangential = stress.spread(waves.orders, waves.tangential[positions], highest + 1)
-    field = stress.rotating(potential[:, 1:-1], tangential[:, 1:-1], radius)
-
-    orders = batch.gap.class_orders(sector)
-    orders = orders[orders <= highest]
-    middle = highest + 1
-    n = orders[:, None]
+    field = stress.rotating(
+        stress.spread(waves.orders, waves.potential[positions], highest),
+        stress.spread(waves.orders, waves.tangential[positions], highest),
+        radius,
+    )
+    orders, shifts = shifted_sources(batch, solution, positions)
     y = batch.response[orders]
-    above_a, above_h = potential[:, middle + orders + 1], tangential[:, middle + orders + 1]
-    below_a, below_h = potential[:, middle + orders - 1], tangential[:, middle + orders - 1]
-    rising = 0.5 * (above_a * (n + 1) + above_h / NU_0)
-    falling = 0.5 * (below_a * (n - 1) - below_h / NU_0)
-    shifts = [
-        -((NU_0 * n - y) * d * rising + (NU_0 * n + y) * np.conj(d) * falling) / radius
-        for d in (1.0, 1j)
-    ]
-    topology = model.suspension
-    slot_angles = np.asarray(-model.pitch * np.arange(sector.slots), dtype=np.float64)
-    loads = []
-    for t in range(len(positions)):
-        pair = []
-        for shift in shifts:
-            load = np.zeros((topology.size, LANES))
-            load[topology.lattice.bore] = batch.gap.source_load(shift[t], orders, slot_angles)
-            pair.append(load)
-        loads.append((pair[0], pair[1]))
-    small = batch.perturb(equations, solution.nodes[positions], loads)
-    bore = small[:, topology.lattice.bore]
+    small = displaced(batch, solution, positions, equations)
+    bore = small[:, equations.topology.lattice.bore]
     result = np.zeros((len(positions), LANES))
     for shift, part, axis in ((shifts[0], bore.real, 1.0), (shifts[1], bore.imag, 1j)):
         answer = batch.gap.coefficients(part, sector, orders)
@@ -81,3 +61,50 @@ def stiffness(
         pull = 2.0 * stress.pair(field, change, radius)
         result += 0.5 * np.real(pull * np.conj(axis))
     return result
+
+
+def displaced(
+    batch: BatchField, solution: Solution, positions: list[int], equations: Equations
+) -> ComplexArray:
+    """Change of the stator's potential per displacement, (t, size, LANES), Wb/m per m.
+
+    The real part belongs to a displacement along x, the imaginary part to one along y.
+    """
+    orders, shifts = shifted_sources(batch, solution, positions)
+    topology = equations.topology
+    slots = topology.lattice.slots
+    slot_angles = np.asarray(-batch.model.pitch * np.arange(slots), dtype=np.float64)
+    loads = []
+    for t in range(len(positions)):
+        pair = []
+        for shift in shifts:
+            load = np.zeros((topology.size, LANES))
+            load[topology.lattice.bore] = batch.gap.source_load(shift[t], orders, slot_angles)
+            pair.append(load)
+        loads.append((pair[0], pair[1]))
+    return batch.perturb(equations, solution.nodes[positions], loads)
+
+
+def shifted_sources(
+    batch: BatchField, solution: Solution, positions: list[int]
+) -> tuple[IntArray, tuple[ComplexArray, ComplexArray]]:
+    """Orders (m,) of the suspension field and c_n (t, m, LANES) per metre along x and along y."""
+    radius = batch.sections.bore_radius
+    highest = batch.highest_wave
+    waves = solution.waves
+    potential = stress.spread(waves.orders, waves.potential[positions], highest + 1)
+    tangential = stress.spread(waves.orders, waves.tangential[positions], highest + 1)
+    orders = batch.gap.class_orders(batch.model.symmetry.suspension)
+    orders = orders[orders <= highest]
+    middle = highest + 1
+    n = orders[:, None]
+    y = batch.response[orders]
+    above_a, above_h = potential[:, middle + orders + 1], tangential[:, middle + orders + 1]
+    below_a, below_h = potential[:, middle + orders - 1], tangential[:, middle + orders - 1]
+    rising = 0.5 * (above_a * (n + 1) + above_h / NU_0)
+    falling = 0.5 * (below_a * (n - 1) - below_h / NU_0)
+    along_x, along_y = (
+        -((NU_0 * n - y) * d * rising + (NU_0 * n + y) * np.conj(d) * falling) / radius
+        for d in (1.0, 1j)
+    )
+    return orders, (along_x, along_y)

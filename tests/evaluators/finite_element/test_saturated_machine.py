@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from math import lcm
+from math import gcd, lcm
 
 import machines
 import numpy as np
@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 
 from evaluators.finite_element import analysis, losses, nonlinear_force, stress
 from evaluators.finite_element.batch import BatchField, Solution
-from evaluators.finite_element.displacement import stiffness
+from evaluators.finite_element.displacement import displaced, stiffness
 from evaluators.finite_element.lanes import LANES
 from evaluators.finite_element.lattice import Resolution
 from evaluators.finite_element.model import Discretisation, FieldModel
@@ -191,6 +191,59 @@ def test_stiffness_hardly_depends_on_position() -> None:
     # Measured 0.2 %, or 2 % in the most saturated of the eight.
     assert found[0] == pytest.approx(found[1], rel=0.05)
     assert np.all(found > 0.0)
+
+
+@pytest.mark.parametrize("numbers", NUMBERS[:3])
+def test_force_per_current_is_linkage_per_displacement(numbers: machines.Numbers) -> None:
+    """Both are the mixed derivative of coenergy by current and displacement, at load."""
+    batch, current = machine(numbers)
+    model = batch.model
+    solution = batch.solve_torque(model.angles[:2], current.torque)
+    equations = batch.equations(model.suspension)
+    small = analysis.suspension_field(batch, equations, solution)
+    _, direct, mirrored = force_parts(batch, solution, small)
+    phase = np.exp(1j * model.pole_pairs * solution.waves.angles)[:, None]
+    moved = batch.slot_means(model.suspension, displaced(batch, solution, [0, 1], equations))
+    sector = model.symmetry.suspension
+    pattern = model.task.winding.suspension_slot_mmf[: sector.slots]
+    for phasor, currents in ((1.0, pattern.real), (1j, (1j * pattern).real)):
+        # Currents of the slots themselves: take the turning of the phasor back.
+        force = direct * phasor / phase + mirrored * np.conj(phasor) * phase
+        linkage = sector.count * np.einsum("s,tsl->tl", currents, moved)
+        # Exact in the discrete equations: the tangent is symmetric. Measured 3e-14.
+        assert np.max(np.abs(force - linkage)) < 1e-10 * np.max(np.abs(force))
+
+
+@pytest.mark.parametrize("numbers", [(6, 2, 1), (12, 4, 5), (12, 5, 4)])
+def test_no_load_stress_has_orders_of_the_gcd(numbers: machines.Numbers) -> None:
+    """Zhu, Ishak, Howe, Chen, IEEE Trans. Ind. Appl. 43(6), 2007: multiples of gcd(Q, 2p).
+
+    The whole circle is solved, so that no symmetry is put in. Equal halves of the phases ask for an
+    even number of slots, so that the divisor is never one and there is no pull without current.
+    """
+    batch, _ = machine(numbers)
+    model = batch.model
+    angles, nothing = np.array([0.013]), np.zeros(LANES)
+    whole = batch.equations(model.whole)
+    solution = nonlinear_force.solve(batch, whole, angles, nothing, nothing + 0j)
+    waves, highest = solution.waves, batch.highest_wave
+    radius = batch.sections.bore_radius
+    u = stress.rotating(
+        stress.spread(waves.orders, waves.potential, highest),
+        stress.spread(waves.orders, waves.tangential, highest),
+        radius,
+    )[0, :, 0]
+    phi = 2.0 * np.pi * np.arange(4096) / 4096
+    field = np.exp(1j * np.outer(phi, np.arange(-highest, highest + 1))) @ u
+    spectrum = np.abs(np.fft.fft((field**2).real))[:40] / phi.size
+    step = gcd(numbers[0], 2 * numbers[1])
+    order = np.arange(spectrum.size)
+    # Measured 1e-15 and 4e-2.
+    assert np.all(spectrum[order % step != 0] < 1e-10 * spectrum[0])
+    assert spectrum[step] > 1e-2 * spectrum[0]
+    pull = np.abs(nonlinear_force.force(batch, solution))[0]
+    # Against the mean stress all along the bore on one side.
+    assert np.all(pull < 1e-8 * np.pi * radius / stress.MU_0 * spectrum[0])
 
 
 def test_iron_loss_of_a_cell_is_that_of_its_waveform() -> None:
