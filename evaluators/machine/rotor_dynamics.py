@@ -87,10 +87,43 @@ def natural_speeds(stiffness: FloatArray, masses: FloatArray) -> FloatArray:
     masses : array (n, size, size)
         Symmetric and positive definite.
     """
-    lower = np.linalg.inv(np.linalg.cholesky(masses))
-    scaled = lower @ stiffness @ np.swapaxes(lower, -1, -2)
-    values = np.linalg.eigvalsh(0.5 * (scaled + np.swapaxes(scaled, -1, -2)))
+    values = np.linalg.eigvalsh(_scaled(stiffness, np.linalg.inv(np.linalg.cholesky(masses))))
     return np.asarray(np.sqrt(np.maximum(values, 0.0)))
+
+
+def supported_modes(
+    free: FloatArray, supported: FloatArray, masses: FloatArray
+) -> tuple[FloatArray, FloatArray]:
+    """Return natural frequencies of supported beams, and how much of each mode is bending.
+
+    Parameters
+    ----------
+    free, supported : array (n, size, size)
+        Stiffness without and with the supports, symmetric.
+    masses : array (n, size, size)
+        Symmetric and positive definite.
+
+    Returns
+    -------
+    speeds : array (n, size)
+        rad/s, rising.
+    bending : array (n, size)
+        Share of the elastic energy of each mode that the beam holds; the supports hold the rest.
+        Near zero for a stiff rotor moving on soft supports, near one for a bending mode.
+    """
+    lower = np.linalg.inv(np.linalg.cholesky(masses))
+    values, shapes = np.linalg.eigh(_scaled(supported, lower))
+    beam = np.einsum("nim,nim->nm", shapes, _scaled(free, lower) @ shapes)
+    # Of modes that next to nothing holds, both energies are rounding errors.
+    positive = values > 1e-10 * values[:, -1:]
+    share = np.where(positive, beam / np.where(positive, values, 1.0), 0.0)
+    return np.sqrt(np.maximum(values, 0.0)), np.asarray(share)
+
+
+def _scaled(stiffness: FloatArray, lower: FloatArray) -> FloatArray:
+    """Symmetric matrix with the squared frequencies as eigenvalues; `lower` inverts Cholesky's."""
+    scaled = lower @ stiffness @ np.swapaxes(lower, -1, -2)
+    return np.asarray(0.5 * (scaled + np.swapaxes(scaled, -1, -2)))
 
 
 def amplification_factor(damping_ratio: ArrayLike) -> FloatArray:

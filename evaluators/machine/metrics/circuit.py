@@ -48,7 +48,7 @@ METRICS: tuple[Metric, ...] = (
         "W",
         "losses",
         "copper loss of both currents with end turns and strand eddy currents, at temperature",
-        "IEC 60028; round wire in a transverse field (Landau, Lifshitz)",
+        "IEC 60028; Dowell, Proc. IEE 113(8), 1966, for the eddy currents",
         True,
     ),
     Metric("loss_teeth_W", "W", "losses", "iron loss of the teeth", "Bertotti 1988", True),

@@ -250,8 +250,8 @@ METRICS: tuple[Metric, ...] = (
         "bending_speed_rpm",
         "r/min",
         "mechanics",
-        "first bending speed on the suspension stiffness, without gyroscopic effect; a "
-        "first estimate that replaces no rotor-dynamic analysis",
+        "first speed on suspension and second bearing at which mostly the rotor bends, without "
+        "gyroscopic effect; a first estimate that replaces no rotor-dynamic analysis",
         "stepped Timoshenko beam (Przemieniecki 1968)",
         False,
     ),
@@ -259,7 +259,7 @@ METRICS: tuple[Metric, ...] = (
         "separation_margin",
         "1",
         "mechanics",
-        "distance of the bending speed from the speed range less the distance required, "
+        "smallest distance of any bending speed from the speed range less the distance required, "
         "over the speed",
         "API 617 and API RP 684 (from memory)",
         False,

@@ -13,30 +13,39 @@ from evaluators.machine.rotor_dynamics import (
     beam_matrices,
     natural_speeds,
     separation_margin,
+    supported_modes,
 )
 from evaluators.machine.task import Task
 
 END_ELEMENTS, ACTIVE_ELEMENTS = 2, 3
 FIRST_BENDING = 2  # column after the two rigid modes of a beam
+MOSTLY = 0.5  # of a mode's elastic energy
 RPM = 30.0 / np.pi
 
 
 def metrics(task: Task, sections: CrossSections, state: Operating) -> dict[str, FloatArray]:
-    """Metrics of bending speeds and of their margin to the speed range of the duty."""
-    stiffness, masses = _beam(task, sections, state)
-    both = np.stack([stiffness, _supported(task, state, stiffness)])
-    free, supported = natural_speeds(both, masses)[..., FIRST_BENDING]
+    """Metrics of bending speeds and of their margin to the speed range of the duty.
+
+    Every bending speed counts for the margin: a rotor that runs above its first one must stay
+    clear of the second as well. A mode counts as bending if the rotor itself holds most of its
+    elastic energy. With soft supports these are all but the two rigid modes; on a stiff second
+    bearing the rotor bends in a lower mode already.
+    """
+    free, masses = _beam(task, sections, state)
+    speeds, share = supported_modes(free, _supported(task, state, free), masses)
+    bends = share > MOSTLY
+    bends[:, FIRST_BENDING:] = True  # a rigid rotor has two modes, no more
     duty = task.duty
     margin = separation_margin(
-        supported,
+        speeds,
         duty.speed * duty.lowest_speed_ratio,
         duty.speed * duty.highest_speed_ratio,
         amplification_factor(task.rotor.damping_ratio),
     )
     return {
-        "free_bending_speed_rpm": RPM * free,
-        "bending_speed_rpm": RPM * supported,
-        "separation_margin": margin,
+        "free_bending_speed_rpm": RPM * natural_speeds(free, masses)[:, FIRST_BENDING],
+        "bending_speed_rpm": RPM * np.min(speeds, axis=1, initial=np.inf, where=bends),
+        "separation_margin": np.min(margin, axis=1, initial=np.inf, where=bends),
     }
 
 
