@@ -12,7 +12,8 @@ import numpy as np
 
 from evaluators.machine import description
 from evaluators.machine.geometry import CrossSections, cross_sections
-from evaluators.machine.metrics import METRICS
+from evaluators.machine.metrics import METRIC, METRICS
+from evaluators.machine.task import Task
 from evaluators.machine.variables import VARIABLES
 from evaluators.machine.winding import Winding
 from studies.crosschecks import Limit
@@ -72,6 +73,10 @@ class Inspection:
     currency : str
     verified : tuple of VerifiedRow
         What other evaluators said of it.
+    task : Task or None
+        What its family was to do; None without a study.
+    sections : CrossSections or None
+        Of this one design; None if it has none.
     """
 
     design: str
@@ -83,6 +88,8 @@ class Inspection:
     on_front: bool
     currency: str
     verified: tuple[VerifiedRow, ...] = ()
+    task: Task | None = None
+    sections: CrossSections | None = None
 
     @property
     def evaluated(self) -> bool:
@@ -125,6 +132,8 @@ def inspect_design(results: Results, design: str) -> Inspection:
         on_front=evaluation in front,
         currency=results.study.prices.currency,
         verified=tuple(all_verified(stored.folder, evaluation)),
+        task=results.study.task(family),
+        sections=sections if valid.size else None,
     )
 
 
@@ -165,6 +174,7 @@ def inspection_json(found: Inspection) -> dict[str, Any]:
                 limit.kind: limit.value,
                 "value": row.get(limit.metric),
                 "margin": row[f"margin:{limit.name}"],
+                "source": METRIC[limit.metric].source,
             }
             for limit in found.limits
         ],

@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 from textwrap import fill
 
-from evaluators.machine.metrics import METRICS
+from evaluators.machine.metrics import METRIC, METRICS
 from evaluators.machine.variables import VARIABLES
 from studies.comparison import LOSSES
 from studies.inspection import (
@@ -15,6 +15,7 @@ from studies.inspection import (
     Inspection,
     reserve,
 )
+from studies.inspection_engineering import engineering_text, sourced_table
 from studies.tables import number, percent, text_table
 from studies.verified import VerifiedRow, deviation
 
@@ -25,7 +26,7 @@ def inspection_text(found: Inspection) -> str:
     """Everything, section by section."""
     sections = [_head(found), _variables(found)]
     if found.evaluated:
-        sections += [_limits(found), _losses(found), _metrics(found)]
+        sections += [_limits(found), _losses(found), *engineering_text(found), _metrics(found)]
         sections += [_verified(found, item) for item in found.verified]
     sections += [_winding(found), _cautions()]
     return "\n\n".join(section for section in sections if section)
@@ -66,8 +67,10 @@ def _limits(found: Inspection) -> str:
         side = limit.text().removeprefix(f"{limit.metric} ")
         verdict = "met" if left >= 0.0 else "BROKEN"
         spare = percent(left) if limit.value else number(left)  # of zero there is no share
-        rows.append([limit.metric, number(found.row[limit.metric]), side, spare, verdict])
-    return text_table(["limit on", "value", "limit", "reserve", ""], rows)
+        source = METRIC[limit.metric].source
+        value = number(found.row[limit.metric])
+        rows.append([limit.metric, value, side, spare, verdict, source])
+    return sourced_table(["limit on", "value", "limit", "reserve", "", "source of the value"], rows)
 
 
 def _losses(found: Inspection) -> str:
@@ -86,8 +89,8 @@ def _metrics(found: Inspection) -> str:
         value = found.row.get(metric.name)
         if value is not None:
             unit = {"1": "", "money": found.currency}.get(metric.unit, metric.unit)
-            rows.append([metric.group, metric.name, number(value), unit])
-    return text_table(["group", "metric", "value", "unit"], rows, left=2)
+            rows.append([metric.group, metric.name, number(value), unit, metric.source])
+    return sourced_table(["group", "metric", "value", "unit", "source"], rows, left=2)
 
 
 def _verified(found: Inspection, verified: VerifiedRow) -> str:

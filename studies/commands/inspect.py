@@ -16,11 +16,13 @@ def inspect(results_folder: str, design: str, as_json: bool) -> None:
     from pathlib import Path
 
     from studies.inspection import inspect_design, inspection_json
+    from studies.inspection_engineering import engineering_json
     from studies.inspection_text import inspection_text
     from studies.layout import open_results
 
     found = inspect_design(open_results(Path(results_folder)), design)
     if as_json:
-        click.echo(json.dumps(inspection_json(found), indent=2, allow_nan=False))
+        content = inspection_json(found) | {"engineering": engineering_json(found)}
+        click.echo(json.dumps(content, indent=2, allow_nan=False))
     else:
         click.echo(inspection_text(found))

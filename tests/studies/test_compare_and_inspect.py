@@ -200,6 +200,7 @@ def test_inspect_shows_the_stored_design(hovergap: Run, swept: Path) -> None:
             "at_most": 70.0,
             "value": row["tip_speed_m_s"],
             "margin": row["margin:tip_speed_m_s_at_most"],
+            "source": "definition",
         }
     ]
     bore = row["rotor_radius_mm"] + row["clearance_mm"]

@@ -52,8 +52,13 @@ class Strength:
     @classmethod
     def of(cls, task: Task, sections: CrossSections, state: Operating) -> Strength:
         """Rotor with core and shaft as one solid, uniformly as warm as its sleeve."""
+        return cls.at(task, sections, state.temperature("sleeve"))
+
+    @classmethod
+    def at(cls, task: Task, sections: CrossSections, temperature_C: FloatArray) -> Strength:
+        """As `of`, at the temperatures (n,) of the sleeves in degC."""
         parts, duty = task.materials, task.duty
-        hot = held(state.temperature("sleeve"))
+        hot = held(temperature_C)
         temperature = np.stack([np.full_like(hot, ASSEMBLY_TEMPERATURE), hot])
         section = RotorSection.from_materials(
             parts.shaft,
