@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+import unicodedata
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from typing import Any, Literal
@@ -19,6 +20,8 @@ Bounds = tuple[float, float]
 
 NAME = re.compile(r"[A-Za-z0-9][A-Za-z0-9._-]*")
 LONGEST_NAME = 64
+TURNING = "\u202a\u202b\u202c\u202d\u202e\u2066\u2067\u2068\u2069"
+"""Characters that change the direction of writing and so can make a text look like another."""
 METRIC_LISTING = "`hovergap metrics` lists all"
 VARIABLE = {variable.name: variable for variable in VARIABLES}
 MOST_OBJECTIVES = 6  # fronts of more objectives hold nearly every design
@@ -74,6 +77,15 @@ def check_name(name: str) -> list[Finding]:
         return [Finding(path, f"holds a path separator (got {quoted(name)})", remedy)]
     if not NAME.fullmatch(name) or name.endswith("."):
         return [Finding(path, f"cannot name a folder (got {quoted(name)})", remedy)]
+    return []
+
+
+def check_description(text: str) -> list[Finding]:
+    """Check free text: it is printed on terminals, which obey control characters."""
+    for position, sign in enumerate(text):
+        if (unicodedata.category(sign) == "Cc" and sign not in "\n\t") or sign in TURNING:
+            problem = f"holds the control character {sign!a} at place {position + 1}"
+            return [Finding(("study", "description"), problem, "take it out")]
     return []
 
 

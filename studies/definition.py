@@ -30,6 +30,7 @@ from studies.crosschecks import (
     Limit,
     Objective,
     check_bounds,
+    check_description,
     check_limits,
     check_material,
     check_name,
@@ -193,6 +194,7 @@ class _Reader:
         head = self._section("study", StudySection)
         if head:
             self.findings += check_name(head.name)
+            self.findings += check_description(head.description)
         duty = self._built(convert.duty, self._section("duty", DutySection), "duty")
         conditions = self._built(
             convert.conditions, self._section("conditions", ConditionsSection), "conditions"

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import fields, replace
+from typing import cast
 
 import numpy as np
 from numpy.typing import NDArray
@@ -20,6 +21,8 @@ from evaluators.machine.task import Task
 FloatArray = NDArray[np.float64]
 
 PER_MM2 = 1e6
+FINEST = {"slot_modes": 32, "reach": 64, "highest_order": 1024, "positions": 360}
+"""Largest settings: results stand long before, while memory grows with their product."""
 
 
 class AnalyticEvaluator:
@@ -86,8 +89,9 @@ def _resolution(settings: dict[str, object]) -> Resolution:
                 f"the analytic evaluator has no setting {name!r}; it has {', '.join(sorted(known))}"
             )
             raise EvaluatorError(msg)
-        if isinstance(value, bool) or not isinstance(value, int) or value < 1:
-            msg = f"setting {name} = {value!r} must be a whole number of at least 1"
+        whole = isinstance(value, int) and not isinstance(value, bool)
+        if not whole or not 1 <= cast("int", value) <= FINEST[name]:
+            msg = f"setting {name} = {value!r} must be a whole number from 1 to {FINEST[name]}"
             raise EvaluatorError(msg)
-        default = replace(default, **{name: value})
+        default = replace(default, **{name: cast("int", value)})
     return default

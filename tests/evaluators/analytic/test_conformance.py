@@ -16,6 +16,7 @@ class TestAnalytic(EvaluatorConformance):
     bad_settings = (
         {"no_such_setting": 1},
         {"slot_modes": 0},
+        {"slot_modes": 10**9},
         {"reach": 2.5},
         {"positions": True},
         {"highest_order": "many"},
