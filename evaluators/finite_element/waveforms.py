@@ -23,7 +23,12 @@ SHARES = np.arange(1, LANES + 1) / LANES
 
 
 def waveforms(model: FieldModel, design: Mapping[str, float]) -> tuple[Waveform, ...]:
-    """Torque, cogging torque, both force components, and force against suspension current."""
+    """Torque, cogging torque, forces with the currents that command them, and the force curve.
+
+    The force is given without suspension current and with the one that commands a mean force along
+    x, and along y. That current, as ampere-turns of one coil of phase one, keeps its phase to the
+    rotor.
+    """
     task = model.task
     batch = {name: np.array([float(value)]) for name, value in design.items()}
     sections, valid, reasons = cross_sections(task.winding.family, batch, task.construction)
@@ -38,7 +43,16 @@ def waveforms(model: FieldModel, design: Mapping[str, float]) -> tuple[Waveform,
     result = analysis.evaluate(fields, current)
     family = task.winding.family
     forward = family.suspension_pole_pairs > family.pole_pairs
-    force = result.force.at(current.suspension * result.force.command(0.0, forward))[:, 0]
+    phasors = [
+        current.suspension * result.force.command(direction, forward)
+        for direction in (0.0, 0.5 * np.pi)
+    ]
+    along_x, along_y = (result.force.at(phasor)[:, 0] for phasor in phasors)
+    rest = result.force.at(0.0 * phasors[0])[:, 0]
+    turn = 2.0 * np.pi * np.arange(rest.size) / rest.size
+    command_x, command_y = (
+        np.real(phasor[0] * np.exp(1j * family.pole_pairs * turn)) for phasor in phasors
+    )
 
     def over_turn(name: str, unit: str, values: FloatArray) -> Waveform:
         angle = 2.0 * np.pi * np.arange(values.size) / values.size
@@ -47,8 +61,14 @@ def waveforms(model: FieldModel, design: Mapping[str, float]) -> tuple[Waveform,
     return (
         over_turn("torque", "N m/m", np.tile(result.torque[:, 0], 6 * family.pole_pairs)),
         over_turn("cogging torque", "N m/m", np.tile(result.cogging[:, 0], family.cogging_periods)),
-        over_turn("force along x, commanded along x", "N/m", force.real),
-        over_turn("force along y, commanded along x", "N/m", force.imag),
+        over_turn("force along x, commanded along x", "N/m", along_x.real),
+        over_turn("force along y, commanded along x", "N/m", along_x.imag),
+        over_turn("force along x, commanded along y", "N/m", along_y.real),
+        over_turn("force along y, commanded along y", "N/m", along_y.imag),
+        over_turn("force along x, no suspension current", "N/m", rest.real),
+        over_turn("force along y, no suspension current", "N/m", rest.imag),
+        over_turn("suspension current of phase one, commanded along x", "A turns", command_x),
+        over_turn("suspension current of phase one, commanded along y", "A turns", command_y),
         *force_curve(fields, current, forward),
     )
 
