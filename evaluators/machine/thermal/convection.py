@@ -82,19 +82,20 @@ def disc_coefficient(radius: ArrayLike, speed: ArrayLike, gas: GasState) -> Floa
     return np.asarray(np.maximum(0.36 * re**0.5, 0.015 * re**0.8) * gas.thermal_conductivity / r)
 
 
-def end_space_coefficient(surface_speed: ArrayLike, gas: GasState, air: GasState) -> FloatArray:
+def end_space_coefficient(gas_speed: ArrayLike, gas: GasState, air: GasState) -> FloatArray:
     """Return the coefficient of end turns and walls of the end space in W/(m2 K).
 
-    15 (1 + 0.4 v^0.9) in air at ambient pressure with the rotor's surface speed v in m/s: Schubert
-    1968, as collected by Staton, Boglietti, Cavagnino, *IEEE Trans. Energy Conv.* 20(3), 2005
-    (from memory; the collected correlations scatter by a factor of two). For another gas the
-    natural part follows the conductivity and the forced part the Reynolds number as well (own
-    extension by similarity).
+    15 (1 + 0.4 v^0.9) in air at ambient pressure that passes at the speed v in m/s: Schubert 1968,
+    as collected by Staton, Boglietti, Cavagnino, *IEEE Trans. Energy Conv.* 20(3), 2005 (from
+    memory; the collected correlations scatter by a factor of two). They were found in machines
+    slower than many this is used for: above some 20 m/s it is an extrapolation, and winding
+    temperatures that rest on it deserve a test. For another gas the natural part follows the
+    conductivity and the forced part the Reynolds number as well (own extension by similarity).
 
     Parameters
     ----------
-    surface_speed
-        m/s.
+    gas_speed
+        m/s, along end turns and walls.
     gas
         State of the gas of the end space.
     air
@@ -102,5 +103,5 @@ def end_space_coefficient(surface_speed: ArrayLike, gas: GasState, air: GasState
     """
     conductivity = gas.thermal_conductivity / air.thermal_conductivity
     reynolds = (gas.density / gas.viscosity) / (air.density / air.viscosity)
-    forced = 0.4 * (floats(surface_speed) * reynolds) ** 0.9
+    forced = 0.4 * (floats(gas_speed) * reynolds) ** 0.9
     return np.asarray(15.0 * conductivity * (1.0 + forced))

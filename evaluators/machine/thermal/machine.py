@@ -38,6 +38,12 @@ NODES = (
     "end_space",
 )
 EXPOSED_SHARE = 0.5  # of an end turn's surface that gas washes; the rest faces other end turns
+SWIRL = 0.43
+"""Speed of the gas in the end spaces over that of the rotor's surface.
+
+Between a turning and a still face the core of turbulent gas turns at 0.43 of the speed: Owen,
+Rogers, *Flow and Heat Transfer in Rotating-Disc Systems*, vol. 1, 1989 (from memory). End turns
+stand still and slow it further; fans on the rotor would speed it up."""
 CONDUCTION_TEMPERATURE = 100.0  # degC at which conductivities of solids are taken
 
 
@@ -191,7 +197,7 @@ def machine_network(
     end_turn = sections.end_turn_length(task.construction)
     # Two rods in line, each heated along its length: q l²/12k each.
     net.connect("winding", "end_turns", 12.0 * solids.axial / (length + end_turn))
-    end_wall = end_space_coefficient(sections.rotor_radius * speed, gas, air)
+    end_wall = end_space_coefficient(SWIRL * sections.rotor_radius * speed, gas, air)
     bundles = 2.0 * slots * end_turn  # metres of bundle: one of each coil at both ends
     washed = EXPOSED_SHARE * 4.0 * solids.bundle_side
     net.connect(

@@ -85,6 +85,24 @@ def test_heat_of_the_yoke_meets_resistances_in_line() -> None:
     np.testing.assert_allclose(rise, resistance, rtol=0.06)
 
 
+def test_still_walls_see_the_swirl_and_not_the_rotor() -> None:
+    """Gas between a turning and a still face turns at less than half the speed (by symmetry)."""
+    task = machines.task()
+    net, _ = build(task)
+    sections = machines.sections(task, machines.scattered(net.rows, seed=3))
+    count = len(NODES)
+    rise = np.stack(
+        [net.solve(np.tile(row, (net.rows, 1))) - 40.0 for row in np.eye(count)], axis=1
+    )
+    # The matrix of conductances is the inverse of that of rises per watt.
+    conductance = -np.linalg.inv(rise)[:, NODES.index("end_space"), NODES.index("frame")]
+    shields = conductance / (2.0 * np.pi * sections.outer_radius**2)
+    surface = sections.rotor_radius * task.duty.speed
+    assert np.all(shields < 15.0 * (1.0 + 0.4 * (0.5 * surface) ** 0.9))
+    # Enclosed turbulent discs: 0.4 to 0.46 of the speed between them (from memory).
+    assert np.all(shields > 15.0 * (1.0 + 0.4 * (0.4 * surface) ** 0.9))
+
+
 def test_blown_gap_cools_the_rotor() -> None:
     task = machines.task()
     still, _ = build(task)
