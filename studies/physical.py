@@ -15,6 +15,7 @@ LARGEST = {
     "copper_fill": 1.0,
     "power_factor": 1.0,
     "force_error_angle_deg": 180.0,
+    "force_angle_bias_deg": 180.0,
 }
 
 

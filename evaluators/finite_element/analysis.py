@@ -134,9 +134,6 @@ class Result:
     torque, cogging : arrays (fine positions, LANES)
         Over 60 electrical degrees and over one cogging period, N m/m.
     force : Force
-    angle_bias : array (LANES,)
-        Angle by which induced currents turn the mean force against the command of the static
-        field, rad; zero in the static analysis.
     iron : losses.IronLoss
     converged : array (LANES,)
     unsettled : array (LANES,)
@@ -147,7 +144,6 @@ class Result:
     torque: FloatArray
     cogging: FloatArray
     force: Force
-    angle_bias: FloatArray
     iron: losses.IronLoss
     converged: BoolArray
     unsettled: FloatArray
@@ -158,14 +154,14 @@ def evaluate(fields: StaticFields, exciting: Excitation) -> Result:
     batch, loaded, small = fields.batch, fields.loaded, fields.small
     model = batch.model
     force, forward = suspension_force(batch, loaded, small)
-    bias = np.zeros(LANES)
+    bias: FloatArray | None = None
     induced = induce(fields, exciting) if model.discretisation.transient else None
     if induced is not None:
         still = _main(force, forward)
         loaded, small = induced.loaded, induced.small
         force, _ = suspension_force(batch, loaded, small, induced.response)
-        turned = np.angle(_main(force, forward) * np.conj(still))
-        bias = turned if forward else -turned
+        # The same phasor, or its conjugate, makes both forces.
+        bias = np.angle(_main(force, forward) * np.conj(still))
     torque = interpolate(_torque(loaded)).real
     cogging = interpolate(_torque(fields.unloaded)).real
     mean_torque = torque.mean(axis=0)
@@ -206,12 +202,13 @@ def evaluate(fields: StaticFields, exciting: Excitation) -> Result:
         loss_yoke=np.sum(iron.yoke, axis=0) * (1.0 + share[1]),
         loss_magnet=magnet,
         loss_sleeve=sleeve,
+        force_angle_bias=bias,
     )
     converged, unsettled = fields.converged, np.zeros(LANES)
     if induced is not None:
         unsettled = induced.unsettled
         converged = converged & loaded.converged & (unsettled <= UNSETTLED)
-    return Result(field, torque, cogging, force, bias, iron, converged, unsettled)
+    return Result(field, torque, cogging, force, iron, converged, unsettled)
 
 
 def _main(force: Force, forward: bool) -> ComplexArray:

@@ -80,6 +80,9 @@ class FieldSolution:
         Smallest density along the magnetisation over the magnets' outer surface at the duty.
     loss_teeth, loss_yoke, loss_magnet, loss_sleeve : W/m
         At the duty.
+    force_angle_bias : rad, optional
+        Angle by which currents induced in the rotor turn the mean force away from the direction
+        that is commanded without them, counter-clockwise; left out where none are induced.
     """
 
     torque: FloatArray
@@ -102,10 +105,12 @@ class FieldSolution:
     loss_yoke: FloatArray
     loss_magnet: FloatArray
     loss_sleeve: FloatArray
+    force_angle_bias: FloatArray | None = None
 
     def __post_init__(self) -> None:
         rows = self.torque.shape
         for item in fields(self):
-            if getattr(self, item.name).shape != rows:
-                msg = f"{item.name} has shape {getattr(self, item.name).shape}, expected {rows}"
+            value = getattr(self, item.name)
+            if value is not None and value.shape != rows:
+                msg = f"{item.name} has shape {value.shape}, expected {rows}"
                 raise ValueError(msg)

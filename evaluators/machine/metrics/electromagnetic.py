@@ -56,6 +56,15 @@ METRICS: tuple[Metric, ...] = (
         True,
     ),
     Metric(
+        "force_angle_bias_deg",
+        "deg",
+        "suspension",
+        "angle by which currents induced in the rotor turn the mean force away from the direction "
+        "commanded without them; zero where the evaluator induces none",
+        DESIGN,
+        True,
+    ),
+    Metric(
         "force_per_ampere_N_A",
         "N/A",
         "suspension",

@@ -14,6 +14,7 @@ def metrics(task: Task, sections: CrossSections, state: Operating) -> dict[str, 
     """Metrics of torque, suspension force and field."""
     weights, field, length = task.ripple, state.field, state.length
     angle_deg = np.degrees(field.force_error_angle)
+    bias = np.zeros_like(length) if field.force_angle_bias is None else field.force_angle_bias
     index = (
         weights.torque_ripple_weight * field.torque_ripple / weights.torque_ripple_limit
         + weights.force_error_weight * field.force_error_magnitude / weights.force_error_limit
@@ -28,6 +29,7 @@ def metrics(task: Task, sections: CrossSections, state: Operating) -> dict[str, 
         "force_N": field.force * length,
         "force_error_magnitude": field.force_error_magnitude,
         "force_error_angle_deg": angle_deg,
+        "force_angle_bias_deg": np.degrees(np.abs(bias)),
         "residual_voltage": np.full_like(length, task.winding.residual_voltage),
         "ripple_index": index,
         "displacement_stiffness_N_mm": 1e-3 * field.displacement_stiffness * length,

@@ -155,8 +155,14 @@ def test_static_analysis_suffices_for_torque_but_not_for_force() -> None:
     # The torque loses the drag of the rotor's loss and hardly anything else.
     drag = (found.field.loss_magnet + found.field.loss_sleeve) / fields.batch.model.task.duty.speed
     assert found.field.torque == pytest.approx(static.field.torque - drag, rel=0.02)
-    assert np.median(np.abs(np.degrees(found.angle_bias))) > 5.0
-    assert np.all(static.angle_bias == 0.0)
+    bias = found.field.force_angle_bias
+    assert bias is not None
+    assert np.median(np.abs(np.degrees(bias))) > 5.0
+    assert static.field.force_angle_bias is None
+    # The command of the static field gives a force that is turned by just that.
+    commanded = static.force.command(0.4, forward=False)  # suspension pole pairs below the magnets'
+    force = found.force.at(current.suspension * commanded).mean(axis=0)
+    assert np.angle(force * np.exp(-0.4j)) == pytest.approx(bias, abs=1e-9)
 
 
 def _without_induction(batch: BatchField, fields: analysis.StaticFields) -> BatchField:
