@@ -160,10 +160,10 @@ class Writes:
 def outside(paths: list[str], folder: Path) -> list[str]:
     """Paths that do not lie in `folder`."""
     root = folder.resolve()
-    free = (os.devnull,)
     return [
         item
         for item in paths
-        if item not in free
+        if item != os.devnull
+        and "__pycache__" not in Path(item).parts  # compiled code of the package itself
         and not (Path(item).resolve() == root or Path(item).resolve().is_relative_to(root))
     ]
