@@ -7,6 +7,7 @@ from typing import Any
 
 from evaluators.machine.cooling import Cooling
 from evaluators.machine.demagnetisation import Fault
+from evaluators.machine.gas import vapour
 from evaluators.machine.layout import RotorLayout
 from evaluators.machine.materials import (
     Conductor,
@@ -26,7 +27,13 @@ from studies.schema import (
     RippleSection,
 )
 from studies.schema_base import KILO, MEGA, MICRO, MILLI, Section
-from studies.schema_machine import FACTORS, CoolingSection, FaultSection, RotorSection
+from studies.schema_machine import (
+    FACTORS,
+    CoolingSection,
+    FaultSection,
+    GasSection,
+    RotorSection,
+)
 from studies.suggestions import stem, suffix
 
 RPM = 2.0 * pi / 60.0  # rad/s
@@ -121,6 +128,21 @@ def _si(section: Section) -> dict[str, Any]:
         stem(key): value * FACTORS[suffix(key)] if value and suffix(key) in FACTORS else value
         for key, value in section.model_dump().items()
     }
+
+
+def stated_gas(section: GasSection) -> Gas:
+    """The gas that the study describes by its properties."""
+    return vapour(
+        section.name,
+        temperature_C=section.temperature_C,
+        pressure_Pa=section.pressure_kPa * KILO,
+        density=section.density_kg_m3,
+        viscosity=section.viscosity_uPa_s * MICRO,
+        thermal_conductivity=section.thermal_conductivity_W_mK,
+        specific_heat=section.specific_heat_J_kgK,
+        source=section.source,
+        year=section.year,
+    )
 
 
 def material_set(section: MaterialsSection) -> MaterialSet:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import hashlib
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path as FilePath
 from typing import Any, TypeVar, cast
 
@@ -44,6 +44,7 @@ from studies.price_list import check_prices
 from studies.reading import Table, parse, read_bytes
 from studies.schema import (
     FREE_SECTIONS,
+    OPTIONAL_SECTIONS,
     REQUIRED_SECTIONS,
     SIMPLE_SECTIONS,
     ConditionsSection,
@@ -56,12 +57,12 @@ from studies.schema import (
     StudySection,
 )
 from studies.schema_base import Section
-from studies.schema_machine import CoolingSection, FaultSection, RotorSection
+from studies.schema_machine import CoolingSection, FaultSection, GasSection, RotorSection
 from studies.sections import Model, validated
 from studies.suggestions import suggest, unknown
 
 Built = TypeVar("Built")
-SECTIONS = (*SIMPLE_SECTIONS, *FREE_SECTIONS)
+SECTIONS = (*SIMPLE_SECTIONS, *OPTIONAL_SECTIONS, *FREE_SECTIONS)
 
 
 @dataclass(frozen=True)
@@ -208,7 +209,9 @@ class _Reader:
         cooling = self._built(convert.cooling, self._section("cooling", CoolingSection), "cooling")
         rotor = self._built(convert.rotor, self._section("rotor", RotorSection), "rotor")
         fault = self._built(convert.fault, self._section("fault", FaultSection), "fault")
-        chosen = self._materials(self._section("materials", MaterialsSection))
+        chosen = self._with_stated_gas(
+            self._materials(self._section("materials", MaterialsSection))
+        )
         prices = self._prices()
         search = self._section("search", SearchSection)
         evaluator = self._evaluator(self._section("evaluator", EvaluatorSection))
@@ -302,6 +305,18 @@ class _Reader:
         ]
         self.findings += wrong
         return None if wrong else convert.material_set(section)
+
+    def _with_stated_gas(self, chosen: MaterialSet | None) -> MaterialSet | None:
+        """The materials with the gas that section ``gas`` describes, if there is one."""
+        if "gas" not in self.table:
+            return chosen
+        named = self.table.get("materials")
+        if isinstance(named, dict) and "gas" in named:
+            remedy = "leave out one of the two"
+            problem = "the gas is named here and described in [gas]"
+            self.findings.append(Finding(("materials", "gas"), problem, remedy))
+        gas = self._built(convert.stated_gas, self._section("gas", GasSection), "gas")
+        return replace(chosen, gas=gas) if chosen and gas else None
 
     def _prices(self) -> Prices | None:
         if "prices" not in self.table:

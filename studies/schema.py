@@ -13,7 +13,7 @@ from pydantic import Field
 from evaluators.machine.task import Conditions, Construction, Duty, RippleWeights
 from optimizer.stopping import DEFAULT_GAIN
 from studies.schema_base import KILO, MEGA, MILLI, Section
-from studies.schema_machine import CoolingSection, FaultSection, RotorSection
+from studies.schema_machine import CoolingSection, FaultSection, GasSection, RotorSection
 
 
 class StudySection(Section):
@@ -336,6 +336,9 @@ SIMPLE_SECTIONS: dict[str, type[Section]] = {
 
 FREE_SECTIONS = ("prices", "variables", "families", "limits", "objectives")
 """Sections whose keys are names of variables, metrics, families or price items."""
+
+OPTIONAL_SECTIONS: dict[str, type[Section]] = {"gas": GasSection}
+"""Sections of fixed keys that replace something where they stand."""
 
 REQUIRED_SECTIONS = (
     "study",

@@ -143,6 +143,22 @@ class RotorSection(Section):
     )
 
 
+class GasSection(Section):
+    """A gas by its properties at one state, a refrigerant vapour say, in place of a named one."""
+
+    name: str = Field(min_length=1, max_length=64, description="name of the gas")
+    temperature_C: float = Field(ge=-80.0, le=300.0, description="state of the properties")
+    pressure_kPa: float = Field(ge=0.1, le=5000.0, description="state of the density, absolute")
+    density_kg_m3: float = Field(ge=1e-4, le=1000.0, description="at that state")
+    viscosity_uPa_s: float = Field(ge=1.0, le=100.0, description="dynamic, at that state")
+    thermal_conductivity_W_mK: float = Field(ge=1e-3, le=1.0, description="at that state")
+    specific_heat_J_kgK: float = Field(
+        ge=100.0, le=20_000.0, description="at constant pressure, at that state"
+    )
+    source: str = Field(min_length=1, max_length=200, description="where the properties come from")
+    year: int = Field(ge=1800, le=2200, description="of the source")
+
+
 class FaultSection(Section):
     """The fault the magnets must survive."""
 

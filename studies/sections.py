@@ -27,6 +27,9 @@ UNIT_TEXT = {
     "W_mK": "W/(m K)",
     "kg_cm2": "kg cm2",
     "N_mm": "N/mm",
+    "kg_m3": "kg/m3",
+    "uPa_s": "uPa s",
+    "J_kgK": "J/(kg K)",
 }
 TYPE_TEXT = {
     "float_type": "a number",

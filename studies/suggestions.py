@@ -9,7 +9,7 @@ from studies.errors import quoted
 
 _UNIT_WORDS = """m mm um cm km nm inch mm2 cm2 m2 L W mW kW MW rpm krpm rps V mV kV A mA kA
 N mN kN Nm mNm H mH uH Hz kHz T mT s ms us min h C K F Pa kPa MPa GPa bar deg rad g kg percent
-kVA m2K mK"""
+kVA m2K mK m3 uPa J kgK"""
 UNITS = frozenset(_UNIT_WORDS.split())
 LISTED = 12  # names are listed in full up to here
 SIMILAR = 0.6  # difflib's own default, which catches one or two slips in a word

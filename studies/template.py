@@ -141,6 +141,9 @@ magnet = "REFeB 300/160"
 conductor = "Copper"
 sleeve = "Carbon fibre, wound"
 shaft = "42CrMo4"
+# The rotor turns in air; gas = "Helium" names another one. One that is not listed, a refrigerant
+# vapour say, is described in [gas]: name, temperature_C, pressure_kPa, density_kg_m3,
+# viscosity_uPa_s, thermal_conductivity_W_mK, specific_heat_J_kgK, source, year.
 
 # Per kilogram; invented round figures, put your own. In detail: magnet = {{ per_kg = 90.0,
 # waste_share = 0.2, processing_per_kg = 10.0 }}.

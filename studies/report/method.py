@@ -15,7 +15,7 @@ from studies.layout import Results, program_version
 from studies.report.collect import ReportData
 from studies.report.columns import UNITS
 from studies.report.html import bullets, element, paragraph, table
-from studies.schema import SIMPLE_SECTIONS
+from studies.schema import OPTIONAL_SECTIONS, SIMPLE_SECTIONS
 from studies.sections import unit_of
 from studies.suggestions import stem
 from studies.tables import number
@@ -102,8 +102,8 @@ def task_rows(study: Study) -> list[list[str]]:
     """Duty, conditions and construction: every key of the study file with its value."""
     written = tomllib.loads(study.content.decode("utf-8-sig"))
     rows = []
-    for section, model in SIMPLE_SECTIONS.items():
-        if section in LEFT_OUT:
+    for section, model in (SIMPLE_SECTIONS | OPTIONAL_SECTIONS).items():
+        if section in LEFT_OUT or (section in OPTIONAL_SECTIONS and section not in written):
             continue
         filled = model.model_validate(written.get(section, {}))
         for key, field in model.model_fields.items():
