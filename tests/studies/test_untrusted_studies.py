@@ -120,6 +120,18 @@ def test_names_that_leave_the_results_folder(write_study: Write, hovergap: Run, 
     assert not Path("results").exists()
 
 
+@pytest.mark.parametrize("sign", ["\x1b[2J", "\0", "\r", "\x7f", "\u202e"])
+def test_descriptions_that_would_drive_a_terminal(
+    write_study: Write, hovergap: Run, sign: str
+) -> None:
+    text = f"a blower {sign}"
+    file = write_study(('"an invented blower"', hostile.quoted(text)))
+    result = hovergap("check", file)
+    check_result(result)
+    assert result.exit_code == 2
+    assert "study.description: holds the control character" in result.output
+
+
 def test_absurd_sizes(tmp_path: Path, hovergap: Run, study_text: str) -> None:
     big = tmp_path / "big.toml"
     big.write_text(study_text + "#" + "x" * 300_000)

@@ -181,6 +181,30 @@ def test_many_fields_within_their_ranges(fields: list[dict[str, float]]) -> None
     check_fields(fields)
 
 
+def test_field_quantities_reach_their_metrics() -> None:
+    table = right_reply()
+    table["field"] = dict(zip((item.key for item in FIELD), USUAL, strict=True))
+    evaluator = Answering(machines.task(), {"program": ["true"], "metrics": list(METRICS)})
+    evaluator.allow_program()
+    evaluator.answers = [read_reply(json.dumps(table).encode(), True, METRICS)]
+    found = {
+        name: column[0] for name, column in evaluator.evaluate(machines.designs()).metrics.items()
+    }
+    # Those that neither length nor temperature change stand as they were sent: rounding of the
+    # change from degrees to radians and back.
+    same = {
+        "torque_ripple": "torque_ripple",
+        "force_error_magnitude": "force_error_magnitude",
+        "force_error_angle_deg": "force_error_angle_deg",
+    }
+    for key, name in same.items():
+        assert found[name] == pytest.approx(table["field"][key], rel=1e-12), name
+    # A metric of its own takes the place of the one made from the field, and only that one.
+    assert found["cost"] == 1.0
+    assert found["insulation_margin_K"] == -5.0
+    assert found["mass_kg"] > 0.0
+
+
 def test_excitation_reaches_the_request() -> None:
     """Ampere-turns of the request are those that the metrics are made with."""
     from evaluators.external.request import request_files
