@@ -147,7 +147,7 @@ def _search(
     progress: Watch | None,
     stop: Stop | None,
 ) -> pa.Table:
-    count = workers or room.usable_workers()
+    dispatcher = dispatcher_of(results.study, workers or room.usable_workers())
     searched = ""
 
     def begin(family: str) -> None:
@@ -158,7 +158,6 @@ def _search(
         if progress is not None:
             progress(searched, state)
 
-    dispatcher = dispatcher_of(results.study, count)
     with writer_lock(results.folder), dispatcher:
         spending = Spending(
             results,
@@ -167,10 +166,13 @@ def _search(
             dispatcher,
             begin,
             show,
-            stop or (lambda: False),
+            stop or _never,
         )
-        rows = [_row(family, summary) for family, summary in spending.families()]
-    return table_of(rows)
+        return table_of([_row(family, summary) for family, summary in spending.families()])
+
+
+def _never() -> bool:
+    return False
 
 
 def _row(family: str, summary: Summary) -> dict[str, object]:
@@ -179,5 +181,6 @@ def _row(family: str, summary: Summary) -> dict[str, object]:
         "family": family,
         **{name: getattr(summary, name) for name in names},
         "stopped": summary.stopped,
+        "ended": summary.ended,
         "ended": summary.ended,
     }
