@@ -182,5 +182,4 @@ def _row(family: str, summary: Summary) -> dict[str, object]:
         **{name: getattr(summary, name) for name in names},
         "stopped": summary.stopped,
         "ended": summary.ended,
-        "ended": summary.ended,
     }
