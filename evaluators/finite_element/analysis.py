@@ -22,6 +22,7 @@ from evaluators.finite_element.quantities import (
     suspension_inductance,
     suspension_loads,
 )
+from evaluators.finite_element.separate_magnets import SeparateMagnets
 from evaluators.machine.field import Excitation, FieldSolution
 from evaluators.machine.geometry import CrossSections
 
@@ -46,6 +47,8 @@ class StaticFields:
         Suspension field of one ampere-turn at the positions of `loaded`.
     stiffness : array (LANES,)
         N/m per m.
+    added : pair of arrays (t, m, LANES), optional
+        What separate magnets add to h of the suspension field, see `separate_magnets`.
     """
 
     batch: BatchField
@@ -53,6 +56,7 @@ class StaticFields:
     unloaded: Solution
     small: ComplexArray
     stiffness: FloatArray
+    added: tuple[ComplexArray, ComplexArray] | None = None
 
     @property
     def converged(self) -> BoolArray:
@@ -66,16 +70,25 @@ def solve(
     exciting: Excitation,
     make_solver: SolverFactory = newton.BatchSolver,
 ) -> StaticFields:
-    """Solve all static fields of LANES designs."""
+    """Solve all static fields of LANES designs.
+
+    The stiffness is that of the uniform rotor in any case.
+    """
     batch = BatchField(model, sections, make_solver)
     start = batch.settle_rotor_iron(float(model.angles[0]), exciting.torque)
     loaded = batch.solve_torque(model.angles, exciting.torque, start)
     unloaded = batch.solve_torque(model.cogging_angles, np.zeros(LANES), loaded.nodes[0])
     suspension = batch.equations(model.suspension)
-    small = suspension_field(batch, suspension, loaded)
     some = [0, model.cogging_angles.size // 2]
     pull = stiffness(batch, unloaded, some, suspension).mean(axis=0)
-    return StaticFields(batch, loaded, unloaded, small, pull)
+    if not model.discretisation.separate_magnets:
+        small = suspension_field(batch, suspension, loaded)
+        return StaticFields(batch, loaded, unloaded, small, pull)
+    magnets = SeparateMagnets(batch)
+    loaded = magnets.torque_field(batch, loaded, exciting.torque)
+    unloaded = magnets.torque_field(batch, unloaded, np.zeros(LANES))
+    small, added = magnets.suspension_field(batch, suspension, loaded)
+    return StaticFields(batch, loaded, unloaded, small, pull, added)
 
 
 def suspension_field(batch: BatchField, equations: Equations, solution: Solution) -> ComplexArray:
@@ -153,7 +166,7 @@ def evaluate(fields: StaticFields, exciting: Excitation) -> Result:
     """All quantities of the solved fields, with induced currents if the model has them."""
     batch, loaded, small = fields.batch, fields.loaded, fields.small
     model = batch.model
-    force, forward = suspension_force(batch, loaded, small)
+    force, forward = suspension_force(batch, loaded, small, added=fields.added)
     bias: FloatArray | None = None
     induced = induce(fields, exciting) if model.discretisation.transient else None
     if induced is not None:

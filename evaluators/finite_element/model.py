@@ -38,6 +38,9 @@ class Discretisation:
         Cells in every direction over those of `resolution`.
     transient : bool
         Whether currents are induced in the rotor.
+    separate_magnets : bool
+        Whether the spaces between the magnets are non-magnetic instead of magnet without
+        magnetisation; for static fields only.
     newton : newton.Settings
     """
 
@@ -48,6 +51,7 @@ class Discretisation:
     iron_rings: int = 3
     refinement: int = 1
     transient: bool = False
+    separate_magnets: bool = False
     newton: newton.Settings = field(default_factory=newton.Settings)
 
     def __post_init__(self) -> None:
@@ -63,6 +67,9 @@ class Discretisation:
             if not low <= value <= high:
                 msg = f"{name} = {value} must lie between {low} and {high}"
                 raise ValueError(msg)
+        if self.transient and self.separate_magnets:
+            msg = "separate magnets are for the static analysis, not for the transient one"
+            raise ValueError(msg)
 
     def cells(self, slots: int) -> Resolution:
         """Cells of a slot pitch for a machine with `slots` slots."""

@@ -53,12 +53,14 @@ def force_parts(
     solution: Solution,
     small: ComplexArray,
     response: tuple[ComplexArray, ComplexArray] | None = None,
+    added: tuple[ComplexArray, ComplexArray] | None = None,
 ) -> tuple[ComplexArray, ComplexArray, ComplexArray]:
     """Force at the positions of a torque field: rest, direct and mirrored as in `Force`.
 
     `small` (t, size, LANES) is the field of the complex slot currents `suspension_slot_mmf` of one
     ampere-turn on the sector of the suspension field. `response` is h/a of the rotor for positive
-    and for negative orders (orders + 1, LANES) if currents are induced.
+    and for negative orders (orders + 1, LANES) if currents are induced; `added` (t, m, LANES) is
+    what else belongs to h of the lowest m orders of either sign.
     """
     model = batch.model
     radius = batch.sections.bore_radius
@@ -77,6 +79,11 @@ def force_parts(
     )
     static = batch.response.astype(np.complex128)
     ahead, behind = (item[orders] for item in (response or (static, static)))
+    tangential, tangential_minus = ahead * plus, behind * minus
+    if added is not None:
+        count = added[0].shape[1]
+        tangential[:, :count] += added[0]
+        tangential_minus[:, :count] += added[1]
 
     def half_field(
         a: ComplexArray, h: ComplexArray, a_negative: ComplexArray, h_negative: ComplexArray
@@ -87,9 +94,9 @@ def force_parts(
             radius,
         )
 
-    field = half_field(plus, ahead * plus, minus, behind * minus)
+    field = half_field(plus, tangential, minus, tangential_minus)
     mirror = half_field(
-        np.conj(minus), np.conj(behind * minus), np.conj(plus), np.conj(ahead * plus)
+        np.conj(minus), np.conj(tangential_minus), np.conj(plus), np.conj(tangential)
     )
     phase = np.exp(1j * model.pole_pairs * main.angles)[:, None]
     rest = stress.pair(turning, turning, radius)
@@ -103,12 +110,13 @@ def suspension_force(
     solution: Solution,
     small: ComplexArray,
     response: tuple[ComplexArray, ComplexArray] | None = None,
+    added: tuple[ComplexArray, ComplexArray] | None = None,
 ) -> tuple[Force, bool]:
     """Force over the whole turn, see `force_parts`.
 
     Also tells whether the mean force follows the phasor (True) or its conjugate.
     """
-    force = whole_turn(batch, *force_parts(batch, solution, small, response))
+    force = whole_turn(batch, *force_parts(batch, solution, small, response, added))
     family = batch.model.task.winding.family
     return force, family.suspension_pole_pairs > family.pole_pairs
 

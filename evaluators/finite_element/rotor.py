@@ -135,7 +135,7 @@ class Rotor:
         return np.asarray(np.log(self.magnet_radius / self.iron_radius[-1]))
 
     @property
-    def _outer_rings(self) -> tuple[tuple[float, FloatArray], ...]:
+    def outer_rings(self) -> tuple[tuple[float, FloatArray], ...]:
         """Reluctivity and logarithmic width of sleeve and clearance."""
         return (
             (NU_0 / self.sleeve_permeability, np.log(self.sleeve_radius / self.magnet_radius)),
@@ -194,7 +194,7 @@ class Rotor:
             for p, direct in ((order, zero), (one, one))
         ]
         y = across_ring(core, order, NU_0 / self.magnet_permeability, self._magnet_width)
-        for nu, width in self._outer_rings:
+        for nu, width in self.outer_rings:
             damping = _damping(y, order, nu, width)
             sources = [source * damping for source in sources]
             y = across_ring(y, order, nu, width)
@@ -232,7 +232,7 @@ class Rotor:
         # Outwards: response and source at the inside of sleeve and clearance; then back inwards.
         y = across_ring(core, order, nu, self._magnet_width)
         rings = []
-        for nu_ring, width in self._outer_rings:
+        for nu_ring, width in self.outer_rings:
             rings.append((nu_ring, width, y, source))
             source = source * _damping(y, order, nu_ring, width)
             y = across_ring(y, order, nu_ring, width)

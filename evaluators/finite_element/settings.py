@@ -9,6 +9,7 @@ from evaluators.finite_element.model import Discretisation
 from evaluators.interface import EvaluatorError
 
 ANALYSES = ("static", "transient")
+ROTORS = ("uniform", "separate")
 KNOWN = (
     "analysis",
     "cells",
@@ -17,6 +18,7 @@ KNOWN = (
     "orders_per_slot",
     "positions",
     "refinement",
+    "rotor",
 )
 
 
@@ -25,8 +27,9 @@ def read_settings(settings: dict[str, object]) -> Discretisation:
 
     Known are ``analysis`` (``static`` or ``transient``, the latter with currents induced in the
     rotor), ``positions``, ``cogging_positions``, ``orders_per_slot``, ``iron_rings`` (see
-    `Discretisation`), ``refinement`` (cells and positions times this) and ``cells`` (a table with
-    the fields of `Resolution`).
+    `Discretisation`), ``refinement`` (cells and positions times this), ``cells`` (a table with
+    the fields of `Resolution`) and ``rotor`` (``uniform`` or ``separate``: the spaces between the
+    magnets as permeable as these, or non-magnetic, see `separate_magnets`).
 
     Raises
     ------
@@ -47,6 +50,11 @@ def read_settings(settings: dict[str, object]) -> Discretisation:
                     msg = f"setting analysis = {value!r} must be {' or '.join(ANALYSES)}"
                     raise EvaluatorError(msg)
                 result = replace(result, transient=value == "transient")
+            elif name == "rotor":
+                if value not in ROTORS:
+                    msg = f"setting rotor = {value!r} must be {' or '.join(ROTORS)}"
+                    raise EvaluatorError(msg)
+                result = replace(result, separate_magnets=value == "separate")
             elif name == "cells":
                 result = replace(result, resolution=_cells(value))
             elif name == "positions":

@@ -80,11 +80,11 @@ def force_curve(
 
     Up to the whole slot current on top of the duty's torque current. Mean force over 60 electrical
     degrees while it is commanded along x, and the largest angle between it and its mean there. All
-    lanes of the batch must be the same design.
+    lanes of the batch must be the same design. The rotor is the uniform one in any case.
     """
     batch, model = fields.batch, fields.batch.model
     angles = model.angles[::2]
-    linear, _ = suspension_force(batch, fields.loaded, fields.small)
+    linear, _ = suspension_force(batch, fields.loaded, fields.small, added=fields.added)
     amplitude = (current.torque + current.suspension) * SHARES
     phasor = amplitude * linear.command(0.0, forward)
     source, factor = model.unfold(model.whole)
