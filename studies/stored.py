@@ -76,7 +76,19 @@ class Stored:
     def front(self) -> pa.Table:
         """Feasible rows that no other dominates, all columns, in order of evaluation."""
         table = self.reader.front()
-        return table.sort_by("evaluation") if table.num_rows else table
+        if not table.num_rows:
+            return table
+        settings = self.reader.settings
+        wanted = [f"objective:{name}" for name in settings["objectives"]]
+        wanted += [f"margin:{name}" for name in settings["constraints"]]
+        missing = [name for name in wanted if name not in table.column_names]
+        if missing:
+            msg = (
+                f"{self.folder}: has parts of another study, which lack the column {missing[0]}; "
+                f"`hovergap resume {self.folder.parent}` sets them aside"
+            )
+            raise ResultsError(msg)
+        return table.sort_by("evaluation")
 
     @cached_property
     def front_objectives(self) -> FloatArray:
@@ -112,8 +124,30 @@ def stored_families(results: Results) -> list[Stored]:
     for family in results.study.families:
         folder = results.family_folder(family)
         if is_archive(folder):
-            found.append(Stored(results.study.name, family, folder, names, open_archive(folder)))
+            reader = _opened(results, folder)
+            found.append(Stored(results.study.name, family, folder, names, reader))
     return found
+
+
+def _opened(results: Results, folder: Path) -> ArchiveReader:
+    """The archive, if its objectives and limits are those of the study beside it."""
+    reader = open_archive(folder)
+    study = results.study
+    kinds = (
+        ("objectives", "objectives", [goal.name for goal in study.objectives]),
+        ("limits", "constraints", [limit.name for limit in study.limits]),
+    )
+    for word, key, wanted in kinds:
+        there = list(reader.settings[key])
+        if there != wanted:
+            odd = sorted({*there} ^ {*wanted})
+            differs = f"only one of them has {odd[0]}" if odd else "their order differs"
+            msg = (
+                f"{folder}: holds another study than {results.folder / 'study.toml'} says: its "
+                f"{word} are others ({differs}); put the study or the family's folder back"
+            )
+            raise ResultsError(msg)
+    return reader
 
 
 def stored_family(results: Results, family: str) -> Stored:
@@ -122,7 +156,7 @@ def stored_family(results: Results, family: str) -> Stored:
     Raises
     ------
     ResultsError
-        If the study has no such family or nothing of it is stored.
+        If the study has no such family, nothing of it is stored, or it is another study's.
     """
     if family not in results.study.families:
         remedy = suggest(family, results.study.families)
@@ -133,7 +167,7 @@ def stored_family(results: Results, family: str) -> Stored:
         msg = f"{folder}: nothing is stored of this family yet; `hovergap resume` searches it"
         raise ResultsError(msg)
     names = tuple(goal.name for goal in results.study.objectives)
-    return Stored(results.study.name, family, folder, names, open_archive(folder))
+    return Stored(results.study.name, family, folder, names, _opened(results, folder))
 
 
 @dataclass(frozen=True)

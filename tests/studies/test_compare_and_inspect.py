@@ -7,6 +7,7 @@ import io
 import itertools
 import json
 import re
+import shutil
 from collections.abc import Callable
 from pathlib import Path
 
@@ -252,6 +253,31 @@ def test_inspect_says_whether_a_design_is_on_the_front(hovergap: Run, swept: Pat
     output = hovergap("inspect", swept, f"Q6p2s1-{broken}").output
     assert "breaks at least one limit" in output
     assert re.search(r"tip_speed_m_s .* BROKEN", output)
+
+
+def test_results_of_another_study_are_not_compared(
+    hovergap: Run, write_study: Write, swept: Path
+) -> None:
+    """A study file put beside another study's archive, and parts put into it, are told apart."""
+    limited = ("[limits]\n", "[limits]\nefficiency = { at_least = 0.1 }\n")
+    other = write_study(('name = "small"', 'name = "other"'), limited, name="other.toml")
+    assert hovergap("sweep", other, "--workers", "1").exit_code == 0
+    kept = (swept / "study.toml").read_text()
+    shutil.copy("results/other/study.toml", swept / "study.toml")
+    for command in (("compare", swept), ("inspect", swept, "Q6p2s1-000001")):
+        result = hovergap(*command)
+        assert result.exit_code == 2
+        assert "holds another study" in result.output
+        assert "efficiency_at_least" in result.output
+    (swept / "study.toml").write_text(kept)
+    for part in Path("results/other/Q6p2s1").glob("part-*.parquet"):
+        part.unlink()
+    for part in (swept / "Q6p2s1").glob("part-*.parquet"):
+        shutil.copy(part, "results/other/Q6p2s1")
+    result = hovergap("compare", "results/other")
+    assert result.exit_code == 2
+    assert "parts of another study" in result.output
+    assert "hovergap resume results/other" in result.output
 
 
 def test_tables() -> None:
