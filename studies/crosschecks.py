@@ -197,6 +197,12 @@ def check_objectives(entries: object) -> tuple[tuple[Objective, ...], list[Findi
         found, wrong = validated(ObjectiveEntry, entry, path)
         findings += wrong
         if found is None:
+            # What is right in the entry is still checked, so that one run tells every mistake.
+            refused = {item.path[len(path)] for item in wrong if len(item.path) > len(path)}
+            rest = {k: v for k, v in entry.items() if k not in refused} if refused else None
+            found = validated(ObjectiveEntry, rest, path)[0] if rest and "metric" in rest else None
+            if found is not None:
+                findings += _objective(found, path)[1]
             continue
         objective, wrong = _objective(found, path)
         findings += wrong

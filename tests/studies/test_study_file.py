@@ -235,6 +235,12 @@ CASES = {
         'sense = "minimize"',
         ["did you mean 'minimise'?"],
     ),
+    "sense and metric": (
+        'metric = "cost"\nsense = "minimise"',
+        'metric = "price"\nsense = "minimize"',
+        'metric = "price"',
+        ["there is no metric 'price'"],
+    ),
     "objective twice": (
         'metric = "cost"',
         'metric = "loss_total_W"',
