@@ -53,4 +53,7 @@ def begin_study(
     except FileExistsError:
         msg = f"{file}: exists already and is left alone; choose another name"
         raise StudiesError(msg) from None
+    except FileNotFoundError:
+        msg = f"{file}: there is no folder {file.parent}; make it first"
+        raise StudiesError(msg) from None
     return study

@@ -31,11 +31,12 @@ def metrics(as_json: bool, variables: bool) -> None:
         click.echo(text_table(head, rows, left=5))
         return
     better = {True: "smaller", False: "larger", None: "-"}
+    groups = list(dict.fromkeys(metric.group for metric in METRICS))
     group = ""
-    for metric in METRICS:
+    for metric in sorted(METRICS, key=lambda item: groups.index(item.group)):
         if metric.group != group:
             group = metric.group
-            click.echo(f"{'' if metric is METRICS[0] else chr(10)}{group}")
+            click.echo(f"{'' if group == groups[0] else chr(10)}{group}")
         unit = "ratio" if metric.unit == "1" else metric.unit
         click.echo(f"  {metric.name}  [{unit}]  better: {better[metric.smaller_is_better]}")
         click.echo(f"      {metric.definition}")

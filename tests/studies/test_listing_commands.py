@@ -68,11 +68,19 @@ def test_families_refuses_bad_numbers(value: str, hovergap: Run) -> None:
 def test_metrics_and_materials(hovergap: Run) -> None:
     text = hovergap("metrics").output
     assert all(metric.name in text and metric.definition in text for metric in METRICS)
+    heads = [line for line in text.splitlines() if line and not line.startswith(" ")]
+    assert sorted(heads) == sorted({metric.group for metric in METRICS})  # each group once
     listed = json.loads(hovergap("metrics", "--json").output)
     assert [item["name"] for item in listed] == [metric.name for metric in METRICS]
     assert "rotor_radius_mm" in hovergap("metrics", "--variables").output
     names = {item["name"] for item in json.loads(hovergap("materials", "--json").output)}
     assert {"Copper", "TiAl6V4", "42CrMo4"} <= names
+
+
+def test_new_in_a_folder_that_is_not_there(hovergap: Run) -> None:
+    result = hovergap("new", "none/drive.toml")
+    assert result.exit_code == 2
+    assert "there is no folder none" in result.output
 
 
 @pytest.mark.parametrize(
