@@ -152,6 +152,12 @@ def test_lifted_magnets_weigh_on_the_sleeve_alone() -> None:
     assert lift_off_speed(rotor, -1e-3) == 0.0
 
 
+def test_pressed_sleeve_has_no_radial_tension_at_all() -> None:
+    """Where the wall is pressed throughout, the free face must not lend its rounding error."""
+    state = sleeve_stress(section(FIBRE, 0.003), np.linspace(60e-6, 90e-6, 200), 0.5 * W, 20.0)
+    assert np.all(state.radial_tension == 0.0)
+
+
 def test_thin_sleeve_is_a_thin_ring_under_its_load() -> None:
     """Hoop stress of a thin wall: (p R + rho w² R² t) / t, common practice for a first estimate."""
     thin = replace(ring(), outer_radius=floats(0.0201))
