@@ -12,10 +12,11 @@ magnet's flank is not multiplied by a step (L. Li, J. Opt. Soc. Am. A 13(9), 199
 matrix of h over a is marched outwards from the core; nothing is meshed. What it differs by from
 the uniform rotor's is added to h on the bore in rounds with the stator, up to order 4 Q.
 
-How much it matters, over 16 random machines of every family of the shipped blower study (median
-and 90th percentile): force 0.05 to 0.4 % and 0.2 to 1.4 %, force error magnitude 0.001 to 0.008
-and 0.002 to 0.02, torque ripple 0.0001 to 0.002 and 0.0005 to 0.008. The time grows to 1.2 to 2.2
-times.
+How much it matters, over 16 random machines of each of the 15 families of the shipped studies
+(median and 90th percentile of the families): force 0.05 to 0.4 % and 0.1 to 1.4 %, force error
+magnitude 0.0002 to 0.008 and 0.0006 to 0.022, torque ripple 0.0001 to 0.002 and 0.0002 to 0.008;
+torque up to 0.6 % in other random machines. Most where ps = p - 1, whose main force is a small
+difference that the mixed orders -1 - p disturb. The time grows to 1.8 times (1.2 to 2.2).
 """
 
 from __future__ import annotations
