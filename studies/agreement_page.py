@@ -42,6 +42,12 @@ NOTES = (
     "inverter: nearly the same in all designs, so their ranks say little.",
     "`sleeve_radial_tension_MPa` is zero in most designs, `parallel_groups` has two values, and "
     "`copper_fill` hardly varies: their ranks say little too.",
+    "Force misses its goal only in families with ps = p - 1. There the main force is the "
+    "small difference of two parts of Maxwell's stress (coth - 1 in the closed form, "
+    "against coth + 1 for ps = p + 1), so a few per cent of field become twice as much of "
+    "force, and a two-pole suspension field closes through the whole yoke, whose saturation "
+    "the analytic circuit knows only in the mean over its thickness. Cogging of a large "
+    "common multiple of slots and poles is a tiny difference of the same kind.",
     "The median tells of ordinary designs; the ninth decile mostly of saturated ones, which the "
     "analytic evaluator treats by a circuit of teeth and yoke. Verify what a search has chosen: "
     "`hovergap verify RESULTS/STUDY --front`.",
