@@ -6,6 +6,7 @@ the limits decide.
 
 from __future__ import annotations
 
+from collections import Counter
 from dataclasses import dataclass
 from math import pi
 
@@ -97,14 +98,25 @@ def size(power: float, speed: float, overspeed_ratio: float) -> Sizing:
 
 
 def _families(speed: float) -> tuple[tuple[str, ...], float]:
-    """Families whose electrical frequency stays moderate, fewest slots first; and the highest."""
+    """Families whose electrical frequency stays moderate, fewest slots first; and the highest.
+
+    Every pole number has its turn: few poles save iron loss, many save yoke and end turns, and
+    which of them wins is what a search is for.
+    """
     turns = speed / (2.0 * pi)
     pairs = [p for p in POLE_PAIRS if p * turns <= ELECTRICAL_FREQUENCY] or list(POLE_PAIRS[:2])
     found = [item for item in enumerate_families(SLOTS, pairs) if isinstance(item, Winding)]
     # Short coils first: their end turns are shorter and do not cross.
     found.sort(key=lambda item: (item.family.coil_pitch / item.family.slots, item.family.slots))
+    met: Counter[int] = Counter()
+    turn = []
+    for item in found:
+        turn.append(met[item.family.pole_pairs])
+        met[item.family.pole_pairs] += 1
+    order = sorted(range(len(found)), key=lambda index: (turn[index], index))
     kept = sorted(
-        found[:MOST_FAMILIES], key=lambda item: (item.family.slots, item.family.pole_pairs)
+        [found[index] for index in order[:MOST_FAMILIES]],
+        key=lambda item: (item.family.slots, item.family.pole_pairs),
     )
     return (
         tuple(item.family.id for item in kept),

@@ -30,7 +30,8 @@ SHAPE_BOUNDS = {
 }
 # Others as multiples of a length of the sized machine.
 SIZE_BOUNDS = {
-    "rotor_radius_mm": ("rotor_radius", 0.7, 1.3),
+    # Low enough for four times the torque per volume that the sizing assumes, in a longer stack.
+    "rotor_radius_mm": ("rotor_radius", 0.45, 1.3),
     "sleeve_thickness_mm": ("sleeve_thickness", 0.5, 2.0),
     "magnet_thickness_mm": ("magnet_thickness", 0.5, 1.6),
     "tip_height_mm": ("rotor_radius", 0.02, 0.08),
@@ -77,7 +78,7 @@ def _head(name: str, power_kW: float, speed_rpm: float, sizing: Sizing) -> str:
     )
     basis = f"""First-order sizing behind this file. The torque is {power_kW:g} kW over
 {speed_rpm:g} r/min, {sizing.torque:.3g} N m. A torque per rotor volume of
-{TORQUE_PER_VOLUME / 1e3:g} kN m/m3 and a stack of {LENGTH_RATIO:g} rotor diameters
+{TORQUE_PER_VOLUME / 1e3:g} kN m/m3 and a stack of {LENGTH_RATIO:g} x the rotor diameter
 give a rotor radius of {sizing.rotor_radius / MILLI:.3g} mm and a stack of
 {sizing.stack_length / MILLI:.3g} mm. {limited} These are rules of thumb: they only centre the
 bounds below, and the search decides."""
@@ -182,9 +183,9 @@ def _variables(sizing: Sizing) -> str:
 
 def _families(sizing: Sizing) -> str:
     listed = ", ".join(f'"{family}"' for family in sizing.families)
-    choice = f"""Families up to about {ELECTRICAL_FREQUENCY:g} Hz electrical frequency, those with
-short coils first; `hovergap families` lists all that can be wound. A rule may stand here instead:
-slots = [12, 18] with pole_pairs = [2, 4]."""
+    choice = f"""Families up to about {ELECTRICAL_FREQUENCY:g} Hz electrical frequency, of each
+number of pole pairs those with the shortest coils; `hovergap families` lists all that can be wound.
+A rule may stand here instead: slots = [12, 18] with pole_pairs = [2, 4]."""
     return f"""
 {_comment(choice)}
 [families]

@@ -108,6 +108,19 @@ def test_new_refuses_unusable_names(name: str, hovergap: Run) -> None:
     assert not Path(name).exists()
 
 
+@pytest.mark.parametrize(
+    ("speed", "pole_pairs"), [("20000", {1, 2, 4, 5}), ("48000", {1, 2}), ("90000", {1})]
+)
+def test_new_study_tries_every_number_of_pole_pairs(
+    speed: str, pole_pairs: set[int], hovergap: Run, tmp_path: Path
+) -> None:
+    """All that a three-phase winding can have below 1700 Hz at this speed, by f = p n / 60."""
+    file = tmp_path / "drive.toml"
+    assert hovergap("new", file, "--speed", speed).exit_code == 0
+    ids = re.findall(r'"Q\d+p(\d+)s\d+"', file.read_text())
+    assert {int(pairs) for pairs in ids} == pole_pairs
+
+
 def test_sizing_follows_its_stated_rules() -> None:
     from studies.sizing import LENGTH_RATIO, TIP_SPEED, TORQUE_PER_VOLUME, size
 
