@@ -59,7 +59,9 @@ def study_text(
         ),
         _variables(sizing),
         _families(sizing),
-        END.format(tip_speed=max(200.0, 1.2 * sizing.tip_speed)),
+        END.format(
+            tip_speed=max(200.0, 1.2 * sizing.tip_speed), overspeed=overspeed_ratio * speed_rpm
+        ),
     ]
     return "\n".join(part.strip("\n") + "\n" for part in parts)
 
@@ -207,7 +209,8 @@ slot_occupation = {{ at_most = 1.0 }}           # the wires fit
 insulation_margin_K = {{ at_least = 0.0 }}      # hot spot below the insulation class
 rotor_material_margin_K = {{ at_least = 0.0 }}
 fault_demagnetisation_margin_T = {{ at_least = 0.0 }}   # magnets outlive a short circuit
-separation_margin = {{ at_least = 0.0 }}        # bending speed clear of the duty; state [rotor]
+separation_margin = {{ at_least = 0.0 }}        # bending speeds clear of the duty; state [rotor]
+free_bending_speed_rpm = {{ at_least = {overspeed:.0f} }}   # no bending mode up to overspeed
 length_ratio = {{ at_most = 2.5 }}
 
 [[objectives]]

@@ -119,6 +119,9 @@ def test_new_study_tries_every_number_of_pole_pairs(
     assert hovergap("new", file, "--speed", speed).exit_code == 0
     ids = re.findall(r'"Q\d+p(\d+)s\d+"', file.read_text())
     assert {int(pairs) for pairs in ids} == pole_pairs
+    # Overspeed is 1.2 of the speed unless told: the rotor passes no bending speed on its way.
+    limit = f"free_bending_speed_rpm = {{ at_least = {1.2 * float(speed):.0f} }}"
+    assert limit in file.read_text()
 
 
 def test_sizing_follows_its_stated_rules() -> None:
