@@ -7,8 +7,8 @@ Contract, held by the conformance suite in `tests/evaluators/conformance.py`:
 
 * Pure: the same designs give the same numbers, bit for bit, whatever was evaluated before; inputs
   are never modified.
-* Batch: `designs` maps every name of `evaluators.machine.variables.VARIABLES` to an array (n,) in
-  the unit its suffix states. The result has n rows in the same order.
+* Batch: `designs` maps every name of `evaluators.machine.geometry.variables.VARIABLES` to an
+  array (n,) in the unit its suffix states. The result has n rows in the same order.
 * Failure is data: a design that is no real cross-section, or that the model cannot solve, is a row
   with a status other than ``ok``, a reason of one sentence, and NaN in every metric. An exception
   leaves `evaluate` only for a programming or calling error (a missing variable, unequal lengths).
@@ -26,7 +26,7 @@ from typing import Protocol, cast, runtime_checkable
 import numpy as np
 from numpy.typing import NDArray
 
-from evaluators.machine.task import Task
+from evaluators.machine.task.task import Task
 
 FloatArray = NDArray[np.float64]
 

@@ -80,7 +80,7 @@ def _expected(error: Exception) -> tuple[str, int] | None:
 def _show_version(context: click.Context, parameter: click.Parameter, wanted: bool) -> None:
     del parameter
     if wanted:
-        from studies.layout import program_version
+        from studies.stored.layout import program_version
 
         click.echo(f"hovergap {program_version()}")
         context.exit()

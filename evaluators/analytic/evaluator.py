@@ -13,10 +13,10 @@ from evaluators.analytic.model import AnalyticModel, Resolution
 from evaluators.analytic.waveforms import waveforms
 from evaluators.interface import Capability, Evaluations, EvaluatorError, Status, Waveform
 from evaluators.machine.field import excitation
-from evaluators.machine.geometry import batch_length, cross_sections
+from evaluators.machine.geometry.cross_sections import batch_length, cross_sections
 from evaluators.machine.metrics import METRICS
 from evaluators.machine.performance import performance
-from evaluators.machine.task import Task
+from evaluators.machine.task.task import Task
 
 FloatArray = NDArray[np.float64]
 

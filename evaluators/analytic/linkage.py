@@ -15,7 +15,7 @@ from evaluators.analytic.gap import GapField
 from evaluators.analytic.rotation import Rotation
 from evaluators.analytic.rotor import MU_0
 from evaluators.analytic.slots import SlotMouth
-from evaluators.machine.winding import Connection, Winding
+from evaluators.machine.winding.winding import Connection, Winding
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]

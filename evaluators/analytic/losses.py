@@ -11,10 +11,10 @@ from evaluators.analytic.linkage import Linkage
 from evaluators.analytic.rotation import Rotation
 from evaluators.analytic.waves import Waves
 from evaluators.machine.field import Excitation
-from evaluators.machine.geometry import CrossSections
+from evaluators.machine.geometry.cross_sections import CrossSections
 from evaluators.machine.losses.eddy import RotorEddyLoss, rotor_eddy_loss
 from evaluators.machine.losses.iron import iron_loss_from_waveform
-from evaluators.machine.task import Task
+from evaluators.machine.task.task import Task
 
 FloatArray = NDArray[np.float64]
 

@@ -25,8 +25,8 @@ from evaluators.analytic.saturation import (
 from evaluators.analytic.slots import SlotMouth, mouth
 from evaluators.analytic.waves import PerfectStator, Waves
 from evaluators.machine.field import Excitation, FieldSolution
-from evaluators.machine.geometry import CrossSections
-from evaluators.machine.task import Task
+from evaluators.machine.geometry.cross_sections import CrossSections
+from evaluators.machine.task.task import Task
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]

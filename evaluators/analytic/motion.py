@@ -15,9 +15,9 @@ from evaluators.analytic.rotor import MU_0
 from evaluators.analytic.slots import SlotMouth
 from evaluators.analytic.waves import Waves
 from evaluators.machine.field import Excitation
-from evaluators.machine.geometry import CrossSections
-from evaluators.machine.magnetization import MagnetizationCurve
-from evaluators.machine.winding import Connection
+from evaluators.machine.geometry.cross_sections import CrossSections
+from evaluators.machine.materials.magnetization import MagnetizationCurve
+from evaluators.machine.winding.winding import Connection
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]

@@ -23,8 +23,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from evaluators.analytic.rotor import MU_0
-from evaluators.machine.geometry import CrossSections
-from evaluators.machine.magnetization import MagnetizationCurve
+from evaluators.machine.geometry.cross_sections import CrossSections
+from evaluators.machine.materials.magnetization import MagnetizationCurve
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]

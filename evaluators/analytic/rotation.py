@@ -16,7 +16,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from evaluators.analytic.gap import GapField
-from evaluators.machine.winding import Connection, Winding
+from evaluators.machine.winding.winding import Connection, Winding
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]

@@ -16,7 +16,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from evaluators.machine.geometry import CrossSections
+from evaluators.machine.geometry.cross_sections import CrossSections
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]

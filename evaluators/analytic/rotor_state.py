@@ -7,7 +7,7 @@ from numpy.typing import NDArray
 
 from evaluators.analytic.gap import GapField
 from evaluators.analytic.rotor import MU_0
-from evaluators.machine.geometry import CrossSections
+from evaluators.machine.geometry.cross_sections import CrossSections
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]

@@ -17,8 +17,8 @@ from numpy.typing import NDArray
 
 from evaluators.analytic.gap import Iron
 from evaluators.analytic.rotor import MU_0, RotorRadii, core_share, response, source
-from evaluators.machine.geometry import CrossSections
-from evaluators.machine.magnetization import MagnetizationCurve
+from evaluators.machine.geometry.cross_sections import CrossSections
+from evaluators.machine.materials.magnetization import MagnetizationCurve
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]

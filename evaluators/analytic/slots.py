@@ -21,7 +21,7 @@ from numpy.typing import NDArray
 from scipy.integrate import quad_vec
 from scipy.linalg import expm
 
-from evaluators.machine.geometry import CrossSections
+from evaluators.machine.geometry.cross_sections import CrossSections
 
 FloatArray = NDArray[np.float64]
 

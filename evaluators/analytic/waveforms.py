@@ -10,7 +10,7 @@ from evaluators.analytic.linkage import SAMPLES
 from evaluators.analytic.model import AnalyticModel
 from evaluators.interface import Waveform
 from evaluators.machine.field import excitation
-from evaluators.machine.geometry import cross_sections
+from evaluators.machine.geometry.cross_sections import cross_sections
 
 
 def waveforms(model: AnalyticModel, design: Mapping[str, float]) -> tuple[Waveform, ...]:

@@ -26,11 +26,11 @@ from evaluators.interface import (
     Waveform,
 )
 from evaluators.machine.field import Excitation, FieldSolution, excitation
-from evaluators.machine.geometry import CrossSections, batch_length, cross_sections
+from evaluators.machine.geometry.cross_sections import CrossSections, batch_length, cross_sections
+from evaluators.machine.geometry.variables import VARIABLE_NAMES
 from evaluators.machine.metrics import METRICS
 from evaluators.machine.performance import performance
-from evaluators.machine.task import Task
-from evaluators.machine.variables import VARIABLE_NAMES
+from evaluators.machine.task.task import Task
 
 FloatArray = NDArray[np.float64]
 

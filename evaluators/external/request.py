@@ -8,7 +8,11 @@ from math import degrees
 from typing import Any
 
 from evaluators.external.quantities import FIELD
-from evaluators.machine.description import (
+from evaluators.machine.field import Excitation
+from evaluators.machine.geometry.cross_sections import CrossSections
+from evaluators.machine.geometry.dxf import dxf_bytes
+from evaluators.machine.geometry.outlines import outlines
+from evaluators.machine.task.description import (
     GUIDE,
     TEMPERATURE_LAW,
     machine_description,
@@ -16,12 +20,8 @@ from evaluators.machine.description import (
     materials_by_role,
     region_description,
 )
-from evaluators.machine.drawing import dxf_bytes
-from evaluators.machine.field import Excitation
-from evaluators.machine.geometry import CrossSections
-from evaluators.machine.outlines import outlines
-from evaluators.machine.phases import current_phases
-from evaluators.machine.task import Task
+from evaluators.machine.task.task import Task
+from evaluators.machine.winding.phases import current_phases
 
 FORMAT = "hovergap field request"
 FORMAT_VERSION = 1

@@ -7,13 +7,12 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from evaluators.finite_element import losses, newton, stress, transient
-from evaluators.finite_element.batch import BatchField, Equations, Solution, SolverFactory
-from evaluators.finite_element.densities import densities
-from evaluators.finite_element.displacement import stiffness
-from evaluators.finite_element.lanes import LANES
+from evaluators.finite_element import transient
 from evaluators.finite_element.model import FieldModel
-from evaluators.finite_element.quantities import (
+from evaluators.finite_element.outcome import losses, stress
+from evaluators.finite_element.outcome.densities import densities
+from evaluators.finite_element.outcome.displacement import stiffness
+from evaluators.finite_element.outcome.quantities import (
     Force,
     fundamental_linkage,
     interpolate,
@@ -22,9 +21,12 @@ from evaluators.finite_element.quantities import (
     suspension_inductance,
     suspension_loads,
 )
-from evaluators.finite_element.separate_magnets import SeparateMagnets
+from evaluators.finite_element.rotor.separate_magnets import SeparateMagnets
+from evaluators.finite_element.solution import newton
+from evaluators.finite_element.solution.batch import BatchField, Equations, Solution, SolverFactory
+from evaluators.finite_element.solution.lanes import LANES
 from evaluators.machine.field import Excitation, FieldSolution
-from evaluators.machine.geometry import CrossSections
+from evaluators.machine.geometry.cross_sections import CrossSections
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]

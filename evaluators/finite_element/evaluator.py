@@ -9,17 +9,17 @@ import numpy as np
 from numpy.typing import NDArray
 
 from evaluators.finite_element import analysis
-from evaluators.finite_element.lanes import LANES
-from evaluators.finite_element.mesh import MeshError
+from evaluators.finite_element.mesh.geometry import MeshError
 from evaluators.finite_element.model import FieldModel
+from evaluators.finite_element.outcome.waveforms import waveforms
 from evaluators.finite_element.settings import read_settings
-from evaluators.finite_element.waveforms import waveforms
+from evaluators.finite_element.solution.lanes import LANES
 from evaluators.interface import Capability, Evaluations, Status, Waveform
 from evaluators.machine.field import Excitation, FieldSolution, excitation
-from evaluators.machine.geometry import CrossSections, batch_length, cross_sections
+from evaluators.machine.geometry.cross_sections import CrossSections, batch_length, cross_sections
 from evaluators.machine.metrics import METRICS
 from evaluators.machine.performance import performance
-from evaluators.machine.task import Task
+from evaluators.machine.task.task import Task
 
 FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]

@@ -8,11 +8,11 @@ from functools import cached_property
 import numpy as np
 from numpy.typing import NDArray
 
-from evaluators.finite_element import newton
-from evaluators.finite_element.lattice import Lattice, Resolution
-from evaluators.finite_element.symmetry import Sector, Symmetry, symmetry
-from evaluators.finite_element.system import CurveTable, Topology
-from evaluators.machine.task import Task
+from evaluators.finite_element.mesh.lattice import Lattice, Resolution
+from evaluators.finite_element.mesh.symmetry import Sector, Symmetry, symmetry
+from evaluators.finite_element.solution import newton
+from evaluators.finite_element.solution.system import CurveTable, Topology
+from evaluators.machine.task.task import Task
 
 FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from dataclasses import fields, replace
 
-from evaluators.finite_element.lattice import Resolution
+from evaluators.finite_element.mesh.lattice import Resolution
 from evaluators.finite_element.model import Discretisation
 from evaluators.interface import EvaluatorError
 

@@ -18,10 +18,10 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from evaluators.finite_element.batch import BatchField, Equations, Induced, Solution
-from evaluators.finite_element.eddy import Conductors, EddyLoss, EddyRotor
-from evaluators.finite_element.lanes import LANES
-from evaluators.finite_element.quantities import suspension_loads
+from evaluators.finite_element.outcome.quantities import suspension_loads
+from evaluators.finite_element.rotor.eddy import Conductors, EddyLoss, EddyRotor
+from evaluators.finite_element.solution.batch import BatchField, Equations, Induced, Solution
+from evaluators.finite_element.solution.lanes import LANES
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]

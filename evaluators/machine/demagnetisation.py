@@ -10,7 +10,7 @@ from numpy.typing import ArrayLike
 
 from evaluators.machine.checks import require, require_choice
 from evaluators.machine.quantity import MU_0, FloatArray, floats
-from evaluators.machine.winding import Winding
+from evaluators.machine.winding.winding import Winding
 
 POSITIONS = 6  # rotor positions over 60 electrical degrees, after which currents repeat
 POINTS = 12  # looked at on each pole

@@ -11,8 +11,8 @@ from dataclasses import dataclass, fields
 import numpy as np
 from numpy.typing import NDArray
 
-from evaluators.machine.geometry import CrossSections
-from evaluators.machine.task import Construction, Duty
+from evaluators.machine.geometry.cross_sections import CrossSections
+from evaluators.machine.task.task import Construction, Duty
 
 FloatArray = NDArray[np.float64]
 

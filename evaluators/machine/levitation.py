@@ -13,7 +13,7 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from evaluators.machine.quantity import FloatArray, floats
-from evaluators.machine.task import Duty
+from evaluators.machine.task.task import Duty
 
 ZONE_LIMITS = {"A": 0.3, "B": 0.4, "C": 0.5}
 """Largest displacement of each zone over the smallest clearance; ISO 14839-2:2004 (from memory)."""

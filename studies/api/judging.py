@@ -14,12 +14,12 @@ from studies.choice.candidates import candidate_pools
 from studies.choice.decision import decide
 from studies.choice.preferences import Market, preferences
 from studies.choice.preferences import Method as Ranking
-from studies.chosen import QUICK_EVALUATOR, Chosen, choose_design, dispatcher_for
 from studies.errors import StudiesError
-from studies.layout import open_results
 from studies.sensitivity import study as sensitivity_room
 from studies.sensitivity.indices import TooFewError
 from studies.sensitivity.tables import indices_csv, lines_csv
+from studies.stored.design import QUICK_EVALUATOR, Chosen, choose_design, dispatcher_for
+from studies.stored.layout import open_results
 from studies.tolerance import report as tolerance_room
 from studies.tolerance.run import built_machines
 from studies.tolerance.scatter import Distribution, defaults, draw, overridden

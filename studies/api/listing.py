@@ -7,13 +7,13 @@ from dataclasses import asdict
 
 import pyarrow as pa
 
-from evaluators.machine.families import enumerate_families
-from evaluators.machine.materials import available, load
+from evaluators.machine.geometry.variables import VARIABLES
+from evaluators.machine.materials.library import available, load
 from evaluators.machine.metrics import METRICS
-from evaluators.machine.variables import VARIABLES
-from evaluators.machine.winding import Winding
+from evaluators.machine.winding.families import enumerate_families
+from evaluators.machine.winding.winding import Winding
 from studies.api.tables import table_of
-from studies.convert import MATERIAL_KINDS, RPM
+from studies.study_file.convert import MATERIAL_KINDS, RPM
 
 
 def metrics() -> pa.Table:

@@ -8,14 +8,14 @@ from pathlib import Path
 import pyarrow as pa
 
 from studies.api.tables import Folder, Folders, described, opened, table_of, table_of_csv
-from studies.comparison import compare_families
-from studies.comparison_text import summary_csv
+from studies.comparison.numbers import compare_families
+from studies.comparison.text import summary_csv
 from studies.export.front import front_table
-from studies.inspection import inspect_design
-from studies.layout import Results, open_results
-from studies.status import study_status
-from studies.stored import design_id, stored_families, stored_family
-from studies.verified import evaluator_for, read_verified, verified_evaluators
+from studies.inspection.design import inspect_design
+from studies.running.status import study_status
+from studies.stored.families import design_id, stored_families, stored_family
+from studies.stored.layout import Results, open_results
+from studies.stored.verified import evaluator_for, read_verified, verified_evaluators
 
 
 def open_study(folder: Folder) -> Results:

@@ -8,16 +8,16 @@ from pathlib import Path
 
 import pyarrow as pa
 
-from optimizer.lock import writer_lock
-from optimizer.progress import Progress, Summary
-from studies import sweep as room
+from optimizer.archive.lock import writer_lock
+from optimizer.running.progress import Progress, Summary
 from studies.api.tables import Folder, table_of
-from studies.beginning import begin_study
-from studies.definition import Study
-from studies.layout import Request, Results, create, open_results, save_request
-from studies.library import find_study
-from studies.problem import MachineProblem
-from studies.spending import Spending, dispatcher_of
+from studies.new_study.beginning import begin_study
+from studies.running import sweep as room
+from studies.running.problem import MachineProblem
+from studies.running.spending import Spending, dispatcher_of
+from studies.shipped.library import find_study
+from studies.stored.layout import Request, Results, create, open_results, save_request
+from studies.study_file.definition import Study
 
 Watch = Callable[[str, Progress], None]
 Stop = Callable[[], bool]
@@ -85,7 +85,7 @@ def sweep(
     allow_program : bool
         Consent to start the program that the evaluator's settings name.
     progress : callable, optional
-        Called with the family and its `optimizer.progress.Progress` several times a second.
+        Called with the family and its `optimizer.running.progress.Progress` several times a second.
     stop : callable, optional
         Asked often; True lets the designs in hand finish, stores them and ends.
 

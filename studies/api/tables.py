@@ -10,10 +10,10 @@ from typing import Any
 import pyarrow as pa
 from pyarrow import csv
 
+from evaluators.machine.geometry.variables import VARIABLES
 from evaluators.machine.metrics import METRIC
-from evaluators.machine.variables import VARIABLES
 from studies.errors import ResultsError
-from studies.layout import Results, open_results
+from studies.stored.layout import Results, open_results
 
 Folder = str | Path
 Folders = Folder | Sequence[Folder]

@@ -5,15 +5,15 @@ from __future__ import annotations
 from pathlib import Path
 
 from studies.api.tables import Folder, Folders, opened
-from studies.chosen import choose_design
 from studies.export.design import design_files, design_notes, front_notes
 from studies.export.files import write_folder
 from studies.export.front import front_files, front_table
-from studies.layout import open_results, storage
 from studies.report.build import report_html
 from studies.report.collect import collect
+from studies.running.sweep import usable_workers
 from studies.sheet.content import design_sheet
-from studies.sweep import usable_workers
+from studies.stored.design import choose_design
+from studies.stored.layout import open_results, storage
 
 
 def export_design(

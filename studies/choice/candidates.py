@@ -10,15 +10,15 @@ import pyarrow as pa
 from numpy.typing import NDArray
 
 from evaluators.machine.cost import active_material_cost
-from evaluators.machine.geometry import cross_sections
-from evaluators.machine.mass import active_masses
-from evaluators.machine.variables import VARIABLE_NAMES
+from evaluators.machine.geometry.cross_sections import cross_sections
+from evaluators.machine.geometry.mass import active_masses
+from evaluators.machine.geometry.variables import VARIABLE_NAMES
 from studies.choice.preferences import Preferences, scenario_prices
-from studies.crosschecks import Limit
 from studies.errors import ResultsError
-from studies.layout import Results
-from studies.problem import margin
-from studies.stored import Stored, design_id, matrix, stored_families
+from studies.running.problem import margin
+from studies.stored.families import Stored, design_id, matrix, stored_families
+from studies.stored.layout import Results
+from studies.study_file.crosschecks import Limit
 
 FloatArray = NDArray[np.float64]
 BoolArray = NDArray[np.bool_]

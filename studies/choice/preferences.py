@@ -9,9 +9,9 @@ from typing import Any, Literal
 
 from evaluators.machine.cost import Price, Prices
 from evaluators.machine.metrics import METRIC
-from studies.crosschecks import METRIC_LISTING, Limit
-from studies.definition import Study
 from studies.errors import StudiesError
+from studies.study_file.crosschecks import METRIC_LISTING, Limit
+from studies.study_file.definition import Study
 from studies.suggestions import suggest, unknown
 
 Method = Literal["achievement", "sum"]

@@ -10,7 +10,7 @@ from contextlib import suppress
 from pathlib import Path
 from typing import Any
 
-from studies.layout import storage
+from studies.stored.layout import storage
 
 FOLDER = "decisions"
 NAME = re.compile(r"decision-(\d+)\.(json|txt)")

@@ -86,7 +86,7 @@ def choose(
     from studies.choice.preferences import Market, Method, preferences, read_pairs
     from studies.choice.store import store_decision
     from studies.errors import EXIT_NOTHING_FEASIBLE, StudiesError
-    from studies.layout import open_results
+    from studies.stored.layout import open_results
     from studies.tables import number
 
     because = " ".join(because.split())

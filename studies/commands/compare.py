@@ -30,12 +30,12 @@ def compare(
     verified_by: str,
 ) -> None:
     """Compare the families of one or several studies by their fronts."""
-    from studies import comparison_text
-    from studies.comparison import as_json as comparison_json
-    from studies.comparison import compare_families
-    from studies.damage import report_damage, report_verified_damage
-    from studies.layout import open_results
-    from studies.verified import VerifiedStored, evaluator_for
+    from studies.comparison import text as comparison_text
+    from studies.comparison.numbers import as_json as comparison_json
+    from studies.comparison.numbers import compare_families
+    from studies.stored.damage import report_damage, report_verified_damage
+    from studies.stored.layout import open_results
+    from studies.stored.verified import VerifiedStored, evaluator_for
 
     distinct = dict.fromkeys(str(Path(folder)) for folder in folders)
     opened = [open_results(Path(folder)) for folder in distinct]
@@ -63,7 +63,7 @@ def compare(
 
 
 def _write(file: Path, text: str) -> None:
-    from studies.layout import storage
+    from studies.stored.layout import storage
 
     with storage(file, "write"):
         file.write_text(text, encoding="utf-8")

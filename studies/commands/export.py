@@ -36,9 +36,9 @@ def export(
     """
     from pathlib import Path
 
-    from studies.damage import report_damage
     from studies.export.files import write_folder
-    from studies.layout import open_results
+    from studies.stored.damage import report_damage
+    from studies.stored.layout import open_results
 
     results = open_results(Path(results_folder))
     damaged: tuple[str, ...] = ()
@@ -51,8 +51,8 @@ def export(
         files, notes = front_files(results, front), front_notes(results, front)
         title = f"Fronts of study {results.study.name}"
     else:
-        from studies.chosen import choose_design
         from studies.export.design import design_files, design_notes
+        from studies.stored.design import choose_design
 
         chosen = choose_design(results, design, evaluator)
         files, notes = design_files(chosen), design_notes(chosen)

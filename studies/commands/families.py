@@ -52,9 +52,9 @@ def families(
     slots: list[int], pole_pairs: list[int], speed: float | None, refused: bool, as_json: bool
 ) -> None:
     """List the slot/pole families that can be wound."""
-    from evaluators.machine.families import Refusal, enumerate_families
-    from evaluators.machine.winding import Winding
-    from studies.convert import RPM
+    from evaluators.machine.winding.families import Refusal, enumerate_families
+    from evaluators.machine.winding.winding import Winding
+    from studies.study_file.convert import RPM
     from studies.tables import text_table
 
     results = enumerate_families(slots, pole_pairs)

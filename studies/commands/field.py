@@ -58,7 +58,7 @@ def field(
     torque current at the duty. At angle 0 a north pole faces the first tooth.
     """
     from studies.drawing.field_view import draw_field
-    from studies.layout import open_results, storage
+    from studies.stored.layout import open_results, storage
 
     drawn = draw_field(
         open_results(Path(results_folder)),

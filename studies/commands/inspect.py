@@ -15,10 +15,10 @@ def inspect(results_folder: str, design: str, as_json: bool) -> None:
     """Print one design in full; DESIGN_ID is family and evaluation, as Q12p4s5-001234."""
     from pathlib import Path
 
-    from studies.inspection import inspect_design, inspection_json
-    from studies.inspection_engineering import engineering_json
-    from studies.inspection_text import inspection_text
-    from studies.layout import open_results
+    from studies.inspection.design import inspect_design, inspection_json
+    from studies.inspection.engineering import engineering_json
+    from studies.inspection.text import inspection_text
+    from studies.stored.layout import open_results
 
     found = inspect_design(open_results(Path(results_folder)), design)
     if as_json:

@@ -11,8 +11,8 @@ import click
 @click.option("--json", "as_json", is_flag=True, help="Print JSON.")
 def materials(as_json: bool) -> None:
     """List the materials a study can name."""
-    from evaluators.machine.materials import available, load
-    from studies.convert import MATERIAL_KINDS
+    from evaluators.machine.materials.library import available, load
+    from studies.study_file.convert import MATERIAL_KINDS
     from studies.tables import text_table
 
     kinds = list(dict.fromkeys(MATERIAL_KINDS.values()))

@@ -14,8 +14,8 @@ def metrics(as_json: bool, variables: bool) -> None:
     """List the metrics: name, unit, definition, source."""
     from dataclasses import asdict
 
+    from evaluators.machine.geometry.variables import VARIABLES
     from evaluators.machine.metrics import METRICS
-    from evaluators.machine.variables import VARIABLES
     from studies.tables import number, text_table
 
     if as_json:

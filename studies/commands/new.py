@@ -48,7 +48,7 @@ def new(
     study_file: str, power: float, speed: float, dc_link: float, overspeed: float, orientation: str
 ) -> None:
     """Write a commented study sized from power, speed and DC link."""
-    from studies.beginning import begin_study
+    from studies.new_study.beginning import begin_study
 
     study = begin_study(Path(study_file), power, speed, dc_link, overspeed, orientation)
     click.echo(

@@ -32,11 +32,11 @@ def report(
 
     The file needs no network and no other file: it can be mailed and opened anywhere.
     """
-    from studies.damage import report_damage
-    from studies.layout import open_results, storage
     from studies.report.build import report_html
     from studies.report.collect import collect
-    from studies.sweep import usable_workers
+    from studies.running.sweep import usable_workers
+    from studies.stored.damage import report_damage
+    from studies.stored.layout import open_results, storage
 
     distinct = dict.fromkeys(str(Path(folder)) for folder in folders)
     opened = [open_results(Path(folder)) for folder in distinct]

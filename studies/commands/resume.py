@@ -42,9 +42,9 @@ def resume(
     from dataclasses import replace
     from pathlib import Path
 
-    from studies import sweep as room
     from studies.consent import announce_program
-    from studies.layout import open_results, save_request
+    from studies.running import sweep as room
+    from studies.stored.layout import open_results, save_request
 
     results = open_results(Path(results_folder))
     study = results.study

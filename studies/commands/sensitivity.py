@@ -58,14 +58,14 @@ def sensitivity(
     from pathlib import Path
     from typing import cast
 
-    from studies import chosen as designs
     from studies.consent import announce_program
     from studies.errors import StudiesError
     from studies.export.files import write_folder
-    from studies.layout import open_results
     from studies.sensitivity import study as room
     from studies.sensitivity.indices import TooFewError
     from studies.sensitivity.tables import sensitivity_text
+    from studies.stored import design as designs
+    from studies.stored.layout import open_results
 
     results = open_results(Path(results_folder))
     chosen = designs.choose_design(results, design, evaluator, allow_program)

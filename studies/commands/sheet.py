@@ -31,8 +31,8 @@ def _check_output(
 )
 def sheet(results_folder: str, design: str, output: Path | None) -> None:
     """Write a printable sheet of one design, with what a colleague needs to check it by hand."""
-    from studies.layout import open_results, storage
     from studies.sheet.content import design_sheet
+    from studies.stored.layout import open_results, storage
 
     made = design_sheet(open_results(Path(results_folder)), design)
     file = output or Path(f"{made.title.removeprefix('Design ')}.html")

@@ -19,10 +19,10 @@ def status(context: click.Context, results_folder: str, as_json: bool) -> None:
     """
     from pathlib import Path
 
-    from studies.damage import report_damage
     from studies.errors import ResultsError, StudiesError
-    from studies.layout import STUDY_FILE, open_results, storage, studies_in
-    from studies.status import study_status
+    from studies.running.status import study_status
+    from studies.stored.damage import report_damage
+    from studies.stored.layout import STUDY_FILE, open_results, storage, studies_in
     from studies.tables import percent, text_table
 
     root = Path(results_folder)

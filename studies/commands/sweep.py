@@ -49,10 +49,10 @@ def sweep(
     """
     from pathlib import Path
 
-    from studies import sweep as room
     from studies.consent import announce_program
-    from studies.layout import Request, create
-    from studies.library import find_study
+    from studies.running import sweep as room
+    from studies.shipped.library import find_study
+    from studies.stored.layout import Request, create
 
     study = find_study(study_file)
     families = room.chosen_families(study, family)

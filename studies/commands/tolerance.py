@@ -73,10 +73,10 @@ def tolerance(
     from pathlib import Path
     from typing import cast
 
-    from studies import chosen as designs
     from studies.consent import announce_program
     from studies.errors import StudiesError
-    from studies.layout import open_results
+    from studies.stored import design as designs
+    from studies.stored.layout import open_results
     from studies.tolerance import report
     from studies.tolerance.run import built_machines
     from studies.tolerance.scatter import Distribution, defaults, draw, overridden

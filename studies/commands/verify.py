@@ -49,9 +49,9 @@ def verify(
 
     from studies import verification as room
     from studies.consent import announce_program
-    from studies.damage import report_damage
     from studies.errors import EXIT_NOTHING_FEASIBLE, StudiesError
-    from studies.layout import open_results
+    from studies.stored.damage import report_damage
+    from studies.stored.layout import open_results
 
     if front and top is not None:
         msg = "--top and --front exclude each other: --front verifies every design of the fronts"

@@ -25,9 +25,9 @@ def watch(results_folder: str, interval: float | None, wait: bool, once: bool) -
     import time
     from pathlib import Path
 
-    from studies.layout import STUDY_FILE, open_results
-    from studies.screen import Screen
-    from studies.watching import StudyWatch, writer_of
+    from studies.running.screen import Screen
+    from studies.running.watching import StudyWatch, writer_of
+    from studies.stored.layout import STUDY_FILE, open_results
 
     screen = Screen()
     pause = interval or (1.0 if screen.live else PLAIN_INTERVAL_S)

@@ -4,8 +4,8 @@ from __future__ import annotations
 
 import numpy as np
 
-from evaluators.machine.geometry import MILLI, RADII, CrossSections
-from evaluators.machine.outlines import (
+from evaluators.machine.geometry.cross_sections import MILLI, RADII, CrossSections
+from evaluators.machine.geometry.outlines import (
     Loop,
     SlotShape,
     coil_side,
@@ -13,7 +13,7 @@ from evaluators.machine.outlines import (
     slot_ring,
     slot_turn,
 )
-from evaluators.machine.winding import Winding
+from evaluators.machine.winding.winding import Winding
 from studies.drawing.palette import PART_COLOURS, PHASE_COLOURS, PHASE_TINTS
 from studies.drawing.svg import line, loop_path, number, outline_path, picture, scale_bar_length
 from studies.drawing.svg import text as words

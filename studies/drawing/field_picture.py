@@ -9,10 +9,10 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 from numpy.typing import NDArray
 
-from evaluators.finite_element.patches import Patch
-from evaluators.finite_element.picture import FieldPicture
-from evaluators.machine.outlines import MILLI, Loop, Outline, outlines
-from evaluators.machine.winding import Winding
+from evaluators.finite_element.picture.patches import Patch
+from evaluators.finite_element.picture.picture import FieldPicture
+from evaluators.machine.geometry.outlines import MILLI, Loop, Outline, outlines
+from evaluators.machine.winding.winding import Winding
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes

@@ -7,11 +7,11 @@ from math import radians
 
 from evaluators.finite_element.evaluator import FiniteElementEvaluator
 from evaluators.finite_element.model import FieldModel
-from evaluators.finite_element.picture import Currents, field_picture
-from studies.chosen import choose_design
+from evaluators.finite_element.picture.picture import Currents, field_picture
 from studies.drawing.field_picture import field_image
 from studies.errors import StudiesError
-from studies.layout import Results
+from studies.stored.design import choose_design
+from studies.stored.layout import Results
 
 FINER = 2
 """Times the evaluator's cells in every direction: one position costs little, lines get smooth."""

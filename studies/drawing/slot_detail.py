@@ -7,9 +7,9 @@ import math
 from collections.abc import Callable
 from dataclasses import dataclass
 
-from evaluators.machine.geometry import MILLI, CrossSections
-from evaluators.machine.outlines import Loop, SlotShape, coil_side, slot_ring
-from evaluators.machine.winding import Winding
+from evaluators.machine.geometry.cross_sections import MILLI, CrossSections
+from evaluators.machine.geometry.outlines import Loop, SlotShape, coil_side, slot_ring
+from evaluators.machine.winding.winding import Winding
 from studies.drawing.palette import PART_COLOURS, PHASE_TINTS
 from studies.drawing.svg import line, loop_path, number, picture
 from studies.drawing.svg import text as words

@@ -7,7 +7,7 @@ from html import escape
 
 import numpy as np
 
-from evaluators.machine.outlines import Loop, Outline
+from evaluators.machine.geometry.outlines import Loop, Outline
 
 FONT = "system-ui, 'Segoe UI', 'Liberation Sans', Arial, sans-serif"
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from evaluators.machine.winding import Winding
+from evaluators.machine.winding.winding import Winding
 from studies.drawing.palette import PHASE_COLOURS, PHASE_TINTS
 from studies.drawing.svg import line, number, picture
 from studies.drawing.svg import text as words

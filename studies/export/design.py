@@ -2,9 +2,8 @@
 
 from __future__ import annotations
 
-from evaluators.machine.drawing import dxf_bytes
-from evaluators.machine.outlines import outlines
-from studies.chosen import Chosen
+from evaluators.machine.geometry.dxf import dxf_bytes
+from evaluators.machine.geometry.outlines import outlines
 from studies.drawing.cross_section import cross_section_svg
 from studies.drawing.winding_diagram import winding_svg
 from studies.export.files import ExportedFile, text_file
@@ -13,7 +12,8 @@ from studies.export.machine import machine_file
 from studies.export.materials import material_files
 from studies.export.suspension import suspension_files, suspension_known
 from studies.export.winding import winding_files
-from studies.layout import Results
+from studies.stored.design import Chosen
+from studies.stored.layout import Results
 
 DRAWING = "cross_section.dxf"
 PICTURE = "cross_section.svg"

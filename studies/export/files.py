@@ -9,10 +9,10 @@ from pathlib import Path
 from textwrap import fill
 from typing import Any
 
-from optimizer.durable import make_folder, write_durably
+from optimizer.archive.durable import make_folder, write_durably
 from studies.errors import StorageError
-from studies.inspection import CAUTIONS
-from studies.layout import program_version, storage
+from studies.inspection.design import CAUTIONS
+from studies.stored.layout import program_version, storage
 
 README = "README.txt"
 

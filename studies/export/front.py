@@ -9,13 +9,13 @@ from typing import Any
 import pyarrow as pa
 import pyarrow.parquet as pq
 
+from evaluators.machine.geometry.variables import VARIABLES
 from evaluators.machine.metrics import METRIC
-from evaluators.machine.variables import VARIABLES
-from optimizer.schema import PARTS_KEY
+from optimizer.archive.schema import PARTS_KEY
 from studies.errors import ResultsError
 from studies.export.files import ExportedFile, text_file
-from studies.layout import Results
-from studies.stored import stored_families
+from studies.stored.families import stored_families
+from studies.stored.layout import Results
 from studies.tables import csv_text
 
 CSV = "front.csv"

@@ -6,18 +6,18 @@ from typing import Any
 
 import numpy as np
 
-from evaluators.machine.description import (
+from evaluators.machine.field import excitation
+from evaluators.machine.geometry.outlines import Outline
+from evaluators.machine.metrics import METRICS
+from evaluators.machine.task.description import (
     GUIDE,
     machine_description,
     materials_by_role,
     region_description,
 )
-from evaluators.machine.field import excitation
-from evaluators.machine.metrics import METRICS
-from evaluators.machine.outlines import Outline
-from studies.chosen import Chosen
 from studies.export.files import ExportedFile, json_file
 from studies.export.suspension import CURRENT
+from studies.stored.design import Chosen
 
 FORMAT = "hovergap machine"
 FORMAT_VERSION = 1

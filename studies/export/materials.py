@@ -6,14 +6,14 @@ from dataclasses import fields
 
 import numpy as np
 
-from evaluators.machine.description import (
+from evaluators.machine.materials.kinds import Magnet, Table
+from evaluators.machine.quantity import Quantity
+from evaluators.machine.task.description import (
     TEMPERATURE_LAW,
     material_description,
     materials_by_role,
 )
-from evaluators.machine.material_kinds import Magnet, Table
-from evaluators.machine.quantity import Quantity
-from evaluators.machine.task import Task
+from evaluators.machine.task.task import Task
 from studies.export.files import ExportedFile, json_file, text_file
 from studies.tables import csv_text
 

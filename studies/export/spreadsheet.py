@@ -7,8 +7,8 @@ import math
 from typing import TYPE_CHECKING, Any
 
 from studies.export.front import FrontTable, heading
-from studies.inspection import CAUTIONS
-from studies.layout import Results, program_version
+from studies.inspection.design import CAUTIONS
+from studies.stored.layout import Results, program_version
 
 if TYPE_CHECKING:
     from xlsxwriter.workbook import Workbook

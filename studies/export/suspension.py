@@ -18,9 +18,9 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from studies.chosen import Chosen
 from studies.errors import StudiesError
 from studies.export.files import ExportedFile, json_file, text_file
+from studies.stored.design import Chosen
 from studies.tables import csv_text
 
 FloatArray = NDArray[np.float64]

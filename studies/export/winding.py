@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from evaluators.machine.winding import Winding
+from evaluators.machine.winding.winding import Winding
 from studies.export.files import ExportedFile, text_file
-from studies.inspection import GROUP_NAMES, PHASE_NAMES
+from studies.inspection.design import GROUP_NAMES, PHASE_NAMES
 from studies.tables import csv_text
 
 SIDES = "coil_sides.csv"

@@ -12,9 +12,9 @@ import numpy as np
 from bokeh.embed import components
 from bokeh.resources import Resources
 
-from evaluators.machine.geometry import cross_sections
-from evaluators.machine.variables import VARIABLES
-from studies.comparison import BINDING, KEY_METRICS, LOSSES
+from evaluators.machine.geometry.cross_sections import cross_sections
+from evaluators.machine.geometry.variables import VARIABLES
+from studies.comparison.numbers import BINDING, KEY_METRICS, LOSSES
 from studies.drawing.cross_section import cross_section_svg
 from studies.drawing.palette import Mark, family_mark
 from studies.drawing.winding_diagram import winding_svg

@@ -11,15 +11,15 @@ import pyarrow.compute as pc
 from numpy.typing import NDArray
 
 from evaluators.machine.metrics import METRICS
-from evaluators.machine.winding import Winding
+from evaluators.machine.winding.winding import Winding
 from optimizer.fronts import hypervolume, non_dominated, normalise
-from studies.comparison import REFERENCE, Comparison, Member, compare_families
+from studies.comparison.numbers import REFERENCE, Comparison, Member, compare_families
 from studies.errors import ResultsError
-from studies.layout import Results
 from studies.report.columns import Column, report_columns, stored_names, values
 from studies.report.thinning import spread
 from studies.report.verified import Verified, verified_values
-from studies.stored import Stored, matrix
+from studies.stored.families import Stored, matrix
+from studies.stored.layout import Results
 
 FloatArray = NDArray[np.float64]
 

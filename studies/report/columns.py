@@ -10,11 +10,11 @@ import numpy as np
 import pyarrow as pa
 from numpy.typing import NDArray
 
+from evaluators.machine.geometry.variables import VARIABLES
 from evaluators.machine.metrics import METRIC, METRICS
-from evaluators.machine.variables import VARIABLES
-from studies.crosschecks import Objective
-from studies.sections import UNIT_TEXT
-from studies.stored import matrix
+from studies.stored.families import matrix
+from studies.study_file.crosschecks import Objective
+from studies.study_file.sections import UNIT_TEXT
 
 FloatArray = NDArray[np.float64]
 

@@ -6,14 +6,14 @@ from collections.abc import Sequence
 
 import numpy as np
 
-from evaluators.machine.variables import VARIABLES
-from studies.comparison import BINDING, REFERENCE, extremes
-from studies.crosschecks import Limit
+from evaluators.machine.geometry.variables import VARIABLES
+from studies.comparison.numbers import BINDING, REFERENCE, extremes
 from studies.drawing.palette import Mark
 from studies.drawing.winding_diagram import winding_svg
 from studies.report.collect import FamilyData, ReportData
 from studies.report.columns import title
 from studies.report.html import Cell, design_cell, element, family_cell, paragraph, table
+from studies.study_file.crosschecks import Limit
 from studies.tables import number, percent
 
 STRAIGHT = 0.02

@@ -5,18 +5,18 @@ from __future__ import annotations
 import tomllib
 from html import escape
 
+from evaluators.machine.geometry.variables import VARIABLES
 from evaluators.machine.metrics import METRICS
-from evaluators.machine.variables import VARIABLES
-from studies.comparison import BINDING, REFERENCE
-from studies.convert import MATERIAL_KINDS
-from studies.definition import Study
-from studies.inspection import CAUTIONS
-from studies.layout import Results, program_version
+from studies.comparison.numbers import BINDING, REFERENCE
+from studies.inspection.design import CAUTIONS
 from studies.report.collect import ReportData
 from studies.report.columns import UNITS
 from studies.report.html import bullets, element, paragraph, table
-from studies.schema import OPTIONAL_SECTIONS, SIMPLE_SECTIONS
-from studies.sections import unit_of
+from studies.stored.layout import Results, program_version
+from studies.study_file.convert import MATERIAL_KINDS
+from studies.study_file.definition import Study
+from studies.study_file.schema import OPTIONAL_SECTIONS, SIMPLE_SECTIONS
+from studies.study_file.sections import unit_of
 from studies.suggestions import stem
 from studies.tables import number
 

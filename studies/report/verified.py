@@ -6,7 +6,7 @@ from dataclasses import dataclass
 from pathlib import Path
 
 from studies.errors import ResultsError
-from studies.verified import read_verified, verified_evaluators
+from studies.stored.verified import read_verified, verified_evaluators
 
 
 @dataclass(frozen=True)

@@ -12,8 +12,8 @@ from numpy.typing import NDArray
 from threadpoolctl import threadpool_limits
 
 from evaluators.interface import Capability, Evaluator, Waveform, build
-from evaluators.machine.task import Task
-from evaluators.machine.variables import VARIABLES
+from evaluators.machine.geometry.variables import VARIABLES
+from evaluators.machine.task.task import Task
 
 FloatArray = NDArray[np.float64]
 

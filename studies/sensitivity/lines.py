@@ -8,11 +8,11 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from optimizer.dispatch import Dispatcher
 from optimizer.problem import Outcome, Variable
-from studies.chosen import evaluate_all
-from studies.crosschecks import VARIABLE
-from studies.problem import MachineProblem
+from optimizer.workers.dispatch import Dispatcher
+from studies.running.problem import MachineProblem
+from studies.stored.design import evaluate_all
+from studies.study_file.crosschecks import VARIABLE
 
 FloatArray = NDArray[np.float64]
 

@@ -9,13 +9,13 @@ from typing import Literal
 import numpy as np
 from numpy.typing import NDArray
 
-from optimizer.dispatch import Dispatcher
 from optimizer.problem import Outcome
-from studies.chosen import QUICK_EVALUATOR, Chosen, evaluate_all
-from studies.definition import Study
+from optimizer.workers.dispatch import Dispatcher
 from studies.sensitivity.indices import BoolArray, Indices, delta_indices, sobol_indices
 from studies.sensitivity.lines import Line, lines_through
-from studies.stored import matrix, stored_family
+from studies.stored.design import QUICK_EVALUATOR, Chosen, evaluate_all
+from studies.stored.families import matrix, stored_family
+from studies.study_file.definition import Study
 
 FloatArray = NDArray[np.float64]
 Method = Literal["sobol", "delta", "none"]

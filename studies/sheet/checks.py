@@ -11,8 +11,8 @@ from dataclasses import dataclass
 from math import pi, sqrt
 from typing import Any
 
-from evaluators.machine.geometry import CrossSections
-from evaluators.machine.task import STANDARD_GRAVITY, Task
+from evaluators.machine.geometry.cross_sections import CrossSections
+from evaluators.machine.task.task import STANDARD_GRAVITY, Task
 from studies.tables import number
 
 

@@ -7,15 +7,15 @@ from typing import Any
 
 import numpy as np
 
-from evaluators.machine.geometry import CrossSections, cross_sections
+from evaluators.machine.geometry.cross_sections import CrossSections, cross_sections
+from evaluators.machine.geometry.variables import VARIABLES
 from evaluators.machine.metrics import METRICS
-from evaluators.machine.variables import VARIABLES
-from evaluators.machine.winding import Winding
+from evaluators.machine.winding.winding import Winding
 from studies.drawing.cross_section import cross_section_svg
 from studies.drawing.slot_detail import slot_detail_svg, slot_measures
 from studies.drawing.winding_diagram import winding_svg
 from studies.errors import ResultsError
-from studies.inspection import (
+from studies.inspection.design import (
     CAUTIONS,
     GROUP_NAMES,
     PHASE_NAMES,
@@ -23,12 +23,12 @@ from studies.inspection import (
     inspect_design,
     reserve,
 )
-from studies.layout import Results, program_version
 from studies.report.columns import UNITS, title
 from studies.report.method import material_rows, task_rows
 from studies.sheet.blocks import Block, Cautions, Drawing, Grid, Heading, Sheet, Text
 from studies.sheet.checks import worked_checks
-from studies.stored import split_design_id
+from studies.stored.families import split_design_id
+from studies.stored.layout import Results, program_version
 from studies.tables import number, percent
 
 DIRECTION = {1: "+", -1: "−"}

@@ -7,9 +7,9 @@ from dataclasses import replace
 import numpy as np
 from numpy.typing import NDArray
 
-from evaluators.machine.geometry import CrossSections
+from evaluators.machine.geometry.cross_sections import CrossSections
 from evaluators.machine.quantity import Quantity
-from evaluators.machine.task import Task
+from evaluators.machine.task.task import Task
 from studies.tolerance.scatter import PROPERTIES, Draw
 
 FloatArray = NDArray[np.float64]

@@ -9,7 +9,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from studies.crosschecks import Limit
+from studies.study_file.crosschecks import Limit
 from studies.tables import csv_text, number, percent, text_table
 from studies.tolerance.run import Machines
 from studies.tolerance.statistics import Contributions, Yield, contributions, yield_of

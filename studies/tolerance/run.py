@@ -7,10 +7,10 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from optimizer.dispatch import Dispatcher
 from optimizer.problem import Outcome, join_outcomes
-from studies.chosen import Chosen, evaluate_all
-from studies.problem import MachineProblem, margin
+from optimizer.workers.dispatch import Dispatcher
+from studies.running.problem import MachineProblem, margin
+from studies.stored.design import Chosen, evaluate_all
 from studies.tolerance.build import built_task, scattered_variables
 from studies.tolerance.scatter import Draw
 

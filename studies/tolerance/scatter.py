@@ -11,7 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from evaluators.machine.quantity import Quantity
-from evaluators.machine.task import MaterialSet
+from evaluators.machine.task.task import MaterialSet
 from studies.errors import StudiesError
 from studies.suggestions import suggest, unknown
 

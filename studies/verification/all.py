@@ -10,14 +10,14 @@ from typing import Any
 
 import pyarrow as pa
 
-from optimizer.meter import Meter
-from studies.chosen import dispatcher_for
-from studies.comparison import compare_families
+from optimizer.running.meter import Meter
+from studies.comparison.numbers import compare_families
 from studies.errors import EXIT_OK
-from studies.interruption import Interruption
-from studies.layout import Results
-from studies.problem import machine_problem
-from studies.sweep import chosen_families
+from studies.running.interruption import Interruption
+from studies.running.problem import machine_problem
+from studies.running.sweep import chosen_families
+from studies.stored.design import dispatcher_for
+from studies.stored.layout import Results
 from studies.verification.run import Plan, verify_family
 from studies.verification.selection import nearest_and_extreme, verifying_problem
 from studies.verification.text import VerifyLine, family_text

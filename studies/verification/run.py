@@ -14,10 +14,9 @@ import pyarrow as pa
 from numpy.typing import NDArray
 
 from evaluators.machine.metrics import METRIC
-from optimizer.dispatch import Chunk, Dispatcher, Finished, single_threaded
-from optimizer.durable import make_folder, remove_leftovers
-from optimizer.lock import writer_lock
-from optimizer.parts import (
+from optimizer.archive.durable import make_folder, remove_leftovers
+from optimizer.archive.lock import writer_lock
+from optimizer.archive.parts import (
     DamagedPartError,
     check_part,
     next_number,
@@ -26,10 +25,11 @@ from optimizer.parts import (
     set_aside,
     write_part,
 )
-from studies.chosen import QUICK_CHUNK, QUICK_EVALUATOR, SLOW_CHUNK
-from studies.problem import MachineProblem
-from studies.stored import matrix
-from studies.verified import DEVIATION, STORED, VerifiedRow, deviation, verified_folder
+from optimizer.workers.dispatch import Chunk, Dispatcher, Finished, single_threaded
+from studies.running.problem import MachineProblem
+from studies.stored.design import QUICK_CHUNK, QUICK_EVALUATOR, SLOW_CHUNK
+from studies.stored.families import matrix
+from studies.stored.verified import DEVIATION, STORED, VerifiedRow, deviation, verified_folder
 
 IntArray = NDArray[np.int64]
 

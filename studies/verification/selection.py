@@ -11,9 +11,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 from optimizer.fronts import normalise
-from studies.comparison import Comparison, Member
+from studies.comparison.numbers import Comparison, Member
 from studies.errors import StudiesError
-from studies.problem import MachineProblem
+from studies.running.problem import MachineProblem
 
 IntArray = NDArray[np.int64]
 

@@ -10,12 +10,12 @@ import numpy as np
 from numpy.typing import NDArray
 
 from evaluators.machine.metrics import METRIC
-from studies.definition import Study
-from studies.progress import StatusLine, duration, speed
-from studies.stored import design_id
+from studies.running.progress import StatusLine, duration, speed
+from studies.stored.families import design_id
+from studies.stored.verified import STORED, VerifiedRow
+from studies.study_file.definition import Study
 from studies.tables import number, percent, text_table
 from studies.verification.run import Done, counted
-from studies.verified import STORED, VerifiedRow
 
 FloatArray = NDArray[np.float64]
 

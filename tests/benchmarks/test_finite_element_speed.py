@@ -17,15 +17,17 @@ import numpy as np
 import pytest
 from threadpoolctl import threadpool_limits
 
-from evaluators.finite_element import analysis, batch, mesh, newton
+from evaluators.finite_element import analysis
 from evaluators.finite_element.evaluator import FiniteElementEvaluator
-from evaluators.finite_element.system import System
-from evaluators.machine.variables import VARIABLE_NAMES
-from studies.definition import load_study
+from evaluators.finite_element.mesh import geometry as mesh
+from evaluators.finite_element.solution import batch, newton
+from evaluators.finite_element.solution.system import System
+from evaluators.machine.geometry.variables import VARIABLE_NAMES
+from studies.study_file.definition import load_study
 
 pytestmark = pytest.mark.benchmark
 
-STUDY = load_study(Path(__file__).parents[2] / "studies" / "compressor.toml")
+STUDY = load_study(Path(__file__).parents[2] / "studies/shipped/compressor.toml")
 ROWS = 64
 MEDIAN_LIMIT_MS = 250.0  # of processor time, over the families of the study
 TRANSIENT_FACTOR = 3.0
@@ -105,8 +107,8 @@ import resource, sys
 import numpy as np
 from pathlib import Path
 from evaluators.finite_element.evaluator import FiniteElementEvaluator
-from evaluators.machine.variables import VARIABLE_NAMES
-from studies.definition import load_study
+from evaluators.machine.geometry.variables import VARIABLE_NAMES
+from studies.study_file.definition import load_study
 
 study = load_study(Path(sys.argv[1]))
 family, analysis = sys.argv[2:]
@@ -127,7 +129,7 @@ def test_memory_of_a_worker(family: str, analysis_name: str) -> None:
     Measured 238 to 260 MB over the families and both analyses, most of it the libraries.
     """
     root = Path(__file__).parents[2]
-    study = str(root / "studies" / "compressor.toml")
+    study = str(root / "studies/shipped/compressor.toml")
     done = subprocess.run(
         [sys.executable, "-c", WORKER, study, family, analysis_name],
         cwd=root,

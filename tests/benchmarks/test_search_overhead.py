@@ -8,14 +8,14 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from optimizer.archive import open_archive
-from optimizer.parts import part_paths, write_part
-from optimizer.pool import Pool
+from optimizer.archive.archive import open_archive
+from optimizer.archive.parts import part_paths, write_part
+from optimizer.archive.schema import Rows, archive_schema, to_table
 from optimizer.problem import Column, Outcome, Variable
-from optimizer.progress import Settings
-from optimizer.runner import run
-from optimizer.schema import Rows, archive_schema, to_table
+from optimizer.running.progress import Settings
+from optimizer.running.runner import run
 from optimizer.search import DecompositionSearch
+from optimizer.workers.pool import Pool
 
 pytestmark = pytest.mark.benchmark
 

@@ -10,7 +10,7 @@ from evaluators.analytic.model import AnalyticModel, Resolution
 from evaluators.analytic.motion import Motion
 from evaluators.analytic.waves import Waves
 from evaluators.machine.field import Excitation, FieldSolution, excitation
-from evaluators.machine.geometry import CrossSections
+from evaluators.machine.geometry.cross_sections import CrossSections
 
 FloatArray = NDArray[np.float64]
 

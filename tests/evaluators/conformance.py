@@ -28,9 +28,9 @@ from numpy.typing import NDArray
 
 from evaluators import interface
 from evaluators.interface import Capability, Evaluations, Evaluator, EvaluatorError, Status
+from evaluators.machine.geometry.variables import VARIABLE_NAMES
 from evaluators.machine.metrics import METRICS
-from evaluators.machine.task import Task
-from evaluators.machine.variables import VARIABLE_NAMES
+from evaluators.machine.task.task import Task
 
 FloatArray = NDArray[np.float64]
 ROWS = 12

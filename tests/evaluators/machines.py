@@ -8,20 +8,20 @@ from math import pi
 import numpy as np
 from numpy.typing import NDArray
 
-from evaluators.machine import materials
 from evaluators.machine.cost import Price, Prices
-from evaluators.machine.families import design_winding
-from evaluators.machine.geometry import CrossSections, cross_sections
-from evaluators.machine.magnetization import MagnetizationCurve
-from evaluators.machine.materials import (
+from evaluators.machine.geometry.cross_sections import CrossSections, cross_sections
+from evaluators.machine.materials import library as materials
+from evaluators.machine.materials.library import (
     Conductor,
     ElectricalSteel,
     Magnet,
     ShaftSteel,
     SleeveMaterial,
 )
+from evaluators.machine.materials.magnetization import MagnetizationCurve
 from evaluators.machine.quantity import MU_0
-from evaluators.machine.task import Construction, Duty, MaterialSet, Task
+from evaluators.machine.task.task import Construction, Duty, MaterialSet, Task
+from evaluators.machine.winding.families import design_winding
 
 FloatArray = NDArray[np.float64]
 Numbers = tuple[int, int, int]

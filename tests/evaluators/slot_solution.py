@@ -22,7 +22,7 @@ from skfem import (
 )
 from skfem.helpers import dot, grad
 
-from evaluators.machine.geometry import CrossSections
+from evaluators.machine.geometry.cross_sections import CrossSections
 
 FloatArray = NDArray[np.float64]
 

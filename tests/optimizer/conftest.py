@@ -8,7 +8,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from optimizer.archive import open_archive
+from optimizer.archive.archive import open_archive
 from optimizer.problem import Column, Outcome, Variable
 
 # The folder is not importable under --import-mode=importlib, and scripts run by the tests

@@ -14,15 +14,15 @@ import pyarrow as pa
 import pyarrow.parquet as pq
 import pytest
 
-from optimizer import archive as archive_module
-from optimizer import durable
-from optimizer.archive import Archive, is_archive, open_archive
+from optimizer.archive import archive as archive_module
+from optimizer.archive import durable
+from optimizer.archive.archive import Archive, is_archive, open_archive
+from optimizer.archive.parts import DamagedPartError, check_part, part_paths, read_part
 from optimizer.errors import ArchiveError, ArchiveLockedError, ArchiveMismatchError
 from optimizer.fronts import non_dominated
-from optimizer.parts import DamagedPartError, check_part, part_paths, read_part
 from optimizer.problem import Variable
-from optimizer.progress import Settings
-from optimizer.runner import run
+from optimizer.running.progress import Settings
+from optimizer.running.runner import run
 
 BUDGET = 230  # two generations and a part of the third
 SETTINGS = Settings(
@@ -343,7 +343,7 @@ def test_two_writers_in_one_process(tmp_path, plates):
 
 def test_two_writers_in_two_processes_and_the_lock_of_a_dead_one(tmp_path, plates, python_path):
     run(plates, tmp_path, SETTINGS)
-    code = "import sys, time, pathlib\nfrom optimizer.lock import writer_lock\n"
+    code = "import sys, time, pathlib\nfrom optimizer.archive.lock import writer_lock\n"
     code += f"with writer_lock(pathlib.Path({str(tmp_path)!r})):\n"
     code += "    print('held', flush=True)\n    time.sleep(60)\n"
     with subprocess.Popen(

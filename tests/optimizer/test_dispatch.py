@@ -14,11 +14,11 @@ import cloudpickle
 import numpy as np
 import pytest
 
-from optimizer.dispatch import Chunk, Serial, evaluate_chunk, single_threaded
 from optimizer.errors import ProblemError
-from optimizer.pool import Pool
 from optimizer.problem import Column, Outcome, Variable
-from optimizer.watched import WatchedPool
+from optimizer.workers.dispatch import Chunk, Serial, evaluate_chunk, single_threaded
+from optimizer.workers.pool import Pool
+from optimizer.workers.watched import WatchedPool
 
 cloudpickle.register_pickle_by_value(sys.modules[__name__])
 
@@ -233,8 +233,8 @@ def test_workers_end_when_their_parent_is_killed(tmp_path, python_path) -> None:
             """
             import os, time
             import numpy as np
-            from optimizer.dispatch import Chunk
-            from optimizer.pool import Pool
+            from optimizer.workers.dispatch import Chunk
+            from optimizer.workers.pool import Pool
             from optimizer.problem import Column, Outcome, Variable
 
             class Pid:

@@ -8,7 +8,7 @@ import importlib
 import pytest
 
 
-@pytest.mark.parametrize("name", ["optimizer.runner", "optimizer.search.decomposition"])
+@pytest.mark.parametrize("name", ["optimizer.running.runner", "optimizer.search.decomposition"])
 def test_examples(name: str) -> None:
     result = doctest.testmod(importlib.import_module(name))
     assert result.attempted > 0

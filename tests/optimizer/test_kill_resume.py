@@ -11,17 +11,18 @@ from pathlib import Path
 
 import pytest
 
-from optimizer.archive import open_archive
+from optimizer.archive.archive import open_archive
 
 BUDGET = 1_730
 SCRIPT = """
     import sys, time
     import numpy as np
-    from optimizer import archive, runner
-    from optimizer.dispatch import Serial
-    from optimizer.pool import Pool
+    from optimizer.archive import archive
+    from optimizer.running import runner
+    from optimizer.workers.dispatch import Serial
+    from optimizer.workers.pool import Pool
     from optimizer.problem import Column, Outcome, Variable
-    from optimizer.progress import Settings
+    from optimizer.running.progress import Settings
 
     # Many parts and snapshots, so that kills fall into the midst of writing them.
     archive.SHORTEST_INTERVAL_S = 0.01

@@ -19,7 +19,7 @@ from optimizer.problem import (
     failed_outcome,
     join_outcomes,
 )
-from optimizer.progress import Settings
+from optimizer.running.progress import Settings
 
 
 @pytest.mark.parametrize(

@@ -7,12 +7,12 @@ import math
 import numpy as np
 import pytest
 
-from optimizer import meter as meter_module
 from optimizer.fronts import Front
-from optimizer.meter import WINDOW_S, Meter
 from optimizer.problem import Outcome
-from optimizer.progress import Progress
-from optimizer.tally import BOX_ROWS, Tally
+from optimizer.running import meter as meter_module
+from optimizer.running.meter import WINDOW_S, Meter
+from optimizer.running.progress import Progress
+from optimizer.running.tally import BOX_ROWS, Tally
 
 
 class Clock:

@@ -5,13 +5,13 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from optimizer import runner as runner_module
-from optimizer.archive import open_archive
-from optimizer.pool import Pool
+from optimizer.archive.archive import open_archive
 from optimizer.problem import Column, Outcome
-from optimizer.progress import Settings
-from optimizer.repeats import Repeats
-from optimizer.runner import run
+from optimizer.running import runner as runner_module
+from optimizer.running.progress import Settings
+from optimizer.running.repeats import Repeats
+from optimizer.running.runner import run
+from optimizer.workers.pool import Pool
 
 SETTINGS = Settings(budget=730, seed=5)
 

@@ -9,17 +9,17 @@ import time
 import numpy as np
 import pytest
 
-from optimizer import archive as archive_module
-from optimizer import runner as runner_module
-from optimizer.archive import open_archive
+from optimizer.archive import archive as archive_module
+from optimizer.archive.archive import open_archive
+from optimizer.archive.parts import part_paths
 from optimizer.errors import ArchiveMismatchError, ProblemError
 from optimizer.fronts import hypervolume
-from optimizer.parts import part_paths
-from optimizer.pool import Pool
 from optimizer.problem import Column, Outcome, Variable
-from optimizer.progress import Progress, Settings
-from optimizer.runner import run
-from optimizer.tally import BOX_ROWS
+from optimizer.running import runner as runner_module
+from optimizer.running.progress import Progress, Settings
+from optimizer.running.runner import run
+from optimizer.running.tally import BOX_ROWS
+from optimizer.workers.pool import Pool
 
 
 def settings(budget: int = 730, **changes) -> Settings:
@@ -208,8 +208,8 @@ def test_a_broken_contract_ends_the_run_and_keeps_the_rows_before(tmp_path, plat
 
 
 def test_progress_and_summary_agree_with_the_rows(tmp_path, failing_plates, monkeypatch) -> None:
-    monkeypatch.setattr("optimizer.meter.SHORTEST_INTERVAL_S", 0.0)
-    monkeypatch.setattr("optimizer.meter.LARGEST_SHARE", 0.0)
+    monkeypatch.setattr("optimizer.running.meter.SHORTEST_INTERVAL_S", 0.0)
+    monkeypatch.setattr("optimizer.running.meter.LARGEST_SHARE", 0.0)
     said: list[Progress] = []
     summary = run(failing_plates, tmp_path, settings(2_000), progress=said.append)
     table = open_archive(tmp_path).table()

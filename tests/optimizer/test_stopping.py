@@ -7,12 +7,12 @@ import time
 import numpy as np
 import pytest
 
-from optimizer.archive import open_archive
+from optimizer.archive.archive import open_archive
 from optimizer.errors import ProblemError
 from optimizer.problem import Outcome
-from optimizer.progress import Settings
-from optimizer.runner import run
-from optimizer.stopping import StopRules
+from optimizer.running.progress import Settings
+from optimizer.running.runner import run
+from optimizer.running.stopping import StopRules
 
 STILL = StopRules(stagnation_generations=6, stagnation_gain=0.002)
 

@@ -13,12 +13,12 @@ import cloudpickle
 import numpy as np
 import pytest
 
-from optimizer.dispatch import Chunk
 from optimizer.errors import ProblemError
 from optimizer.problem import Column, Outcome, Variable
-from optimizer.progress import Settings
-from optimizer.runner import run
-from optimizer.watched import WatchedPool
+from optimizer.running.progress import Settings
+from optimizer.running.runner import run
+from optimizer.workers.dispatch import Chunk
+from optimizer.workers.watched import WatchedPool
 
 cloudpickle.register_pickle_by_value(sys.modules[__name__])
 

@@ -16,7 +16,7 @@ from typing import Any
 import pytest
 from click.testing import CliRunner, Result
 
-from optimizer.archive import open_archive
+from optimizer.archive.archive import open_archive
 
 TIME_COLUMNS = ("time_s", "finished_at")
 HERE = Path(__file__).parent

@@ -9,11 +9,11 @@ import numpy as np
 import pytest
 from click.testing import CliRunner
 
-from optimizer.dispatch import Serial
-from studies import agreement as room
-from studies.agreement_page import main, page
-from studies.library import find_study
-from studies.problem import machine_problem
+from optimizer.workers.dispatch import Serial
+from studies.agreement import measure as room
+from studies.agreement.page import main, page
+from studies.running.problem import machine_problem
+from studies.shipped.library import find_study
 
 
 def test_constant_factor_is_the_deviation_and_leaves_ranks_alone() -> None:

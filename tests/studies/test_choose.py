@@ -18,8 +18,8 @@ from studies.choice.preferences import Criterion, Preferences, preferences, scen
 from studies.choice.ranking import AUGMENTATION, achievement, scale_of
 from studies.choice.store import store_decision
 from studies.errors import ResultsError
-from studies.layout import open_results
-from studies.problem import machine_problem
+from studies.running.problem import machine_problem
+from studies.stored.layout import open_results
 
 Run = Callable[..., Result]
 Write = Callable[..., Path]
@@ -156,7 +156,7 @@ def test_command_ranks_every_stored_design_and_stores_the_decision(
     results = open_results(swept)
     rows = []
     for family in results.study.families:
-        from studies.stored import stored_family
+        from studies.stored.families import stored_family
 
         rows += stored_family(results, family).reader.table().to_pylist()
     rows = [row for row in rows if row["feasible"] and row["tip_speed_m_s"] <= 60.0]
@@ -235,7 +235,7 @@ def test_scenario_prices_equal_a_new_evaluation(hovergap: Run, write_study: Writ
         prices = scenario_prices(results.study.prices, scenario)
         task = replace(problem.task, prices=prices)
         problem = replace(problem, task=task, _built={})
-        from studies.stored import stored_family
+        from studies.stored.families import stored_family
 
         reader = stored_family(results, found.family).reader
         rows = [reader.row(int(item)) for item in found.evaluations]

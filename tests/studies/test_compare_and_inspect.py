@@ -15,11 +15,11 @@ import numpy as np
 import pytest
 from click.testing import Result
 
+from evaluators.machine.geometry.variables import VARIABLES
 from evaluators.machine.metrics import METRICS
-from evaluators.machine.variables import VARIABLES
-from optimizer.archive import open_archive
-from studies.comparison import BINDING, REFERENCE
-from studies.inspection import CAUTIONS
+from optimizer.archive.archive import open_archive
+from studies.comparison.numbers import BINDING, REFERENCE
+from studies.inspection.design import CAUTIONS
 from studies.tables import csv_text, number, text_table, wide_table
 
 Run = Callable[..., Result]

@@ -15,11 +15,11 @@ import numpy as np
 import pytest
 from click.testing import Result
 
-from evaluators.machine.drawing import LAYER_COLOURS
-from evaluators.machine.geometry import CrossSections
-from studies.chosen import Chosen, choose_design
+from evaluators.machine.geometry.cross_sections import CrossSections
+from evaluators.machine.geometry.dxf import LAYER_COLOURS
 from studies.export.suspension import suspension_data
-from studies.layout import open_results
+from studies.stored.design import Chosen, choose_design
+from studies.stored.layout import open_results
 
 Run = Callable[..., Result]
 Write = Callable[..., Path]
@@ -46,7 +46,7 @@ def swept(hovergap: Run, write_study: Write, kept: Path) -> Path:
 
 
 def first_good(folder: Path, family: str) -> Chosen:
-    from studies.stored import stored_family
+    from studies.stored.families import stored_family
 
     results = open_results(folder)
     return choose_design(results, stored_family(results, family).front_ids[0])

@@ -14,7 +14,7 @@ from click.testing import Result
 
 from studies.export.front import FrontTable, front_table
 from studies.export.spreadsheet import front_workbook
-from studies.layout import open_results
+from studies.stored.layout import open_results
 from studies.tables import csv_text
 
 Run = Callable[..., Result]
@@ -60,7 +60,7 @@ def test_the_three_formats_hold_the_same_rows(hovergap: Run, swept: Path) -> Non
 
 
 def _front_of(folder: Path, family: str) -> pa.Table:
-    from studies.stored import stored_family
+    from studies.stored.families import stored_family
 
     stored = stored_family(open_results(folder), family)
     return stored.front.append_column("design", pa.array(stored.front_ids))

@@ -11,7 +11,7 @@ import pytest
 from click.testing import Result
 
 from evaluators.machine.metrics import METRIC
-from optimizer.archive import open_archive
+from optimizer.archive.archive import open_archive
 
 Run = Callable[..., Result]
 Write = Callable[..., Path]

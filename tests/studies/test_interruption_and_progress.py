@@ -15,7 +15,7 @@ from typing import Any
 import pytest
 from click.testing import Result
 
-from studies.progress import ProgressLine, duration
+from studies.running.progress import ProgressLine, duration
 
 Run = Callable[..., Result]
 Write = Callable[..., Path]
@@ -138,7 +138,7 @@ class Terminal:
 
 
 def test_terminal_progress_overwrites_one_line(monkeypatch: pytest.MonkeyPatch) -> None:
-    from optimizer.progress import Progress
+    from optimizer.running.progress import Progress
 
     monkeypatch.setenv("COLUMNS", "120")
     stream = Terminal()

@@ -13,21 +13,21 @@ from pathlib import Path
 import pytest
 from click.testing import Result
 
-from evaluators.machine.cooling import Cooling
 from evaluators.machine.demagnetisation import Fault
-from evaluators.machine.layout import RotorLayout
 from evaluators.machine.metrics import METRICS
-from evaluators.machine.task import Conditions, Construction, Duty, RippleWeights
-from studies import convert
-from studies.crosschecks import Limit
-from studies.library import shipped
-from studies.schema import (
+from evaluators.machine.task.cooling import Cooling
+from evaluators.machine.task.rotor_layout import RotorLayout
+from evaluators.machine.task.task import Conditions, Construction, Duty, RippleWeights
+from studies.shipped.library import shipped
+from studies.study_file import convert
+from studies.study_file.crosschecks import Limit
+from studies.study_file.schema import (
     ConditionsSection,
     ConstructionSection,
     DutySection,
     RippleSection,
 )
-from studies.schema_machine import CoolingSection, FaultSection, RotorSection
+from studies.study_file.schema_machine import CoolingSection, FaultSection, RotorSection
 
 Run = Callable[..., Result]
 
@@ -125,7 +125,7 @@ def test_new_study_tries_every_number_of_pole_pairs(
 
 
 def test_sizing_follows_its_stated_rules() -> None:
-    from studies.sizing import LENGTH_RATIO, TIP_SPEED, TORQUE_PER_VOLUME, size
+    from studies.new_study.sizing import LENGTH_RATIO, TIP_SPEED, TORQUE_PER_VOLUME, size
 
     slow = size(5000.0, 300.0, 1.2)
     volume = 3.141592653589793 * slow.rotor_radius**2 * slow.stack_length

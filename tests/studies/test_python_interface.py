@@ -13,7 +13,7 @@ import pyarrow.compute as pc
 import pytest
 from click.testing import Result
 
-from optimizer.progress import Progress
+from optimizer.running.progress import Progress
 from studies import api
 from studies.errors import ResultsError, StudiesError
 

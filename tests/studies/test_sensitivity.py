@@ -11,11 +11,11 @@ import numpy as np
 import pytest
 from click.testing import Result
 
-from optimizer.dispatch import Serial
 from optimizer.problem import Column, Outcome, Variable
+from optimizer.workers.dispatch import Serial
 from studies.sensitivity.indices import TooFewError, delta_indices, sobol_indices
 from studies.sensitivity.lines import line_values, lines_through
-from studies.stored import stored_family
+from studies.stored.families import stored_family
 
 Run = Callable[..., Result]
 Write = Callable[..., Path]
@@ -157,7 +157,7 @@ def test_the_grid_keeps_its_size_and_its_ends() -> None:
 
 @pytest.fixture
 def swept(hovergap: Run, write_study: Write) -> tuple[Path, str]:
-    from studies.layout import open_results
+    from studies.stored.layout import open_results
 
     write_study(('name = "toy"', 'name = "toy"\nsettings = { invalid_above_mm = 23.0 }'))
     done = hovergap("sweep", "small.toml", "--budget", "120", "--workers", "1")

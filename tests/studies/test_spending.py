@@ -11,7 +11,7 @@ import numpy as np
 import pytest
 from click.testing import Result
 
-from studies.spreading import Rows, prospects
+from studies.running.spreading import Rows, prospects
 
 Run = Callable[..., Result]
 Write = Callable[..., Path]
@@ -22,8 +22,8 @@ FOLDER = Path("results/small")
 
 
 def states() -> dict[str, str]:
-    from studies.layout import open_results
-    from studies.status import study_status
+    from studies.running.status import study_status
+    from studies.stored.layout import open_results
 
     return {
         item["family"]: item["state"] for item in study_status(open_results(FOLDER))["families"]

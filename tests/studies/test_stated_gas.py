@@ -10,9 +10,9 @@ import numpy as np
 import pytest
 from click.testing import Result
 
-from evaluators.machine.gas import gas_state
-from optimizer.archive import open_archive
-from studies.definition import load_study
+from evaluators.machine.materials.gas import gas_state
+from optimizer.archive.archive import open_archive
+from studies.study_file.definition import load_study
 
 Run = Callable[..., Result]
 Write = Callable[..., Path]

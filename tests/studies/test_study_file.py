@@ -10,8 +10,8 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from studies.definition import load_study, study_from
 from studies.errors import StudiesError, StudyFileError
+from studies.study_file.definition import load_study, study_from
 
 Write = Callable[..., Path]
 
@@ -361,7 +361,7 @@ def test_what_only_the_whole_task_shows_is_placed_too(
         msg = "materials: this magnet does not go with this shaft"
         raise ValueError(msg)
 
-    monkeypatch.setattr("studies.definition.Task", refuse)
+    monkeypatch.setattr("studies.study_file.definition.Task", refuse)
     file = write_study()
     expected = f"{file}:{line_of(file, '[materials]')}: materials: this magnet does not go"
     assert mistakes(file)[0].startswith(expected)

@@ -8,13 +8,13 @@ import numpy as np
 import pytest
 
 from evaluators.finite_element.evaluator import FiniteElementEvaluator
-from evaluators.machine.variables import VARIABLE_NAMES
-from studies.chosen import Chosen
-from studies.definition import study_from
+from evaluators.machine.geometry.variables import VARIABLE_NAMES
 from studies.export.suspension import suspension_data
-from studies.inspection import Inspection
-from studies.layout import Request, Results
-from studies.problem import machine_problem
+from studies.inspection.design import Inspection
+from studies.running.problem import machine_problem
+from studies.stored.design import Chosen
+from studies.stored.layout import Request, Results
+from studies.study_file.definition import study_from
 
 # Wide teeth and yoke and little current: the iron is far from saturation, where models differ.
 DESIGN = {

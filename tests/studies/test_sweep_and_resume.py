@@ -283,7 +283,7 @@ def test_status_of_one_and_of_several_studies(hovergap: Run, write_study: Write)
 
 
 def test_two_processes_cannot_search_one_study(hovergap: Run, write_study: Write) -> None:
-    from optimizer.lock import writer_lock
+    from optimizer.archive.lock import writer_lock
 
     assert hovergap("sweep", write_study(), "--budget", "40", "--workers", "1").exit_code == 0
     with writer_lock(Path("results/small")):

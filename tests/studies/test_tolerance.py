@@ -14,10 +14,10 @@ from click.testing import Result
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from evaluators.machine.families import design_winding
-from evaluators.machine.geometry import cross_sections
-from evaluators.machine.task import Construction
-from studies.stored import stored_family
+from evaluators.machine.geometry.cross_sections import cross_sections
+from evaluators.machine.task.task import Construction
+from evaluators.machine.winding.families import design_winding
+from studies.stored.families import stored_family
 from studies.tolerance.build import nominal_dimensions, scattered_variables
 from studies.tolerance.scatter import DIMENSIONS, Scatter, draw, overridden
 from studies.tolerance.statistics import contributions, yield_of
@@ -167,7 +167,7 @@ def test_overrides_are_read_and_refused_clearly() -> None:
 
 @pytest.fixture
 def swept(hovergap: Run, write_study: Write) -> tuple[Path, str]:
-    from studies.layout import open_results
+    from studies.stored.layout import open_results
 
     write_study()
     done = hovergap("sweep", "small.toml", "--budget", "60", "--workers", "1")
@@ -212,7 +212,7 @@ def test_command_gives_the_closed_form_for_a_linear_metric(
 
 
 def test_machines_that_cannot_be_evaluated_count_as_lost(hovergap: Run, write_study: Write) -> None:
-    from studies.layout import open_results
+    from studies.stored.layout import open_results
 
     write_study(
         ('name = "toy"', 'name = "toy"\nsettings = { invalid_above_mm = 20.0 }'),
@@ -237,7 +237,7 @@ def test_analytic_machines_keep_length_and_turns(hovergap: Run, write_study: Wri
         "sweep", "small.toml", "--budget", "12", "--workers", "1", "--family", "Q12p4s5"
     )
     assert done.exit_code == 0, done.output
-    from studies.layout import open_results
+    from studies.stored.layout import open_results
 
     folder = Path("results/small")
     stored = stored_family(open_results(folder), "Q12p4s5")

@@ -16,8 +16,8 @@ from click.testing import CliRunner, Result
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
-from studies.definition import study_from
 from studies.errors import StudyFileError
+from studies.study_file.definition import study_from
 from studies.tables import FORMULA_STARTS
 
 Run = Callable[..., Result]

@@ -18,13 +18,13 @@ import pyarrow.parquet as pq
 import pytest
 from click.testing import Result
 
-from optimizer.archive import open_archive
-from optimizer.parts import part_paths
-from studies.comparison import compare_families
-from studies.layout import open_results
-from studies.stored import matrix
+from optimizer.archive.archive import open_archive
+from optimizer.archive.parts import part_paths
+from studies.comparison.numbers import compare_families
+from studies.stored.families import matrix
+from studies.stored.layout import open_results
+from studies.stored.verified import read_verified, verified_folder
 from studies.verification.selection import read_settings
-from studies.verified import read_verified, verified_folder
 
 Run = Callable[..., Result]
 Write = Callable[..., Path]
@@ -152,7 +152,7 @@ def test_killed_at_any_moment_nothing_done_is_lost(searched: Path, hovergap: Run
     whole = stored()
     (part,) = part_paths(folder)
     part.unlink()
-    from optimizer.parts import write_part
+    from optimizer.archive.parts import write_part
 
     write_part(folder, 3, whole.slice(0, 8))
     write_part(folder, 4, whole.slice(5, 6))  # rows twice, as after a crash while merging

@@ -16,11 +16,11 @@ from pathlib import Path
 import pytest
 from click.testing import Result
 
-from optimizer.lock import WRITER_NAME
-from studies.layout import open_results
-from studies.screen import Screen
-from studies.stored import stored_family
-from studies.watching import StudyWatch, writer_of
+from optimizer.archive.lock import WRITER_NAME
+from studies.running.screen import Screen
+from studies.running.watching import StudyWatch, writer_of
+from studies.stored.families import stored_family
+from studies.stored.layout import open_results
 
 Run = Callable[..., Result]
 Write = Callable[..., Path]

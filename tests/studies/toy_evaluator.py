@@ -15,7 +15,7 @@ from numpy.typing import NDArray
 
 from evaluators.interface import Capability, Evaluations, EvaluatorError, Status, Waveform
 from evaluators.machine.metrics import METRICS
-from evaluators.machine.task import Task
+from evaluators.machine.task.task import Task
 
 FloatArray = NDArray[np.float64]
 SETTINGS = ("begun", "delay_s", "invalid_above_mm", "metrics")

@@ -4,10 +4,8 @@ from __future__ import annotations
 
 import numpy as np
 
-from evaluators.machine.geometry import CrossSections
-from evaluators.machine.performance.operating import Operating, held
-from evaluators.machine.quantity import FloatArray
-from evaluators.machine.rotor_dynamics import (
+from evaluators.machine.geometry.cross_sections import CrossSections
+from evaluators.machine.mechanics.bending import (
     TIMOSHENKO_SHEAR,
     amplification_factor,
     beam_matrices,
@@ -15,7 +13,9 @@ from evaluators.machine.rotor_dynamics import (
     separation_margin,
     supported_modes,
 )
-from evaluators.machine.task import Task
+from evaluators.machine.performance.operating import Operating, held
+from evaluators.machine.quantity import FloatArray
+from evaluators.machine.task.task import Task
 
 END_ELEMENTS, ACTIVE_ELEMENTS = 2, 3
 FIRST_BENDING = 2  # column after the two rigid modes of a beam

@@ -6,13 +6,13 @@ from typing import NamedTuple
 
 import numpy as np
 
+from evaluators.machine.drive.inverter import PhaseVoltage, Turns, phase_voltage
+from evaluators.machine.drive.wire import Strands
 from evaluators.machine.field import Excitation
-from evaluators.machine.geometry import CrossSections
-from evaluators.machine.inverter import PhaseVoltage, Turns, phase_voltage
+from evaluators.machine.geometry.cross_sections import CrossSections
 from evaluators.machine.performance.operating import Operating, held
 from evaluators.machine.quantity import MU_0, FloatArray
-from evaluators.machine.task import Task
-from evaluators.machine.wire import Strands
+from evaluators.machine.task.task import Task
 
 END_TURN_PERMEANCE = 0.3
 """Leakage permeance of end turns per length; 0.2 to 0.4 in the tables of Pyrhonen, Jokinen,

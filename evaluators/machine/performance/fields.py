@@ -4,10 +4,10 @@ from __future__ import annotations
 
 import numpy as np
 
-from evaluators.machine.geometry import CrossSections
+from evaluators.machine.geometry.cross_sections import CrossSections
 from evaluators.machine.performance.operating import Operating
 from evaluators.machine.quantity import FloatArray
-from evaluators.machine.task import Task
+from evaluators.machine.task.task import Task
 
 
 def metrics(task: Task, sections: CrossSections, state: Operating) -> dict[str, FloatArray]:

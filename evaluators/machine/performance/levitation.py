@@ -6,19 +6,19 @@ from collections.abc import Mapping
 
 import numpy as np
 
-from evaluators.machine.balance import residual_unbalance
+from evaluators.machine.drive.inverter import Turns
 from evaluators.machine.field import Excitation
-from evaluators.machine.geometry import CrossSections
-from evaluators.machine.inverter import Turns
+from evaluators.machine.geometry.cross_sections import CrossSections
 from evaluators.machine.levitation import (
     displacement_zones,
     force_slew_rate,
     power_bandwidth,
     unstable_pole,
 )
+from evaluators.machine.mechanics.balance import residual_unbalance
 from evaluators.machine.performance.operating import Operating
 from evaluators.machine.quantity import FloatArray
-from evaluators.machine.task import Task
+from evaluators.machine.task.task import Task
 
 
 def metrics(

@@ -8,9 +8,10 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from evaluators.machine.drive.inverter import Turns, choose_turns
+from evaluators.machine.drive.wire import Strands, choose_strands
 from evaluators.machine.field import Excitation, FieldSolution
-from evaluators.machine.geometry import CrossSections
-from evaluators.machine.inverter import Turns, choose_turns
+from evaluators.machine.geometry.cross_sections import CrossSections
 from evaluators.machine.metrics import METRICS
 from evaluators.machine.performance import (
     bending,
@@ -25,8 +26,7 @@ from evaluators.machine.performance import (
 )
 from evaluators.machine.performance.operating import Operating, settle, study_temperatures
 from evaluators.machine.quantity import FloatArray
-from evaluators.machine.task import Task
-from evaluators.machine.wire import Strands, choose_strands
+from evaluators.machine.task.task import Task
 
 LONGEST_STACK = 20.0  # m; a longer one means that the cross-section makes no torque to speak of
 

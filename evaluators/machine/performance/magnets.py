@@ -7,14 +7,14 @@ from functools import lru_cache
 import numpy as np
 
 from evaluators.machine.demagnetisation import ArmatureReaction, short_circuit_peak
+from evaluators.machine.drive.wire import Strands
 from evaluators.machine.field import Excitation
-from evaluators.machine.geometry import CrossSections
+from evaluators.machine.geometry.cross_sections import CrossSections
 from evaluators.machine.performance.circuit import one_turn
 from evaluators.machine.performance.operating import Operating, held
 from evaluators.machine.quantity import FloatArray
-from evaluators.machine.task import Task
-from evaluators.machine.winding import Winding
-from evaluators.machine.wire import Strands
+from evaluators.machine.task.task import Task
+from evaluators.machine.winding.winding import Winding
 
 
 def metrics(

@@ -7,18 +7,18 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from evaluators.machine.geometry import CrossSections
-from evaluators.machine.mechanics import tip_speed
-from evaluators.machine.performance.operating import Operating, held
-from evaluators.machine.quantity import FloatArray
-from evaluators.machine.sleeve import (
+from evaluators.machine.geometry.cross_sections import CrossSections
+from evaluators.machine.mechanics.rings import tip_speed
+from evaluators.machine.mechanics.sleeve import (
     RotorSection,
     SleeveState,
     lift_off_speed,
     required_interference,
     sleeve_stress,
 )
-from evaluators.machine.task import Task
+from evaluators.machine.performance.operating import Operating, held
+from evaluators.machine.quantity import FloatArray
+from evaluators.machine.task.task import Task
 
 ASSEMBLY_TEMPERATURE = 20.0  # degC, at which interference is stated
 RPM = 30.0 / np.pi

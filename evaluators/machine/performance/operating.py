@@ -7,16 +7,16 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
+from evaluators.machine.drive.wire import Strands
 from evaluators.machine.field import Excitation, FieldSolution
-from evaluators.machine.friction import disc_power, gap_power
-from evaluators.machine.gas import gas_state
-from evaluators.machine.geometry import CrossSections
+from evaluators.machine.geometry.cross_sections import CrossSections
 from evaluators.machine.losses.copper import slot_loss, strand_factor
+from evaluators.machine.losses.friction import disc_power, gap_power
+from evaluators.machine.materials.gas import gas_state
 from evaluators.machine.performance.remanence import at_remanence
 from evaluators.machine.quantity import FloatArray
-from evaluators.machine.task import Task
+from evaluators.machine.task.task import Task
 from evaluators.machine.thermal.machine import NODES, Conduction, conduction_of, machine_network
-from evaluators.machine.wire import Strands
 
 CEILING = 300.0
 """Temperature in degC beyond which properties are held: no winding lives there, and with losses

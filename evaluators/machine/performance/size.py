@@ -5,12 +5,12 @@ from __future__ import annotations
 import numpy as np
 
 from evaluators.machine.cost import SCENARIOS, active_material_cost
-from evaluators.machine.geometry import CrossSections
-from evaluators.machine.mass import active_masses
+from evaluators.machine.drive.wire import Strands
+from evaluators.machine.geometry.cross_sections import CrossSections
+from evaluators.machine.geometry.mass import active_masses
 from evaluators.machine.performance.operating import Operating
 from evaluators.machine.quantity import FloatArray
-from evaluators.machine.task import STANDARD_GRAVITY, Task
-from evaluators.machine.wire import Strands
+from evaluators.machine.task.task import STANDARD_GRAVITY, Task
 
 
 def metrics(

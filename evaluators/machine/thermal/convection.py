@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import ArrayLike
 
-from evaluators.machine.gas import GasState
+from evaluators.machine.materials.gas import GasState
 from evaluators.machine.quantity import FloatArray, floats
 
 LAMINAR_DUCT_NUSSELT = 3.66

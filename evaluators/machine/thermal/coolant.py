@@ -7,11 +7,11 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import ArrayLike
 
-from evaluators.machine import materials
-from evaluators.machine.cooling import Cooling
-from evaluators.machine.gas import gas_state
-from evaluators.machine.material_kinds import Gas
+from evaluators.machine.materials import library as materials
+from evaluators.machine.materials.gas import gas_state
+from evaluators.machine.materials.kinds import Gas
 from evaluators.machine.quantity import FloatArray, floats
+from evaluators.machine.task.cooling import Cooling
 from evaluators.machine.thermal.conduction import rib_efficiency
 from evaluators.machine.thermal.convection import duct_nusselt, plate_coefficient
 

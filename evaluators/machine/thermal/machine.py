@@ -13,12 +13,12 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from evaluators.machine import materials
-from evaluators.machine.gas import GasState, gas_state
-from evaluators.machine.geometry import CrossSections
-from evaluators.machine.material_kinds import Gas
+from evaluators.machine.geometry.cross_sections import CrossSections
+from evaluators.machine.materials import library as materials
+from evaluators.machine.materials.gas import GasState, gas_state
+from evaluators.machine.materials.kinds import Gas
 from evaluators.machine.quantity import FloatArray
-from evaluators.machine.task import Task
+from evaluators.machine.task.task import Task
 from evaluators.machine.thermal import conduction
 from evaluators.machine.thermal.convection import disc_coefficient, end_space_coefficient
 from evaluators.machine.thermal.coolant import FRAME_CONDUCTIVITY, frame_conductance

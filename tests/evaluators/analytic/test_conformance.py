@@ -7,7 +7,7 @@ from conformance import EvaluatorConformance
 from machines import FAMILIES
 
 from evaluators.analytic.evaluator import AnalyticEvaluator
-from evaluators.machine.task import Task
+from evaluators.machine.task.task import Task
 
 
 @pytest.mark.parametrize("numbers", FAMILIES, ids=str, scope="class")

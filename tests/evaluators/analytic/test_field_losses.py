@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 from evaluators.analytic import losses
 from evaluators.analytic.model import AnalyticModel, Resolution, Waves
 from evaluators.machine.field import Excitation
-from evaluators.machine.geometry import CrossSections
+from evaluators.machine.geometry.cross_sections import CrossSections
 from evaluators.machine.losses.iron import IronLossCoefficients
 
 FloatArray = NDArray[np.float64]

@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 from evaluators.analytic.gap import GapField
 from evaluators.analytic.model import Resolution
 from evaluators.analytic.rotor import MU_0
-from evaluators.machine.winding import Connection
+from evaluators.machine.winding.winding import Connection
 
 FloatArray = NDArray[np.float64]
 FINE = Resolution(slot_modes=4, reach=10, highest_order=96, positions=12)

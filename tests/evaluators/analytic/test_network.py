@@ -10,7 +10,7 @@ from scipy.optimize import root
 from evaluators.analytic import network
 from evaluators.analytic.network import StatorCircuit
 from evaluators.analytic.rotor import MU_0
-from evaluators.machine.magnetization import MagnetizationCurve
+from evaluators.machine.materials.magnetization import MagnetizationCurve
 
 FloatArray = NDArray[np.float64]
 

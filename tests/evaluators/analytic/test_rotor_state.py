@@ -11,7 +11,7 @@ import pytest
 from evaluators.analytic.gap import GapField
 from evaluators.analytic.rotor import MU_0, RotorRadii, magnetisation, source
 from evaluators.analytic.rotor_state import displacement_stiffness, lowest_magnet_density
-from evaluators.machine.geometry import CrossSections
+from evaluators.machine.geometry.cross_sections import CrossSections
 
 
 @pytest.mark.parametrize(

@@ -11,10 +11,10 @@ from evaluators.analytic.gap import Iron
 from evaluators.analytic.model import AnalyticModel, Resolution
 from evaluators.analytic.rotor import MU_0
 from evaluators.analytic.saturation import mean_differential_reluctivity, secant_reluctivity
-from evaluators.machine import materials
 from evaluators.machine.field import FieldSolution, excitation
-from evaluators.machine.magnetization import MagnetizationCurve
-from evaluators.machine.materials import ElectricalSteel
+from evaluators.machine.materials import library as materials
+from evaluators.machine.materials.library import ElectricalSteel
+from evaluators.machine.materials.magnetization import MagnetizationCurve
 
 COARSE = Resolution(slot_modes=4, reach=12, highest_order=96, positions=8)
 

@@ -8,7 +8,7 @@ import pytest
 from slot_solution import solve_slot
 
 from evaluators.analytic.slots import mouth
-from evaluators.machine.geometry import CrossSections
+from evaluators.machine.geometry.cross_sections import CrossSections
 
 
 def slot(numbers: machines.Numbers = (12, 4, 5), **changes: float) -> CrossSections:

@@ -15,8 +15,8 @@ from evaluators.analytic.model import Resolution
 from evaluators.analytic.rotor import MU_0, RotorRadii
 from evaluators.analytic.rotor_state import at_order
 from evaluators.analytic.slots import mouth
-from evaluators.machine.families import enumerate_families
-from evaluators.machine.winding import Winding
+from evaluators.machine.winding.families import enumerate_families
+from evaluators.machine.winding.winding import Winding
 
 FloatArray = NDArray[np.float64]
 

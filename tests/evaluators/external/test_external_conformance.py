@@ -16,7 +16,7 @@ from evaluators import interface
 from evaluators.analytic.evaluator import AnalyticEvaluator
 from evaluators.external.evaluator import ExternalEvaluator
 from evaluators.interface import ConsentError, Evaluator
-from evaluators.machine.task import Task
+from evaluators.machine.task.task import Task
 
 AWK = shutil.which("awk")
 SLOTLESS = ["awk", "-f", str(Path(__file__).with_name("slotless.awk")), "request.json"]

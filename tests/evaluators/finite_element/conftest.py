@@ -8,13 +8,13 @@ import machines
 import numpy as np
 import pytest
 
-from evaluators.finite_element.batch import BatchField
-from evaluators.finite_element.lanes import LANES
-from evaluators.finite_element.lattice import Lattice, Resolution
+from evaluators.finite_element.mesh.lattice import Lattice, Resolution
 from evaluators.finite_element.model import Discretisation, FieldModel
-from evaluators.finite_element.rotor import NU_0
-from evaluators.finite_element.system import CurveTable, Topology
-from evaluators.machine.geometry import CrossSections
+from evaluators.finite_element.rotor.uniform import NU_0
+from evaluators.finite_element.solution.batch import BatchField
+from evaluators.finite_element.solution.lanes import LANES
+from evaluators.finite_element.solution.system import CurveTable, Topology
+from evaluators.machine.geometry.cross_sections import CrossSections
 
 PERFECT = 1e9  # relative permeability; its magnetic voltage is 1e-7 of the gap's
 

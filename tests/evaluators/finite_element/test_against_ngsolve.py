@@ -15,13 +15,13 @@ import numpy as np
 import pytest
 from numpy.typing import NDArray
 
-from evaluators.finite_element import nonlinear_force, stress
-from evaluators.finite_element.batch import BatchField
-from evaluators.finite_element.lanes import LANES
 from evaluators.finite_element.model import Discretisation, FieldModel
+from evaluators.finite_element.outcome import nonlinear_force, stress
+from evaluators.finite_element.solution.batch import BatchField
+from evaluators.finite_element.solution.lanes import LANES
 from evaluators.machine.field import excitation
-from evaluators.machine.geometry import CrossSections
-from evaluators.machine.magnetization import MagnetizationCurve
+from evaluators.machine.geometry.cross_sections import CrossSections
+from evaluators.machine.materials.magnetization import MagnetizationCurve
 from evaluators.machine.quantity import MU_0
 
 ngsolve = pytest.importorskip("ngsolve")

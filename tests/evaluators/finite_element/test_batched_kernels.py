@@ -6,14 +6,16 @@ import machines
 import numpy as np
 import pytest
 
-from evaluators.finite_element import analysis, factor, newton, stress
-from evaluators.finite_element.batch import BatchField
-from evaluators.finite_element.lanes import LANES
-from evaluators.finite_element.lattice import Lattice, Resolution
+from evaluators.finite_element import analysis
+from evaluators.finite_element.mesh.lattice import Lattice, Resolution
+from evaluators.finite_element.mesh.symmetry import Sector
 from evaluators.finite_element.model import Discretisation, FieldModel
-from evaluators.finite_element.reference import SciPySolver, full_matrix, tangent
-from evaluators.finite_element.symmetry import Sector
-from evaluators.finite_element.system import CurveTable, Topology, reluctivity
+from evaluators.finite_element.outcome import stress
+from evaluators.finite_element.solution import factor, newton
+from evaluators.finite_element.solution.batch import BatchField
+from evaluators.finite_element.solution.lanes import LANES
+from evaluators.finite_element.solution.reference import SciPySolver, full_matrix, tangent
+from evaluators.finite_element.solution.system import CurveTable, Topology, reluctivity
 from evaluators.machine.field import Excitation, excitation
 
 COARSE = Discretisation(

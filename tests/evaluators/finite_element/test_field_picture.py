@@ -11,8 +11,8 @@ import pytest
 from numpy.typing import NDArray
 
 from evaluators.finite_element.evaluator import FiniteElementEvaluator
-from evaluators.finite_element.picture import Currents, FieldPicture, field_picture
-from evaluators.finite_element.picture_rings import HIGHEST_IN_ROTOR, RING_STEPS
+from evaluators.finite_element.picture.picture import Currents, FieldPicture, field_picture
+from evaluators.finite_element.picture.rings import HIGHEST_IN_ROTOR, RING_STEPS
 from evaluators.machine.field import FieldSolution, excitation
 
 MU_0 = 4e-7 * np.pi

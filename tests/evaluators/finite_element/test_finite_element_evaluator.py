@@ -12,7 +12,7 @@ from conformance import EvaluatorConformance
 
 from evaluators.finite_element.evaluator import FiniteElementEvaluator
 from evaluators.interface import Evaluator, EvaluatorError
-from evaluators.machine.task import Task
+from evaluators.machine.task.task import Task
 
 COARSE = {
     "cells": {"tooth": 2, "slot": 2, "tip": 1, "wedge": 1, "body": 2, "yoke": 2},

@@ -9,13 +9,15 @@ import numpy as np
 import pytest
 from numpy.typing import NDArray
 
-from evaluators.finite_element import analysis, newton, stress, transient
-from evaluators.finite_element.batch import BatchField
-from evaluators.finite_element.eddy import Conductors, EddyRotor
-from evaluators.finite_element.lanes import LANES
-from evaluators.finite_element.lattice import Resolution
+from evaluators.finite_element import analysis, transient
+from evaluators.finite_element.mesh.lattice import Resolution
 from evaluators.finite_element.model import Discretisation, FieldModel
-from evaluators.finite_element.rotor import NU_0, Rotor
+from evaluators.finite_element.outcome import stress
+from evaluators.finite_element.rotor.eddy import Conductors, EddyRotor
+from evaluators.finite_element.rotor.uniform import NU_0, Rotor
+from evaluators.finite_element.solution import newton
+from evaluators.finite_element.solution.batch import BatchField
+from evaluators.finite_element.solution.lanes import LANES
 from evaluators.machine.field import Excitation, excitation
 
 FloatArray = NDArray[np.float64]

@@ -7,12 +7,13 @@ from types import SimpleNamespace
 import numpy as np
 import pytest
 
-from evaluators.finite_element import mesh, newton
-from evaluators.finite_element.lanes import LANES
-from evaluators.finite_element.lattice import Lattice, Resolution
-from evaluators.finite_element.symmetry import Sector
-from evaluators.finite_element.system import CurveTable, System, Topology
-from evaluators.machine.magnetization import MagnetizationCurve
+from evaluators.finite_element.mesh import geometry as mesh
+from evaluators.finite_element.mesh.lattice import Lattice, Resolution
+from evaluators.finite_element.mesh.symmetry import Sector
+from evaluators.finite_element.solution import newton
+from evaluators.finite_element.solution.lanes import LANES
+from evaluators.finite_element.solution.system import CurveTable, System, Topology
+from evaluators.machine.materials.magnetization import MagnetizationCurve
 
 # B-H table of TEAM workshop problem 13 (Nakata, Takahashi, Fujiwara), T and A/m.
 FLUX_DENSITY = [

@@ -12,9 +12,9 @@ from typing import Any
 import numpy as np
 import pytest
 
-from evaluators.finite_element.eddy import Conductors, EddyRotor
-from evaluators.finite_element.lanes import LANES
-from evaluators.finite_element.rotor import NU_0, Rotor
+from evaluators.finite_element.rotor.eddy import Conductors, EddyRotor
+from evaluators.finite_element.rotor.uniform import NU_0, Rotor
+from evaluators.finite_element.solution.lanes import LANES
 from evaluators.machine.quantity import MU_0
 
 ngsolve = pytest.importorskip("ngsolve")

@@ -10,10 +10,10 @@ import pytest
 
 from evaluators.finite_element.evaluator import FiniteElementEvaluator
 from evaluators.interface import Status
-from evaluators.machine.variables import VARIABLE_NAMES
-from studies.definition import load_study
+from evaluators.machine.geometry.variables import VARIABLE_NAMES
+from studies.study_file.definition import load_study
 
-STUDIES = Path(__file__).parents[3] / "studies"
+STUDIES = Path(__file__).parents[3] / "studies/shipped"
 FAMILIES = ("Q6p1s2", "Q12p1s2", "Q6p2s1", "Q12p2s1", "Q18p2s1", "Q12p4s5")
 
 SMOOTH = (

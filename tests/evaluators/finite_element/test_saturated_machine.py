@@ -9,14 +9,15 @@ import numpy as np
 import pytest
 from numpy.typing import NDArray
 
-from evaluators.finite_element import analysis, losses, nonlinear_force, stress
-from evaluators.finite_element.batch import BatchField, Solution
-from evaluators.finite_element.displacement import displaced, stiffness
-from evaluators.finite_element.lanes import LANES
-from evaluators.finite_element.lattice import Resolution
+from evaluators.finite_element import analysis
+from evaluators.finite_element.mesh.lattice import Resolution
 from evaluators.finite_element.model import Discretisation, FieldModel
-from evaluators.finite_element.newton import Settings
-from evaluators.finite_element.quantities import force_parts
+from evaluators.finite_element.outcome import losses, nonlinear_force, stress
+from evaluators.finite_element.outcome.displacement import displaced, stiffness
+from evaluators.finite_element.outcome.quantities import force_parts
+from evaluators.finite_element.solution.batch import BatchField, Solution
+from evaluators.finite_element.solution.lanes import LANES
+from evaluators.finite_element.solution.newton import Settings
 from evaluators.machine.field import Excitation, excitation
 from evaluators.machine.losses.iron import iron_loss_from_waveform
 

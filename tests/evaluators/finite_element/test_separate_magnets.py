@@ -8,14 +8,14 @@ import pytest
 from numpy.typing import NDArray
 
 from evaluators.finite_element import analysis
-from evaluators.finite_element.batch import BatchField
 from evaluators.finite_element.evaluator import FiniteElementEvaluator
-from evaluators.finite_element.lanes import LANES
-from evaluators.finite_element.lattice import Resolution
+from evaluators.finite_element.mesh.lattice import Resolution
 from evaluators.finite_element.model import Discretisation, FieldModel
-from evaluators.finite_element.newton import Settings
-from evaluators.finite_element.rotor import NU_0, Rotor, magnetisation
-from evaluators.finite_element.separate_magnets import Ring, SeparateMagnets, at_bore
+from evaluators.finite_element.rotor.separate_magnets import Ring, SeparateMagnets, at_bore
+from evaluators.finite_element.rotor.uniform import NU_0, Rotor, magnetisation
+from evaluators.finite_element.solution.batch import BatchField
+from evaluators.finite_element.solution.lanes import LANES
+from evaluators.finite_element.solution.newton import Settings
 from evaluators.interface import EvaluatorError
 from evaluators.machine.field import Excitation, excitation
 

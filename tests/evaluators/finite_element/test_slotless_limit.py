@@ -7,10 +7,10 @@ from collections.abc import Callable
 import numpy as np
 import pytest
 
-from evaluators.finite_element import stress
-from evaluators.finite_element.batch import BatchField, Solution
-from evaluators.finite_element.displacement import stiffness
-from evaluators.finite_element.lanes import LANES
+from evaluators.finite_element.outcome import stress
+from evaluators.finite_element.outcome.displacement import stiffness
+from evaluators.finite_element.solution.batch import BatchField, Solution
+from evaluators.finite_element.solution.lanes import LANES
 
 SlotlessMaker = Callable[..., BatchField]
 NO_CURRENT = np.zeros(LANES)

@@ -11,15 +11,18 @@ import numpy as np
 import pytest
 from numpy.typing import NDArray
 
-from evaluators.finite_element import mesh, newton, stress, transient
-from evaluators.finite_element.batch import BatchField, Equations
-from evaluators.finite_element.eddy import Conductors, EddyRotor
-from evaluators.finite_element.gap import GapCoupling
-from evaluators.finite_element.lanes import LANES
-from evaluators.finite_element.lattice import Lattice, Resolution
-from evaluators.finite_element.rotor import NU_0, Rotor
-from evaluators.finite_element.symmetry import Sector
-from evaluators.finite_element.system import CurveTable, System, Topology, slot_load
+from evaluators.finite_element import transient
+from evaluators.finite_element.mesh import geometry as mesh
+from evaluators.finite_element.mesh.lattice import Lattice, Resolution
+from evaluators.finite_element.mesh.symmetry import Sector
+from evaluators.finite_element.outcome import stress
+from evaluators.finite_element.rotor.eddy import Conductors, EddyRotor
+from evaluators.finite_element.rotor.uniform import NU_0, Rotor
+from evaluators.finite_element.solution import newton
+from evaluators.finite_element.solution.batch import BatchField, Equations
+from evaluators.finite_element.solution.gap import GapCoupling
+from evaluators.finite_element.solution.lanes import LANES
+from evaluators.finite_element.solution.system import CurveTable, System, Topology, slot_load
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]

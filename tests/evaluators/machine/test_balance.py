@@ -6,7 +6,7 @@ import math
 
 import pytest
 
-from evaluators.machine.balance import residual_unbalance
+from evaluators.machine.mechanics.balance import residual_unbalance
 
 
 # ISO 21940-11:2016 (former ISO 1940-1), formula from memory: G mm/s, 1/min, kg; e um, U g mm.

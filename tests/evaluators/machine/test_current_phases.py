@@ -7,7 +7,7 @@ import numpy as np
 import pytest
 
 from evaluators.analytic.evaluator import AnalyticEvaluator
-from evaluators.machine.phases import current_phases
+from evaluators.machine.winding.phases import current_phases
 
 X = "suspension current of phase one, commanded along x"
 Y = "suspension current of phase one, commanded along y"

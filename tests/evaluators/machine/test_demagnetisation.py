@@ -8,8 +8,8 @@ from machines import FAMILIES, Numbers
 from scipy.integrate import solve_ivp
 
 from evaluators.machine.demagnetisation import ArmatureReaction, Fault, short_circuit_peak
-from evaluators.machine.families import design_winding
 from evaluators.machine.quantity import MU_0
+from evaluators.machine.winding.families import design_winding
 
 
 @pytest.mark.parametrize(("emf", "current", "resistance", "reactance"), [

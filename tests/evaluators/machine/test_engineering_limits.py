@@ -10,16 +10,16 @@ import pytest
 
 from evaluators.analytic.evaluator import AnalyticEvaluator
 from evaluators.interface import Evaluations
-from evaluators.machine import materials
-from evaluators.machine.cooling import Cooling
 from evaluators.machine.cost import Price
 from evaluators.machine.demagnetisation import Fault
-from evaluators.machine.layout import RotorLayout
-from evaluators.machine.materials import SleeveMaterial
+from evaluators.machine.materials import library as materials
+from evaluators.machine.materials.library import SleeveMaterial
 from evaluators.machine.metrics import METRIC, METRICS
 from evaluators.machine.performance.mechanics import interference_verdict
 from evaluators.machine.quantity import MU_0
-from evaluators.machine.task import STANDARD_GRAVITY, Task
+from evaluators.machine.task.cooling import Cooling
+from evaluators.machine.task.rotor_layout import RotorLayout
+from evaluators.machine.task.task import STANDARD_GRAVITY, Task
 
 ROWS = 30
 FIXED = Cooling(temperatures="fixed")

@@ -7,7 +7,7 @@ import itertools
 import numpy as np
 import pytest
 
-from evaluators.machine.families import (
+from evaluators.machine.winding.families import (
     SUSPENSION_FACTOR_MINIMUM,
     TORQUE_FACTOR_MINIMUM,
     Refusal,
@@ -16,7 +16,7 @@ from evaluators.machine.families import (
     design_winding,
     enumerate_families,
 )
-from evaluators.machine.winding import Winding
+from evaluators.machine.winding.winding import Winding
 
 SLOTS = (6, 9, 12, 15, 18, 24, 30, 36)
 
@@ -86,12 +86,12 @@ def test_refusals_name_the_failed_condition(
 
 
 def test_limits_of_the_factors(monkeypatch: pytest.MonkeyPatch) -> None:
-    monkeypatch.setattr("evaluators.machine.families.TORQUE_FACTOR_MINIMUM", 0.87)
+    monkeypatch.setattr("evaluators.machine.winding.families.TORQUE_FACTOR_MINIMUM", 0.87)
     with pytest.raises(WindingError, match=r"pitch 1, gives 0\.866") as caught:
         design_winding(12, 4, 5)
     assert caught.value.condition == "torque winding factor"
-    monkeypatch.setattr("evaluators.machine.families.TORQUE_FACTOR_MINIMUM", 0.866)
-    monkeypatch.setattr("evaluators.machine.families.SUSPENSION_FACTOR_MINIMUM", 0.7)
+    monkeypatch.setattr("evaluators.machine.winding.families.TORQUE_FACTOR_MINIMUM", 0.866)
+    monkeypatch.setattr("evaluators.machine.winding.families.SUSPENSION_FACTOR_MINIMUM", 0.7)
     with pytest.raises(WindingError, match=r"pitch 1, gives 0\.683") as caught:
         design_winding(12, 4, 5)
     assert caught.value.condition == "suspension winding factor"

@@ -8,7 +8,7 @@ import numpy as np
 import pytest
 from scipy.integrate import solve_bvp
 
-from evaluators.machine.friction import (
+from evaluators.machine.losses.friction import (
     disc_power,
     disc_torque_coefficient,
     gap_power,

@@ -6,8 +6,8 @@ import numpy as np
 import pytest
 from CoolProp.CoolProp import PropsSI
 
-from evaluators.machine.gas import gas_state, vapour
-from evaluators.machine.materials import Gas, load
+from evaluators.machine.materials.gas import gas_state, vapour
+from evaluators.machine.materials.library import Gas, load
 
 
 @pytest.mark.parametrize("name", ["Air", "Helium", "Nitrogen"])

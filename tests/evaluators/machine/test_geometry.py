@@ -7,7 +7,7 @@ import numpy as np
 import pytest
 from numpy.typing import NDArray
 
-from evaluators.machine.geometry import CrossSections, batch_length, cross_sections
+from evaluators.machine.geometry.cross_sections import CrossSections, batch_length, cross_sections
 
 FloatArray = NDArray[np.float64]
 TIPS = {"half-closed": 1.6, "straight": 1.0, "pointed": 0.5}

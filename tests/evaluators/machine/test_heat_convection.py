@@ -6,9 +6,9 @@ import numpy as np
 import pytest
 from CoolProp.CoolProp import PropsSI
 
-from evaluators.machine.cooling import Cooling
-from evaluators.machine.gas import GasState, gas_state
-from evaluators.machine.materials import Gas, load
+from evaluators.machine.materials.gas import GasState, gas_state
+from evaluators.machine.materials.library import Gas, load
+from evaluators.machine.task.cooling import Cooling
 from evaluators.machine.thermal.conduction import cylinder_resistance
 from evaluators.machine.thermal.convection import (
     disc_coefficient,

@@ -8,8 +8,8 @@ import numpy as np
 import pytest
 from machines import FAMILIES, Numbers
 
-from evaluators.machine.families import design_winding
-from evaluators.machine.inverter import choose_turns, phase_voltage
+from evaluators.machine.drive.inverter import choose_turns, phase_voltage
+from evaluators.machine.winding.families import design_winding
 
 
 def test_most_turns_that_fit() -> None:

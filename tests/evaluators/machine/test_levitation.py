@@ -14,7 +14,7 @@ from evaluators.machine.levitation import (
     power_bandwidth,
     unstable_pole,
 )
-from evaluators.machine.task import Duty
+from evaluators.machine.task.task import Duty
 
 
 def test_displacement_zones() -> None:

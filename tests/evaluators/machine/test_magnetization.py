@@ -9,9 +9,9 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from evaluators.machine import materials
-from evaluators.machine.magnetization import MagnetizationCurve
-from evaluators.machine.materials import ElectricalSteel, ShaftSteel
+from evaluators.machine.materials import library as materials
+from evaluators.machine.materials.library import ElectricalSteel, ShaftSteel
+from evaluators.machine.materials.magnetization import MagnetizationCurve
 
 MU_0 = 4e-7 * math.pi
 

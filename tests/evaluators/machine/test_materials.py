@@ -10,9 +10,9 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from evaluators.machine import materials
 from evaluators.machine.losses.iron import iron_loss_sine
-from evaluators.machine.materials import Conductor, ElectricalSteel, Magnet, SleeveMaterial
+from evaluators.machine.materials import library as materials
+from evaluators.machine.materials.library import Conductor, ElectricalSteel, Magnet, SleeveMaterial
 from evaluators.machine.quantity import Quantity
 
 MU_0 = 4e-7 * math.pi

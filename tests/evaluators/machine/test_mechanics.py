@@ -11,7 +11,7 @@ import math
 import numpy as np
 import pytest
 
-from evaluators.machine.mechanics import (
+from evaluators.machine.mechanics.rings import (
     Part,
     plane_strain,
     pressure_stress,

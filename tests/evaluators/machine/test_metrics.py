@@ -9,8 +9,8 @@ import numpy as np
 import pytest
 
 from evaluators.analytic.evaluator import AnalyticEvaluator
+from evaluators.machine.geometry.variables import VARIABLES
 from evaluators.machine.metrics import METRIC, METRICS, Metric
-from evaluators.machine.variables import VARIABLES
 
 SHORT = {"degC": "C", "r/min": "rpm"}
 WITHOUT_SUFFIX = {"1", "money"}  # pure numbers, and the study's currency

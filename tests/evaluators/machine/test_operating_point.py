@@ -11,10 +11,10 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from evaluators.analytic.evaluator import AnalyticEvaluator
-from evaluators.machine.cooling import Cooling
+from evaluators.machine.drive.wire import choose_strands
 from evaluators.machine.field import Excitation, FieldSolution, excitation
-from evaluators.machine.gas import gas_state
-from evaluators.machine.geometry import CrossSections
+from evaluators.machine.geometry.cross_sections import CrossSections
+from evaluators.machine.materials.gas import gas_state
 from evaluators.machine.performance import performance
 from evaluators.machine.performance.operating import (
     CEILING,
@@ -23,14 +23,14 @@ from evaluators.machine.performance.operating import (
     settle,
     study_temperatures,
 )
-from evaluators.machine.task import Conditions, Task
+from evaluators.machine.task.cooling import Cooling
+from evaluators.machine.task.task import Conditions, Task
 from evaluators.machine.thermal.conduction import (
     heated_bar_mean_rise,
     heated_bar_peak_rise,
     mixture_conductivity,
 )
 from evaluators.machine.thermal.machine import machine_network
-from evaluators.machine.wire import choose_strands
 
 FIXED = Cooling(temperatures="fixed")
 

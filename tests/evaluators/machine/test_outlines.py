@@ -7,11 +7,11 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from evaluators.machine.families import design_winding
-from evaluators.machine.geometry import CrossSections, cross_sections
-from evaluators.machine.outlines import Loop, Outline, outlines
-from evaluators.machine.task import Construction
-from evaluators.machine.winding import Winding
+from evaluators.machine.geometry.cross_sections import CrossSections, cross_sections
+from evaluators.machine.geometry.outlines import Loop, Outline, outlines
+from evaluators.machine.task.task import Construction
+from evaluators.machine.winding.families import design_winding
+from evaluators.machine.winding.winding import Winding
 
 BASE = {
     "rotor_radius_mm": 20.0,

@@ -7,7 +7,7 @@ import pytest
 from numpy.typing import NDArray
 from scipy.optimize import brentq
 
-from evaluators.machine.rotor_dynamics import (
+from evaluators.machine.mechanics.bending import (
     amplification_factor,
     beam_matrices,
     natural_speeds,

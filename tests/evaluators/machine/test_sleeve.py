@@ -9,17 +9,17 @@ import numpy as np
 import pytest
 from scipy.integrate import solve_bvp, solve_ivp
 
-from evaluators.machine import materials
-from evaluators.machine.materials import Magnet, ShaftSteel, SleeveMaterial
-from evaluators.machine.mechanics import pressure_stress, rotating_disc_stress
-from evaluators.machine.quantity import floats
-from evaluators.machine.sleeve import (
+from evaluators.machine.materials import library as materials
+from evaluators.machine.materials.library import Magnet, ShaftSteel, SleeveMaterial
+from evaluators.machine.mechanics.rings import pressure_stress, rotating_disc_stress
+from evaluators.machine.mechanics.sleeve import (
     Ring,
     RotorSection,
     lift_off_speed,
     required_interference,
     sleeve_stress,
 )
+from evaluators.machine.quantity import floats
 
 W = 60_000 * math.pi / 30.0
 

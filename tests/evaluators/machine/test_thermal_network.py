@@ -8,9 +8,9 @@ import machines
 import numpy as np
 import pytest
 
-from evaluators.machine.cooling import Cooling
-from evaluators.machine.gas import gas_state
-from evaluators.machine.task import Task
+from evaluators.machine.materials.gas import gas_state
+from evaluators.machine.task.cooling import Cooling
+from evaluators.machine.task.task import Task
 from evaluators.machine.thermal.coolant import frame_conductance
 from evaluators.machine.thermal.machine import NODES, conduction_of, machine_network
 from evaluators.machine.thermal.network import Network, series

@@ -10,10 +10,10 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from evaluators.machine.families import design_winding
-from evaluators.machine.star import WindingError, phase_belts
-from evaluators.machine.winding import Family, Winding
-from evaluators.machine.winding_spectrum import differential_leakage
+from evaluators.machine.winding.families import design_winding
+from evaluators.machine.winding.spectrum import differential_leakage
+from evaluators.machine.winding.star import WindingError, phase_belts
+from evaluators.machine.winding.winding import Family, Winding
 
 PRINTED = 6e-7  # half a unit of the sixth printed decimal, and a little for its rounding
 ROUNDING = 1e-12  # sums of at most some hundred unit phasors

@@ -7,8 +7,8 @@ import pickle
 import numpy as np
 import pytest
 
-from evaluators.machine.families import design_winding
-from evaluators.machine.winding import Connection, Family, Winding
+from evaluators.machine.winding.families import design_winding
+from evaluators.machine.winding.winding import Connection, Family, Winding
 
 FAMILIES = [(6, 2, 1), (12, 4, 5), (12, 5, 4), (18, 4, 5), (24, 1, 2), (24, 2, 1), (36, 7, 8)]
 ROUNDING = 1e-12  # sums of some dozens of unit phasors

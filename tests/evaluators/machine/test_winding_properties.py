@@ -6,8 +6,8 @@ import numpy as np
 from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 
-from evaluators.machine.families import WindingError, design_winding
-from evaluators.machine.winding import Winding
+from evaluators.machine.winding.families import WindingError, design_winding
+from evaluators.machine.winding.winding import Winding
 
 ROUNDING = 1e-11  # sums of up to 200 unit phasors
 

@@ -5,9 +5,9 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
+from evaluators.machine.drive.wire import choose_strands, wire_sizes
 from evaluators.machine.losses.copper import winding_resistance
-from evaluators.machine.materials import Conductor, load
-from evaluators.machine.wire import choose_strands, wire_sizes
+from evaluators.machine.materials.library import Conductor, load
 
 MM = 1e-3
 

@@ -10,11 +10,11 @@ import numpy as np
 import pytest
 from click.testing import CliRunner, Result
 
-from evaluators.machine.geometry import MILLI
-from evaluators.machine.outlines import outlines
+from evaluators.machine.geometry.cross_sections import MILLI
+from evaluators.machine.geometry.outlines import outlines
 from studies.drawing.field_picture import colours, loop_points
-from studies.layout import open_results
-from studies.stored import stored_family
+from studies.stored.families import stored_family
+from studies.stored.layout import open_results
 
 Run = Callable[..., Result]
 FAMILY = "Q6p2s1"
@@ -101,7 +101,7 @@ def test_colours_get_evenly_darker_also_without_colour() -> None:
 
 
 def test_outlines_as_polygons_keep_their_area(searched: Path, design: str) -> None:
-    from studies.chosen import choose_design
+    from studies.stored.design import choose_design
 
     chosen = choose_design(open_results(searched), design)
     for part in outlines(chosen.sections, 0, chosen.task.winding):

@@ -9,10 +9,10 @@ import xml.etree.ElementTree as ET
 import numpy as np
 import pytest
 
-from evaluators.machine.families import design_winding
-from evaluators.machine.geometry import CrossSections, cross_sections
-from evaluators.machine.task import Construction
-from evaluators.machine.winding import Winding
+from evaluators.machine.geometry.cross_sections import CrossSections, cross_sections
+from evaluators.machine.task.task import Construction
+from evaluators.machine.winding.families import design_winding
+from evaluators.machine.winding.winding import Winding
 from studies.drawing.cross_section import cross_section_svg
 from studies.drawing.palette import FAMILY_COLOURS, MARKERS, family_mark
 from studies.drawing.slot_detail import slot_detail_svg, slot_measures

@@ -17,9 +17,8 @@ from click.testing import CliRunner
 
 from evaluators.interface import Waveform
 from evaluators.machine.metrics import METRIC
-from optimizer.parts import write_part
+from optimizer.archive.parts import write_part
 from studies.errors import ResultsError
-from studies.layout import open_results
 from studies.report.collect import ReportData, collect
 from studies.report.columns import title
 from studies.report.encoding import STEPS, coarse, packed, script_json, single
@@ -27,8 +26,9 @@ from studies.report.families import tip_shapes
 from studies.report.html import table
 from studies.report.verified import verified_values
 from studies.report.waves import turn_curves
-from studies.stored import stored_family
-from studies.verified import verified_folder
+from studies.stored.families import stored_family
+from studies.stored.layout import open_results
+from studies.stored.verified import verified_folder
 
 
 def content(page: str, name: str) -> Any:

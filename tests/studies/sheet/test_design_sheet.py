@@ -11,16 +11,16 @@ import numpy as np
 import pytest
 from click.testing import CliRunner, Result
 
-from evaluators.machine.geometry import cross_sections
-from evaluators.machine.variables import VARIABLES
+from evaluators.machine.geometry.cross_sections import cross_sections
+from evaluators.machine.geometry.variables import VARIABLES
 from studies.errors import ResultsError
-from studies.layout import open_results
 from studies.sheet.blocks import Cautions, Drawing, Grid, Heading, Sheet, Text
 from studies.sheet.checks import Check, worked_checks
 from studies.sheet.content import design_sheet
 from studies.sheet.html import sheet_html
 from studies.sheet.pdf import sheet_pdf
-from studies.stored import stored_families, stored_family
+from studies.stored.families import stored_families, stored_family
+from studies.stored.layout import open_results
 
 # Would stop Typst, and load a script, if it were read as markup.
 MARKUP = "#panic(1) <img src=x onerror=alert(1)> $x$ *bold*"

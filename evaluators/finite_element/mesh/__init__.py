@@ -1,0 +1,1 @@
+"""The mesh of one slot pitch, repeated over a sector."""

@@ -1,0 +1,1 @@
+"""From solved fields to quantities of a machine."""

@@ -1,0 +1,1 @@
+"""The field of one design, ready to be drawn."""

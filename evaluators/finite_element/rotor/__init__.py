@@ -1,0 +1,1 @@
+"""The rotor as seen from the bore."""

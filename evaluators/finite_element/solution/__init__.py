@@ -1,0 +1,1 @@
+"""Assembly and solution of the field equations of many designs at once."""

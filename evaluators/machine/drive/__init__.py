@@ -1,0 +1,1 @@
+"""Wire and inverter."""

@@ -1,0 +1,1 @@
+"""Design variables, cross-sections and their outlines."""

@@ -1,0 +1,1 @@
+"""Materials with their sources, and the gas round the rotor."""

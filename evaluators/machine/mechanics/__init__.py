@@ -1,0 +1,1 @@
+"""Strength, bending and balance of the rotor."""

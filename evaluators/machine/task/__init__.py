@@ -1,0 +1,1 @@
+"""What is to be built: everything the search does not vary."""

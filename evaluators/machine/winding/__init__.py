@@ -1,0 +1,1 @@
+"""The winding of a family, and which families have one."""

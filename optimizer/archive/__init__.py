@@ -1,0 +1,1 @@
+"""Every evaluation on disk."""

@@ -1,0 +1,1 @@
+"""One run: ask, evaluate, store, tell."""

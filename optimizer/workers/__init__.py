@@ -1,0 +1,1 @@
+"""Evaluating chunks of designs, here or in worker processes that may die."""

@@ -1,0 +1,1 @@
+"""How far the evaluators agree: ``python -m studies.agreement``."""

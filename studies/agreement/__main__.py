@@ -1,0 +1,5 @@
+"""``python -m studies.agreement`` writes the page."""
+
+from studies.agreement.page import main
+
+main()

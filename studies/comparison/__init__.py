@@ -1,0 +1,1 @@
+"""Families held against each other."""

@@ -1,0 +1,1 @@
+"""One stored design in full."""

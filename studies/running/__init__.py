@@ -1,0 +1,1 @@
+"""Searching the families of a study, and watching it."""

@@ -1,0 +1,238 @@
+"""Searching the families of a study, new or continued."""
+
+from __future__ import annotations
+
+import hashlib
+import json
+import os
+import shlex
+import tomllib
+from collections.abc import Sequence
+from pathlib import Path
+
+from optimizer.archive.lock import writer_lock
+from optimizer.running.progress import Settings, Summary
+from studies.comparison.infeasible import explain
+from studies.consent import program_of, require_consent
+from studies.errors import EXIT_NOTHING_FEASIBLE, EXIT_OK, StudiesError
+from studies.running.interruption import Interruption
+from studies.running.problem import MachineProblem, machine_problem
+from studies.running.progress import ProgressLine, duration
+from studies.running.spending import SPENDING_KEYS, Spending, dispatcher_of
+from studies.shipped.library import shipped
+from studies.stored.layout import Results, changes
+from studies.study_file.definition import Study
+from studies.suggestions import suggest
+from studies.tables import number, percent, text_table
+
+SHIPPED_MARK = " (shipped)"
+
+
+def usable_workers() -> int:
+    """Processors this process may use."""
+    return len(os.sched_getaffinity(0)) if hasattr(os, "sched_getaffinity") else os.cpu_count() or 1
+
+
+def chosen_families(study: Study, wanted: Sequence[str]) -> tuple[str, ...]:
+    """Families asked for, in the order of the study; all if none was named.
+
+    Raises
+    ------
+    StudiesError
+        If the study has no such family.
+    """
+    for family in wanted:
+        if family not in study.families:
+            msg = f"the study {study.name} has no family {family!r}; " + suggest(
+                family, study.families, f"it has {', '.join(study.families)}"
+            )
+            raise StudiesError(msg)
+    return tuple(item for item in study.families if item in wanted or not wanted)
+
+
+def counted(families: Sequence[str]) -> str:
+    """The number of families in words."""
+    return "1 family" if len(families) == 1 else f"{len(families)} families"
+
+
+def problems_of(
+    study: Study, families: Sequence[str], allow_program: bool = False
+) -> dict[str, MachineProblem]:
+    """Problems of the families, checked against their evaluator before anything is spent.
+
+    Raises
+    ------
+    StudiesError
+        If the evaluator lacks a metric, or would start a program without `allow_program`.
+    """
+    problems = {family: machine_problem(study, family, allow_program) for family in families}
+    for problem in problems.values():
+        problem.check()
+        require_consent(problem)
+    return problems
+
+
+def study_digest(study: Study) -> str:
+    """SHA-256 of what decides the results: the study without its description and its budgets.
+
+    Comments and layout do not count, so they may be edited in the frozen copy too.
+    """
+    table = tomllib.loads(study.content.decode("utf-8-sig"))
+    table["study"].pop("description", None)
+    for key in SPENDING_KEYS:
+        table.get("search", {}).pop(key, None)
+    for key in ("list", "slots", "pole_pairs"):  # each family has its own archive
+        table["families"].pop(key, None)
+    text = json.dumps(table, sort_keys=True)
+    return hashlib.sha256(text.encode()).hexdigest()
+
+
+def search_families(results: Results, problems: dict[str, MachineProblem], workers: int) -> int:
+    """Search one family after the other and say how it went.
+
+    Returns
+    -------
+    int
+        Exit code: 0, `EXIT_NOTHING_FEASIBLE`, or 128 plus a signal if stopped.
+
+    Raises
+    ------
+    OptimizerError
+        If the results cannot be written or are in use.
+    """
+    families = tuple(problems)
+    line = ProgressLine(families)
+    summaries: dict[str, Summary] = {}
+    dispatcher = dispatcher_of(results.study, workers)
+    with Interruption() as interruption, writer_lock(results.folder), dispatcher:
+        spending = Spending(
+            results,
+            problems,
+            lambda problem: search_settings(results, problem),
+            dispatcher,
+            line.begin,
+            line.show,
+            interruption,
+        )
+        try:
+            for family, summary in spending.families():
+                summaries[family] = summary
+                line.say(_family_text(family, summary))
+        except KeyboardInterrupt:
+            line.say("stopped at once; the designs in hand were given up")
+        unfinished = [
+            family
+            for family in families
+            if family not in summaries
+            or (
+                summaries[family].evaluations < results.request.evaluations_per_family
+                and not summaries[family].ended
+            )
+        ]
+    if interruption.asked and unfinished:
+        line.say(
+            "Everything evaluated so far is stored. Go on with:\n  "
+            + resume_command(results.folder, families, results.request.families)
+            + (" --allow-program" if any(map(program_of, problems.values())) else "")
+        )
+        return interruption.exit_code
+    return _closing(line, results, summaries)
+
+
+def resume_command(folder: Path, families: tuple[str, ...], requested: tuple[str, ...]) -> str:
+    """The command that goes on with these families."""
+    words = ["hovergap", "resume", str(folder)]
+    if families != requested:
+        for family in families:
+            words += ["--family", family]
+    return shlex.join(words)
+
+
+def changes_since_frozen(results: Results, file: str) -> list[str]:
+    """What the user must know about the study file the results came from; empty if nothing.
+
+    Parameters
+    ----------
+    results : Results
+    file : str
+        A study file given by the user, or empty for the one remembered.
+    """
+    name = file or results.request.origin
+    if not name:
+        return []
+    if name.endswith(SHIPPED_MARK):
+        known = shipped()
+        item = known.get(name.removesuffix(SHIPPED_MARK))
+        content = item.read_bytes() if item else None
+    else:
+        try:
+            content = Path(name).read_bytes()
+        except (OSError, ValueError) as error:
+            if file:
+                words = getattr(error, "strerror", None) or error
+                msg = f"{file}: cannot be read: {words}"
+                raise StudiesError(msg) from None
+            return []  # the remembered file has gone, which is no reason to stop
+    if content is None or content == results.study.content:
+        return []
+    return changes(results.study.content, content)
+
+
+def search_settings(results: Results, problem: MachineProblem) -> Settings:
+    """How the archive of one family is searched."""
+    study, evaluator, family = results.study, problem.evaluator, problem.task.winding.family
+    return Settings(
+        budget=results.request.evaluations_per_family,
+        seed=results.request.seed,
+        population=study.search.population,
+        chunk=study.search.designs_per_call,
+        evaluator=evaluator.name,
+        evaluator_version=evaluator.version,
+        labels={
+            "study": study.name,
+            "study_digest": study_digest(study),
+            "family": family.id,
+            "coil_pitch": str(family.coil_pitch),
+        },
+    )
+
+
+def _family_text(family: str, summary: Summary) -> str:
+    text = (
+        f"{family}: {summary.evaluations:,} evaluations ({summary.new:,} new in "
+        f"{duration(summary.seconds)}), feasible "
+        f"{percent(summary.feasible / max(1, summary.evaluations))}, failed {summary.failed:,}, "
+        f"front {summary.front_size}, hypervolume {number(summary.hypervolume)}"
+    )
+    if summary.ended and summary.evaluations < summary.budget:
+        text += f"\n{family}: ended early: {summary.ended}"
+    for path in summary.damaged:
+        text += f"\n{family}: a damaged part was set aside as {path}; its rows were evaluated again"
+    return text
+
+
+def _closing(line: ProgressLine, results: Results, summaries: dict[str, Summary]) -> int:
+    rows = [
+        [
+            family,
+            f"{item.evaluations:,}",
+            percent(item.feasible / max(1, item.evaluations)),
+            f"{item.failed:,}",
+            str(item.front_size),
+        ]
+        for family, item in summaries.items()
+    ]
+    head = ["family", "evaluations", "feasible", "failed", "front"]
+    line.say("\n" + text_table(head, rows))
+    barren = [family for family, item in summaries.items() if not item.feasible]
+    for family in barren:
+        line.say("\n" + explain(results, family, 3 if len(barren) == 1 else 1))
+    if len(barren) == len(summaries):
+        line.say(
+            f"\nNo feasible design was found in any family. Every evaluation is stored in "
+            f"{results.folder}; loosen a limit or widen the bounds."
+        )
+        return EXIT_NOTHING_FEASIBLE
+    command = shlex.join(["hovergap", "compare", str(results.folder)])
+    line.say(f"\nCompare the families with: {command}")
+    return EXIT_OK

@@ -1,0 +1,1 @@
+"""What lies in a results folder, and getting it back."""
