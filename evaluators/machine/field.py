@@ -82,7 +82,8 @@ class FieldSolution:
         At the duty.
     force_angle_bias : rad, optional
         Angle by which currents induced in the rotor turn the mean force away from the direction
-        that is commanded without them, counter-clockwise; left out where none are induced.
+        that is commanded without them, counter-clockwise; left out where none are induced, so
+        that `torque` then lacks their drag.
     """
 
     torque: FloatArray

@@ -10,7 +10,8 @@ METRICS: tuple[Metric, ...] = (
         "torque_Nm",
         "N m",
         "torque",
-        "mean electromagnetic torque at the duty: shaft torque plus air friction",
+        "mean electromagnetic torque at the duty: the shaft's and the drag of friction and "
+        "of losses in iron and rotor",
         STRESS,
     ),
     Metric(

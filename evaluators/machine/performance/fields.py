@@ -20,7 +20,7 @@ def metrics(task: Task, sections: CrossSections, state: Operating) -> dict[str, 
         + weights.force_error_weight * field.force_error_magnitude / weights.force_error_limit
         + weights.force_angle_weight * angle_deg / weights.force_angle_limit_deg
     )
-    torque = task.duty.shaft_torque + state.friction / task.duty.speed
+    torque = field.torque * length
     return {
         "torque_Nm": torque,
         "torque_ripple": field.torque_ripple,

@@ -41,7 +41,8 @@ class Operating:
     length : array
         Stack length, m; one metre where `net_torque` is not positive.
     net_torque : array
-        Torque per metre less friction of the gap, N m/m.
+        Torque per metre less the drag of losses in iron and rotor and of friction in the gap,
+        N m/m.
     copper_slots, copper_ends : array
         Loss of both currents, W; `copper_eddy` of it comes from eddy currents in strands.
     friction_gap, friction_faces : array
@@ -196,7 +197,7 @@ def _state(
     magnet = task.materials.magnet.remanence
     ratio = magnet.at(at["magnets"]) / float(magnet.at(task.conditions.magnet_temperature))
     field = at_remanence(solved, ratio)
-    net_torque, length, gap, faces = _length_and_friction(
+    net_torque, length, gap, faces = _length_and_drag(
         task, sections, field, at["gap"], at["end_space"]
     )
     slots, ends, eddy, slopes = _copper(
@@ -224,17 +225,21 @@ def _state(
     return state, growth
 
 
-def _length_and_friction(
+def _length_and_drag(
     task: Task,
     sections: CrossSections,
     field: FieldSolution,
     gap_temperature: FloatArray,
     end_temperature: FloatArray,
 ) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray]:
-    """Net torque per metre, stack length for shaft torque and friction, friction of gap and faces.
+    """Net torque per metre, stack length for the shaft's power, friction of gap and faces.
 
-    Friction of the gap grows with the length, that of the end faces does not, so the balance
-    torque' L = (P + faces + gap' (L + overhang)) / speed is linear in the length L.
+    Losses in iron and rotor come from fields that move against the part, so the shaft feeds them.
+    A little of them is fed by the currents: counted as drag it lengthens the stack, on the safe
+    side. (Common practice: iron and rotor losses of a magnet machine are taken off its shaft.)
+    They and the friction of the gap grow with the length, the friction of the end faces does not,
+    so the balance torque' L = (P + faces + losses' L + gap' (L + overhang)) / speed is linear in
+    the length L.
     """
     speed, pressure = task.duty.speed, task.conditions.gas_pressure
     gas = gas_state(task.materials.gas, gap_temperature, pressure)
@@ -250,7 +255,10 @@ def _length_and_friction(
         sections.shaft_radius,
     )
     overhang = task.construction.rotor_overhang * per_length
-    net = np.asarray(field.torque - per_length / speed)
+    lost = field.loss_teeth + field.loss_yoke
+    if field.force_angle_bias is None:
+        lost = lost + field.loss_magnet + field.loss_sleeve
+    net = np.asarray(field.torque - (per_length + lost) / speed)
     able = net > 0.0
     length = (task.duty.power + faces + overhang) / speed / np.where(able, net, 1.0)
     length = np.where(able, length, 1.0)

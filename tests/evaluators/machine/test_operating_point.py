@@ -47,14 +47,16 @@ class Solved:
             self.sections, self.exciting
         )
 
-    def settle(self, task: Task, start: float | None = None) -> Operating:
+    def settle(
+        self, task: Task, start: float | None = None, field: FieldSolution | None = None
+    ) -> Operating:
         rows = len(self.sections)
         area = 0.5 * self.sections.slot_area
         strands = choose_strands(np.ones(rows), 0.85 * area, 0.42 * area, 0.4e-3, 2, 0.85)
         first = study_temperatures(task, rows)
         if start is not None:
             first = np.full_like(first, start)
-        return settle(task, self.sections, self.exciting, self.field, strands, first)
+        return settle(task, self.sections, self.exciting, field or self.field, strands, first)
 
     def metrics(self, task: Task) -> dict[str, np.ndarray]:
         done = performance(task, self.sections, self.exciting, self.field)
@@ -124,11 +126,28 @@ def test_torque_follows_the_remanence(solved: Solved) -> None:
     for state in (cool, warm):
         ratio = magnet.at(np.minimum(state.temperature("magnets"), CEILING)) / magnet.at(100.0)
         np.testing.assert_allclose(state.field.torque, solved.field.torque * ratio, rtol=1e-4)
-        # Shaft torque and friction of the gap are what the stack makes.
+        # First law at the shaft: what the field makes leaves as shaft power, in friction, and in
+        # the iron and rotor that turn against it; nothing else takes mechanical power.
         made = state.field.torque * state.length * solved.task.duty.speed
-        np.testing.assert_allclose(made, solved.task.duty.power + state.friction, rtol=1e-9)
+        turned = state.field.loss_teeth + state.field.loss_yoke
+        turned = turned + state.field.loss_magnet + state.field.loss_sleeve
+        left = solved.task.duty.power + state.friction + turned * state.length
+        np.testing.assert_allclose(made, left, rtol=1e-9)  # linear in the length, so rounding only
     assert np.all(warm.length > cool.length)
     assert np.all(warm.temperatures > cool.temperatures)
+
+
+def test_a_field_solved_with_induced_currents_has_their_drag(solved: Solved) -> None:
+    field = replace(solved.field, force_angle_bias=np.zeros_like(solved.field.torque))
+    usual, braked = solved.settle(solved.task), solved.settle(solved.task, field=field)
+    eddy = usual.field.loss_magnet + usual.field.loss_sleeve
+    np.testing.assert_allclose(
+        braked.net_torque - usual.net_torque,
+        eddy / solved.task.duty.speed,
+        rtol=0.02,  # temperatures, and with them the remanence and the friction, differ a little
+        atol=1e-3 * usual.net_torque.max(),
+    )
+    assert np.all(braked.length < usual.length)
 
 
 def test_copper_loss_has_the_resistance_of_its_temperature(solved: Solved) -> None:
