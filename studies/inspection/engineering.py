@@ -160,7 +160,7 @@ def strength_states(
     speeds = np.array([0.0, task.duty.speed, rotor.overspeed]).reshape(3, 1, 1)
     interference = np.array([MICRO * float(row["sleeve_interference_um"])])
     found = sleeve_stress(rotor.section, interference, speeds, rotor.heating)
-    deciding = rotor.sleeve_stress(found)
+    deciding, core = rotor.sleeve_stress(found), rotor.core_stress(found, speeds)
     heated = rotor.heating + ASSEMBLY_TEMPERATURE
     return tuple(
         State(
@@ -171,7 +171,7 @@ def strength_states(
             sleeve_radial_tension_MPa=float(found.radial_tension[i, j, 0]) / MEGA,
             magnet_pressure_MPa=float(found.sleeve_pressure[i, j, 0]) / MEGA,
             core_pressure_MPa=float(found.core_pressure[i, j, 0]) / MEGA,
-            core_hoop_MPa=float(found.core_hoop_stress[i, j, 0]) / MEGA,
+            core_hoop_MPa=float(core[i, j, 0]) / MEGA,
         )
         for i in range(3)
         for j in range(2)

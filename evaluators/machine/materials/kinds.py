@@ -128,6 +128,7 @@ class ElectricalSteel(SolidMaterial):
 
     thickness: Annotated[Quantity, Limits("m", 2e-5, 2e-3)]
     stacking_factor: Annotated[Quantity, Limits("1", 0.5, 1.0)]
+    yield_strength: Annotated[Quantity, Limits("Pa", 5e7, 3e9)]
     magnetization: MagnetizationCurve
     magnetization_table: Table
     losses: IronLossCoefficients

@@ -22,9 +22,7 @@ from evaluators.machine.materials.kinds import Magnet, SleeveMaterial, Structura
 from evaluators.machine.mechanics.rings import (
     Stress,
     outside_pressure_compliance,
-    pressure_stress,
     rotating_disc_growth,
-    rotating_disc_stress,
 )
 from evaluators.machine.quantity import FloatArray, floats
 
@@ -184,8 +182,6 @@ class SleeveState(NamedTuple):
     """Largest von Mises stress in the sleeve, meaningful for metals."""
     radial_tension: FloatArray
     """Largest tensile radial stress in the sleeve, which splits a wound fibre; zero or more."""
-    core_hoop_stress: FloatArray
-    """Hoop stress at the bore, or the centre, of the core."""
 
 
 def sleeve_stress(
@@ -217,9 +213,6 @@ def sleeve_stress(
     positions = position.reshape((-1,) + (1,) * sleeve_pressure.ndim)
     stress = ring.stress(positions, sleeve_pressure, speed, heating)
     mises = np.sqrt(stress.radial**2 + stress.hoop**2 - stress.radial * stress.hoop)
-    a, b = section.core_inner_radius, section.core_outer_radius
-    pressed_core = pressure_stress(a, a, b, 0.0, np.maximum(core, 0.0))
-    bore = rotating_disc_stress(a, a, b, section.core_density, section.core_poisson, speed).hoop
     return SleeveState(
         sleeve_pressure=sleeve_pressure,
         core_pressure=np.asarray(core),
@@ -227,7 +220,6 @@ def sleeve_stress(
         equivalent_stress=mises.max(axis=0),
         # The outer face is free: what stands there is the rounding of a zero.
         radial_tension=np.maximum(stress.radial[:-1].max(axis=0), 0.0),
-        core_hoop_stress=np.asarray(bore + pressed_core.hoop),
     )
 
 

@@ -223,8 +223,8 @@ METRICS: tuple[Metric, ...] = (
         "core_stress_MPa",
         "MPa",
         "mechanics",
-        "largest hoop stress at the centre of core and shaft as one solid, at rest and at "
-        "overspeed",
+        "largest hoop stress at the bore of the laminated core, at rest and at overspeed, without "
+        "that of its fit on the shaft",
         "rotating disc (Timoshenko, Strength of Materials II)",
         True,
     ),
@@ -232,7 +232,7 @@ METRICS: tuple[Metric, ...] = (
         "core_stress_ratio",
         "1",
         "mechanics",
-        "core stress over the yield strength of the shaft steel at temperature",
+        "core stress over the yield strength of the core's sheets at temperature",
         DESIGN,
         True,
     ),

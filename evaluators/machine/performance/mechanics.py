@@ -8,7 +8,11 @@ import numpy as np
 from numpy.typing import NDArray
 
 from evaluators.machine.geometry.cross_sections import CrossSections
-from evaluators.machine.mechanics.rings import tip_speed
+from evaluators.machine.mechanics.rings import (
+    pressure_stress,
+    rotating_disc_stress,
+    tip_speed,
+)
 from evaluators.machine.mechanics.sleeve import (
     RotorSection,
     SleeveState,
@@ -39,6 +43,8 @@ class Strength:
         Above assembly, K; of the sleeve, Pa.
     speeds : array (2, 1, 1)
         Zero and the overspeed, rad/s.
+    core_bore : array (n,)
+        Radius of the hole in the core's sheets, m; `core_density` is theirs, kg/m3.
     isotropic : bool
         Whether the sleeve is a metal, judged by von Mises, or a fibre, judged along it.
     """
@@ -48,10 +54,12 @@ class Strength:
     strength: FloatArray
     speeds: FloatArray
     isotropic: bool
+    core_bore: FloatArray
+    core_density: float
 
     @classmethod
     def of(cls, task: Task, sections: CrossSections, state: Operating) -> Strength:
-        """Rotor with core and shaft as one solid, uniformly as warm as its sleeve."""
+        """Rotor uniformly as warm as its sleeve; core and shaft give way as one solid of steel."""
         return cls.at(task, sections, state.temperature("sleeve"))
 
     @classmethod
@@ -79,6 +87,8 @@ class Strength:
             strength=strength.at(temperature),
             speeds=np.array([0.0, duty.speed * duty.overspeed_ratio]).reshape(2, 1, 1),
             isotropic=parts.sleeve.isotropic,
+            core_bore=sections.shaft_radius,
+            core_density=float(parts.rotor_steel.density.value),
         )
 
     @property
@@ -93,6 +103,20 @@ class Strength:
     def sleeve_stress(self, states: SleeveState) -> FloatArray:
         """The stress that decides, Pa."""
         return states.equivalent_stress if self.isotropic else states.hoop_stress
+
+    def core_stress(self, states: SleeveState, speeds: FloatArray) -> FloatArray:
+        """Hoop stress at the bore of the laminated core, Pa, in states at `speeds` (rad/s).
+
+        A sheet is a disc with a hole, where it carries twice what a solid disc does however small
+        the hole is (Timoshenko, *Strength of Materials*, part II). The shaft is left out: filling
+        the hole it relieves the compression at rest, and its own fit adds tension.
+        """
+        bore, outer = self.core_bore, self.section.core_outer_radius
+        turning = rotating_disc_stress(
+            bore, bore, outer, self.core_density, self.section.core_poisson, speeds
+        )
+        pressed = pressure_stress(bore, bore, outer, 0.0, np.maximum(states.core_pressure, 0.0))
+        return np.asarray(turning.hoop + pressed.hoop)
 
     def least_interference(self, pressure: float) -> FloatArray:
         """Interference (n,) m that leaves `pressure` on the core at overspeed, cold and hot."""
@@ -138,7 +162,7 @@ def metrics(task: Task, sections: CrossSections, state: Operating) -> dict[str, 
     stress = rotor.sleeve_stress(states)
     use = (stress / rotor.strength).max(axis=(0, 1))
     pressure = states.sleeve_pressure.max(axis=(0, 1))
-    core = np.abs(states.core_hoop_stress).max(axis=(0, 1))
+    core = np.abs(rotor.core_stress(states, rotor.speeds)).max(axis=(0, 1))
     use_at_least = use if given is None else rotor.utilisation(needed)
     window = rotor.largest_interference(needed, use_at_least) - needed
     parts = task.materials
@@ -157,7 +181,7 @@ def metrics(task: Task, sections: CrossSections, state: Operating) -> dict[str, 
         "magnet_pressure_MPa": 1e-6 * pressure,
         "magnet_stress_ratio": pressure / float(parts.magnet.compressive_strength.value),
         "core_stress_MPa": 1e-6 * core,
-        "core_stress_ratio": core / parts.shaft.yield_strength.at(hot),
+        "core_stress_ratio": core / parts.rotor_steel.yield_strength.at(hot),
         FREE_RING: rotor.free_ring_utilisation(),
     }
 

@@ -223,6 +223,24 @@ def test_contact_is_kept_cold_and_hot() -> None:
         assert np.all(found["magnet_stress_ratio"] < 1.0)
 
 
+def test_core_is_a_sheet_with_a_hole(usual: dict[str, np.ndarray]) -> None:
+    """Roark, tables on rotating discs and thick vessels (from memory), written out at the bore."""
+    task = machines.task()
+    sections = machines.sections(task, machines.scattered(ROWS, seed=7))
+    a, b = sections.shaft_radius, sections.core_radius
+    density = float(task.materials.rotor_steel.density.value)
+    poisson = float(task.materials.shaft.poisson_ratio.value)
+    speed = task.duty.speed * task.duty.overspeed_ratio
+    turning = density * speed**2 / 4.0 * ((3.0 + poisson) * b**2 + (1.0 - poisson) * a**2)
+    tension = turning - 2e6 * usual["contact_pressure_MPa"] * b**2 / (b**2 - a**2)
+    stress = 1e6 * usual["core_stress_MPa"]
+    pulled = stress < 1.01 * tension  # in the others the sleeve's pressure at rest decides
+    assert 0 < pulled.sum() < ROWS
+    # The same closed form, so rounding only.
+    np.testing.assert_allclose(stress[pulled], tension[pulled], rtol=1e-9)
+    assert np.all(stress > tension * (1.0 - 1e-9))
+
+
 def test_window_ends_at_the_strength() -> None:
     task = machines.task(sleeve="NiCr19NbMo")
     usual = run(task)
