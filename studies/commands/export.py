@@ -44,7 +44,8 @@ def export(
     damaged: tuple[str, ...] = ()
     if design is None:
         from studies.export.design import front_notes
-        from studies.export.front import front_files, front_table
+        from studies.export.front import front_files
+        from studies.export.front_table import front_table
 
         front = front_table(results)
         damaged = front.damaged

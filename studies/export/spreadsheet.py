@@ -6,7 +6,7 @@ import io
 import math
 from typing import TYPE_CHECKING, Any
 
-from studies.export.front import FrontTable, heading
+from studies.export.front_table import FrontTable, heading
 from studies.inspection.design import CAUTIONS
 from studies.stored.layout import Results, program_version
 

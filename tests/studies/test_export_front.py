@@ -12,7 +12,7 @@ import pyarrow.parquet as pq
 import pytest
 from click.testing import Result
 
-from studies.export.front import FrontTable, front_table
+from studies.export.front_table import FrontTable, front_table
 from studies.export.spreadsheet import front_workbook
 from studies.stored.layout import open_results
 from studies.tables import csv_text
