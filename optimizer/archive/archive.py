@@ -21,6 +21,13 @@ import pyarrow as pa
 import pyarrow.compute as pc
 
 from optimizer.archive.durable import make_folder, remove_leftovers, write_durably
+from optimizer.archive.identity import (
+    IDENTITY_NAME,
+    check_owner,
+    differences,
+    identity_of,
+    read_identity,
+)
 from optimizer.archive.lock import writer_lock
 from optimizer.archive.parts import (
     DamagedPartError,
@@ -28,24 +35,22 @@ from optimizer.archive.parts import (
     encode,
     next_number,
     part_paths,
+    part_schema,
     parts_digest,
     read_part,
     set_aside,
     write_part,
 )
-from optimizer.archive.reader import FRONT_CHECK_NAME, FRONT_NAME, IDENTITY_NAME, read_identity
+from optimizer.archive.reader import FRONT_CHECK_NAME, FRONT_NAME
 from optimizer.archive.reader import ArchiveReader as ArchiveReader
 from optimizer.archive.reader import is_archive as is_archive
 from optimizer.archive.reader import open_archive as open_archive
 from optimizer.archive.schema import (
-    IDENTITY_KEY,
     PARTS_KEY,
     Rows,
     archive_schema,
-    differences,
     from_table,
     full_outcome,
-    identity_of,
     join_rows,
     needed_columns,
     to_table,
@@ -67,8 +72,9 @@ class Archive:
     Parameters
     ----------
     folder : Path
-        Made if it does not exist. Parts found there are checked byte by byte; damaged ones
-        are moved to ``quarantine/`` and named in :attr:`damaged`.
+        Made if it does not exist. Parts found there are checked byte by byte; those that are
+        damaged or belong to another archive are moved to ``quarantine/`` and named in
+        :attr:`damaged`.
     problem : Problem
     settings : Settings
 
@@ -87,13 +93,14 @@ class Archive:
         self.damaged: tuple[Path, ...] = ()
         self._problem, self._settings = problem, settings
         self._schema = archive_schema(problem, settings)
+        self._identity = identity_of(problem, settings)
         self._waiting: list[Rows] = []
         self._written_at = time.monotonic()
         self._interval = SHORTEST_INTERVAL_S
         make_folder(folder)
         with ExitStack() as stack:
             stack.enter_context(writer_lock(folder))
-            self._identify()
+            self._settle_identity()
             remove_leftovers(folder)
             self._load()
             self._number = next_number(folder)
@@ -210,18 +217,16 @@ class Archive:
         write_durably(self.folder / FRONT_NAME, data)
         write_durably(self.folder / FRONT_CHECK_NAME, f"{zlib.crc32(data):08x}".encode())
 
-    def _identify(self) -> None:
-        wanted = identity_of(self._problem, self._settings)
+    def _settle_identity(self) -> None:
         stored = read_identity(self.folder)
         if stored is None:
-            text = json.dumps(wanted, indent=1, sort_keys=True) + "\n"
+            text = json.dumps(self._identity, indent=1, sort_keys=True) + "\n"
             write_durably(self.folder / IDENTITY_NAME, text.encode())
-            return
-        different = differences(stored, wanted)
-        if different:
+        elif stored != self._identity:
             msg = (
                 f"{self.folder} holds evaluations of another study or of other settings"
-                f" ({'; '.join(different)}); use another folder, or settings as they were"
+                f" ({'; '.join(differences(stored, self._identity))}); use another folder, or"
+                " settings as they were"
             )
             raise ArchiveMismatchError(msg)
 
@@ -229,27 +234,26 @@ class Archive:
         names = needed_columns(self._problem)
         tables, damaged = [], []
         for path in part_paths(self.folder):
-            table = self._checked(path)
+            table = self._checked(path, names)
             if table is None:
                 damaged.append(set_aside(path))
             else:
-                tables.append(table.select(names))
+                tables.append(table)
         self.damaged = tuple(damaged)
         table = pa.concat_tables(tables) if tables else self._schema.empty_table().select(names)
         evaluations, self._x, self._outcome = from_table(table, self._problem)
         self._place = np.full(int(evaluations.max(initial=-1)) + 1, -1)
         self._place[evaluations] = np.arange(len(evaluations))
 
-    def _checked(self, path: Path) -> pa.Table | None:
+    def _checked(self, path: Path, columns: list[str] | None = None) -> pa.Table | None:
         """Return a part, or None if it is damaged or belongs elsewhere."""
         try:
             check_part(path)
-            table = read_part(path)
+            schema = part_schema(path)
+            check_owner(path, schema, self._identity)
+            return read_part(path, columns) if schema.equals(self._schema) else None
         except DamagedPartError:
             return None
-        metadata = table.schema.metadata or {}
-        same = metadata.get(IDENTITY_KEY) == self._schema.metadata[IDENTITY_KEY]
-        return table if same and table.schema.equals(self._schema) else None
 
     def _merge(self) -> None:
         """Turn many small parts into few; a crash in between leaves rows twice, never lost."""

@@ -7,10 +7,11 @@ leave out the headers and the footer, where a changed byte can read as valid wro
 
 from __future__ import annotations
 
+import contextlib
 import hashlib
 import re
 import zlib
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from pathlib import Path
 
 import pyarrow as pa
@@ -26,6 +27,10 @@ _NAME = re.compile(r"part-(\d{8,})(?:-([0-9a-f]{8}))?\.parquet")
 
 class DamagedPartError(Exception):
     """A part cannot be read or is not what was written; never leaves this package."""
+
+
+class ForeignPartError(DamagedPartError):
+    """A part is sound, but belongs to another archive; never leaves this package either."""
 
 
 def encode(table: pa.Table) -> bytes:
@@ -125,6 +130,20 @@ def file_checksum(path: Path) -> str:
     return f"{checksum:08x}"
 
 
+def part_schema(path: Path) -> pa.Schema:
+    """Return the columns of a part and what they say of themselves, from its footer.
+
+    Raises
+    ------
+    DamagedPartError
+        If it cannot be read.
+    FileNotFoundError
+        If there is no such file.
+    """
+    with _reading(path):
+        return pq.read_schema(path)
+
+
 def read_part(path: Path, columns: Sequence[str] | None = None) -> pa.Table:
     """Read some columns of a part, or all; pages are checked, :func:`check_part` is not called.
 
@@ -135,17 +154,23 @@ def read_part(path: Path, columns: Sequence[str] | None = None) -> pa.Table:
     FileNotFoundError
         If there is no such file.
     """
+    with (
+        _reading(path),
+        pa.OSFile(str(path)) as source,
+        pq.ParquetFile(source, page_checksum_verification=True) as file,
+    ):
+        names = set(file.schema_arrow.names)
+        missing = [name for name in columns or [] if name not in names]
+        if missing:
+            msg = f"it has no column {missing[0]}"
+            raise DamagedPartError(msg)
+        return file.read(columns=None if columns is None else list(columns))
+
+
+@contextlib.contextmanager
+def _reading(path: Path) -> Iterator[None]:
     try:
-        with (
-            pa.OSFile(str(path)) as source,
-            pq.ParquetFile(source, page_checksum_verification=True) as file,
-        ):
-            names = set(file.schema_arrow.names)
-            missing = [name for name in columns or [] if name not in names]
-            if missing:
-                msg = f"it has no column {missing[0]}"
-                raise DamagedPartError(msg)
-            return file.read(columns=None if columns is None else list(columns))
+        yield
     except FileNotFoundError:
         raise
     except PermissionError as error:

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import json
 from collections.abc import Callable, Sequence
 from functools import cached_property
 from pathlib import Path
@@ -10,26 +9,26 @@ from typing import Any
 
 import numpy as np
 import pyarrow as pa
-import pyarrow.parquet as pq
 
+from optimizer.archive.identity import IDENTITY_NAME, check_owner, read_identity
 from optimizer.archive.parts import (
     DamagedPartError,
+    ForeignPartError,
     check_part,
     file_checksum,
     part_paths,
+    part_schema,
     parts_digest,
     read_part,
 )
-from optimizer.archive.schema import IDENTITY_KEY, PARTS_KEY, SCHEMA_VERSION
+from optimizer.archive.schema import PARTS_KEY
 from optimizer.errors import ArchiveError, storage_error
 from optimizer.fronts import non_dominated
 from optimizer.problem import IntArray
 
-IDENTITY_NAME = "archive.json"
 FRONT_NAME = "front.parquet"
 FRONT_CHECK_NAME = ".front.crc"
 _TRIES = 5  # a writer that merges parts at the end of a run may take one away meanwhile
-_LARGEST_IDENTITY = 10_000_000  # bytes
 
 
 def is_archive(folder: Path | str) -> bool:
@@ -67,7 +66,8 @@ class ArchiveReader:
         What the rows belong to: seed, population, chunk, evaluator, labels, variables with
         their bounds, objectives, constraints and columns.
     damaged : tuple of Path
-        Parts that could not be read so far; their rows are missing from the tables.
+        Parts found so far that cannot be read or belong to another archive; their rows are
+        missing from the tables. :meth:`trouble` says what is wrong with one.
     """
 
     def __init__(self, folder: Path, settings: dict[str, Any]) -> None:
@@ -81,7 +81,9 @@ class ArchiveReader:
         """Columns with unit, role and description as metadata; empty before the first row."""
         for path in part_paths(self.folder):
             try:
-                return _schema(path)
+                schema = part_schema(path)
+                check_owner(path, schema, self.settings)
+                return schema
             except (DamagedPartError, FileNotFoundError):
                 continue
         return pa.schema([])
@@ -113,6 +115,18 @@ class ArchiveReader:
         made of the parts that are there now.
         """
         return self._retried(self._front)
+
+    def trouble(self, path: Path) -> str:
+        """Say in words what is wrong with a part; empty if nothing is."""
+        try:
+            check_part(path)
+            check_owner(path, part_schema(path), self.settings)
+            read_part(path)
+        except ForeignPartError as error:
+            return f"belongs to another archive ({error})"
+        except (DamagedPartError, FileNotFoundError):
+            return "is damaged"
+        return ""
 
     def row(self, evaluation: int) -> dict[str, Any]:
         """Return one row as a dictionary.
@@ -197,7 +211,10 @@ class ArchiveReader:
     def _part(self, path: Path, columns: Sequence[str] | None = None) -> pa.Table:
         if path not in self._sound:  # parts never change: once is enough
             check_part(path)
+            table = read_part(path, columns)
+            check_owner(path, table.schema, self.settings)
             self._sound.add(path)
+            return table
         return read_part(path, columns)
 
     def _retried(self, read: Callable[[], pa.Table]) -> pa.Table:
@@ -210,57 +227,3 @@ class ArchiveReader:
             return read()
         except FileNotFoundError as error:
             raise storage_error(error, self.folder, "read") from error
-
-
-def read_identity(folder: Path) -> dict[str, Any] | None:
-    """Return what ``archive.json`` says, or else a part's schema; None for a new folder.
-
-    Raises
-    ------
-    ArchiveError
-        If a newer version wrote it, or it cannot be read.
-    """
-    path = folder / IDENTITY_NAME
-    texts: list[bytes] = []
-    if path.is_file():
-        try:
-            with open(path, "rb") as file:
-                texts.append(file.read(_LARGEST_IDENTITY))
-        except OSError as error:
-            raise storage_error(error, path, "read") from error
-    identity = _identity(texts[0]) if texts else None
-    if identity is None:
-        for part in part_paths(folder):
-            try:
-                identity = _identity((_schema(part).metadata or {}).get(IDENTITY_KEY, b""))
-            except (DamagedPartError, FileNotFoundError):
-                continue
-            if identity is not None:
-                break
-    if identity is not None and identity["schema_version"] > SCHEMA_VERSION:
-        msg = (
-            f"{folder} has schema version {identity['schema_version']}; this version reads up to"
-            f" {SCHEMA_VERSION}: update the program"
-        )
-        raise ArchiveError(msg)
-    return identity
-
-
-def _identity(text: bytes) -> dict[str, Any] | None:
-    try:
-        value = json.loads(text)
-    except (ValueError, RecursionError):
-        return None
-    if not isinstance(value, dict) or not isinstance(value.get("schema_version"), int):
-        return None
-    names = value.get("objectives")
-    return value if isinstance(names, list) and all(isinstance(n, str) for n in names) else None
-
-
-def _schema(path: Path) -> pa.Schema:
-    try:
-        return pq.read_schema(path)
-    except FileNotFoundError:
-        raise
-    except (OSError, pa.ArrowException, UnicodeDecodeError) as error:
-        raise DamagedPartError(str(error)) from error

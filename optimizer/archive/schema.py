@@ -1,24 +1,19 @@
-"""Columns of an archive, and what identifies the archive they belong to."""
+"""Columns of an archive: rows to tables and back."""
 
 from __future__ import annotations
 
 import json
-from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
 import pyarrow as pa
 
+from optimizer.archive.identity import IDENTITY_KEY, SCHEMA_VERSION, VERSION_KEY, identity_of
 from optimizer.errors import ProblemError
 from optimizer.problem import Column, FloatArray, IntArray, Outcome, Problem, join_outcomes
 from optimizer.running.progress import Settings
 
-SCHEMA_VERSION = 1
-# Of the search: raised when the same seed no longer gives the same designs.
-SEARCH_VERSION = "decomposition 1"
-VERSION_KEY = b"optimizer.schema_version"
-IDENTITY_KEY = b"optimizer.identity"
 PARTS_KEY = b"optimizer.parts"  # of front.parquet: which parts it was made of
 
 _HEAD = (
@@ -81,44 +76,6 @@ def join_rows(parts: list[Rows]) -> Rows:
         np.concatenate([p.time_s for p in parts]),
         np.concatenate([p.finished_at for p in parts]),
     )
-
-
-def identity_of(problem: Problem, settings: Settings) -> dict[str, Any]:
-    """Return what must agree when an archive is continued, as JSON values."""
-    identity = {
-        "schema_version": SCHEMA_VERSION,
-        "search": SEARCH_VERSION,
-        "seed": settings.seed,
-        "population": settings.population,
-        "chunk": settings.chunk,
-        "evaluator": settings.evaluator,
-        "evaluator_version": settings.evaluator_version,
-        "labels": dict(settings.labels),
-        "variables": [[v.name, float(v.lower), float(v.upper)] for v in problem.variables],
-        "objectives": list(problem.objectives),
-        "constraints": list(problem.constraints),
-        "columns": [[c.name, c.kind] for c in problem.columns],
-    }
-    copy: dict[str, Any] = json.loads(json.dumps(identity))
-    return copy
-
-
-def differences(stored: Mapping[str, Any], wanted: Mapping[str, Any]) -> list[str]:
-    """Say in words what differs between two identities."""
-    said = []
-    for key in sorted(stored.keys() | wanted.keys()):
-        old, new = stored.get(key), wanted.get(key)
-        if old == new:
-            continue
-        if isinstance(old, list) and isinstance(new, list):
-            gone = [item for item in old if item not in new]
-            come = [item for item in new if item not in old]
-            said.append(f"{key}: {gone or 'nothing'} became {come or 'nothing'}")
-        elif isinstance(old, dict) and isinstance(new, dict):
-            said += [f"{key}, {text}" for text in differences(old, new)]
-        else:
-            said.append(f"{key}: {old!r} became {new!r}")
-    return said
 
 
 def archive_schema(problem: Problem, settings: Settings) -> pa.Schema:
