@@ -15,6 +15,7 @@ their numbers, as those of a parametrized test do, make one row. `outside_plugin
 from __future__ import annotations
 
 import math
+import re
 import sys
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -140,7 +141,7 @@ class OutsideChecks:
             by_size = relative * size >= absolute
             share = np.where(deviation == 0.0, 0.0, deviation / size)
         limits = [size_text(relative)] if relative > 0.0 else []
-        limits += [with_unit(f"{absolute:.3g}", unit)] if absolute > 0.0 else []
+        limits += [with_unit(number(absolute), unit)] if absolute > 0.0 else []
         row = self._row(what, " or ".join(limits), why, source, unit)
         inside = np.isfinite(tolerance) & (deviation <= tolerance) | (deviation == 0.0)
         if not np.all(inside):
@@ -175,11 +176,11 @@ class OutsideChecks:
         got = np.asarray(found, dtype=np.float64)
         _some(what, got)
         if math.isinf(low):
-            limits = f"at most {with_unit(f'{high:.4g}', unit)}"
+            limits = f"at most {with_unit(number(high), unit)}"
         elif math.isinf(high):
-            limits = f"at least {with_unit(f'{low:.4g}', unit)}"
+            limits = f"at least {with_unit(number(low), unit)}"
         else:
-            limits = with_unit(f"{low:.4g} to {high:.4g}", unit)
+            limits = with_unit(f"{number(low)} to {number(high)}", unit)
         row = self._row(what, limits, why, source, unit)
         outside = ~((got >= low) & (got <= high))
         if np.any(outside):
@@ -236,6 +237,11 @@ def with_unit(text: str, unit: str) -> str:
     return f"{text} {unit}" if unit else text
 
 
-def size_text(share: float) -> str:
+def number(value: float, digits: int = 3) -> str:
+    """The number to some digits, powers of ten without leading zeros."""
+    return re.sub(r"e([+-])0", r"e\1", f"{value:.{digits}g}")
+
+
+def size_text(share: float, digits: int = 3) -> str:
     """A share of the expected value: percent, or a power of ten where that says little."""
-    return f"{100.0 * share:.3g} %" if share >= 1e-4 else f"{share:.3g}"
+    return f"{number(100.0 * share, digits)} %" if share >= 1e-4 else number(share, digits)

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 
-from outside import TOPICS, Row, size_text, with_unit
+from outside import TOPICS, Row, number, size_text, with_unit
 
 INTRODUCTION = """\
 # Outside checks
@@ -86,18 +86,17 @@ def found_text(row: Row) -> str:
     Rounding noise, which differs from machine to machine, is told as such.
     """
     if row.lowest <= row.highest:
-        ends = [f"{value:.2g}" for value in (row.lowest, row.highest)]
+        ends = [number(value, 2) for value in (row.lowest, row.highest)]
         return with_unit(ends[0] if ends[0] == ends[1] else " to ".join(ends), row.unit)
     parts = []
     if row.relative is not None:
-        parts.append(_noise(row.relative) or size_text(float(f"{row.relative:.2g}")))
+        parts.append(_small(row.relative) or size_text(row.relative, 2))
     if row.absolute is not None:
-        noise = "0" if row.absolute == 0.0 else "" if row.unit else _noise(row.absolute)
-        parts.append(noise or with_unit(f"{row.absolute:.2g}", row.unit))
+        parts.append(with_unit(_small(row.absolute) or number(row.absolute, 2), row.unit))
     return ", ".join(dict.fromkeys(parts))
 
 
-def _noise(value: float) -> str:
+def _small(value: float) -> str:
     if value == 0.0:
         return "0"
     return "below 1e-12" if value < 1e-12 else ""

@@ -116,7 +116,7 @@ def test_the_page(tmp_path: Path) -> None:
     heat, book = "| `test_child.py` |", "a book \\| of 1900"
     assert f"| warmth | 0.3 % | 1 % | two digits | {book} | 2 {heat}" in page
     assert f"| cold | 0, 0.25 K | 1 % or 0.5 K | noise | {book} | 4 {heat}" in page
-    assert f"| glow (slow) | below 1e-12 | 1e-09 | rounding | {book} | 1 {heat}" in page
+    assert f"| glow (slow) | below 1e-12 | 1e-9 | rounding | {book} | 1 {heat}" in page
     assert f"| order | 1 | 0.9 to 2 | wide | memory | 2 {heat}" in page
     assert page.index("## Winding") < page.index("## Heat") < page.index("## Not in this run")
     assert "| `test_child.py::test_skipped` | skipped: no such library |" in page
