@@ -7,6 +7,7 @@ import math
 import mpmath
 import numpy as np
 import pytest
+from outside import OutsideChecks
 
 from evaluators.machine.losses.copper import (
     rotating_field_loss,
@@ -25,7 +26,13 @@ from evaluators.machine.losses.copper import (
 RHO = 1.0 / 58e6
 MU_0 = 4e-7 * math.pi
 
-# Rosa, Grover, NBS Scientific Paper 169; Terman, *Radio Engineers' Handbook*, 1943; recomputed:
+check = OutsideChecks("losses")
+PRINTED = {"why": "printed digits"}
+TABLES = (
+    "Rosa, Grover, NBS Scientific Paper 169; Terman, Radio Engineers' Handbook, 1943; recomputed"
+)
+CYLINDER = "own evaluation of Landau, Lifshitz, section 59, problem 2 (from memory)"
+
 # x = a sqrt(w mu0 sigma), R/R0, Li/Li0.
 WIRE = [
     (0.5, 1.000325, 0.9998373), (1.0, 1.005187, 0.9974075), (1.5, 1.025824, 0.9871108),
@@ -42,23 +49,48 @@ def wire_of(x: float, frequency: float = 1e3) -> float:
 
 
 def test_skin_depth_of_copper() -> None:
-    """Common practice: about 9.3 mm at 50 Hz and 20 °C; sqrt(2/(w mu sigma)) exactly."""
+    check(
+        "skin depth of copper at 50 Hz and 20 °C",
+        skin_depth(50.0, RHO),
+        9.3e-3,
+        relative=0.01,
+        why="two printed digits",
+        source="common practice: about 9.3 mm",
+    )
     assert skin_depth(50.0, RHO) == pytest.approx(math.sqrt(2 * RHO / (100 * math.pi * MU_0)))
-    assert skin_depth(50.0, RHO) == pytest.approx(9.3e-3, rel=0.01)
     assert skin_depth(0.0, RHO) == math.inf
 
 
 @pytest.mark.parametrize(("x", "resistance", "inductance"), WIRE)
 def test_round_wire_by_itself(x: float, resistance: float, inductance: float) -> None:
     diameter = wire_of(x)
-    assert round_wire_factor(diameter, 1e3, RHO) == pytest.approx(resistance, abs=6e-7)
-    found = round_wire_internal_inductance_factor(diameter, 1e3, RHO)
-    assert found == pytest.approx(inductance, abs=6e-8)  # printed digits
+    check(
+        "resistance of a round wire over that without skin effect",
+        round_wire_factor(diameter, 1e3, RHO),
+        resistance,
+        absolute=6e-7,
+        **PRINTED,
+        source=TABLES,
+    )
+    check(
+        "internal inductance of a round wire over that without skin effect",
+        round_wire_internal_inductance_factor(diameter, 1e3, RHO),
+        inductance,
+        absolute=6e-8,
+        **PRINTED,
+        source=TABLES,
+    )
 
 
 def test_round_wire_of_the_cable_standard() -> None:
-    """Neher, McGrath 1957, table III: 10.05 % at x = 2.14, two printed decimals."""
-    assert round_wire_factor(wire_of(2.14), 1e3, RHO) - 1.0 == pytest.approx(0.1005, abs=6e-5)
+    check(
+        "skin effect of a cable conductor at x = 2.14",
+        round_wire_factor(wire_of(2.14), 1e3, RHO) - 1.0,
+        0.1005,
+        absolute=6e-5,
+        why="two printed decimals of a percentage",
+        source="Neher, McGrath 1957, table III",
+    )
 
 
 @pytest.mark.parametrize("x", [1e-4, 1e-3, 0.3, 30.0, 300.0])
@@ -67,8 +99,14 @@ def test_round_wire_against_mpmath(x: float) -> None:
         k = mpmath.mpf(x) * mpmath.exp(-1j * mpmath.pi / 4)
         ratio = k / 2 * mpmath.besselj(0, k) / mpmath.besselj(1, k)
         expected = float(ratio.real)
-    # Rounding of the library's Bessel functions.
-    assert round_wire_factor(wire_of(x), 1e3, RHO) == pytest.approx(expected, rel=1e-10)
+    check(
+        "resistance of a round wire, thin to thick",
+        round_wire_factor(wire_of(x), 1e3, RHO),
+        expected,
+        relative=1e-10,
+        why="rounding of the library's Bessel functions",
+        source="mpmath, Bessel functions with 30 digits",
+    )
 
 
 def test_direct_current_is_the_limit() -> None:
@@ -79,9 +117,15 @@ def test_direct_current_is_the_limit() -> None:
 
 
 def test_wire_in_a_slow_transverse_field() -> None:
-    """pi sigma w² B² d⁴/128: 0.1404972 W/m for 1 mm, 58 MS/m, 1 kHz, 0.05 T."""
-    slow = transverse_field_loss(1e-3, 0.05, 1.0, RHO) * 1e6
-    assert slow == pytest.approx(0.1404972, rel=1e-6)
+    """0.1404972 W/m for 1 mm, 58 MS/m, 1 kHz, 0.05 T."""
+    check(
+        "loss of a thin wire in a slow transverse field",
+        transverse_field_loss(1e-3, 0.05, 1.0, RHO) * 1e6,
+        0.1404972,
+        relative=1e-6,
+        **PRINTED,
+        source="own evaluation of the closed form pi sigma w² B² d⁴/128",
+    )
     # At 1 kHz itself the wire is 0.48 skin depths thick and shields itself a little.
     assert 0.999 < transverse_field_loss(1e-3, 0.05, 1e3, RHO) / 0.1404972 < 1.0
 
@@ -91,16 +135,39 @@ def test_wire_in_a_slow_transverse_field() -> None:
     (5000.0, 13986.55),
 ])  # fmt: skip
 def test_cylinder_in_a_rotating_field(frequency: float, power: float) -> None:
-    """a = 10 mm, 58 MS/m, 0.1 T. Landau, Lifshitz, section 59, problem 2 (from memory)."""
-    assert rotating_field_loss(0.02, frequency, RHO) * 0.01 == pytest.approx(power, rel=1e-6)
+    """a = 10 mm, 58 MS/m, 0.1 T."""
+    found = rotating_field_loss(0.02, frequency, RHO) * 0.01
+    check(
+        "loss of a copper cylinder in a rotating field",
+        found,
+        power,
+        relative=1e-6,
+        **PRINTED,
+        source=CYLINDER,
+    )
 
 
 def test_peak_torque_of_the_cylinder() -> None:
     """At a/delta = 1.778373 (138.1204 Hz): T/L = 1.887259 N m/m at 0.1 T."""
     f = np.linspace(130.0, 146.0, 1601)
     torque = rotating_field_loss(0.02, f, RHO) * 0.01 / (2.0 * math.pi * f)
-    assert torque.max() == pytest.approx(1.887259, rel=1e-6)
-    assert f[np.argmax(torque)] == pytest.approx(138.1204, abs=0.02)  # two steps of the scan
+    check(
+        "largest torque on a copper cylinder in a rotating field",
+        torque.max(),
+        1.887259,
+        relative=1e-6,
+        **PRINTED,
+        source=CYLINDER,
+    )
+    check(
+        "frequency of that torque",
+        f[np.argmax(torque)],
+        138.1204,
+        absolute=0.02,
+        unit="Hz",
+        why="two steps of the scan",
+        source=CYLINDER,
+    )
 
 
 @pytest.mark.parametrize(("frequency", "power"), [
@@ -108,7 +175,15 @@ def test_peak_torque_of_the_cylinder() -> None:
 ])  # fmt: skip
 def test_magnet_like_cylinder(frequency: float, power: float) -> None:
     """a = 12 mm, 1.5 uohm m, 0.02 T."""
-    assert rotating_field_loss(0.024, frequency, 1.5e-6) * 4e-4 == pytest.approx(power, rel=1e-6)
+    found = rotating_field_loss(0.024, frequency, 1.5e-6) * 4e-4
+    check(
+        "loss of a cylinder as resistive as a magnet in a rotating field",
+        found,
+        power,
+        relative=1e-6,
+        **PRINTED,
+        source=CYLINDER,
+    )
 
 
 @pytest.mark.parametrize(("xi", "phi", "psi", "two", "four"), [
@@ -119,12 +194,16 @@ def test_magnet_like_cylinder(frequency: float, power: float) -> None:
     (3.0, 3.010136, 6.528166, 9.538301, 35.65096),
 ])  # fmt: skip
 def test_bar_in_a_slot(xi: float, phi: float, psi: float, two: float, four: float) -> None:
-    """Field 1905; Emde 1908; Dowell, *Proc. IEE* 113(8), 1966."""
-    found = slot_bar_factors(xi)
-    assert found[0] == pytest.approx(phi, abs=6e-7)  # printed digits, here and below
-    assert found[1] == pytest.approx(psi, abs=6e-8 if psi < 1.0 else 6e-7)
-    assert slot_bar_factor(xi, 2) == pytest.approx(two, abs=6e-7)
-    assert slot_bar_factor(xi, 4) == pytest.approx(four, abs=6e-7 if four < 10.0 else 6e-6)
+    factors = slot_bar_factors(xi)
+    for what, found, expected in (
+        ("skin factor of a bar in a slot", factors[0], phi),
+        ("proximity factor of a bar in a slot", factors[1], psi),
+        ("resistance of two bars in a slot", slot_bar_factor(xi, 2), two),
+        ("resistance of four bars in a slot", slot_bar_factor(xi, 4), four),
+    ):
+        digits = 6e-8 if expected < 1.0 else 6e-7 if expected < 10.0 else 6e-6
+        source = "Field 1905; Emde 1908; Dowell, Proc. IEE 113(8), 1966; recomputed"
+        check(what, found, expected, absolute=digits, **PRINTED, source=source)
 
 
 def test_slot_bar_series_joins_smoothly_and_large_bars_do_not_overflow() -> None:
@@ -148,8 +227,14 @@ def test_strands_lose_what_their_slot_field_induces() -> None:
     mean_square = peak**2 / 3.0
     cross = transverse_field_loss(diameter, 1.0, frequency, RHO) * mean_square * strands
     direct = strands * 0.5 * current**2 * RHO / (math.pi / 4 * diameter**2)
-    # 55 layers leave 1/55² = 0.03 % to the field of the layers themselves, skin effect less.
-    assert extra == pytest.approx(float(cross / direct) * math.pi / 3.0, rel=0.002)
+    check(
+        "extra loss of thin strands in a slot",
+        extra,
+        float(cross / direct) * math.pi / 3.0,
+        relative=0.002,
+        why="55 layers leave 1/55² = 0.03 % to the layers' own field, skin effect less",
+        source="single wires in the linear cross field of the slot; square for round by Dowell",
+    )
 
 
 def test_resistance_and_loss_of_a_coil() -> None:
@@ -162,5 +247,13 @@ def test_resistance_and_loss_of_a_coil() -> None:
 
 
 def test_temperature_from_resistance() -> None:
-    """IEC 60034-1 (from memory): 0.500 to 0.640 ohm from 22 °C is 93.96 °C, by arithmetic."""
-    assert temperature_from_resistance(0.640, 0.500, 22.0) == pytest.approx(93.96, abs=1e-9)
+    """0.500 to 0.640 ohm from 22 °C is 93.96 °C."""
+    check(
+        "temperature of a winding from its resistance",
+        temperature_from_resistance(0.640, 0.500, 22.0),
+        93.96,
+        absolute=1e-9,
+        unit="°C",
+        why="arithmetic",
+        source="IEC 60034-1 (from memory)",
+    )
