@@ -13,7 +13,7 @@ from evaluators.analytic.waves import Waves
 from evaluators.machine.field import Excitation
 from evaluators.machine.geometry.cross_sections import CrossSections
 from evaluators.machine.losses.eddy import RotorEddyLoss, rotor_eddy_loss
-from evaluators.machine.losses.iron import iron_loss_from_waveform
+from evaluators.machine.losses.iron import IronLoss, iron_loss_from_waveform
 from evaluators.machine.task.task import Task
 
 FloatArray = NDArray[np.float64]
@@ -23,8 +23,8 @@ FloatArray = NDArray[np.float64]
 class IronState:
     """Iron loss in W/m, and the largest flux that the suspension current adds in Wb/m, (n,)."""
 
-    teeth: FloatArray
-    yoke: FloatArray
+    teeth: IronLoss
+    yoke: IronLoss
     tooth_extra: FloatArray
     yoke_extra: FloatArray
 
@@ -63,16 +63,16 @@ def iron(
         2.0 * thickness**2 * order / np.tanh(order * np.log(outer / inner)) / (outer**2 - inner**2)
     )
 
-    def loss(flux: FloatArray, extra: FloatArray, across: FloatArray) -> FloatArray:
+    def loss(flux: FloatArray, extra: FloatArray, across: FloatArray, area: FloatArray) -> IronLoss:
         main = 0.5 * np.ptp(flux, axis=2)
         raised = np.sqrt(1.0 + (extra / np.maximum(main, 1e-12)) ** 2)
         wave = flux * raised[:, :, None] / (across * stacking)[:, None, None]
-        per_mass = iron_loss_from_waveform(steel.losses, wave, frequency).total
-        return np.asarray(per_mass.mean(axis=1))
+        per_mass = iron_loss_from_waveform(steel.losses, wave, frequency, minor_loops=True)
+        return IronLoss(*(np.asarray(part.mean(axis=1) * density * area) for part in per_mass))
 
     return IronState(
-        teeth=loss(teeth, tooth_extra, width) * density * sections.teeth_area,
-        yoke=loss(yoke, yoke_extra, thickness / np.sqrt(spread)) * density * sections.yoke_area,
+        teeth=loss(teeth, tooth_extra, width, sections.teeth_area),
+        yoke=loss(yoke, yoke_extra, thickness / np.sqrt(spread), sections.yoke_area),
         tooth_extra=tooth_extra.max(axis=1),
         yoke_extra=yoke_extra.max(axis=1),
     )

@@ -266,8 +266,11 @@ class AnalyticModel:
                 self.recoil,
                 self.remanence if self.task.construction.magnetisation == "parallel" else None,
             ),
-            loss_teeth=iron.teeth,
-            loss_yoke=iron.yoke,
+            loss_teeth=iron.teeth.total,
+            loss_yoke=iron.yoke.total,
             loss_magnet=eddy.magnet.sum(axis=1),
             loss_sleeve=eddy.sleeve.sum(axis=1),
+            loss_iron_hysteresis=iron.teeth.hysteresis + iron.yoke.hysteresis,
+            loss_iron_eddy=iron.teeth.classical + iron.yoke.classical,
+            loss_iron_excess=iron.teeth.excess + iron.yoke.excess,
         )

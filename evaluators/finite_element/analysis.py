@@ -192,6 +192,9 @@ def evaluate(fields: StaticFields, exciting: Excitation) -> Result:
     seen = densities(batch, loaded, fields.unloaded, small, exciting.suspension)
     iron = losses.iron_loss(batch, loaded)
     share = losses.suspension_share(batch, loaded, small, exciting.suspension)
+    teeth = np.array(iron.teeth) * (1.0 + share[0])
+    yoke = np.array(iron.yoke) * (1.0 + share[1])
+    hysteresis, eddy, excess = teeth + yoke
     if induced is None:
         magnet, sleeve = _rotor_loss(batch, loaded, small, exciting, mean_torque)
     else:
@@ -213,10 +216,13 @@ def evaluate(fields: StaticFields, exciting: Excitation) -> Result:
         yoke_flux_density=seen.yoke,
         core_flux_density=seen.core,
         magnet_flux_density=seen.magnet,
-        loss_teeth=np.sum(iron.teeth, axis=0) * (1.0 + share[0]),
-        loss_yoke=np.sum(iron.yoke, axis=0) * (1.0 + share[1]),
+        loss_teeth=teeth.sum(axis=0),
+        loss_yoke=yoke.sum(axis=0),
         loss_magnet=magnet,
         loss_sleeve=sleeve,
+        loss_iron_hysteresis=hysteresis,
+        loss_iron_eddy=eddy,
+        loss_iron_excess=excess,
         force_angle_bias=bias,
     )
     converged, unsettled = fields.converged, np.zeros(LANES)

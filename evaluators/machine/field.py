@@ -80,6 +80,9 @@ class FieldSolution:
         Smallest density along the magnetisation over the magnets' outer surface at the duty.
     loss_teeth, loss_yoke, loss_magnet, loss_sleeve : W/m
         At the duty.
+    loss_iron_hysteresis, loss_iron_eddy, loss_iron_excess : W/m, optional
+        Teeth and yoke together by mechanism: classical eddy currents apart from excess loss. All
+        three or none; the sum is that of teeth and yoke.
     force_angle_bias : rad, optional
         Angle by which currents induced in the rotor turn the mean force away from the direction
         that is commanded without them, counter-clockwise; left out where none are induced, so
@@ -106,6 +109,9 @@ class FieldSolution:
     loss_yoke: FloatArray
     loss_magnet: FloatArray
     loss_sleeve: FloatArray
+    loss_iron_hysteresis: FloatArray | None = None
+    loss_iron_eddy: FloatArray | None = None
+    loss_iron_excess: FloatArray | None = None
     force_angle_bias: FloatArray | None = None
 
     def __post_init__(self) -> None:
@@ -115,3 +121,7 @@ class FieldSolution:
             if value is not None and value.shape != rows:
                 msg = f"{item.name} has shape {value.shape}, expected {rows}"
                 raise ValueError(msg)
+        parts = (self.loss_iron_hysteresis, self.loss_iron_eddy, self.loss_iron_excess)
+        if 0 < sum(part is None for part in parts) < len(parts):
+            msg = "iron loss by mechanism needs hysteresis, eddy and excess loss, or none of them"
+            raise ValueError(msg)

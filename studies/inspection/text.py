@@ -7,7 +7,6 @@ from textwrap import fill
 
 from evaluators.machine.geometry.variables import VARIABLES
 from evaluators.machine.metrics import METRIC, METRICS
-from studies.comparison.numbers import LOSSES
 from studies.inspection.design import (
     CAUTIONS,
     GROUP_NAMES,
@@ -20,6 +19,18 @@ from studies.stored.verified import VerifiedRow, deviation
 from studies.tables import number, percent, text_table
 
 DIRECTION = {1: "+", -1: "-"}
+IRON_PLACES = ("loss_teeth_W", "loss_yoke_W")
+IRON_MECHANISMS = ("loss_iron_hysteresis_W", "loss_iron_eddy_W", "loss_iron_excess_W")
+LOSSES = {
+    "loss_copper_W": (),
+    "loss_iron_W": (*IRON_PLACES, *IRON_MECHANISMS),
+    "loss_magnet_W": (),
+    "loss_sleeve_W": (),
+    "loss_air_friction_W": (),
+    "loss_total_W": (),
+}
+"""Losses in the order of the table, each with what it consists of: iron by place, then once more
+by mechanism."""
 
 
 def inspection_text(found: Inspection) -> str:
@@ -76,8 +87,9 @@ def _limits(found: Inspection) -> str:
 def _losses(found: Inspection) -> str:
     total = found.row.get("loss_total_W")
     rows = [
-        [name, number(found.row[name]), percent(found.row[name] / total) if total else "-"]
-        for name in LOSSES
+        [label, number(found.row[name]), percent(found.row[name] / total) if total else "-"]
+        for loss, parts in LOSSES.items()
+        for label, name in [(loss, loss), *((f"  {part}", part) for part in parts)]
         if found.row.get(name) is not None
     ]
     return text_table(["loss", "W", "share"], rows) if rows else ""

@@ -224,6 +224,11 @@ class EvaluatorConformance:
         # Sums of the same numbers: rounding only.
         np.testing.assert_allclose(value["loss_total_W"], total, rtol=1e-12)
         np.testing.assert_allclose(value["efficiency"], power / (power + total), rtol=1e-12)
+        places = value["loss_teeth_W"] + value["loss_yoke_W"]
+        mechanisms = [value[f"loss_iron_{name}_W"] for name in ("hysteresis", "eddy", "excess")]
+        np.testing.assert_allclose(value["loss_iron_W"], places, rtol=1e-12)
+        np.testing.assert_allclose(value["loss_iron_W"], np.sum(mechanisms, axis=0), rtol=1e-12)
+        assert np.all(np.array(mechanisms) >= 0.0)
         # All that brakes the rotor; a field solved with induced currents has theirs in it.
         braked = power + value["loss_air_friction_W"] + value["loss_iron_W"]
         rotor = value["loss_magnet_W"] + value["loss_sleeve_W"]

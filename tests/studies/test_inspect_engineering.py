@@ -94,6 +94,23 @@ def test_text_tells_every_limit_in_plain_words(hovergap: Run, swept: Path) -> No
         assert line.endswith(METRIC[name].source)
 
 
+def test_iron_loss_is_shown_by_place_and_by_mechanism(hovergap: Run, swept: Path) -> None:
+    design, row = first_good(swept)
+    lines = hovergap("inspect", swept, design).output.splitlines()
+    found = {
+        words[0]: float(words[1])
+        for words in map(str.split, lines)
+        if len(words) == 4 and words[0].startswith("loss_")  # name, W, share, %
+    }
+    places = found["loss_teeth_W"] + found["loss_yoke_W"]
+    mechanisms = sum(found[f"loss_iron_{name}_W"] for name in ("hysteresis", "eddy", "excess"))
+    # Four digits are printed.
+    assert places == pytest.approx(row["loss_iron_W"], rel=1e-3)
+    assert mechanisms == pytest.approx(row["loss_iron_W"], rel=1e-3)
+    under = [line for line in lines if line.startswith("  loss_")]
+    assert len(under) == 5
+
+
 def test_metrics_that_are_not_stored_leave_their_topic_out(
     hovergap: Run, write_study: Write
 ) -> None:

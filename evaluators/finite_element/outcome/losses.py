@@ -59,6 +59,8 @@ def _waveform_loss(  # type: ignore[no-untyped-def]
                 low1 = high1 = tangential[0]
                 square = 0.0
                 power = 0.0
+                path0 = 0.0
+                path1 = 0.0
                 last = positions * sixths - 1
                 p0 = radial[last]
                 p1 = tangential[last]
@@ -67,6 +69,8 @@ def _waveform_loss(  # type: ignore[no-untyped-def]
                     b1 = tangential[i]
                     low0, high0 = min(low0, b0), max(high0, b0)
                     low1, high1 = min(low1, b1), max(high1, b1)
+                    path0 += abs(b0 - p0)
+                    path1 += abs(b1 - p1)
                     d = (b0 - p0) ** 2 + (b1 - p1) ** 2
                     square += d
                     root = np.sqrt(d)
@@ -75,9 +79,12 @@ def _waveform_loss(  # type: ignore[no-untyped-def]
                     p1 = b1
                 peak0 = 0.5 * (high0 - low0)
                 peak1 = 0.5 * (high1 - low1)
-                energy = k_h * (
-                    peak0 ** (exponent + slope * peak0) + peak1 ** (exponent + slope * peak1)
-                )
+                energy = 0.0
+                if peak0 > 0.0:
+                    energy += 0.25 * path0 * peak0 ** (exponent - 1.0 + slope * peak0)
+                if peak1 > 0.0:
+                    energy += 0.25 * path1 * peak1 ** (exponent - 1.0 + slope * peak1)
+                energy *= k_h
                 w = weight[k, q, lane]
                 result[0, lane] += w * energy
                 result[1, lane] += w * square
@@ -89,9 +96,10 @@ def iron_loss(batch: BatchField, solution: Solution) -> IronLoss:
 
     The three parts of Bertotti, IEEE Trans. Magn. 24(1), 1988, from the waveform at every point of
     the mesh: radial and tangential component each with its own hysteresis, which covers rotation as
-    for an elliptic locus (common practice); classical and excess loss from the length of dB/dt.
-    The same law as `evaluators.machine.losses.iron.iron_loss_from_waveform`. The flux density of
-    the sheet is that of the stack over the stacking factor.
+    for an elliptic locus (common practice), and raised by its minor loops; classical and excess
+    loss from the length of dB/dt. The same law as
+    `evaluators.machine.losses.iron.iron_loss_from_waveform`. The flux density of the sheet is that
+    of the stack over the stacking factor.
     """
     model = batch.model
     lattice = model.torque.lattice

@@ -55,6 +55,31 @@ METRICS: tuple[Metric, ...] = (
     Metric("loss_yoke_W", "W", "losses", "iron loss of the stator yoke", "Bertotti 1988", True),
     Metric("loss_iron_W", "W", "losses", "iron loss of teeth and yoke", "Bertotti 1988", True),
     Metric(
+        "loss_iron_hysteresis_W",
+        "W",
+        "losses",
+        "hysteresis in the iron loss",
+        "Bertotti 1988; minor loops: improved generalised Steinmetz law, COMPEL 2002",
+        True,
+    ),
+    Metric(
+        "loss_iron_eddy_W",
+        "W",
+        "losses",
+        "classical eddy currents of the sheets in the iron loss",
+        "Bertotti 1988; Bozorth, Ferromagnetism, 1951",
+        True,
+    ),
+    Metric(
+        "loss_iron_excess_W",
+        "W",
+        "losses",
+        "excess loss in the iron loss: what the steel's loss table holds in f^1.5 B^1.5 beside the "
+        "other two",
+        "Bertotti 1988",
+        True,
+    ),
+    Metric(
         "loss_magnet_W",
         "W",
         "losses",

@@ -18,6 +18,10 @@ def at_remanence(field: FieldSolution, ratio: FloatArray) -> FieldSolution:
     lowest density in the magnets falls by what the fundamental of the gap loses.
     """
     square = ratio * ratio
+
+    def squared(part: FloatArray | None) -> FloatArray | None:
+        return None if part is None else part * square
+
     return replace(
         field,
         torque=field.torque * ratio,
@@ -33,4 +37,7 @@ def at_remanence(field: FieldSolution, ratio: FloatArray) -> FieldSolution:
         magnet_flux_density=field.magnet_flux_density - (1.0 - ratio) * field.gap_flux_density,
         loss_teeth=field.loss_teeth * square,
         loss_yoke=field.loss_yoke * square,
+        loss_iron_hysteresis=squared(field.loss_iron_hysteresis),
+        loss_iron_eddy=squared(field.loss_iron_eddy),
+        loss_iron_excess=squared(field.loss_iron_excess),
     )

@@ -239,6 +239,7 @@ SCALING = {
     "torque_ripple": 0, "force_error_magnitude": 0, "force_error_angle": 0,
     "gap_flux_density": 0, "tooth_flux_density": 0, "yoke_flux_density": 0, "core_flux_density": 0,
     "magnet_flux_density": 0, "loss_teeth": 2, "loss_yoke": 2,
+    "loss_iron_hysteresis": 2, "loss_iron_eddy": 2, "loss_iron_excess": 2,
 }  # fmt: skip
 
 

@@ -270,6 +270,7 @@ def test_iron_loss_of_a_cell_is_that_of_its_waveform() -> None:
         radial / model.stacking,
         model.task.electrical_frequency,
         tangential / model.stacking,
+        minor_loops=True,
     )
     density = float(steel.density.value) * model.stacking
     sectors = model.symmetry.torque.count
