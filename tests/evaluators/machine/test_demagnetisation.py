@@ -5,11 +5,14 @@ from __future__ import annotations
 import numpy as np
 import pytest
 from machines import FAMILIES, Numbers
+from outside import OutsideChecks
 from scipy.integrate import solve_ivp
 
 from evaluators.machine.demagnetisation import ArmatureReaction, Fault, short_circuit_peak
 from evaluators.machine.quantity import MU_0
 from evaluators.machine.winding.families import design_winding
+
+check = OutsideChecks("demagnetisation")
 
 
 @pytest.mark.parametrize(("emf", "current", "resistance", "reactance"), [
@@ -32,17 +35,35 @@ def test_short_circuit_by_integration(
 
     time = np.linspace(0.0, 4.0 * np.pi, 40_001)
     run = solve_ivp(slope, (0.0, time[-1]), [0.0, current], t_eval=time, rtol=1e-10, atol=1e-10)
-    # The peak is found to the square of the time step, 1e-7.
-    assert short_circuit_peak(emf, current, resistance, reactance) == pytest.approx(
-        -run.y[0].min(), rel=1e-6
+    check(
+        "largest demagnetising current of a three-phase short circuit",
+        short_circuit_peak(emf, current, resistance, reactance),
+        -run.y[0].min(),
+        relative=1e-6,
+        why="the peak is found to the square of the time step, 1e-7",
+        source="axis equations of the machine integrated over time (scipy solve_ivp)",
     )
 
 
 def test_short_circuit_limits() -> None:
     """Without resistance the current swings to twice psi/L; with much of it, to the steady one."""
-    assert short_circuit_peak(100.0, 0.0, 1e-9, 2.0) == pytest.approx(100.0, rel=1e-6)
-    steady = 100.0 * 2.0 / (50.0**2 + 2.0**2)
-    assert short_circuit_peak(100.0, 0.0, 50.0, 2.0) == pytest.approx(steady, rel=1e-3)
+    check(
+        "short-circuit peak without resistance",
+        short_circuit_peak(100.0, 0.0, 1e-9, 2.0),
+        100.0,
+        relative=1e-6,
+        why="rounding, and a resistance of 1e-9 of the reactance",
+        source="constant flux linkage: twice psi/L (common practice)",
+    )
+    check(
+        "short-circuit peak with much resistance",
+        short_circuit_peak(100.0, 0.0, 50.0, 2.0),
+        100.0 * 2.0 / (50.0**2 + 2.0**2),
+        relative=1e-3,
+        why="the swing has died out to exp(-25 pi/2) where it would top the steady current; "
+        "reactance over resistance squared remains",
+        source="steady phasor diagram (common practice)",
+    )
 
 
 def by_single_slots(
@@ -91,9 +112,14 @@ def test_reaction_by_single_slots(numbers: Numbers) -> None:
     found = ArmatureReaction.of(design_winding(*numbers)).per_ampere_turn(
         np.array([core]), np.array([magnet]), np.array([bore]), np.array([opening])
     )[0]
-    # Twelve points a pole and six positions against 1440 points: a peak may be missed a little.
-    assert found == pytest.approx(
-        by_single_slots(numbers, core, magnet, bore, opening, 6), rel=0.04
+    check(
+        "largest density of the armature against the magnets",
+        found,
+        by_single_slots(numbers, core, magnet, bore, opening, 6),
+        relative=0.04,
+        why="twelve points a pole and six positions against 1440 points: a peak may be missed a "
+        "little",
+        source="fields of single slots summed at the instants, order by order",
     )
 
 
@@ -111,8 +137,14 @@ def test_two_pole_winding_without_harmonics() -> None:
         np.array([bore - gap]), np.array([bore - 0.5 * gap]), np.array([bore]), np.array([1e-3])
     )[0]
     mmf = 1.5 * 4.0 / np.pi * 8.0 * winding.torque_winding_factor / 2.0
-    # Curvature is gap over radius; the nearest point is 7.5 degrees off the axis: 0.9 percent.
-    assert found == pytest.approx(MU_0 * mmf / gap, rel=0.012)
+    check(
+        "density of a two-pole armature in a thin even gap",
+        found,
+        MU_0 * mmf / gap,
+        relative=0.012,
+        why="curvature is gap over radius; the nearest point is 7.5° off the axis: 0.9 %",
+        source="Ampere's law, mu0 F/gap with F = (3/2)(4/pi) N k_w/(2p)",
+    )
 
 
 def test_larger_gap_and_wider_slots_weaken_it() -> None:

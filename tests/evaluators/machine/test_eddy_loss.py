@@ -9,6 +9,7 @@ from typing import Any
 import mpmath
 import numpy as np
 import pytest
+from outside import OutsideChecks
 
 from evaluators.machine.losses.eddy import (
     block_length_factor,
@@ -28,7 +29,11 @@ MU_0 = 4e-7 * math.pi
 IRON, MAGNET, BORE, MU_R, RHO = 0.020, 0.024, 0.025, 1.05, 1.5e-6
 SHEET = 1e4  # A/m
 
-# Order, frequency in Hz, exact loss in W/m; own solution by two routes (Poynting, volume).
+check = OutsideChecks("losses")
+RING = "own solution of the diffusion equation in the ring by two routes (Poynting, volume)"
+PRINTED = {"relative": 1e-6, "why": "seven printed digits"}
+
+# Order, frequency in Hz, exact loss in W/m.
 EXACT = [
     (1, 100.0, 148.4842), (1, 1e3, 2741.988), (1, 1e4, 3373.482),
     (2, 100.0, 9.556257), (2, 1e3, 741.6309), (2, 1e4, 3216.731),
@@ -54,7 +59,7 @@ def test_exact_ring(order: int, frequency: float, power: float) -> None:
     q = ring_field_ratio(order, frequency, IRON, MAGNET, RHO, MU_R)
     b = sheet_flux_density(order, SHEET, BORE, MAGNET, q)
     loss = ring_loss(order, frequency, b, IRON, MAGNET, RHO, MU_R)
-    assert loss == pytest.approx(power, rel=1e-6)  # seven printed digits
+    check("eddy loss of a closed magnet ring, exact form", loss, power, **PRINTED, source=RING)
 
 
 @pytest.mark.parametrize(("order", "frequency"), [(1, 50.0), (7, 2e4), (20, 300.0)])
@@ -72,8 +77,14 @@ def test_field_ratio_against_mpmath(order: int, frequency: float) -> None:
         value = y(IRON, 1) * j(MAGNET, 0) - j(IRON, 1) * y(MAGNET, 0)
         expected = complex(MAGNET * k * slope / (MU_R * value))
     q = ring_field_ratio(order, frequency, IRON, MAGNET, RHO, MU_R)
-    # The imaginary part is small at low frequency; allow the rounding of the whole.
-    assert complex(q) == pytest.approx(expected, rel=1e-9)
+    check(
+        "field ratio at the face of a closed magnet ring",
+        complex(q),
+        expected,
+        relative=1e-9,
+        why="rounding of the library's Bessel functions",
+        source="mpmath, Bessel functions with 30 digits",
+    )
 
 
 def test_exact_ring_refuses_what_it_cannot_compute() -> None:
@@ -84,7 +95,13 @@ def test_exact_ring_refuses_what_it_cannot_compute() -> None:
 def test_fast_ring_without_reaction(order: int, limit: float) -> None:
     """Resistance-limited loss at 100 Hz, from 1 mHz by the square of the frequency."""
     slow = ring(order, 1e-3) * (100.0 / 1e-3) ** 2
-    assert slow == pytest.approx(limit, rel=1e-6)  # same static field, closed form
+    check(
+        "eddy loss of a closed magnet ring without reaction",
+        slow,
+        limit,
+        **PRINTED,
+        source="closed form of the static field, own evaluation",
+    )
 
 
 @pytest.mark.parametrize(("order", "frequency", "power"), EXACT)
@@ -93,8 +110,17 @@ def test_fast_ring_with_reaction(order: int, frequency: float, power: float) -> 
     thickness = MAGNET - IRON
     depth = math.sqrt(RHO / (math.pi * frequency * MU_0))
     excess = ring(order, frequency) / power - 1.0
-    # Second order in thickness over skin depth; 0.65 is the largest here. Never too low.
-    assert -1e-6 < excess < 0.005 + 0.6 * (thickness / depth) ** 2
+    assert excess > -1e-6  # never too low, but for printed digits
+    check.within(
+        "excess of the fast form over the exact loss of a closed ring, against its room "
+        "0.005 + 0.6 (thickness/skin depth)²",
+        excess / (0.005 + 0.6 * (thickness / depth) ** 2),
+        -np.inf,
+        1.0,
+        why="the reaction of the static profile errs in second order of thickness over skin "
+        "depth, 0.65 at most here",
+        source=RING,
+    )
 
 
 def test_segment_share_by_integration() -> None:
@@ -102,8 +128,14 @@ def test_segment_share_by_integration() -> None:
     for order, angle in [(1, 0.3), (4, 0.6), (5, 2.0), (13, 0.05)]:
         theta = (np.arange(20_000) + 0.5) / 20_000 * angle
         wave = np.exp(1j * order * theta)
-        expected = np.mean(np.abs(wave - wave.mean()) ** 2)
-        assert segment_share(order, angle) == pytest.approx(expected, rel=1e-6)  # midpoint rule
+        check(
+            "share of the eddy loss that segments leave",
+            segment_share(order, angle),
+            np.mean(np.abs(wave - wave.mean()) ** 2),
+            relative=1e-6,
+            why="midpoint rule with 20,000 points",
+            source="variance of the wave over one segment by quadrature",
+        )
 
 
 @pytest.mark.parametrize("order", [1, 2, 3, 8])
@@ -113,7 +145,7 @@ def test_closed_ring_has_the_whole_share(order: int) -> None:
     assert series == pytest.approx(exact, rel=1e-5)  # 1 - sinc² cancels ten digits there
 
 
-# Timoshenko, Goodier, *Theory of Elasticity*, torsion of a rectangular bar; recomputed digits.
+# Timoshenko, Goodier, Theory of Elasticity; recomputed digits.
 TORSION = [
     (1.0, 0.1405770), (1.2, 0.1661189), (1.5, 0.1957607), (2.0, 0.2286817), (2.5, 0.2493651),
     (3.0, 0.2633169), (4.0, 0.2808130), (5.0, 0.2913168), (10.0, 0.3123250),
@@ -122,9 +154,18 @@ TORSION = [
 
 @pytest.mark.parametrize(("ratio", "k1"), TORSION)
 def test_block_follows_the_torsion_table(ratio: float, k1: float) -> None:
-    assert block_length_factor(ratio) / 3.0 == pytest.approx(k1, abs=6e-8)  # printed digits
+    source = "torsion of a rectangular bar: Timoshenko, Goodier, Theory of Elasticity; recomputed"
+    check(
+        "length factor of a magnet block",
+        block_length_factor(ratio) / 3.0,
+        k1,
+        absolute=6e-8,
+        why="printed digits",
+        source=source,
+    )
     # Turned by 90 degrees the block is the same: J = k1 a b³ with b the short side.
-    assert block_length_factor(1.0 / ratio) / 3.0 == pytest.approx(k1 / ratio**2, rel=1e-6)
+    turned = block_length_factor(1.0 / ratio) / 3.0
+    check("length factor of a block turned round", turned, k1 / ratio**2, **PRINTED, source=source)
 
 
 @pytest.mark.parametrize(("a", "b", "watt_per_m"), [
@@ -132,14 +173,25 @@ def test_block_follows_the_torsion_table(ratio: float, k1: float) -> None:
 ])  # fmt: skip
 def test_block_in_a_uniform_field(a: float, b: float, watt_per_m: float) -> None:
     """1.5 uohm m, 1 kHz, 0.02 T peak."""
-    assert block_loss(a, b, 0.02, 1e3, 1.5e-6) == pytest.approx(watt_per_m, rel=1e-6)
-    assert block_loss(b, a, 0.02, 1e3, 1.5e-6) == pytest.approx(watt_per_m, rel=1e-6)
+    check(
+        "eddy loss of a magnet block in a uniform field",
+        [block_loss(a, b, 0.02, 1e3, 1.5e-6), block_loss(b, a, 0.02, 1e3, 1.5e-6)],
+        watt_per_m,
+        **PRINTED,
+        source="own evaluation of the torsion series of a rectangular bar",
+    )
 
 
 def test_endless_strip() -> None:
-    """43864.91 W/m3 for a 10 mm strip in the same field."""
+    """A 10 mm strip in the same field, W/m3."""
     strip = block_loss(0.010, 1e6, 0.02, 1e3, 1.5e-6) / (0.010 * 1e6)
-    assert strip == pytest.approx(43864.91, rel=1e-6)
+    check(
+        "eddy loss of an endless strip in a uniform field",
+        strip,
+        43864.91,
+        **PRINTED,
+        source="own evaluation of the closed form w² B² b² sigma/24",
+    )
 
 
 def test_narrow_segments_of_a_rotor_are_blocks() -> None:
@@ -153,8 +205,14 @@ def test_narrow_segments_of_a_rotor_are_blocks() -> None:
     ).magnet[0, 0]  # fmt: skip
     blocks = 0.8 * 2.0 * math.pi / angle
     one = block_loss(angle * outer, piece, b, f, RHO) * thickness / piece
-    # Thickness 0.4 % of the radius, wavelength 157 segments: half a per cent together.
-    assert loss == pytest.approx(float(blocks * one), rel=0.006)
+    check(
+        "eddy loss of narrow, thin magnets on a rotor",
+        loss,
+        float(blocks * one),
+        relative=0.006,
+        why="thickness 0.4 % of the radius, wavelength 157 segments: half a per cent together",
+        source="blocks in a uniform field, by themselves",
+    )
 
 
 def test_length_of_a_closed_ring_by_two_published_ways() -> None:
@@ -163,13 +221,27 @@ def test_length_of_a_closed_ring_by_two_published_ways() -> None:
         width = math.sqrt(12.0) * MAGNET / order
         block = block_length_factor(length / width)
         ring_way = ring_length_factor(order, length, MAGNET)
-        assert block == pytest.approx(float(ring_way), rel=0.1)  # correlation against correlation
+        check(
+            "length factor of a closed ring, by an equivalent block",
+            block,
+            float(ring_way),
+            relative=0.1,
+            why="correlation against correlation, for poles of usual length",
+            source="Russell, Norsworthy 1958",
+        )
 
 
 def test_ring_length_limits() -> None:
     assert ring_length_factor(4, 1e3, MAGNET) == pytest.approx(1.0, abs=1e-4)
-    x = 1e-3 / MAGNET * 0.5 * 4  # short ring: tanh x = x - x³/3
-    assert ring_length_factor(4, 1e-3, MAGNET) == pytest.approx(x * x / 3.0, rel=0.01)
+    x = 1e-3 / MAGNET * 0.5 * 4
+    check(
+        "length factor of a short closed ring",
+        ring_length_factor(4, 1e-3, MAGNET),
+        x * x / 3.0,
+        relative=0.01,
+        why="tanh x = x - x³/3 leaves terms of x²",
+        source="first term of Russell, Norsworthy 1958",
+    )
 
 
 def tube(frequency: float, thickness: float, conductivity: float) -> float:
@@ -184,19 +256,30 @@ def tube(frequency: float, thickness: float, conductivity: float) -> float:
 
 @pytest.mark.parametrize("frequency", [10.0, 964.9637, 10e3])
 def test_thin_tube_in_a_rotating_field(frequency: float) -> None:
-    """pi R³ sigma d w² B²/(1 + (w mu0 sigma d R/2)²), R = 15 mm, sigma d = 17.5 kS.
-
-    The torque peaks at 964.9637 Hz with pi R² B²/mu0 = 5.625 N m/m.
-    """
+    """R = 15 mm, sigma d = 17.5 kS; the torque peaks at 964.9637 Hz."""
     thickness = 5e-6  # thin enough for the formula of a sheet: 3 d/R = 0.1 %
     conductivity = 35e6 * 0.5e-3 / thickness
     omega = 2.0 * math.pi * frequency
     x = 0.5 * omega * MU_0 * conductivity * thickness * 0.015
     expected = math.pi * 0.015**3 * conductivity * thickness * (omega * 0.1) ** 2 / (1.0 + x * x)
     found = tube(frequency, thickness, conductivity)
-    assert found == pytest.approx(expected, rel=0.002)
+    check(
+        "eddy loss of a thin conducting sleeve",
+        found,
+        expected,
+        relative=0.002,
+        why="wall of 5 um for the formula's sheet: 3 d/R = 0.1 %",
+        source="pi R³ sigma d w² B²/(1 + (w mu0 sigma d R/2)²), closed form",
+    )
     if frequency == 964.9637:
-        assert found / omega == pytest.approx(5.625, rel=0.002)
+        check(
+            "largest torque on a thin conducting sleeve, N m/m",
+            found / omega,
+            5.625,
+            relative=0.002,
+            why="as the loss",
+            source="pi R² B²/mu0, closed form",
+        )
 
 
 def test_sleeve_shields_the_magnets() -> None:

@@ -7,6 +7,7 @@ from dataclasses import replace
 import machines
 import numpy as np
 import pytest
+from outside import OutsideChecks
 
 from evaluators.analytic.evaluator import AnalyticEvaluator
 from evaluators.interface import Evaluations
@@ -23,6 +24,10 @@ from evaluators.machine.task.task import STANDARD_GRAVITY, Task
 
 ROWS = 30
 FIXED = Cooling(temperatures="fixed")
+
+check_drive = OutsideChecks("drive")
+check_mechanics = OutsideChecks("mechanics")
+check_levitation = OutsideChecks("levitation")
 
 
 def run(task: Task, batch: dict[str, np.ndarray] | None = None) -> dict[str, np.ndarray]:
@@ -44,10 +49,17 @@ def test_emf_times_current_is_torque_times_speed(usual: dict[str, np.ndarray]) -
     """Power of the air gap by terminals and by Maxwell stress."""
     electrical = 1.5 * usual["back_emf_V"] * np.sqrt(2.0) * usual["torque_current_A"]
     mechanical = usual["torque_Nm"] * machines.task().duty.speed
-    # With saturated iron the analytic field leaves up to a tenth between the two routes.
     linear = (usual["yoke_flux_density_T"] < 1.4) & (usual["tooth_flux_density_T"] < 1.4)
     assert linear.sum() > 5
-    np.testing.assert_allclose(electrical[linear], mechanical[linear], rtol=0.01)
+    check_drive(
+        "EMF times current at the terminals",
+        electrical[linear],
+        mechanical[linear],
+        relative=0.01,
+        why="iron below 1.4 T; saturated, the analytic field leaves up to a tenth between the "
+        "two routes",
+        source="first law: torque by Maxwell's stress times speed",
+    )
 
 
 def test_currents_turns_and_wires_are_of_one_winding(usual: dict[str, np.ndarray]) -> None:
@@ -100,9 +112,15 @@ def test_levitation_budget_adds_up(usual: dict[str, np.ndarray]) -> None:
     np.testing.assert_allclose(usual["zone_a_displacement_um"], 0.3e6 * touchdown, rtol=1e-9)
     mass = usual["rotor_mass_kg"]
     np.testing.assert_allclose(usual["rotor_weight_N"], STANDARD_GRAVITY * mass, rtol=1e-12)
-    # ISO 21940-11: the grade times the speed is an acceleration.
     unbalance = mass * task.duty.balance_grade * task.duty.speed
-    np.testing.assert_allclose(usual["unbalance_force_N"], unbalance, rtol=1e-12)
+    check_levitation(
+        "unbalance force of a machine",
+        usual["unbalance_force_N"],
+        unbalance,
+        relative=1e-12,
+        why="arithmetic",
+        source="ISO 21940-11: the grade times the speed is an acceleration (from memory)",
+    )
     demand = usual["rotor_weight_N"] + unbalance + usual["magnetic_pull_N"]
     np.testing.assert_allclose(usual["suspension_demand_N"], demand, rtol=1e-12)
     lift = usual["rotor_weight_N"] + stiffness * touchdown
@@ -164,9 +182,15 @@ def test_bending_of_a_plain_shaft() -> None:
     young, rho = float(shaft.young_modulus.at(80.0)), float(shaft.density.value)
     length = 1e-3 * found["stack_length_mm"] + 4.0 * sections.rotor_radius
     euler = 4.730041**2 / length**2 * np.sqrt(young / rho) * 0.5 * sections.shaft_radius
-    # Core, magnets and sleeve add a fifth of mass along the stack and no stiffness; shear and
-    # rotation of a stocky shaft take some percent more.
-    assert 0.75 < found["free_bending_speed_rpm"][0] * np.pi / 30.0 / euler[0] < 1.0
+    check_mechanics.within(
+        "first bending speed of a machine that is nearly a plain shaft, over that of the shaft",
+        found["free_bending_speed_rpm"][0] * np.pi / 30.0 / euler[0],
+        0.75,
+        1.0,
+        why="core, magnets and sleeve add a fifth of mass along the stack and no stiffness; shear "
+        "and rotation of a stocky shaft take some per cent more",
+        source="free beam of Euler and Bernoulli, beta L = 4.730041",
+    )
 
 
 def slender(duty_speed_ratio: float, layout: RotorLayout) -> tuple[Task, dict[str, np.ndarray]]:
@@ -209,9 +233,15 @@ def test_stiff_second_bearing_makes_the_rotor_bend_earlier() -> None:
     _, batch = slender(1.0, layout)
     found = run(replace(machines.task(), rotor=layout, cooling=FIXED), batch)
     ratio = found["bending_speed_rpm"][0] / found["free_bending_speed_rpm"][0]
-    # Core, magnets and sleeve load a tenth of the length near the pin, where little moves; the pin
-    # sits half a hundredth of the length from the tip.
-    assert ratio == pytest.approx((3.9266 / 4.7300) ** 2, rel=0.05)
+    check_mechanics(
+        "bending speed of a shaft pinned at one end over that of a free one",
+        ratio,
+        (3.9266 / 4.7300) ** 2,
+        relative=0.05,
+        why="core, magnets and sleeve load a tenth of the length near the pin, where little "
+        "moves; the pin sits half a hundredth of the length from the tip",
+        source="beams of Euler and Bernoulli, beta L = 3.9266 and 4.7300",
+    )
 
 
 def test_contact_is_kept_cold_and_hot() -> None:
@@ -315,8 +345,15 @@ def test_short_circuit_swings_up_to_twice_flux_over_inductance() -> None:
     rated = np.sqrt(2.0) * found["torque_current_A"]
     peak = found["fault_current_ratio"] * rated
     assert np.all(peak > 0.9 * steady)
-    # From the duty's current the circle is a little wider than from no load.
-    assert np.all(peak < steady + np.hypot(steady, rated))
+    OutsideChecks("demagnetisation").within(
+        "short-circuit peak of machines over the widest circle of the current",
+        peak / (steady + np.hypot(steady, rated)),
+        -np.inf,
+        1.0,
+        why="resistance shrinks the circle; from the duty's current it is a little wider than "
+        "from no load",
+        source="circle of constant flux linkage (common practice)",
+    )
 
 
 # -- cost and registry ----------------------------------------------------------------------------
