@@ -11,7 +11,6 @@ from optimizer.running.runner import run
 from optimizer.running.stopping import StopRules
 from optimizer.workers.dispatch import Dispatcher, Serial
 from optimizer.workers.pool import Pool
-from optimizer.workers.watched import WatchedPool
 from studies.running.ended import Ended, note_end
 from studies.running.problem import MachineProblem
 from studies.running.spreading import ROUNDS, prospects, read_rows
@@ -39,7 +38,7 @@ def dispatcher_of(study: Study, workers: int) -> Dispatcher:
     """What evaluates the designs of a study."""
     limit = study.search.time_limit_s
     if limit is not None:
-        return WatchedPool(workers, limit)
+        return Pool(workers, limit)
     return Serial() if workers == 1 else Pool(workers)
 
 
