@@ -14,6 +14,14 @@ class ProblemError(OptimizerError, ValueError):
     """A problem, its settings or what its evaluation returned breaks the contract."""
 
 
+class WorkerError(OptimizerError, RuntimeError):
+    """Worker processes cannot be started."""
+
+
+class ClusterError(OptimizerError, RuntimeError):
+    """A cluster cannot be reached, is lost, or its machines do not fit together."""
+
+
 class ArchiveError(OptimizerError, OSError):
     """An archive cannot be read or written."""
 
@@ -48,6 +56,7 @@ def storage_error(error: OSError, path: Path, action: str) -> ArchiveError:
         errno.EACCES: "permission is denied; check the owner and mode of the folder",
         errno.EPERM: "permission is denied; check the owner and mode of the folder",
         errno.EROFS: "the file system is read-only; choose another folder",
+        errno.EFBIG: "the file would be larger than allowed; raise the limit (ulimit -f)",
         errno.ENOTDIR: "a part of its path is a file, not a folder",
         errno.EISDIR: "it is a folder, not a file",
         errno.EIO: "the disk reports an input/output error",

@@ -195,16 +195,8 @@ class Outcome:
         )
 
 
-class Problem(Protocol):
-    """What the search needs to know; ``evaluate`` is pure and picklable.
-
-    Pure means that the same ``x`` always gives the same outcome: an interrupted study evaluates
-    a lost chunk again. The object is sent once to each worker process.
-    """
-
-    @property
-    def variables(self) -> tuple[Variable, ...]:
-        """Searched quantities in the order of the columns of ``x``."""
+class Described(Protocol):
+    """What an outcome consists of."""
 
     @property
     def objectives(self) -> tuple[str, ...]:
@@ -217,6 +209,18 @@ class Problem(Protocol):
     @property
     def columns(self) -> tuple[Column, ...]:
         """Further columns every outcome carries."""
+
+
+class Problem(Described, Protocol):
+    """What the search needs to know; ``evaluate`` is pure and picklable.
+
+    Pure means that the same ``x`` always gives the same outcome: an interrupted study evaluates
+    a lost chunk again. The object is sent once to each worker process.
+    """
+
+    @property
+    def variables(self) -> tuple[Variable, ...]:
+        """Searched quantities in the order of the columns of ``x``."""
 
     def evaluate(self, x: FloatArray) -> Outcome:
         """Evaluate designs ``x`` (n, v) within the bounds."""
@@ -280,7 +284,7 @@ def check_outcome(problem: Problem, rows: int, outcome: Outcome) -> Outcome:
     return outcome
 
 
-def failed_outcome(problem: Problem, rows: int, reason: str, status: str = FAILED) -> Outcome:
+def failed_outcome(problem: Described, rows: int, reason: str, status: str = FAILED) -> Outcome:
     """Rows that failed for one reason: NaN numbers, empty texts, false flags."""
     blanks: dict[str, tuple[Any, Any]] = {"bool": (False, np.bool_), "string": ("", np.str_)}
     columns = {}

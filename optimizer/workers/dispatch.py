@@ -1,4 +1,5 @@
-"""Evaluating chunks of designs: in this process here, in worker processes in ``pool``.
+"""Evaluating chunks of designs: here in this process, in worker processes in ``pool``, on other
+machines in ``cluster``.
 
 Whatever evaluates, a chunk is the same rows in one call, so that results do not depend on how
 many workers there are, and numerical libraries keep to one thread for the same reason.
@@ -86,16 +87,11 @@ class Dispatcher(Protocol):
         """Close."""
 
 
-class Serial:
-    """Evaluates in this process, one chunk after the other."""
-
-    def run(self, problem: Problem, chunks: Iterable[Chunk]) -> Iterator[Finished]:
-        """Evaluate every chunk; see :class:`Dispatcher`."""
-        for chunk in chunks:
-            yield evaluate_chunk(problem, chunk)
+class Closing:
+    """What is closed at the end of a ``with`` block."""
 
     def close(self) -> None:
-        """Do nothing; there is nothing to let go of."""
+        """Do nothing where there is nothing to let go of."""
 
     def __enter__(self) -> Self:
         return self
@@ -107,6 +103,15 @@ class Serial:
         traceback: TracebackType | None,
     ) -> None:
         self.close()
+
+
+class Serial(Closing):
+    """Evaluates in this process, one chunk after the other."""
+
+    def run(self, problem: Problem, chunks: Iterable[Chunk]) -> Iterator[Finished]:
+        """Evaluate every chunk; see :class:`Dispatcher`."""
+        for chunk in chunks:
+            yield evaluate_chunk(problem, chunk)
 
 
 def evaluate_chunk(problem: Problem, chunk: Chunk) -> Finished:

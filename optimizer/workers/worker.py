@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import contextlib
 import os
 import pickle
 import signal
@@ -15,67 +16,59 @@ from threadpoolctl import threadpool_limits
 
 from optimizer.errors import ProblemError
 from optimizer.problem import Problem
-from optimizer.workers.dispatch import Chunk, Finished, evaluate_chunk
+from optimizer.workers.dispatch import Finished, evaluate_chunk
 
-READY = "ready"
+BEGUN = "begun"
 _PARENT_CHECK_S = 1.0
-_problems: dict[str, Problem] = {}
 
 
-def start_worker(parent: int) -> None:
-    """Prepare a new worker: deaf to Ctrl-C, which is the parent's to handle, and one thread."""
+def serve(descriptor: int, parent: int) -> None:
+    """Evaluate one chunk after the other that comes through a pipe, until that is closed.
+
+    Each message is the file in which the parent has stored the problem, and a chunk. The answers
+    to it are ``BEGUN`` when all is loaded, then what came of it.
+
+    Parameters
+    ----------
+    descriptor : int
+        Of this end of the pipe.
+    parent : int
+        Its process; when that ends, so does this one.
+    """
+    os.set_inheritable(descriptor, False)  # or a program started here would keep the pipe open
+    # Ctrl-C is the parent's to handle.
     signal.signal(signal.SIGINT, signal.SIG_IGN)
     threadpool_limits(1)
-    # A worker whose parent was killed would otherwise wait for minutes and hold its files open.
+    # A worker whose parent was killed would otherwise finish what it has in hand first.
     threading.Thread(target=_end_with, args=(parent,), daemon=True).start()
+    pipe: Connection[Any, Any] = Connection(descriptor)
+    known, problem = "", None
+    with contextlib.suppress(EOFError, OSError):  # the parent wants nothing more, or has gone
+        while True:
+            path, chunk = pipe.recv()
+            try:
+                if problem is None or path != known:
+                    problem, known = _read(path), path
+                pipe.send(BEGUN)
+                answer: Finished | ProblemError = evaluate_chunk(problem, chunk)
+            except ProblemError as error:
+                answer = error
+            pipe.send(answer)
 
 
-def evaluate_in_worker(path: str, chunk: Chunk) -> Finished:
-    """Evaluate a chunk of the problem stored under ``path`` by the parent.
+def _read(path: str) -> Problem:
+    """Read a problem; it lies in a private folder of the parent, so nothing foreign is unpickled.
 
-    The file is read once for each problem; it lies in a private folder of the parent, so
-    nothing foreign is unpickled.
+    Raises
+    ------
+    ProblemError
+        If it cannot be rebuilt here.
     """
-    return evaluate_chunk(_problem(path), chunk)
-
-
-def serve_rows(pipe: Connection[Any, Any], parent: int, path: str) -> None:
-    """Evaluate one chunk after the other that comes through the pipe, until it is closed.
-
-    The process leads a group of its own, so that it can be killed with all it has started.
-    """
-    if hasattr(os, "setpgid"):
-        os.setpgid(0, 0)
-    start_worker(parent)
     try:
-        problem = _problem(path)
-    except ProblemError as error:
-        pipe.send(error)
-        return
-    pipe.send(READY)
-    while True:
-        try:
-            chunk = pipe.recv()
-        except (EOFError, OSError):
-            return
-        try:
-            answer: Finished | ProblemError = evaluate_chunk(problem, chunk)
-        except ProblemError as error:
-            answer = error
-        pipe.send(answer)
-
-
-def _problem(path: str) -> Problem:
-    problem = _problems.get(path)
-    if problem is None:
-        _problems.clear()
-        try:
-            problem = pickle.loads(Path(path).read_bytes())  # noqa: S301
-        except Exception as error:  # rebuilding runs the problem's own code and imports
-            msg = f"the problem cannot be rebuilt in a worker process: {error}"
-            raise ProblemError(msg) from error
-        _problems[path] = problem
-    return problem
+        return pickle.loads(Path(path).read_bytes())  # type: ignore[no-any-return]  # noqa: S301
+    except Exception as error:  # rebuilding runs the problem's own code and imports
+        msg = f"the problem cannot be rebuilt in a worker process: {error}"
+        raise ProblemError(msg) from error
 
 
 def _end_with(parent: int) -> None:

@@ -18,7 +18,6 @@ from optimizer.errors import ProblemError
 from optimizer.problem import Column, Outcome, Variable
 from optimizer.workers.dispatch import Chunk, Serial, evaluate_chunk, single_threaded
 from optimizer.workers.pool import Pool
-from optimizer.workers.watched import WatchedPool
 
 cloudpickle.register_pickle_by_value(sys.modules[__name__])
 
@@ -62,7 +61,7 @@ def pool():
 
 @pytest.fixture(scope="module")
 def watched():
-    with WatchedPool(2, 30.0) as made:
+    with Pool(2, 30.0) as made:
         yield made
 
 

@@ -18,7 +18,7 @@ from optimizer.problem import Column, Outcome, Variable
 from optimizer.running.progress import Settings
 from optimizer.running.runner import run
 from optimizer.workers.dispatch import Chunk
-from optimizer.workers.watched import WatchedPool
+from optimizer.workers.pool import Pool
 
 cloudpickle.register_pickle_by_value(sys.modules[__name__])
 
@@ -76,7 +76,7 @@ def test_a_row_that_hangs_is_given_up_alone_and_in_time(workers) -> None:
             time.sleep(3600.0)
 
     begin = time.monotonic()
-    with WatchedPool(workers, LIMIT_S) as pool:
+    with Pool(workers, LIMIT_S) as pool:
         rows = by_row(pool.run(Cubes(hang), chunks()))
         late = ("timed out", "no answer within 1 s")
         assert_only(rows, {3: late, 7: late})
@@ -93,7 +93,7 @@ def test_a_row_deaf_to_signals_is_given_up_too() -> None:
             while True:
                 pass
 
-    with WatchedPool(2, LIMIT_S) as pool:
+    with Pool(2, LIMIT_S) as pool:
         rows = by_row(pool.run(Cubes(stubborn), chunks()))
     assert_only(rows, {11: ("timed out", "no answer within 1 s")})
 
@@ -107,7 +107,7 @@ def test_a_program_that_a_late_row_started_ends_with_it(tmp_path) -> None:
             note.write_text(str(program.pid))
             program.wait()
 
-    with WatchedPool(1, LIMIT_S) as pool:
+    with Pool(1, LIMIT_S) as pool:
         list(pool.run(Cubes(start), chunks(1)))
     deadline = time.monotonic() + 10.0
     while _alive(int(note.read_text())) and time.monotonic() < deadline:
@@ -120,7 +120,7 @@ def test_a_row_that_kills_its_worker_is_blamed_alone() -> None:
         if x[0] == 13.0:
             os._exit(3)
 
-    with WatchedPool(2, LONGEST_S) as pool:
+    with Pool(2, LONGEST_S) as pool:
         rows = by_row(pool.run(Cubes(die), chunks()))
     assert_only(rows, {13: ("failed", "worker died")})
 
@@ -133,7 +133,7 @@ def test_a_row_that_exhausts_memory_becomes_a_failed_row() -> None:
             resource.setrlimit(resource.RLIMIT_AS, (2_000_000_000, 2_000_000_000))
             bytearray(4_000_000_000)
 
-    with WatchedPool(1, LONGEST_S) as pool:
+    with Pool(1, LONGEST_S) as pool:
         rows = by_row(pool.run(Cubes(eat), chunks()))
     assert_only(rows, {6: ("failed", "MemoryError")})
 
@@ -142,7 +142,7 @@ def test_a_worker_killed_from_outside_costs_no_row() -> None:
     def slow(x: np.ndarray) -> None:
         time.sleep(0.05)
 
-    with WatchedPool(2, LONGEST_S) as pool:
+    with Pool(2, LONGEST_S) as pool:
         work = pool.run(Cubes(slow), chunks())
         done = [next(work)]
         worker = int(done[0].outcome.columns["worker"][0])
@@ -158,7 +158,7 @@ def test_the_rest_of_a_run_and_its_archive_do_not_depend_on_the_workers(tmp_path
 
     settings = Settings(budget=100, seed=4)
     for workers in (1, 2):
-        with WatchedPool(workers, LIMIT_S) as pool:
+        with Pool(workers, LIMIT_S) as pool:
             run(Cubes(hang), tmp_path / str(workers), settings, pool)
     one, two = (rows_of(tmp_path / name).drop_columns(["worker"]) for name in ("1", "2"))
     assert one.equals(two)
@@ -172,10 +172,10 @@ def test_a_caller_that_ends_early_leaves_nobody_at_work() -> None:
         if x[0] > 4.0:
             time.sleep(3600.0)
 
-    with WatchedPool(2, 3600.0) as pool:
+    with Pool(2, 3600.0) as pool:
         work = pool.run(Cubes(hang), chunks())
         next(work)
-        crew = [worker.process.pid for worker in pool._crew]
+        crew = _pids(pool)
         work.close()  # also workers that have only just been started
         assert not any(_alive(pid) for pid in crew if pid not in _pids(pool))
         assert_only(by_row(pool.run(Cubes(), chunks())), {})
@@ -183,22 +183,22 @@ def test_a_caller_that_ends_early_leaves_nobody_at_work() -> None:
 
 
 def test_a_worker_can_be_killed_as_soon_as_it_is_started() -> None:
-    with WatchedPool(1, LONGEST_S) as pool:
-        pool._take(Cubes())
-        worker = pool._crew[0]
-        worker.kill()  # before it has a group of its own
-        assert not worker.process.is_alive()
+    with Pool(1, LONGEST_S) as pool:
+        pool._crew.man()
+        worker = pool._crew.children[0]
+        worker.kill()
+        assert worker.process.poll() == -signal.SIGKILL
         assert_only(by_row(pool.run(Cubes(), chunks())), {})
 
 
 def test_arguments_out_of_range_are_refused() -> None:
     for workers, limit in ((0, 1.0), (1, 0.0), (1, -1.0), (1, float("nan")), (1, float("inf"))):
         with pytest.raises(ProblemError, match="is wanted"):
-            WatchedPool(workers, limit)
+            Pool(workers, limit)
 
 
-def _pids(pool: WatchedPool) -> set[int]:
-    return {worker.process.pid for worker in pool._crew}
+def _pids(pool: Pool) -> set[int]:
+    return {worker.process.pid for worker in pool._crew.children}
 
 
 def _alive(pid: int) -> bool:
