@@ -30,18 +30,10 @@ class Linkage:
     def __init__(self, winding: Winding) -> None:
         self.winding = winding
         self.slots = winding.family.slots
-        first = winding.phase == 0
         self.phase: dict[Connection, FloatArray] = {
-            "torque": self._conductors(winding.coil_weights("torque") * first),
-            "suspension": self._conductors(winding.coil_weights("suspension") * first),
+            "torque": winding.phase_conductors("torque"),
+            "suspension": winding.phase_conductors("suspension"),
         }
-
-    def _conductors(self, weight: IntArray) -> FloatArray:
-        """Net conductors along +z of phase one in each slot, (Q,), per turn of a coil."""
-        conductors = np.zeros(self.slots)
-        np.add.at(conductors, self.winding.coil_slots[:, 0], -weight)
-        np.add.at(conductors, self.winding.coil_slots[:, 1], weight)
-        return conductors
 
     def _phase_factor(self, connection: Connection, classes: IntArray) -> ComplexArray:
         """Sum over slots of conductors times exp(j 2 pi c j / Q), (c,)."""

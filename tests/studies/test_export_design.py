@@ -238,6 +238,18 @@ def test_machine_file_is_complete_and_says_what_it_is(hovergap: Run, swept: Path
     assert content["results"]["metrics"]["force_N"] == chosen.metric("force_N")
 
 
+def test_both_field_models_say_when_the_torque_current_peaks(hovergap: Run, swept: Path) -> None:
+    chosen = first_good(swept, "Q12p4s5")
+    angles = []
+    for evaluator in ("analytic", "finite_element"):
+        words = ("export", swept, chosen.design, "--evaluator", evaluator, "--output", evaluator)
+        assert hovergap(*words).exit_code == 0
+        content = json.loads((Path(evaluator) / "machine.json").read_text())
+        angles.append(content["excitation"]["torque_angle_deg"])
+    # Both follow from symmetry; the finite-element field is solved to 1e-4.
+    assert angles[0] == pytest.approx(angles[1], abs=0.01)
+
+
 @pytest.mark.parametrize("family", FAMILIES)
 def test_suspension_data_agree_with_the_metrics_and_with_symmetry(
     hovergap: Run, swept: Path, family: str

@@ -10,6 +10,7 @@ from numpy.typing import NDArray
 from evaluators.finite_element import analysis
 from evaluators.finite_element.model import FieldModel
 from evaluators.finite_element.outcome import nonlinear_force
+from evaluators.finite_element.outcome.emf import emf, phase_linkage
 from evaluators.finite_element.outcome.quantities import suspension_force
 from evaluators.finite_element.solution.lanes import LANES
 from evaluators.interface import Waveform
@@ -24,11 +25,11 @@ SHARES = np.arange(1, LANES + 1) / LANES
 
 
 def waveforms(model: FieldModel, design: Mapping[str, float]) -> tuple[Waveform, ...]:
-    """Torque, cogging torque, forces with the currents that command them, and the force curve.
+    """Torque, cogging, forces with the currents that command them, EMF, and the force curve.
 
     The force is given without suspension current and with the one that commands a mean force along
     x, and along y. That current, as ampere-turns of one coil of phase one, keeps its phase to the
-    rotor.
+    rotor. The EMF is that of the magnets alone, without currents induced in the rotor.
     """
     task = model.task
     batch = {name: np.array([float(value)]) for name, value in design.items()}
@@ -54,6 +55,7 @@ def waveforms(model: FieldModel, design: Mapping[str, float]) -> tuple[Waveform,
     command_x, command_y = (
         np.real(phasor[0] * np.exp(1j * family.pole_pairs * turn)) for phasor in phasors
     )
+    voltage = emf(phase_linkage(fields.batch, fields.unloaded), task.duty.speed)[:, 0]
 
     def over_turn(name: str, unit: str, values: FloatArray) -> Waveform:
         angle = 2.0 * np.pi * np.arange(values.size) / values.size
@@ -70,6 +72,7 @@ def waveforms(model: FieldModel, design: Mapping[str, float]) -> tuple[Waveform,
         over_turn("force along y, no suspension current", "N/m", rest.imag),
         over_turn("suspension current of phase one, commanded along x", "A turns", command_x),
         over_turn("suspension current of phase one, commanded along y", "A turns", command_y),
+        over_turn("EMF of phase one per turn of a coil", "V/m", voltage),
         *force_curve(fields, current, forward),
     )
 

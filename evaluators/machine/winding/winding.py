@@ -225,12 +225,21 @@ class Winding:
     def _slot_mmf(self, connection: Connection) -> ComplexArray:
         sequence = self.torque_sequence if connection == "torque" else self.suspension_sequence
         current = unit_phasors(-sequence * self.phase, PHASES)
-        current = current * self.coil_weights(connection)
+        array = self._in_slots(current * self.coil_weights(connection))
+        _read_only(array)
+        return array
+
+    def _in_slots(self, current: ComplexArray) -> ComplexArray:
+        """Sum of coil currents (Q,) in each slot, (Q,)."""
         array = np.zeros(self.family.slots, dtype=np.complex128)
         np.add.at(array, self.coil_slots[:, 0], -current)
         np.add.at(array, self.coil_slots[:, 1], current)
-        _read_only(array)
         return array
+
+    def phase_conductors(self, connection: Connection) -> FloatArray:
+        """Net conductors of phase one along +z in each slot for one turn per coil, (Q,)."""
+        first = self.coil_weights(connection) * (self.phase == 0)
+        return self._in_slots(first.astype(np.complex128)).real
 
     @cached_property
     def torque_slot_mmf(self) -> ComplexArray:

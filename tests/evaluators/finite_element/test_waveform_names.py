@@ -8,7 +8,7 @@ from evaluators.analytic.evaluator import AnalyticEvaluator
 from evaluators.finite_element.evaluator import FiniteElementEvaluator
 
 
-def test_torque_force_and_command_are_named_alike() -> None:
+def test_torque_force_command_and_emf_are_named_alike() -> None:
     task = machines.task(12, 4, 5)
     design = {name: float(values[0]) for name, values in machines.designs().items()}
     analytic = {wave.name: wave.unit for wave in AnalyticEvaluator(task).waveforms(design)}
@@ -16,7 +16,7 @@ def test_torque_force_and_command_are_named_alike() -> None:
     shared = {
         name: unit
         for name, unit in analytic.items()
-        if name.startswith(("torque", "cogging", "force", "suspension"))
+        if name.startswith(("torque", "cogging", "force", "suspension", "EMF"))
     }
-    assert len(shared) >= 10
+    assert len(shared) >= 11
     assert shared.items() <= finite.items()
