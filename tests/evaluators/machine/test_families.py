@@ -6,6 +6,7 @@ import itertools
 
 import numpy as np
 import pytest
+from outside import OutsideChecks
 
 from evaluators.machine.winding.families import (
     SUSPENSION_FACTOR_MINIMUM,
@@ -20,6 +21,9 @@ from evaluators.machine.winding.winding import Winding
 
 SLOTS = (6, 9, 12, 15, 18, 24, 30, 36)
 
+check = OutsideChecks("winding")
+SEARCH = {"absolute": 1e-9, "why": "rounding of sums of phasors"}
+
 
 def feasible(slots: tuple[int, ...], pole_pairs: range) -> list[Winding]:
     return [w for w in enumerate_families(slots, pole_pairs) if isinstance(w, Winding)]
@@ -27,11 +31,20 @@ def feasible(slots: tuple[int, ...], pole_pairs: range) -> list[Winding]:
 
 @pytest.mark.parametrize(("numbers"), [(6, 2, 1), (12, 4, 5)])
 def test_known_tooth_coil_families(numbers: tuple[int, int, int]) -> None:
-    # Common practice: two slots per three poles are wound on single teeth, k_w = sin 60 degrees.
     winding = design_winding(*numbers)
-    assert winding.family.coil_pitch == 1
-    assert winding.torque_winding_factor == pytest.approx(np.sqrt(3) / 2, abs=1e-12)
     assert winding.residual_voltage == 0.0
+    source = "common practice: tooth coils of k_w = sin 60°"
+    check.same(
+        "coil pitch of three slots for two poles", winding.family.coil_pitch, 1, source=source
+    )
+    check(
+        "torque factor of the tooth coils found",
+        winding.torque_winding_factor,
+        np.sqrt(3) / 2,
+        absolute=1e-12,
+        why="rounding",
+        source=source,
+    )
 
 
 def test_enumeration_finds_what_the_conditions_leave() -> None:
@@ -43,7 +56,12 @@ def test_enumeration_finds_what_the_conditions_leave() -> None:
         for q in (6, 12, 18, 24, 30, 36)
         for p in (1, 2, 4, 5, 7, 8)
     ]
-    assert [w.family.id for w in found] == expected
+    check.same(
+        "families found up to 36 slots and 8 pole pairs",
+        [w.family.id for w in found],
+        expected,
+        source="counted by hand: 6 divides Q, 3 does not divide p, ps = p ± 1 not divided by 3",
+    )
     assert len(found) == 36
     for winding in found:
         check_winding(winding)
@@ -137,7 +155,13 @@ def test_no_split_of_a_phase_beats_the_star(slots: int, pole_pairs: int) -> None
     at_ps = np.abs(splits @ np.exp(2j * np.pi * ps * coils / slots))
     best = at_ps[np.abs(at_p) < 1e-9].max() / coils.size
     best *= abs(np.sin(np.pi * ps * winding.family.coil_pitch / slots))
-    assert winding.suspension_winding_factor == pytest.approx(best, abs=1e-9)
+    check(
+        "suspension factor against every split of the phases",
+        winding.suspension_winding_factor,
+        best,
+        **SEARCH,
+        source="brute force over all equal halves of equal torque EMF",
+    )
 
 
 def symmetrical_windings(numbers: tuple[int, int, int]) -> tuple[np.ndarray, np.ndarray]:
@@ -173,9 +197,14 @@ def test_no_assignment_of_equal_torque_beats_the_star(numbers: tuple[int, int, i
     winding = design_winding(*numbers)
     torque, suspension = symmetrical_windings(numbers)
     at_p, at_ps = reach(numbers[1], winding), reach(numbers[2], winding)
-    assert winding.torque_winding_factor == pytest.approx(torque.max() * at_p, abs=1e-9)
     best = suspension[torque > torque.max() - 1e-9].max()
-    assert winding.suspension_winding_factor == pytest.approx(best * at_ps, abs=1e-9)
+    check(
+        "both factors against every symmetrical winding",
+        [winding.torque_winding_factor, winding.suspension_winding_factor],
+        [torque.max() * at_p, best * at_ps],
+        **SEARCH,
+        source="brute force over all assignments of coils to phases and groups",
+    )
 
 
 @pytest.mark.parametrize(
@@ -192,7 +221,14 @@ def test_what_less_torque_would_buy(numbers: tuple[int, int, int], better: float
         enough = torque * at_p >= TORQUE_FACTOR_MINIMUM
         best = max(best, float(at_ps * suspension[enough].max(initial=0.0)))
     expected = winding.suspension_winding_factor if better is None else better
-    assert best == pytest.approx(expected, abs=6e-7)  # six printed decimals
+    check(
+        "suspension factor that less torque would buy",
+        best,
+        expected,
+        absolute=6e-7,
+        why="six printed decimals",
+        source="brute force over all assignments and pitches",
+    )
 
 
 def test_checks_catch_broken_layouts() -> None:
@@ -242,7 +278,14 @@ def test_residual_voltage_by_hand() -> None:
     # Order 3p differs by 1 - exp(j 90 deg), times the pitch factors' ratio, over 3.
     third = np.sqrt(2) / abs(1 + np.exp(1j * np.pi / 6)) / 3 * abs(np.sin(15 * np.pi / 12))
     third /= abs(np.sin(5 * np.pi / 12))
-    assert bad.residual_voltage == pytest.approx(max(ratio, third), rel=1e-9)
+    check(
+        "residual voltage of facing groups, 12 slots and 10 poles",
+        bad.residual_voltage,
+        max(ratio, third),
+        relative=1e-9,
+        why="rounding",
+        source="phasors of two coils by hand",
+    )
 
 
 def test_residual_voltage_looks_at_all_magnet_orders() -> None:
@@ -255,9 +298,15 @@ def test_residual_voltage_looks_at_all_magnet_orders() -> None:
     group = good.group.copy()
     group[[0, 13]] = group[[13, 0]]
     bad = Winding(good.family, good.phase, group, good.sense)
-    distribution = 0.957662  # q = 4, handbook (Pyrhonen et al., 2014, ch. 2; from memory)
-    expected = 4 * np.sin(np.radians(22.5)) / 3 / (8 * distribution * 0.5)
-    assert bad.residual_voltage == pytest.approx(expected, rel=1e-6)  # digits of the handbook
+    distribution = 0.957662  # q = 4
+    check(
+        "residual voltage of two coils exchanged, third magnet order",
+        bad.residual_voltage,
+        4 * np.sin(np.radians(22.5)) / 3 / (8 * distribution * 0.5),
+        relative=1e-6,
+        why="digits of the handbook",
+        source="by hand, with the factor of q = 4 of Pyrhonen et al., 2014, ch. 2 (from memory)",
+    )
 
 
 def test_large_windings_are_designed_quickly_and_alike() -> None:

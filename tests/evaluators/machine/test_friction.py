@@ -6,6 +6,7 @@ import math
 
 import numpy as np
 import pytest
+from outside import OutsideChecks
 from scipy.integrate import solve_bvp
 
 from evaluators.machine.losses.friction import (
@@ -19,6 +20,11 @@ from evaluators.machine.losses.friction import (
 
 RHO, MU = 1.2, 1.8e-5
 RPM = math.pi / 30.0
+
+check = OutsideChecks("losses")
+GAP = "own evaluation of Bilgen, Boulos 1973 (from memory)"
+DISC = "own evaluation of Daily, Nece, J. Basic Eng. 82, 1960 (from memory)"
+PRINTED = {"relative": 5e-6, "why": "printed digits"}
 
 # Radius, length, gap in mm, speed in 1/min; Reynolds number, exact laminar power, Bilgen and
 # Boulos' power, Wendt's power (1933, as in Lathrop, Swinney) in W. Own evaluation.
@@ -40,11 +46,24 @@ def test_worked_gaps(
     assert gap_reynolds(r, gap, w, RHO, MU) == pytest.approx(re, rel=1e-6)  # printed digits
     coefficient = gap_torque_coefficient(re, gap / r)
     power = 0.5 * coefficient * math.pi * RHO * w**3 * r**4 * length
-    assert power == pytest.approx(bilgen, rel=5e-6)
+    check("friction of the gap by its torque coefficient", power, bilgen, **PRINTED, source=GAP)
     if laminar is not None:
-        assert laminar_gap_power(r, gap, length, w, MU) == pytest.approx(laminar, rel=5e-6)
+        check(
+            "friction of a laminar gap",
+            laminar_gap_power(r, gap, length, w, MU),
+            laminar,
+            **PRINTED,
+            source="own evaluation of Couette's flow between cylinders",
+        )
     if wendt is not None:
-        assert power == pytest.approx(wendt, rel=0.10)  # correlation against correlation
+        check(
+            "friction of a turbulent gap, another correlation",
+            power,
+            wendt,
+            relative=0.10,
+            why="correlation against correlation",
+            source="Wendt 1933, as in Lathrop, Swinney; own evaluation",
+        )
     whole = gap_power(r, gap, length, w, RHO, MU)
     assert whole == pytest.approx(max(bilgen, laminar or 0.0), rel=5e-6)
 
@@ -57,9 +76,14 @@ def test_coefficient_is_continuous_where_the_published_ranges_meet() -> None:
         1e4: (1.03 / 1e4**0.5, 0.065 / 1e4**0.2),
     }
     for re, sides in published.items():
-        ours = gap_torque_coefficient(re, 1.0)
-        for side in sides:
-            assert ours == pytest.approx(side, rel=0.10)  # the steps of the correlation itself
+        check(
+            "torque coefficient where the published ranges meet",
+            [gap_torque_coefficient(re, 1.0)] * 2,
+            sides,
+            relative=0.10,
+            why="the steps of the correlation itself",
+            source="Bilgen, Boulos 1973 (from memory)",
+        )
     re = np.geomspace(1.0, 1e6, 200_001)
     ratio = gap_torque_coefficient(re[1:], 0.04) / gap_torque_coefficient(re[:-1], 0.04)
     step = re[1] / re[0] - 1.0
@@ -70,9 +94,14 @@ def test_slow_rotor_is_laminar() -> None:
     power = gap_power(0.025, 1e-3, 0.05, 1.0, RHO, MU)
     assert power == pytest.approx(float(laminar_gap_power(0.025, 1e-3, 0.05, 1.0, MU)), rel=1e-12)
     assert gap_power(0.025, 1e-3, 0.05, 0.0, RHO, MU) == 0.0
-    # Thin gap: plane shear flow, 2 pi R³ L mu w²/delta.
-    thin = laminar_gap_power(0.025, 1e-6, 0.05, 10.0, MU)
-    assert thin == pytest.approx(2 * math.pi * 0.025**3 * 0.05 * MU * 100.0 / 1e-6, rel=1e-4)
+    check(
+        "friction of a very thin laminar gap",
+        laminar_gap_power(0.025, 1e-6, 0.05, 10.0, MU),
+        2 * math.pi * 0.025**3 * 0.05 * MU * 100.0 / 1e-6,
+        relative=1e-4,
+        why="gap over radius is 4e-5",
+        source="plane shear flow, 2 pi R³ L mu w²/delta",
+    )
 
 
 def test_roughness_factor_multiplies() -> None:
@@ -80,8 +109,7 @@ def test_roughness_factor_multiplies() -> None:
     assert gap_power(0.025, 1e-3, 0.05, 5000.0, RHO, MU, 1.4) == pytest.approx(1.4 * smooth)
 
 
-# Daily, Nece, *J. Basic Eng.* 82, 1960 (from memory); own evaluation: radius in mm, s, 1/min, C_m,
-# power of both sides in W.
+# Radius in mm, s, 1/min, C_m, power of both sides in W.
 @pytest.mark.parametrize(("r", "s", "rpm", "coefficient", "power"), [
     (25, 0.04, 60_000, 0.00609835, 8.86346),
     (50, 0.05, 30_000, 0.00542872, 31.5608),
@@ -90,15 +118,22 @@ def test_roughness_factor_multiplies() -> None:
 def test_worked_discs(r: float, s: float, rpm: float, coefficient: float, power: float) -> None:
     r, w = r / 1e3, rpm * RPM
     re = RHO * w * r * r / MU
-    assert disc_torque_coefficient(re, s) == pytest.approx(coefficient, rel=5e-6)
-    assert disc_power(r, s * r, w, RHO, MU) == pytest.approx(power, rel=5e-6)
+    found = disc_torque_coefficient(re, s)
+    check("torque coefficient of an enclosed disc", found, coefficient, **PRINTED, source=DISC)
+    found = disc_power(r, s * r, w, RHO, MU)
+    check("friction of an enclosed disc", found, power, **PRINTED, source=DISC)
 
 
 def test_narrow_laminar_disc_is_shear_flow() -> None:
-    """Regime I is exact: both sides have the moment pi mu w R⁴/gap of a linear profile."""
     r, gap, w = 0.05, 0.2e-3, 2.0
-    moment = math.pi * MU * w * r**4 / gap
-    assert disc_power(r, gap, w, RHO, MU) == pytest.approx(moment * w, rel=1e-12)
+    check(
+        "friction of a narrow laminar disc",
+        disc_power(r, gap, w, RHO, MU),
+        math.pi * MU * w * r**4 / gap * w,
+        relative=1e-12,
+        why="the first regime is exact: rounding",
+        source="linear profile of shear on both sides, moment pi mu w R⁴/gap",
+    )
 
 
 def test_enclosed_disc_has_less_drag_than_a_free_one() -> None:
@@ -118,8 +153,14 @@ def test_enclosed_disc_has_less_drag_than_a_free_one() -> None:
     free = -2.0 * math.pi * solution.y[3, 0]  # both sides: 2 pi integral of r³ makes pi/2, twice
     assert free == pytest.approx(3.869952, rel=1e-5)
     enclosed = disc_torque_coefficient(5e4, 0.02) * math.sqrt(5e4)
-    # Housing co-rotation lowers the drag; the correlation lies 10 to 40 % below the free disc.
-    assert 0.6 < enclosed / free < 0.9
+    check.within(
+        "drag of an enclosed laminar disc over that of a free one",
+        enclosed / free,
+        0.6,
+        0.9,
+        why="gas that turns along in the housing lowers the drag by 10 to 40 %",
+        source="von Karman's equations integrated; 3.87/sqrt(Re) by Cochran 1934",
+    )
 
 
 def test_shaft_takes_away_the_middle() -> None:

@@ -5,9 +5,12 @@ from __future__ import annotations
 import numpy as np
 import pytest
 from CoolProp.CoolProp import PropsSI
+from outside import OutsideChecks
 
 from evaluators.machine.materials.gas import gas_state, vapour
 from evaluators.machine.materials.library import Gas, load
+
+check = OutsideChecks("materials", "CoolProp")
 
 
 @pytest.mark.parametrize("name", ["Air", "Helium", "Nitrogen"])
@@ -15,33 +18,51 @@ from evaluators.machine.materials.library import Gas, load
 @pytest.mark.parametrize("pressure", [2e4, 101_325.0, 5e5])
 def test_properties(name: str, temperature: float, pressure: float) -> None:
     state = gas_state(load(Gas, name), temperature, pressure)
-    for key, value, tolerance in [
-        ("D", state.density, 0.005),
-        ("V", state.viscosity, 0.012),
-        ("L", state.thermal_conductivity, 0.015),
-        ("C", state.specific_heat, 0.01),
+    for what, key, value, tolerance in [
+        ("density", "D", state.density, 0.005),
+        ("viscosity", "V", state.viscosity, 0.012),
+        ("thermal conductivity", "L", state.thermal_conductivity, 0.015),
+        ("specific heat", "C", state.specific_heat, 0.01),
     ]:
-        expected = PropsSI(key, "T", temperature + 273.15, "P", pressure, name)
-        # The fits hold to 0.8 % at one atmosphere; 5 bar changes density by 0.3 % and air's
-        # transport properties by up to 0.7 %, which an ideal gas does not know.
-        assert float(value) == pytest.approx(expected, rel=tolerance)
+        check(
+            f"{what} of air, helium and nitrogen, 0.2 to 5 bar, 0 to 150 °C",
+            value,
+            PropsSI(key, "T", temperature + 273.15, "P", pressure, name),
+            relative=tolerance,
+            why="the fits hold to 0.8 % at one atmosphere; 5 bar changes density by 0.3 % and "
+            "air's transport properties by up to 0.7 %, which an ideal gas does not know",
+        )
 
 
 def test_air_at_room_temperature() -> None:
     """CoolProp at 101325 Pa, 20 and 80 °C: density, viscosity, conductivity, Prandtl number."""
     state = gas_state(load(Gas, "Air"), [20.0, 80.0])
-    np.testing.assert_allclose(state.density, [1.204575, 0.9995154], rtol=0.01)
-    np.testing.assert_allclose(state.viscosity, [1.820568e-5, 2.100893e-5], rtol=0.01)
-    np.testing.assert_allclose(state.thermal_conductivity, [0.0258738, 0.0302253], rtol=0.01)
-    np.testing.assert_allclose(state.prandtl, [0.707956, 0.701652], rtol=0.015)  # of three fits
+    for what, found, expected in [
+        ("density", state.density, [1.204575, 0.9995154]),
+        ("viscosity", state.viscosity, [1.820568e-5, 2.100893e-5]),
+        ("thermal conductivity", state.thermal_conductivity, [0.0258738, 0.0302253]),
+    ]:
+        why = "the fits hold to 0.8 %"
+        check(f"{what} of air at one atmosphere", found, expected, relative=0.01, why=why)
+    check(
+        "Prandtl number of air at one atmosphere",
+        state.prandtl,
+        [0.707956, 0.701652],
+        relative=0.015,
+        why="of three fits",
+    )
 
 
 def test_viscosity_of_air_by_published_constants() -> None:
-    """1.716e-5 Pa s and 111 K at 273 K: White, *Viscous Fluid Flow* (from memory)."""
     kelvin = np.array([293.15, 353.15, 423.15])
-    white = 1.716e-5 * (kelvin / 273.0) ** 1.5 * (273.0 + 111.0) / (kelvin + 111.0)
-    ours = gas_state(load(Gas, "Air"), kelvin - 273.15).viscosity
-    np.testing.assert_allclose(ours, white, rtol=0.02)  # two fits of one law, 2 % stated there
+    check(
+        "viscosity of air by Sutherland's law",
+        gas_state(load(Gas, "Air"), kelvin - 273.15).viscosity,
+        1.716e-5 * (kelvin / 273.0) ** 1.5 * (273.0 + 111.0) / (kelvin + 111.0),
+        relative=0.02,
+        why="two fits of one law, 2 % stated there",
+        source="White, Viscous Fluid Flow: 1.716e-5 Pa s and 111 K at 273 K (from memory)",
+    )
 
 
 def test_shape_is_that_of_both_arguments() -> None:
@@ -72,15 +93,17 @@ def test_refrigerant_vapour_from_its_properties(fluid: str, shift: float) -> Non
         found = gas_state(gas, 60.0 + shift, pressure)
         there = ("T", 60.0 + shift + 273.15, "P", pressure, fluid)
         stated = shift == 0.0 and pressure == 2e5
-        # Exact at the stated state. Beside it viscosity follows T closely, conductivity grows a
-        # little differently in each vapour, and density misses what is not ideal.
-        for key, value, near in (
-            ("D", found.density, 0.03),
-            ("V", found.viscosity, 0.015),
-            ("L", found.thermal_conductivity, 0.045),
+        for what, key, value, near, why in (
+            ("density", "D", found.density, 0.03, "what is not ideal is missed"),
+            ("viscosity", "V", found.viscosity, 0.015, "follows T closely"),
+            ("conductivity", "L", found.thermal_conductivity, 0.045, "each grows differently"),
         ):
-            tolerance = 1e-9 if stated else near
-            assert float(value) == pytest.approx(PropsSI(key, *there), rel=tolerance)
+            expected = PropsSI(key, *there)
+            if stated:
+                assert float(value) == pytest.approx(expected, rel=1e-9)
+            else:
+                check(f"{what} of refrigerant vapour beside its stated state", value, expected,
+                      relative=near, why=why)  # fmt: skip
 
 
 def test_impossible_vapour_is_refused() -> None:

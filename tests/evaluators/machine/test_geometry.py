@@ -6,11 +6,15 @@ import machines
 import numpy as np
 import pytest
 from numpy.typing import NDArray
+from outside import OutsideChecks
 
 from evaluators.machine.geometry.cross_sections import CrossSections, batch_length, cross_sections
 
 FloatArray = NDArray[np.float64]
 TIPS = {"half-closed": 1.6, "straight": 1.0, "pointed": 0.5}
+
+check = OutsideChecks("geometry", "polygons drawn from the definition of the variables alone")
+EXACT = {"relative": 1e-12, "why": "rounding"}
 
 
 def section(numbers: machines.Numbers = (12, 4, 5), **changes: float) -> CrossSections:
@@ -58,15 +62,18 @@ def test_areas_of_slot_and_iron(numbers: machines.Numbers, span: float) -> None:
     radii, widths = tooth_profile(span, slots)
     bore, _, wedge, bottom = radii
     ring = np.pi * (bottom**2 - wedge**2) / slots
-    # Polygons of 4000 sides per edge miss 1e-7 of the area.
     body = tooth_area(wedge, bottom, radii, widths)
-    assert found.slot_area[0] == pytest.approx(ring - body, rel=1e-6)
     mouth = np.pi * (wedge**2 - bore**2) / slots - tooth_area(bore, wedge, radii, widths)
-    assert found.slot_mouth_area[0] == pytest.approx(mouth, rel=1e-6)
     whole = tooth_area(bore, bottom, radii, widths) * slots
-    assert found.teeth_area[0] == pytest.approx(whole, rel=1e-6)
     yoke = np.pi * (found.outer_radius[0] ** 2 - bottom**2)
-    assert found.stator_area[0] == pytest.approx(whole + yoke, rel=1e-6)
+    for part, area, expected in (
+        ("slot", found.slot_area[0], ring - body),
+        ("slot mouth", found.slot_mouth_area[0], mouth),
+        ("teeth", found.teeth_area[0], whole),
+        ("stator", found.stator_area[0], whole + yoke),
+    ):
+        why = "polygons of 4000 sides per edge miss 1e-7 of the area"
+        check(f"area of {part}", area, expected, relative=1e-6, why=why)
 
 
 @pytest.mark.parametrize("span", TIPS.values(), ids=TIPS.keys())
@@ -77,7 +84,7 @@ def test_shape_of_the_tip(span: float) -> None:
         ("bore_radius", "tip_radius", "wedge_radius", "slot_radius"), radii, strict=True
     ):
         assert getattr(found, name)[0] == pytest.approx(radius, rel=1e-12)
-    np.testing.assert_allclose(found.tooth_half_width(radii[None])[0], widths, rtol=1e-12)
+    check("half-widths of a tooth", found.tooth_half_width(radii[None])[0], widths, **EXACT)
     # Half-way down the wedge the wall is half-way between tip and body.
     middle = np.array([0.5 * (radii[1] + radii[2])])
     assert found.tooth_half_width(middle)[0] == pytest.approx(0.5 * (widths[1] + widths[2]))
@@ -86,7 +93,7 @@ def test_shape_of_the_tip(span: float) -> None:
     # The opening as a chord between the corners of neighbouring tips.
     corner = radii[0] * np.exp(1j * np.arcsin(widths[0] / radii[0]))
     next_corner = np.conj(corner) * np.exp(2j * np.pi / 12)
-    assert found.slot_opening[0] == pytest.approx(abs(next_corner - corner), rel=1e-12)
+    check("slot opening as a chord", found.slot_opening[0], abs(next_corner - corner), **EXACT)
 
 
 def test_tip_span_closes_the_slot_in_proportion() -> None:

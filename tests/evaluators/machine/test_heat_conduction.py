@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
+from outside import OutsideChecks
 from scipy.sparse import diags, identity, kron
 from scipy.sparse.linalg import spsolve
 
@@ -16,34 +17,83 @@ from evaluators.machine.thermal.conduction import (
     rib_efficiency,
 )
 
+check = OutsideChecks("heat", "Fourier's law, closed form; own evaluation")
+TORSION = "torsion of a square bar: Timoshenko, Goodier, Theory of Elasticity"
+
 
 def test_closed_forms() -> None:
-    """Recomputed from Fourier's law; the digits printed are the tolerance."""
-    assert heated_cylinder_rise(1e6, 0.025, 9.0) == pytest.approx(17.36111, abs=5e-6)
-    assert cylinder_resistance(0.020, 0.024, 10.0, 0.05) == pytest.approx(0.05803475, abs=5e-9)
-    # A slab of 10 mm with both faces cold: q b²/8k; the third dimension is far away.
-    assert heated_bar_peak_rise(5e5, 0.01, 1.0, 1.0) == pytest.approx(6.25, rel=1e-9)
-    # The factor of a bar of ratio 100 is 1 - 0.63/100.
-    assert heated_bar_mean_rise(5e5, 0.01, 1.0, 1.0) == pytest.approx(6.25 / 1.5, rel=0.0064)
-    # A rib of 2 mm x 50 mm, 30 mm high.
-    efficiency = rib_efficiency(50.0, 200.0, 2e-3, 0.03, 0.05)
-    assert efficiency == pytest.approx(0.9286692, abs=5e-8)
+    check(
+        "rise in the middle of a heated cylinder",
+        heated_cylinder_rise(1e6, 0.025, 9.0),
+        17.36111,
+        absolute=5e-6,
+        unit="K",
+        why="printed digits",
+    )
+    check(
+        "resistance of a hollow cylinder",
+        cylinder_resistance(0.020, 0.024, 10.0, 0.05),
+        0.05803475,
+        absolute=5e-9,
+        unit="K/W",
+        why="printed digits",
+    )
+    check(
+        "peak rise of a heated slab",
+        heated_bar_peak_rise(5e5, 0.01, 1.0, 1.0),
+        6.25,
+        relative=1e-9,
+        why="both faces cold, q b²/8k; the third dimension is a hundred times as far away",
+    )
+    check(
+        "mean rise of a heated slab",
+        heated_bar_mean_rise(5e5, 0.01, 1.0, 1.0),
+        6.25 / 1.5,
+        relative=0.0064,
+        why="the factor of a bar of ratio 100 is 1 - 0.63/100",
+    )
+    check(
+        "efficiency of a cooling rib",
+        rib_efficiency(50.0, 200.0, 2e-3, 0.03, 0.05),
+        0.9286692,
+        absolute=5e-8,
+        why="printed digits",
+        source="Incropera et al., Fundamentals of Heat and Mass Transfer, tanh(mL)/(mL) (from "
+        "memory); own evaluation",
+    )
 
 
 def test_rib_limits() -> None:
     """A long rib loses less at its ends, and a low one is as warm as its root."""
     assert rib_efficiency(50.0, 200.0, 2e-3, 0.03) > rib_efficiency(50.0, 200.0, 2e-3, 0.03, 0.05)
     assert rib_efficiency(50.0, 200.0, 2e-3, 1e-9) == pytest.approx(1.0, abs=1e-12)
-    # A high rib carries sqrt(2 h k t) and no more: tanh(mL)/(mL) times 2 h L.
-    high = rib_efficiency(50.0, 200.0, 2e-3, 2.0) * 2.0 * 50.0 * 2.0
-    assert high == pytest.approx(np.sqrt(2.0 * 50.0 * 200.0 * 2e-3), rel=1e-12)
+    check(
+        "heat through a high rib",
+        rib_efficiency(50.0, 200.0, 2e-3, 2.0) * 2.0 * 50.0 * 2.0,
+        np.sqrt(2.0 * 50.0 * 200.0 * 2e-3),
+        relative=1e-12,
+        why="rounding",
+        source="sqrt(2 h k t), closed form of an endless rib",
+    )
 
 
 def test_square_bar() -> None:
-    """Torsion of a square bar: middle 0.0737 and mean 0.0351 of q a²/k (Timoshenko, Goodier)."""
-    assert heated_bar_peak_rise(1.0, 1.0, 1.0, 1.0) == pytest.approx(0.07367, abs=5e-6)
-    # The torsion constant 0.1406 over four.
-    assert heated_bar_mean_rise(1.0, 1.0, 1.0, 1.0) == pytest.approx(0.1406 / 4.0, abs=1.3e-5)
+    check(
+        "peak rise of a heated square bar, of q a²/k",
+        heated_bar_peak_rise(1.0, 1.0, 1.0, 1.0),
+        0.07367,
+        absolute=5e-6,
+        why="four printed digits",
+        source=TORSION,
+    )
+    check(
+        "mean rise of a heated square bar, of q a²/k",
+        heated_bar_mean_rise(1.0, 1.0, 1.0, 1.0),
+        0.1406 / 4.0,
+        absolute=1.3e-5,
+        why="four printed digits of the torsion constant, over four",
+        source=TORSION,
+    )
 
 
 @pytest.mark.parametrize(("width", "height"), [(1.0, 2.5), (2.0, 0.7)])
@@ -58,10 +108,13 @@ def test_bar_by_finite_differences(width: float, height: float) -> None:
 
     laplace = kron(second(x), identity(inside)) + kron(identity(inside), second(y))
     rise = spsolve(-laplace.tocsc(), np.ones(inside * inside))
-    # Of order 1/cells² each.
-    assert heated_bar_peak_rise(1.0, width, height, 1.0) == pytest.approx(rise.max(), rel=1e-3)
-    mean = rise.sum() * x * y / (width * height)
-    assert heated_bar_mean_rise(1.0, width, height, 1.0) == pytest.approx(mean, rel=2e-3)
+    source = "Poisson's equation by five-point differences"
+    why = "of order 1/60² for 60 cells"
+    peak, mean = rise.max(), rise.sum() * x * y / (width * height)
+    found = heated_bar_peak_rise(1.0, width, height, 1.0)
+    check("peak rise of heated bars", found, peak, relative=1e-3, why=why, source=source)
+    found = heated_bar_mean_rise(1.0, width, height, 1.0)
+    check("mean rise of heated bars", found, mean, relative=2e-3, why=why, source=source)
 
 
 def test_mixture_limits_and_bounds() -> None:
@@ -70,16 +123,26 @@ def test_mixture_limits_and_bounds() -> None:
     assert mixed[0] == pytest.approx(0.25, rel=1e-12)
     assert mixed[-1] == pytest.approx(394.0, rel=1e-12)
     assert np.all(np.diff(mixed) > 0.0)
-    # Wiener's bounds of any mixture: layers across and along the flow of heat.
     inner = fill[1:-1]
     across = 1.0 / (inner / 394.0 + (1.0 - inner) / 0.25)
     along = inner * 394.0 + (1.0 - inner) * 0.25
-    assert np.all(mixed[1:-1] > across)
-    assert np.all(mixed[1:-1] < along)
+    check.within(
+        "conductivity of wires in resin between the bounds of any mixture",
+        (mixed[1:-1] - across) / (along - across),
+        0.0,
+        1.0,
+        why="hard bounds",
+        source="Wiener's bounds: layers across and along the flow of heat",
+    )
 
 
 def test_dilute_rods_by_maxwell() -> None:
-    """Few perfect rods raise the conductivity by twice their share (dipole of a cylinder)."""
     share = 1e-4
-    rise = mixture_conductivity(share, 1e9, 1.0) - 1.0
-    assert rise == pytest.approx(2.0 * share, rel=2e-4)  # next order is the share itself
+    check(
+        "conductivity that few perfect rods add",
+        mixture_conductivity(share, 1e9, 1.0) - 1.0,
+        2.0 * share,
+        relative=2e-4,
+        why="the next order is the share itself, 1e-4",
+        source="Maxwell: twice their share, dipole of a cylinder",
+    )

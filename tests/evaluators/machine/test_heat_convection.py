@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 from CoolProp.CoolProp import PropsSI
+from outside import OutsideChecks
 
 from evaluators.machine.materials.gas import GasState, gas_state
 from evaluators.machine.materials.library import Gas, load
@@ -29,29 +30,51 @@ from evaluators.machine.thermal.gap import (
 AIR = load(Gas, "Air")
 WARM = gas_state(AIR, 80.0)
 
+check = OutsideChecks("heat")
+
 
 def test_laminar_gap_is_conduction() -> None:
-    """Two walls of Nu = 2 in series are a layer of gas as thick as the gap, exactly."""
     radius, gap, length = 0.025, 1e-4, 0.05
     wall = gap_coefficient(radius, gap, 50.0, WARM) * 2.0 * np.pi * (radius + 0.5 * gap) * length
     conduction = 1.0 / cylinder_resistance(radius, radius + gap, WARM.thermal_conductivity, length)
-    # The mean radius stands for the logarithm: (gap/radius)²/12.
-    assert 0.5 * float(wall) == pytest.approx(float(conduction), rel=2e-6)
+    check(
+        "heat across a laminar gap",
+        0.5 * float(wall),
+        float(conduction),
+        relative=2e-6,
+        why="the mean radius stands for the logarithm: (gap/radius)²/12",
+        source="two walls of Nu = 2 in series are a layer of still gas as thick as the gap",
+    )
 
 
 def test_vortices_begin_where_taylor_found_them() -> None:
-    """Re sqrt(gap/radius) = 41.2 (Taylor 1923): the Nusselt number leaves 2 near there."""
+    """The Nusselt number leaves 2 near there."""
     gap, radius = 0.5e-3, 0.05
     speed = 41.2 * WARM.viscosity / WARM.density / np.sqrt(gap / radius) / (radius * gap)
     onset = taylor_squared(radius, gap, speed, WARM.density, WARM.viscosity)
-    # The Reynolds number stands on the rotor, the Taylor number on the mean radius: gap/2 radius.
-    assert float(onset) == pytest.approx(VORTEX_ONSET, rel=0.006)
+    check(
+        "square of the Taylor number where vortices begin",
+        VORTEX_ONSET,
+        float(onset),
+        relative=0.006,
+        why="the Reynolds number stands on the rotor, the Taylor number on the mean radius: "
+        "gap/(2 radius)",
+        source="Taylor 1923: Re sqrt(gap/radius) = 41.2",
+    )
     assert becker_kaye_nusselt(VORTEX_ONSET) == 2.0
     assert becker_kaye_nusselt(2.0 * VORTEX_ONSET) > 2.3
 
 
 def test_becker_kaye_is_continuous_and_rises() -> None:
-    """Coefficients from memory; the three ranges meet within 2 percent of each other."""
+    """The three ranges meet within 2.5 percent of each other."""
+    check(
+        "Nusselt number of a gap below, above and far above the onset of vortices",
+        becker_kaye_nusselt(np.array([1e3, 3e3, 1e5])),
+        [2.0, 0.128 * 3e3**0.367, 0.409 * 1e5**0.241],
+        relative=1e-12,
+        why="rounding",
+        source="Becker, Kaye 1962 (coefficients from memory)",
+    )
     assert pytest.approx(2.0, rel=0.025) == 0.128 * VORTEX_ONSET**0.367
     assert pytest.approx(0.409 * 1e4**0.241, rel=0.02) == 0.128 * 1e4**0.367
     nusselt = becker_kaye_nusselt(np.geomspace(1.0, 1e7, 4001))
@@ -63,16 +86,27 @@ def test_blown_gap_takes_more_heat() -> None:
     still = gap_coefficient(0.02, 0.6e-3, 5000.0, WARM)
     blown = gap_coefficient(0.02, 0.6e-3, 5000.0, WARM, axial_speed=80.0)
     assert float(blown) > float(still)
-    # 0.03 Re^0.8 on twice the gap and sqrt(30² + 40²) = 50 m/s, Gazley 1958 (from memory).
     unit = GasState(*(np.asarray(value) for value in (1.0, 1e-5, 0.03, 1000.0)))
-    reynolds = 50.0 * 2e-3 / 1e-5
-    expected = 0.5 * 0.03 * reynolds**0.8
-    assert axial_flow_nusselt(1e-3, 30.0, 80.0, unit) == pytest.approx(expected, rel=1e-12)
+    reynolds = 50.0 * 2e-3 / 1e-5  # sqrt(30² + 40²) = 50 m/s
+    check(
+        "Nusselt number of a blown gap",
+        axial_flow_nusselt(1e-3, 30.0, 80.0, unit),
+        0.5 * 0.03 * reynolds**0.8,
+        relative=1e-12,
+        why="rounding",
+        source="Gazley 1958: 0.03 Re^0.8 on twice the gap (from memory)",
+    )
 
 
 def test_duct() -> None:
-    """Gnielinski at Re 1e5, Pr 0.7, f 0.0185 as the reference library ht computes it."""
-    assert gnielinski_nusselt(1e5, 0.7, 0.0185) == pytest.approx(184.0429, abs=5e-5)
+    check(
+        "Nusselt number of a turbulent duct",
+        gnielinski_nusselt(1e5, 0.7, 0.0185),
+        184.0429,
+        absolute=5e-5,
+        why="printed digits",
+        source="Gnielinski as the reference library ht computes it at Re 1e5, Pr 0.7, f 0.0185",
+    )
     assert duct_nusselt(100.0, 5.0) == 3.66
     around = duct_nusselt(np.array([2299.0, 2301.0, 3999.0, 4001.0]), 5.0)
     assert around[1] == pytest.approx(around[0], rel=0.01)
@@ -84,10 +118,18 @@ def test_duct() -> None:
 def test_liquids(glycol: bool, temperature: float) -> None:
     fluid = "INCOMP::MEG[0.5]" if glycol else "Water"
     ours = liquid(temperature, glycol)
-    # Linear between points 20 K apart; the viscosity bends most.
-    for key, value, tolerance in zip("DVLC", ours, (0.003, 0.04, 0.005, 0.005), strict=True):
-        expected = PropsSI(key, "T", temperature + 273.15, "P", 3e5, fluid)
-        assert float(value) == pytest.approx(expected, rel=tolerance)
+    names = ("density", "viscosity", "conductivity", "specific heat")
+    for what, key, value, tolerance in zip(
+        names, "DVLC", ours, (0.003, 0.04, 0.005, 0.005), strict=True
+    ):
+        check(
+            f"{what} of water and of glycol in water, 10 to 90 °C",
+            float(value),
+            PropsSI(key, "T", temperature + 273.15, "P", 3e5, fluid),
+            relative=tolerance,
+            why="linear between points 20 K apart; the viscosity bends most",
+            source="CoolProp",
+        )
 
 
 def test_jacket_by_hand() -> None:
@@ -98,7 +140,14 @@ def test_jacket_by_hand() -> None:
     reynolds, prandtl = 992.3 * speed * diameter / 6.528e-4, 6.528e-4 * 4179.0 / 0.6286
     h = gnielinski_nusselt(reynolds, prandtl) * 0.6286 / diameter
     both = 1.0 / (1.0 / h + 0.5 / (992.3 * 4179.0 * 1e-4))
-    assert frame_conductance(cooling, radius, length)[0] == pytest.approx(float(both), rel=1e-9)
+    check(
+        "heat taken by a water jacket",
+        frame_conductance(cooling, radius, length)[0],
+        float(both),
+        relative=1e-9,
+        why="rounding",
+        source="Gnielinski's film and half the warming of the water in series, by hand",
+    )
 
 
 def test_more_flow_cools_better_but_never_beyond_the_wall() -> None:
@@ -121,10 +170,16 @@ def test_forced_air() -> None:
     assert frame_conductance(plain, radius, length)[0] == pytest.approx(h * area, rel=1e-12)
     gain = frame_conductance(ribbed, radius, length)[0] / (h * area)
     assert 3.0 < gain < 1.0 + 2.0 * 20.0 / 10.0  # two flanks of 20 mm in a pitch of 10 mm
-    # Laminar plate, Pohlhausen: 0.664 sqrt(Re) Pr^(1/3), the heat-transfer form of Blasius' flow.
     reynolds = 8.0 * 0.1 * air.density / air.viscosity
     laminar = 0.664 * np.sqrt(reynolds) * np.cbrt(air.prandtl) * air.thermal_conductivity / 0.1
-    assert h >= float(laminar)
+    check.within(
+        "heat transfer of a blown plate over that of a laminar one",
+        h / float(laminar),
+        1.0,
+        np.inf,
+        why="one-sided: turbulence adds",
+        source="Pohlhausen 1921: 0.664 sqrt(Re) Pr^(1/3) (from memory)",
+    )
 
 
 def test_coefficient_is_taken_as_given() -> None:
@@ -134,9 +189,15 @@ def test_coefficient_is_taken_as_given() -> None:
 
 
 def test_end_space_and_faces() -> None:
-    """Schubert 1968 and Cobb, Saunders 1956, both from memory: values and similarity."""
-    assert end_space_coefficient(0.0, WARM, WARM) == pytest.approx(15.0)
-    assert end_space_coefficient(1.0, WARM, WARM) == pytest.approx(21.0)
+    """Values and similarity."""
+    check(
+        "heat transfer in the end space at rest and at 1 m/s",
+        [end_space_coefficient(speed, WARM, WARM) for speed in (0.0, 1.0)],
+        [15.0, 21.0],
+        relative=1e-6,
+        why="rounding",
+        source="Schubert 1968: 15 (1 + 0.4 v^0.9) W/(m² K) (from memory)",
+    )
     helium = gas_state(load(Gas, "Helium"), 80.0)
     natural = end_space_coefficient(0.0, helium, WARM) / 15.0
     assert float(natural) == pytest.approx(
@@ -144,6 +205,12 @@ def test_end_space_and_faces() -> None:
     )
     slow, fast = disc_coefficient(0.05, np.array([50.0, 5000.0]), WARM)
     reynolds = 50.0 * 0.05**2 * WARM.density / WARM.viscosity
-    expected = 0.36 * np.sqrt(reynolds) * WARM.thermal_conductivity / 0.05
-    assert slow == pytest.approx(float(expected), rel=1e-12)
+    check(
+        "heat transfer of a laminar rotating disc",
+        float(slow),
+        float(0.36 * np.sqrt(reynolds) * WARM.thermal_conductivity / 0.05),
+        relative=1e-12,
+        why="rounding",
+        source="Cobb, Saunders 1956: 0.36 sqrt(Re) (from memory)",
+    )
     assert fast > 10.0 * slow  # laminar alone would make it ten times

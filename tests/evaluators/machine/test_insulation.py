@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
+from outside import OutsideChecks
 
 from evaluators.machine.thermal.insulation import (
     CLASS_TEMPERATURE,
@@ -11,6 +12,8 @@ from evaluators.machine.thermal.insulation import (
     class_margin,
     rise_margin,
 )
+
+check = OutsideChecks("heat")
 
 
 @pytest.mark.parametrize(("letter", "temperature", "rise"), [
@@ -21,10 +24,19 @@ from evaluators.machine.thermal.insulation import (
     ("H", 180.0, 125.0),
 ])  # fmt: skip
 def test_classes(letter: str, temperature: float, rise: float) -> None:
-    assert CLASS_TEMPERATURE[letter] == temperature
-    assert RISE_LIMIT[letter] == rise
-    # Rise, ambient and an allowance for the hot spot fill the class: 5 to 15 K, common practice.
-    assert 5.0 <= temperature - 40.0 - rise <= 15.0
+    source = "IEC 60085"
+    check.same("temperatures of the classes", CLASS_TEMPERATURE[letter], temperature, source=source)
+    source = "IEC 60034-1 (A and E from memory)"
+    check.same("permitted rises of the classes", RISE_LIMIT[letter], rise, source=source)
+    check.within(
+        "what class, ambient of 40 °C and permitted rise leave for the hot spot",
+        CLASS_TEMPERATURE[letter] - 40.0 - RISE_LIMIT[letter],
+        5.0,
+        15.0,
+        unit="K",
+        why="what standards committees allow from class to class",
+        source="common practice: 5 to 15 K",
+    )
 
 
 def test_margins() -> None:

@@ -7,9 +7,12 @@ from itertools import combinations
 import numpy as np
 import pytest
 from machines import FAMILIES, Numbers
+from outside import OutsideChecks
 
 from evaluators.machine.drive.inverter import choose_turns, phase_voltage
 from evaluators.machine.winding.families import design_winding
+
+check = OutsideChecks("drive")
 
 
 def test_most_turns_that_fit() -> None:
@@ -72,5 +75,11 @@ def test_power_factor_by_time_averages() -> None:
     terminal = (e + r * i) * np.cos(angle) - x * i * np.sin(angle)
     expected = np.mean(terminal * current) / np.sqrt(np.mean(terminal**2) * np.mean(current**2))
     found = phase_voltage(e, r, x, x, i, 0.0)
-    assert found.power_factor == pytest.approx(expected, rel=1e-12)
-    assert found.torque == pytest.approx(np.sqrt(2.0 * np.mean(terminal**2)), rel=1e-12)
+    check(
+        "power factor and voltage of a phase",
+        [found.power_factor, found.torque],
+        [expected, np.sqrt(2.0 * np.mean(terminal**2))],
+        relative=1e-12,
+        why="rounding",
+        source="averages of u i, u² and i² over a period, by their definition",
+    )

@@ -9,6 +9,7 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+from outside import OutsideChecks
 
 from evaluators.machine.losses.iron import iron_loss_sine
 from evaluators.machine.materials import library as materials
@@ -17,8 +18,14 @@ from evaluators.machine.quantity import Quantity
 
 MU_0 = 4e-7 * math.pi
 
-# IEC 60404-8-4:2013 / EN 10106:2015 (from memory, except M270-35A as quoted in public text):
-# largest loss at 1.5 T and 1.0 T, 50 Hz in W/kg, smallest polarization at 2500, 5000, 10000 A/m
+check = OutsideChecks("materials")
+SHEETS = (
+    "IEC 60404-8-4:2013 / EN 10106:2015 (from memory, except M270-35A as quoted in public text)"
+)
+LIMIT = "one-sided and without tolerance: the standard guarantees limits, not typical values"
+NAME_OF_MAGNET = "name rule of IEC 60404-8-1 (from memory)"
+
+# Largest loss at 1.5 T and 1.0 T, 50 Hz in W/kg, smallest polarization at 2500, 5000, 10000 A/m
 # in T, conventional density in kg/m3.
 GRADES = {
     "M235-35A": (2.35, 0.95, (1.49, 1.60, 1.70), 7600.0),
@@ -45,22 +52,33 @@ def test_every_number_says_where_it_comes_from(kind: str, name: str) -> None:
 
 @pytest.mark.parametrize("name", GRADES)
 def test_sheets_keep_the_limits_of_their_grade(name: str) -> None:
-    """One-sided and without tolerance: the standard guarantees limits, not typical values."""
     loss_15, loss_10, polarization, density = GRADES[name]
     steel = materials.load(ElectricalSteel, name)
     total = iron_loss_sine(steel.losses, [1.5, 1.0], 50.0).total
-    assert total[0] <= loss_15
-    assert total[1] <= loss_10
+    check.within(
+        "loss of sheets over the limit of their grade, 1.5 and 1 T, 50 Hz",
+        total / [loss_15, loss_10],
+        -math.inf,
+        1.0,
+        why=LIMIT,
+        source=SHEETS,
+    )
     field = np.array([2500.0, 5000.0, 10_000.0])
     j = steel.magnetization.flux_density(field) - MU_0 * field
-    assert np.all(j >= polarization)
-    assert steel.density.value == density
+    check.within(
+        "polarization of sheets over the limit of their grade, 2.5, 5 and 10 kA/m",
+        j / polarization,
+        1.0,
+        math.inf,
+        why=LIMIT,
+        source=SHEETS,
+    )
+    check.same("conventional density of sheets", steel.density.value, density, source=SHEETS)
 
 
 @pytest.mark.parametrize("name", STEELS)
 def test_sheet_names_decode_to_thickness_and_loss(name: str) -> None:
-    """M + 100 W/kg at 1.5 T, 50 Hz - 100 mm A (EN 10027-1 style); NO + 100 mm - 100 W/kg at 1 T,
-    400 Hz (from memory of EN 10303)."""
+    """M + 100 W/kg at 1.5 T, 50 Hz - 100 mm A; NO + 100 mm - 100 W/kg at 1 T, 400 Hz."""
     steel = materials.load(ElectricalSteel, name)
     if match := re.fullmatch(r"M(\d{3})-(\d{2})A", name):
         limit, thickness = int(match[1]) / 100.0, int(match[2])
@@ -71,8 +89,14 @@ def test_sheet_names_decode_to_thickness_and_loss(name: str) -> None:
         limit, thickness = int(match[2]) / 100.0, int(match[1])
         loss = iron_loss_sine(steel.losses, 1.0, 400.0).total
     assert steel.thickness.value == pytest.approx(thickness * 1e-5, rel=1e-12)
-    assert loss <= limit
-    assert loss >= 0.75 * limit  # a sheet far below its grade would be sold as a better one
+    check.within(
+        "loss of sheets over the limit in their name",
+        loss / limit,
+        0.75,
+        1.0,
+        why="the name is a limit; a sheet far below its grade would be sold as a better one",
+        source="names of EN 10027-1 style and of EN 10303 (from memory)",
+    )
 
 
 @pytest.mark.parametrize("name", STEELS)
@@ -80,25 +104,50 @@ def test_fitted_losses_follow_the_table(name: str) -> None:
     steel = materials.load(ElectricalSteel, name)
     table = steel.loss_table.columns
     fit = iron_loss_sine(steel.losses, table["flux_density_T"], table["frequency_Hz"])
-    # The scatter of the tables is 1.5 %; a three-term law should not add much to it.
-    np.testing.assert_allclose(fit.total, table["loss_W_per_kg"], rtol=0.025)
-    assert np.all(fit.classical < table["loss_W_per_kg"])  # a lower bound of any measured total
+    check(
+        "losses by the three-term law over the table of each sheet",
+        fit.total,
+        table["loss_W_per_kg"],
+        relative=0.025,
+        why="the scatter of the tables is 1.5 %; a three-term law should not add much to it",
+        source="loss tables of the shipped sheets, with their sources in the data files",
+    )
+    check.within(
+        "classical loss over the loss in the table of each sheet",
+        fit.classical / table["loss_W_per_kg"],
+        0.0,
+        1.0,
+        why="a lower bound of any measured total",
+        source="loss tables of the shipped sheets, with their sources in the data files",
+    )
 
 
 @pytest.mark.parametrize("name", MAGNETS)
 def test_magnets_carry_the_energy_of_their_name(name: str) -> None:
-    """IEC 60404-8-1 name rule (from memory): kJ/m3 / coercivity in 10 kA/m, both at least.
-
-    (BH)max = Br²/(4 mu0 mu_rec) for a straight line that reaches half of Br.
+    """kJ/m3 / coercivity in 10 kA/m; (BH)max = Br²/(4 mu0 mu_rec) for a straight line that
+    reaches half of Br.
     """
     magnet = materials.load(Magnet, name)
     match = re.fullmatch(r"RE(?:FeB|Co) (\d+)/(\d+)", name)
     assert match
     remanence = magnet.remanence.at(20.0)
     energy = remanence**2 / (4.0 * MU_0 * magnet.recoil_permeability.value)
-    assert energy >= int(match[1]) * 1e3
-    assert energy <= int(match[1]) * 1e3 * 1.06  # else it would bear a higher name
-    assert magnet.coercivity.at(20.0) >= int(match[2]) * 1e4
+    check.within(
+        "energy product of magnets over that of their name",
+        energy / (int(match[1]) * 1e3),
+        1.0,
+        1.06,
+        why="a least value; with much more it would bear a higher name",
+        source=NAME_OF_MAGNET,
+    )
+    check.within(
+        "coercivity of magnets over that of their name",
+        magnet.coercivity.at(20.0) / (int(match[2]) * 1e4),
+        1.0,
+        math.inf,
+        why="a least value",
+        source=NAME_OF_MAGNET,
+    )
     assert magnet.knee_flux_density(20.0) < 0.5 * remanence
 
 
@@ -114,16 +163,23 @@ RANGES = {
 def test_magnets_lie_in_the_range_of_their_class(name: str) -> None:
     magnet = materials.load(Magnet, name)
     (family,) = (key for key in RANGES if key in magnet.description)
-    values = (
-        magnet.remanence.value,
-        magnet.coercivity.value / 1e3,
-        magnet.remanence.per_K * 100.0,
-        magnet.coercivity.per_K * 100.0,
-        magnet.resistivity.value * 1e6,
-        magnet.density.value / 1e3,
-    )
-    for value, (low, high) in zip(values, RANGES[family], strict=True):
-        assert low <= value <= high
+    values = {
+        "remanence": magnet.remanence.value,
+        "coercivity": magnet.coercivity.value / 1e3,
+        "change of remanence with temperature": magnet.remanence.per_K * 100.0,
+        "change of coercivity with temperature": magnet.coercivity.per_K * 100.0,
+        "resistivity": magnet.resistivity.value * 1e6,
+        "density": magnet.density.value / 1e3,
+    }
+    for (what, value), (low, high) in zip(values.items(), RANGES[family], strict=True):
+        check.within(
+            f"{what} of magnets within the range of their class (0 to 1)",
+            (value - low) / (high - low),
+            0.0,
+            1.0,
+            why="what makers offer",
+            source="ranges of public tables of makers (common practice)",
+        )
 
 
 def test_magnet_against_temperature() -> None:
@@ -146,12 +202,23 @@ def test_knee_rises_with_temperature_and_ends_the_recoil_line() -> None:
 
 def test_copper_follows_iec_60028() -> None:
     copper = materials.load(Conductor, "Copper")
-    assert copper.resistivity.at(20.0) == pytest.approx(1.0 / 58e6, rel=1e-9)
-    # 1 + 0.00393 x 100 K, exact arithmetic.
-    assert copper.resistivity.at(120.0) / copper.resistivity.at(20.0) == pytest.approx(1.393)
+    check(
+        "conductivity of copper at 20 °C and its change over 100 K",
+        [copper.resistivity.at(20.0) * 58e6, copper.resistivity.at(120.0) * 58e6],
+        [1.0, 1.393],
+        relative=1e-9,
+        why="exact by definition: 58 MS/m, 0.00393 1/K",
+        source="IEC 60028",
+    )
     assert copper.density.value == 8890.0
-    # The (235 + t) rule of IEC 60034-1 and the coefficient agree within 0.1 % here.
-    assert copper.resistivity.at(120.0) * 58e6 == pytest.approx(355.0 / 255.0, rel=1e-3)
+    check(
+        "resistance of copper at 120 °C over that at 20 °C",
+        copper.resistivity.at(120.0) * 58e6,
+        355.0 / 255.0,
+        relative=1e-3,
+        why="the rule and the coefficient are two roundings of one law",
+        source="rule of (235 + t) of IEC 60034-1",
+    )
 
 
 @pytest.mark.parametrize(("diameter", "ohm_per_m"), [
@@ -159,12 +226,18 @@ def test_copper_follows_iec_60028() -> None:
     (1.000e-3, 0.021765), (1.600e-3, 0.008502), (2.000e-3, 0.005441),
 ])  # fmt: skip
 def test_wire_resistance(diameter: float, ohm_per_m: float) -> None:
-    """Nominal resistances of IEC 60317-0-1, which uses 58.5 MS/m (from memory)."""
     copper = materials.load(Conductor, "Copper")
     area = math.pi / 4.0 * diameter**2
     ours = copper.resistivity.at(20.0) / area
-    # Half a unit of the sixth decimal, beside the 58.5 to 58 of the two standards.
-    assert ours * 58.0 / 58.5 == pytest.approx(ohm_per_m, abs=6e-7)
+    check(
+        "nominal resistance of enamelled wires",
+        ours * 58.0 / 58.5,
+        ohm_per_m,
+        absolute=6e-7,
+        unit="ohm/m",
+        why="half a unit of the sixth decimal, beside the 58.5 to 58 MS/m of the two standards",
+        source="IEC 60317-0-1 (from memory)",
+    )
 
 
 def test_strength_follows_its_table() -> None:
