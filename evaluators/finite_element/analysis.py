@@ -51,6 +51,7 @@ class StaticFields:
         N/m per m.
     added : pair of arrays (t, m, LANES), optional
         What separate magnets add to h of the suspension field, see `separate_magnets`.
+    separate : SeparateMagnets, optional
     """
 
     batch: BatchField
@@ -59,6 +60,7 @@ class StaticFields:
     small: ComplexArray
     stiffness: FloatArray
     added: tuple[ComplexArray, ComplexArray] | None = None
+    separate: SeparateMagnets | None = None
 
     @property
     def converged(self) -> BoolArray:
@@ -90,7 +92,7 @@ def solve(
     loaded = magnets.torque_field(batch, loaded, exciting.torque)
     unloaded = magnets.torque_field(batch, unloaded, np.zeros(LANES))
     small, added = magnets.suspension_field(batch, suspension, loaded)
-    return StaticFields(batch, loaded, unloaded, small, pull, added)
+    return StaticFields(batch, loaded, unloaded, small, pull, added, magnets)
 
 
 def suspension_field(batch: BatchField, equations: Equations, solution: Solution) -> ComplexArray:
@@ -106,7 +108,7 @@ class Induced:
     ----------
     loaded, small
         In place of those of `StaticFields`.
-    response : pair of arrays, see `transient.InducedSuspension`
+    added : pair of arrays, see `transient.InducedSuspension`
     magnet, sleeve : arrays (LANES,)
         Loss, W/m; that of the shaft counts with the sleeve's.
     unsettled : array (LANES,)
@@ -115,7 +117,7 @@ class Induced:
 
     loaded: Solution
     small: ComplexArray
-    response: tuple[ComplexArray, ComplexArray]
+    added: tuple[ComplexArray, ComplexArray]
     magnet: FloatArray
     sleeve: FloatArray
     unsettled: FloatArray
@@ -125,17 +127,19 @@ def induce(fields: StaticFields, exciting: Excitation) -> Induced:
     """Add the rotor's induced currents to static fields."""
     batch = fields.batch
     rotor = transient.eddy_rotor(batch, _torque(fields.loaded).real.mean(axis=0))
-    main = transient.torque_field(batch, rotor, fields.loaded, exciting.torque)
+    main = transient.torque_field(batch, rotor, fields.loaded, exciting.torque, fields.separate)
     equations = batch.equations(batch.model.suspension)
-    control = transient.suspension_field(batch, equations, rotor, main.solution.nodes)
-    loss = transient.suspension_loss(batch, equations, rotor, control.small, exciting.suspension)
+    control = transient.suspension_field(
+        batch, equations, rotor, main.solution, fields.separate, fields.added
+    )
+    loss = control.loss(exciting.suspension)
     return Induced(
         main.solution,
         control.small,
-        control.response,
-        main.magnet + loss.magnet.sum(axis=0),
-        main.sleeve + main.shaft + (loss.sleeve + loss.shaft).sum(axis=0),
-        main.unsettled,
+        control.added,
+        main.loss.magnet + loss.magnet,
+        main.loss.sleeve + main.loss.shaft + loss.sleeve + loss.shaft,
+        np.maximum(main.unsettled, control.unsettled),
     )
 
 
@@ -168,13 +172,13 @@ def evaluate(fields: StaticFields, exciting: Excitation) -> Result:
     """All quantities of the solved fields, with induced currents if the model has them."""
     batch, loaded, small = fields.batch, fields.loaded, fields.small
     model = batch.model
-    force, forward = suspension_force(batch, loaded, small, added=fields.added)
+    force, forward = suspension_force(batch, loaded, small, fields.added)
     bias: FloatArray | None = None
     induced = induce(fields, exciting) if model.discretisation.transient else None
     if induced is not None:
         still = _main(force, forward)
         loaded, small = induced.loaded, induced.small
-        force, _ = suspension_force(batch, loaded, small, induced.response)
+        force, _ = suspension_force(batch, loaded, small, induced.added)
         # The same phasor, or its conjugate, makes both forces.
         bias = np.angle(_main(force, forward) * np.conj(still))
     torque = interpolate(_torque(loaded)).real

@@ -40,7 +40,7 @@ class Discretisation:
         Whether currents are induced in the rotor.
     separate_magnets : bool
         Whether the spaces between the magnets are non-magnetic instead of magnet without
-        magnetisation; for static fields only.
+        magnetisation.
     newton : newton.Settings
     """
 
@@ -67,9 +67,6 @@ class Discretisation:
             if not low <= value <= high:
                 msg = f"{name} = {value} must lie between {low} and {high}"
                 raise ValueError(msg)
-        if self.transient and self.separate_magnets:
-            msg = "separate magnets are for the static analysis, not for the transient one"
-            raise ValueError(msg)
 
     def cells(self, slots: int) -> Resolution:
         """Cells of a slot pitch for a machine with `slots` slots."""

@@ -1,14 +1,13 @@
 """Fields with currents induced in the rotor, in the periodic steady state.
 
-The stator is solved position by position, the rotor answers frequency by frequency (`eddy.py`), and
-both must agree on the bore. Frequencies follow from the symmetry of `symmetry.py`.
+The stator is solved position by position, the rotor answers frequency by frequency
+(`rotor/answer.py`), and both must agree on the bore. Torque field: what the currents add to h on
+the bore is found by iteration with the nonlinear stator; the update takes the static answer of the
+rotor for that of the machine, which is on the safe side, since the stator only adds to it.
+Suspension field: the stator is linear, and its answer to the orders whose currents are followed is
+a small matrix at every position (`solution/admittance.py`).
 
-Torque field: what the currents add to h on the bore is found by iteration; the update takes the
-static answer of the rotor for that of the machine, which is on the safe side, since the stator
-only adds to it. Suspension field: to the factorised tangent the induced currents are a change of
-rank 2 M, M being the number of orders that induce noticeable currents, so the field follows from
-one dense system of that size at every position (Woodbury's identity; Hager, SIAM Review 31(2),
-1989). Every order is given the frequency of its mean over the positions.
+With separate magnets their static effect, which mixes orders position by position, comes on top.
 """
 
 from __future__ import annotations
@@ -19,7 +18,15 @@ import numpy as np
 from numpy.typing import NDArray
 
 from evaluators.finite_element.outcome.quantities import suspension_loads
+from evaluators.finite_element.rotor.answer import RotorAnswer
 from evaluators.finite_element.rotor.eddy import Conductors, EddyLoss, EddyRotor
+from evaluators.finite_element.rotor.harmonics import Harmonics
+from evaluators.finite_element.rotor.separate_magnets import SeparateMagnets, ring_of
+from evaluators.finite_element.solution.admittance import (
+    Load,
+    admittance,
+    source_on_both_sides,
+)
 from evaluators.finite_element.solution.batch import BatchField, Equations, Induced, Solution
 from evaluators.finite_element.solution.lanes import LANES
 
@@ -33,67 +40,19 @@ ROUNDS = 5
 SETTLED = 1e-3
 """Change of the induced part of h over h, both in the Euclidean norm, that ends the rounds."""
 
-
-@dataclass(frozen=True)
-class Harmonics:
-    """Harmonics of the torque field on the bore as the rotor sees them.
-
-    Attributes
-    ----------
-    orders : array (m,)
-    first : array (m,)
-        Each order's time dependence is exp(-j tau p angle) with tau = first - 6 i.
-    speed : array (t, m)
-        Angular speed n - tau p times that of the shaft against the rotor, rad/s; row i as in
-        `numpy.fft.fftfreq`.
-    """
-
-    orders: IntArray
-    first: IntArray
-    speed: FloatArray
-    angles: FloatArray
-    pole_pairs: int
-
-    @classmethod
-    def of(cls, batch: BatchField, solution: Solution) -> Harmonics:
-        """Harmonics of a torque field over 60 electrical degrees, up to order 4 Q."""
-        model = batch.model
-        waves = solution.waves
-        orders = waves.orders[waves.orders <= 4 * model.slots]
-        shift = int(model.symmetry.torque_shift[1])
-        factor = int(model.symmetry.torque_sign[1]) * np.exp(-1j * orders * model.pitch * shift)
-        first = np.rint(-np.angle(factor) / (np.pi / 3.0)).astype(np.int64)
-        count = waves.angles.size
-        step = np.fft.fftfreq(count, 1.0 / count).astype(np.int64)
-        turns = orders - model.pole_pairs * (first - 6 * step[:, None])
-        speed = turns * model.task.duty.speed
-        return cls(orders, first, speed, waves.angles, model.pole_pairs)
-
-    def analyse(self, values: ComplexArray) -> ComplexArray:
-        """Amplitudes (t, m, LANES) of coefficients over the positions (t, m, LANES)."""
-        return np.asarray(np.fft.fft(values * self._still, axis=0) / self.angles.size)
-
-    def synthesise(self, amplitudes: ComplexArray) -> ComplexArray:
-        """Inverse of `analyse`."""
-        return np.asarray(np.fft.ifft(amplitudes * self.angles.size, axis=0) * np.conj(self._still))
-
-    @property
-    def _still(self) -> ComplexArray:
-        turned = np.outer(self.angles, self.first * self.pole_pairs)
-        return np.asarray(np.exp(1j * turned)[:, :, None])
+SEPARATE_ROUNDS = 2
+"""Rounds of the suspension field with what separate magnets add, a hundredth of h, to its load."""
 
 
 @dataclass(frozen=True)
 class InducedTorque:
-    """Torque field with induced currents, its rotor loss (LANES,) in W/m, and what is unsettled.
+    """Torque field with induced currents, its rotor loss, and what is unsettled.
 
     `unsettled` (LANES,) is the last change of the induced part of h over h.
     """
 
     solution: Solution
-    shaft: FloatArray
-    magnet: FloatArray
-    sleeve: FloatArray
+    loss: EddyLoss
     unsettled: FloatArray
 
 
@@ -105,43 +64,68 @@ def eddy_rotor(batch: BatchField, torque: FloatArray) -> EddyRotor:
     return EddyRotor(batch.rotor, batch.reluctivity, model.discretisation.iron_rings, conductors)
 
 
+def rotor_answer(
+    batch: BatchField,
+    rotor: EddyRotor,
+    harmonics: Harmonics,
+    separate: SeparateMagnets | None = None,
+) -> RotorAnswer:
+    """Answer of a batch's rotor to the harmonics of its torque or suspension field."""
+    model = batch.model
+    filler = model.recoil if separate is None else separate.filler_permeability
+    return RotorAnswer(
+        harmonics,
+        rotor,
+        ring_of(batch, filler),
+        model.task.construction.magnet_segments,
+        model.slots,
+        batch.response[np.abs(harmonics.orders)],
+    )
+
+
 def torque_field(
-    batch: BatchField, rotor: EddyRotor, solution: Solution, ampere_turns: FloatArray
+    batch: BatchField,
+    rotor: EddyRotor,
+    solution: Solution,
+    ampere_turns: FloatArray,
+    separate: SeparateMagnets | None = None,
 ) -> InducedTorque:
-    """Add induced currents to a torque field over 60 electrical degrees."""
-    harmonics = Harmonics.of(batch, solution)
-    orders = harmonics.orders
-    count = harmonics.speed.shape[0]
-    static = batch.response[orders]
-    change = np.array([rotor.response(orders, speed) for speed in harmonics.speed]) - static
-    change[harmonics.speed == 0.0] = 0.0
-    place = slice(0, orders.size)
-    slots = batch.torque.topology.lattice.slots
-    currents = batch.torque_currents(solution.waves.angles, ampere_turns, slots)
-    induced = np.zeros((count, orders.size, LANES), dtype=np.complex128)
+    """Add induced currents to a torque field over 60 electrical degrees, orders up to 4 Q.
+
+    With separate magnets `solution` has them already.
+    """
+    angles, orders = solution.waves.angles, solution.waves.orders
+    orders = orders[orders <= 4 * batch.model.slots]
+    harmonics = Harmonics.torque(batch.model, orders, angles)
+    answer = rotor_answer(batch, rotor, harmonics, separate)
+    currents = batch.torque_currents(angles, ampere_turns, batch.torque.topology.lattice.slots)
+
+    def static(potential: ComplexArray) -> ComplexArray:
+        if separate is None:
+            return np.zeros_like(potential)
+        return np.array(
+            [
+                separate.added(float(angle), orders, a, magnets=True)
+                for angle, a in zip(angles, potential, strict=True)
+            ]
+        )
+
+    potential = solution.waves.potential[:, : orders.size]
+    added = static(potential)
     unsettled = np.full(LANES, np.inf)
     for _ in range(ROUNDS):
-        amplitude = harmonics.analyse(solution.waves.potential[:, place])
-        missing = change * amplitude - induced
-        total = np.linalg.norm(solution.waves.tangential, axis=(0, 1)) / np.sqrt(count)
+        still = static(potential)
+        turning = harmonics.analyse(added - still)
+        missing = answer.change(harmonics.analyse(potential)) - turning
+        total = np.linalg.norm(solution.waves.tangential, axis=(0, 1)) / np.sqrt(angles.size)
         unsettled = np.linalg.norm(missing, axis=(0, 1)) / total
         if np.all(unsettled <= SETTLED):
             break
-        induced = induced + missing / (1.0 + change / static)
-        added = Induced(orders, harmonics.synthesise(induced), solution.nodes)
-        solution = batch.solve(batch.torque, solution.waves.angles, currents, induced=added)
-    amplitude = harmonics.analyse(solution.waves.potential[:, place])
-    parts = [
-        rotor.loss(orders, speed, row)
-        for speed, row in zip(harmonics.speed, amplitude, strict=True)
-    ]
-    return InducedTorque(
-        solution,
-        np.sum([part.shaft.sum(axis=0) for part in parts], axis=0),
-        np.sum([part.magnet.sum(axis=0) for part in parts], axis=0),
-        np.sum([part.sleeve.sum(axis=0) for part in parts], axis=0),
-        unsettled,
-    )
+        added = still + harmonics.synthesise(turning + answer.relaxed(missing))
+        induced = Induced(orders, added, solution.nodes)
+        solution = batch.solve(batch.torque, angles, currents, induced=induced)
+        potential = solution.waves.potential[:, : orders.size]
+    return InducedTorque(solution, answer.loss(harmonics.analyse(potential)), unsettled)
 
 
 @dataclass(frozen=True)
@@ -151,41 +135,86 @@ class InducedSuspension:
     Attributes
     ----------
     small : array (t, size, LANES), complex
-    response : pair of arrays (orders + 1, LANES), complex
-        h/a of the rotor for positive and negative orders.
+    added : pair of arrays (t, m, LANES), complex
+        What currents and separate magnets add to h of the lowest m orders of either sign.
+    amplitudes : array (t, k, LANES), complex
+        Of the harmonics on the bore whose currents are followed.
+    answer : RotorAnswer
+        To these.
+    unsettled : array (LANES,)
+        See `Admittance.settle`.
     """
 
     small: ComplexArray
-    response: tuple[ComplexArray, ComplexArray]
+    added: tuple[ComplexArray, ComplexArray]
+    amplitudes: ComplexArray
+    answer: RotorAnswer
+    unsettled: FloatArray
+
+    def loss(self, ampere_turns: FloatArray) -> EddyLoss:
+        """Rotor loss (LANES,) at these ampere-turns, mean over directions of the force, W/m."""
+        return self.answer.loss(0.5 * ampere_turns * self.amplitudes)
 
 
 def suspension_field(
-    batch: BatchField, equations: Equations, rotor: EddyRotor, nodes: FloatArray
+    batch: BatchField,
+    equations: Equations,
+    rotor: EddyRotor,
+    solution: Solution,
+    separate: SeparateMagnets | None = None,
+    separate_added: tuple[ComplexArray, ComplexArray] | None = None,
 ) -> InducedSuspension:
-    """Suspension field on top of the torque field `nodes` (t, ...), currents induced.
+    """Suspension field on top of a torque field, currents induced.
 
-    A complex field varies as exp(j p angle) besides its coefficients, so that order n of either
-    sign turns against the rotor with n + p times the shaft's speed.
+    `separate_added` is what separate magnets add to h in the static field.
     """
-    model = batch.model
+    angles = solution.waves.angles
     orders = reacting_orders(batch, equations)
-    pairs, speed = model.pole_pairs, model.task.duty.speed
-    ahead = batch.response.astype(np.complex128)
-    behind = ahead.copy()
-    forwards = np.asarray((orders + pairs) * speed, dtype=np.float64)
-    ahead[orders] = rotor.response(orders, forwards)
-    moving = orders != pairs
-    backwards = np.asarray((pairs - orders[moving]) * speed, dtype=np.float64)
-    behind[orders[moving]] = rotor.response(orders[moving], backwards)
-    small = with_response(
-        batch,
-        equations,
-        nodes,
-        suspension_loads(batch),
-        orders,
-        (ahead[orders] - batch.response[orders], behind[orders] - batch.response[orders]),
+    harmonics = Harmonics.suspension(batch.model, orders, angles)
+    answer = rotor_answer(batch, rotor, harmonics, separate)
+    static = batch.response[np.abs(harmonics.orders)]
+
+    def change(potential: ComplexArray) -> ComplexArray:
+        return harmonics.synthesise(answer.change(harmonics.analyse(potential)))
+
+    def relaxed(missing: ComplexArray) -> ComplexArray:
+        return harmonics.synthesise(answer.relaxed(harmonics.analyse(missing)))
+
+    sector, bore = equations.topology.lattice.sector, equations.topology.lattice.bore
+    every = batch.gap.class_orders(sector)
+    every = every[every <= 4 * batch.model.slots]
+    nothing = np.zeros((angles.size, every.size, LANES), dtype=np.complex128)
+    plus, minus = separate_added or (nothing, nothing)
+    stator_load = suspension_loads(batch)
+    for _ in range(1 if separate is None else SEPARATE_ROUNDS):
+        loads = _with_added(batch, equations, [stator_load] * angles.size, every, plus, minus)
+        stator = admittance(batch, equations, solution.nodes, loads, orders)
+        induced, unsettled = stator.settle(change, relaxed, static)
+        ahead, behind = np.split(induced, 2, axis=1)
+        loads = _with_added(batch, equations, loads, orders, ahead, behind)
+        small = batch.perturb(equations, solution.nodes, loads)
+        total = plus.copy(), minus.copy()
+        total[0][:, : orders.size] += ahead
+        total[1][:, : orders.size] += behind
+        if separate is not None:
+            potential = batch.coefficients_both_sides(small, sector, bore, every)
+            plus, minus = (
+                np.array(part)
+                for part in zip(
+                    *(
+                        separate.added_on_both_sides(float(angle), every, ahead, behind)
+                        for angle, ahead, behind in zip(angles, *potential, strict=True)
+                    ),
+                    strict=True,
+                )
+            )
+    return InducedSuspension(
+        small,
+        total,
+        harmonics.analyse(stator.potential(induced)),
+        answer,
+        unsettled,
     )
-    return InducedSuspension(small, (ahead, behind))
 
 
 def reacting_orders(batch: BatchField, equations: Equations) -> IntArray:
@@ -194,71 +223,17 @@ def reacting_orders(batch: BatchField, equations: Equations) -> IntArray:
     return orders[orders <= batch.model.slots + batch.model.pole_pairs]
 
 
-def with_response(
+def _with_added(
     batch: BatchField,
     equations: Equations,
-    nodes: FloatArray,
-    load: tuple[FloatArray, FloatArray],
+    loads: list[Load],
     orders: IntArray,
-    change: tuple[ComplexArray, ComplexArray],
-) -> ComplexArray:
-    """Small complex fields on a rotor whose response differs from the static one by `change`.
-
-    `change` holds arrays (m, LANES) for positive and negative `orders`; `load` is real and
-    imaginary part of the right-hand side, the same at all positions.
-    """
-    lattice = equations.topology.lattice
-    sector = lattice.sector
-    slot_angles = -batch.model.pitch * np.arange(lattice.slots, dtype=np.float64)
-    # The right-hand side of a source s_n is -2 pi (conj(w) s_n + conj of it), hence s = -1/(4 pi)
-    # and s = -j/(4 pi) make real and minus the imaginary part of conj(w).
-    loads = []
-    for k in range(orders.size):
-        for unit in (1.0, 1j):
-            source = np.zeros((1, LANES), dtype=np.complex128)
-            source[:] = -unit / (4.0 * np.pi)
-            column = np.zeros((equations.topology.size, LANES))
-            column[lattice.bore] = batch.gap.source_load(source, orders[k : k + 1], slot_angles)
-            loads.append(column)
-    solved = np.empty((len(nodes), equations.topology.size, LANES), dtype=np.complex128)
-    solve = equations.solver.solve
-    strength = np.concatenate(change)  # positive orders, then negative ones
-    identity = np.eye(2 * orders.size)
-    for t in range(len(nodes)):
-        batch.factorise_at(equations, nodes[t])
-        small = solve(load[0]) + 1j * solve(load[1])
-        columns = np.array([solve(column) for column in loads])
-        real, imag = columns[0::2], columns[1::2]  # (m, size, LANES)
-        # K^-1 conj(w) and K^-1 w.
-        answers = np.concatenate([real - 1j * imag, real + 1j * imag])
-        before = np.concatenate(
-            batch.coefficients_both_sides(small[None], sector, lattice.bore, orders), axis=1
-        )[0]
-        matrix = np.concatenate(
-            batch.coefficients_both_sides(answers, sector, lattice.bore, orders), axis=1
-        )  # (2 m causes, 2 m orders, LANES)
-        matrix = 2.0 * np.pi * matrix.transpose(2, 1, 0) * strength.T[:, None, :]
-        after = np.linalg.solve(identity + matrix, before.T[:, :, None])[:, :, 0]
-        solved[t] = small - 2.0 * np.pi * np.einsum("mnl,ml->nl", answers, strength * after.T)
-    return solved
-
-
-def suspension_loss(
-    batch: BatchField,
-    equations: Equations,
-    rotor: EddyRotor,
-    small: ComplexArray,
-    ampere_turns: FloatArray,
-) -> EddyLoss:
-    """Rotor loss of the mean suspension field over the positions, (m, LANES), W/m."""
-    model = batch.model
-    lattice = equations.topology.lattice
-    orders = reacting_orders(batch, equations)
-    plus, minus = batch.coefficients_both_sides(
-        small.mean(axis=0, keepdims=True), lattice.sector, lattice.bore, orders
-    )
-    signed = np.concatenate([orders, orders])
-    speed = np.concatenate([orders + model.pole_pairs, orders - model.pole_pairs])
-    moving = speed != 0
-    amplitude = 0.5 * ampere_turns * np.concatenate([plus[0], minus[0]])
-    return rotor.loss(signed[moving], speed[moving] * model.task.duty.speed, amplitude[moving])
+    plus: ComplexArray,
+    minus: ComplexArray,
+) -> list[Load]:
+    """Right-hand sides with added h (t, m, LANES) of positive and negative `orders`."""
+    result = []
+    for load, ahead, behind in zip(loads, plus, minus, strict=True):
+        real, imag = source_on_both_sides(batch, equations, orders, ahead, behind)
+        result.append((load[0] + real, load[1] + imag))
+    return result

@@ -52,15 +52,13 @@ def force_parts(
     batch: BatchField,
     solution: Solution,
     small: ComplexArray,
-    response: tuple[ComplexArray, ComplexArray] | None = None,
     added: tuple[ComplexArray, ComplexArray] | None = None,
 ) -> tuple[ComplexArray, ComplexArray, ComplexArray]:
     """Force at the positions of a torque field: rest, direct and mirrored as in `Force`.
 
     `small` (t, size, LANES) is the field of the complex slot currents `suspension_slot_mmf` of one
-    ampere-turn on the sector of the suspension field. `response` is h/a of the rotor for positive
-    and for negative orders (orders + 1, LANES) if currents are induced; `added` (t, m, LANES) is
-    what else belongs to h of the lowest m orders of either sign.
+    ampere-turn on the sector of the suspension field. `added` (t, m, LANES) is what induced
+    currents and separate magnets add to h of the lowest m orders of either sign.
     """
     model = batch.model
     radius = batch.sections.bore_radius
@@ -77,9 +75,8 @@ def force_parts(
     plus, minus = batch.coefficients_both_sides(
         small, sector, model.suspension.lattice.bore, orders
     )
-    static = batch.response.astype(np.complex128)
-    ahead, behind = (item[orders] for item in (response or (static, static)))
-    tangential, tangential_minus = ahead * plus, behind * minus
+    static = batch.response[orders]
+    tangential, tangential_minus = static * plus, static * minus
     if added is not None:
         count = added[0].shape[1]
         tangential[:, :count] += added[0]
@@ -109,14 +106,13 @@ def suspension_force(
     batch: BatchField,
     solution: Solution,
     small: ComplexArray,
-    response: tuple[ComplexArray, ComplexArray] | None = None,
     added: tuple[ComplexArray, ComplexArray] | None = None,
 ) -> tuple[Force, bool]:
     """Force over the whole turn, see `force_parts`.
 
     Also tells whether the mean force follows the phasor (True) or its conjugate.
     """
-    force = whole_turn(batch, *force_parts(batch, solution, small, response, added))
+    force = whole_turn(batch, *force_parts(batch, solution, small, added))
     family = batch.model.task.winding.family
     return force, family.suspension_pole_pairs > family.pole_pairs
 

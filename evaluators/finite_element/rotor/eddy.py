@@ -6,8 +6,8 @@ answers with a complex h_n = y_n(w) a_n instead of the static y_n: this is the p
 state, without stepping through the transient that leads to it. Sleeve and shaft are closed rings.
 The magnets are separate conductors without net current: the mean of exp(j n phi) over a segment
 of angle alpha is sinc(n alpha/2), and what is left, 1 - sinc^2, is the share of the conductivity
-that acts back on its own order (see `evaluators.machine.losses.eddy`). The mixing of orders by
-the segments is left out.
+that acts back on its own order (see `evaluators.machine.losses.eddy`). That the segments mix the
+orders is left out here; `conducting_magnets.py` has it.
 
 Rings are cut into layers of constant n^2 + j w mu sigma r^2, exact for a thin layer; the error
 falls with the square of the layers' thickness.
@@ -15,6 +15,7 @@ falls with the square of the layers' thickness.
 
 from __future__ import annotations
 
+from collections.abc import Iterable, Iterator
 from dataclasses import dataclass
 
 import numpy as np
@@ -70,10 +71,19 @@ class Conductors:
             length=length,
         )
 
+    def end_factor(self, order: FloatArray, rotor: Rotor) -> FloatArray:
+        """Share of the magnets' conductivity that their short pieces leave to an order, (..., n).
+
+        That of a block whose width gives the same loss in a uniform field.
+        """
+        piece = np.minimum(self.segment_length, self.length)
+        share = segment_share(order, self.segment_angle)
+        return block_length_factor(piece / (np.sqrt(12.0 * share) * rotor.magnet_radius / order))
+
 
 @dataclass(frozen=True)
 class EddyLoss:
-    """Loss of the rotor's parts per harmonic, (m, n), W/m."""
+    """Loss of the rotor's parts, (n,) or per harmonic (m, n), W/m."""
 
     shaft: FloatArray
     magnet: FloatArray
@@ -83,6 +93,27 @@ class EddyLoss:
     def total(self) -> FloatArray:
         """Sum of the parts."""
         return self.shaft + self.magnet + self.sleeve
+
+
+_Ring = tuple[ComplexArray, ComplexArray]
+"""Layer of constant root = sqrt(n^2 + j w mu sigma r^2): nu root, and exp(-root width)."""
+
+
+def _cut(
+    n: FloatArray,
+    w: FloatArray,
+    inner: FloatArray,
+    outer: FloatArray,
+    nu: FloatArray | float,
+    sigma: FloatArray | float,
+    count: int = LAYERS,
+) -> Iterator[_Ring]:
+    """Layers of equal width = ln(outer/inner)/count, from the inside."""
+    width = np.log(outer / inner) / count
+    for k in range(count):
+        square = inner**2 * np.exp(2.0 * width * (k + 0.5))
+        root = np.sqrt(n**2 + 1j * w * sigma * square / nu)
+        yield np.asarray(nu * root), np.asarray(np.exp(-root * width))
 
 
 @dataclass(frozen=True)
@@ -152,25 +183,11 @@ class EddyRotor:
         rotor, conductors = self.rotor, self.conductors
         n = np.abs(np.asarray(orders, dtype=np.float64))[:, None]
         w = np.asarray(speed, dtype=np.float64)[:, None]
-        last = self.shaft_rings - 1
         y = self._shaft(n, w)
-        shaft = y
         layers: list[_Layer] = []
 
-        def through(
-            y: ComplexArray,
-            inner: FloatArray,
-            outer: FloatArray,
-            nu: FloatArray | float,
-            sigma: FloatArray | float,
-            count: int,
-        ) -> ComplexArray:
-            width = np.log(outer / inner) / count
-            for k in range(count):
-                square = inner**2 * np.exp(2.0 * width * (k + 0.5))
-                root = np.sqrt(n**2 + 1j * w * sigma * square / nu)
-                stiffness = nu * root
-                x = np.exp(-root * width)
+        def through(y: ComplexArray, rings: Iterable[_Ring]) -> ComplexArray:
+            for stiffness, x in rings:
                 t = (1.0 - x * x) / (1.0 + x * x)
                 # a inside over a outside: 1/(cosh + y/stiffness sinh).
                 passing = 2.0 * x / ((1.0 + x * x) + y / stiffness * (1.0 - x * x))
@@ -178,41 +195,58 @@ class EddyRotor:
                 layers.append(_Layer(y, passing))
             return y
 
-        cores = len(rotor.iron_radius) - self.shaft_rings
-        for ring in range(last + 1, last + 1 + cores):
-            y = through(
-                y,
-                rotor.iron_radius[ring - 1],
-                rotor.iron_radius[ring],
-                self.reluctivity[ring],
-                0.0,
-                1,
-            )
+        shaft = y
+        y = through(y, self._core_rings(n, w))
         share = segment_share(n, conductors.segment_angle)
-        piece = np.minimum(conductors.segment_length, conductors.length)
-        width = np.sqrt(12.0 * share) * rotor.magnet_radius / n
-        magnet = (
-            conductors.magnet * share * conductors.coverage * block_length_factor(piece / width)
+        magnet = conductors.magnet * share * conductors.coverage * conductors.end_factor(n, rotor)
+        nu = NU_0 / rotor.magnet_permeability
+        through(
+            through(y, _cut(n, w, rotor.iron_radius[-1], rotor.magnet_radius, nu, magnet)),
+            self._outer_rings(n, w),
         )
-        y = through(
-            y,
-            rotor.iron_radius[-1],
-            rotor.magnet_radius,
-            NU_0 / rotor.magnet_permeability,
-            magnet,
-            LAYERS,
-        )
-        sleeve = conductors.sleeve * ring_length_factor(n, conductors.length, rotor.sleeve_radius)
-        y = through(
-            y,
-            rotor.magnet_radius,
-            rotor.sleeve_radius,
-            NU_0 / rotor.sleeve_permeability,
-            sleeve,
-            LAYERS,
-        )
-        y = through(y, rotor.sleeve_radius, rotor.bore_radius, NU_0, 0.0, 1)
         return _March(layers, shaft)
+
+    def _core_rings(self, n: FloatArray, w: FloatArray) -> Iterator[_Ring]:
+        radius = self.rotor.iron_radius
+        for ring in range(self.shaft_rings, len(radius)):
+            yield from _cut(n, w, radius[ring - 1], radius[ring], self.reluctivity[ring], 0.0, 1)
+
+    def _outer_rings(self, n: FloatArray, w: FloatArray) -> Iterator[_Ring]:
+        rotor, conductors = self.rotor, self.conductors
+        sigma = conductors.sleeve * ring_length_factor(n, conductors.length, rotor.sleeve_radius)
+        nu = NU_0 / rotor.sleeve_permeability
+        yield from _cut(n, w, rotor.magnet_radius, rotor.sleeve_radius, nu, sigma)
+        yield from _cut(n, w, rotor.sleeve_radius, rotor.bore_radius, NU_0, 0.0, 1)
+
+    def core(self, order: FloatArray, speed: FloatArray) -> ComplexArray:
+        """h/a at the outside of the core, (..., n), for positive `order` and `speed` (..., 1)."""
+        y = self._shaft(order, speed)
+        for stiffness, x in self._core_rings(order, speed):
+            t = (1.0 - x * x) / (1.0 + x * x)
+            y = np.asarray(stiffness * (y + stiffness * t) / (stiffness + y * t))
+        return y
+
+    def outside(
+        self, order: FloatArray, speed: FloatArray
+    ) -> tuple[ComplexArray, ComplexArray, ComplexArray]:
+        """Sleeve and clearance as a two-port between magnets and bore, for `order`, `speed`.
+
+        Returns
+        -------
+        inner, mutual, outer : arrays (..., n)
+            -h on the magnets is inner a + mutual a_bore, h on the bore mutual a + outer a_bore.
+        """
+        inner = mutual = outer = np.zeros((), dtype=np.complex128)
+        for number, (stiffness, x) in enumerate(self._outer_rings(order, speed)):
+            own = stiffness * (1.0 + x * x) / (1.0 - x * x)
+            across = -2.0 * stiffness * x / (1.0 - x * x)
+            if number == 0:
+                inner, mutual, outer = own, across, own
+                continue
+            joint = outer + own
+            inner = inner - mutual * mutual / joint
+            mutual, outer = -mutual * across / joint, own - across * across / joint
+        return inner, mutual, outer
 
     def _shaft(self, n: FloatArray, w: FloatArray) -> ComplexArray:
         """h/a at the surface of the solid shaft: nu z I_n'(z)/I_n(z), z = r sqrt(j w sigma/nu).

@@ -99,17 +99,23 @@ def at_bore(
     return y, source
 
 
+def ring_reluctivity(ring: Ring, orders: IntArray, magnet: float) -> tuple[FloatArray, FloatArray]:
+    """N and the inverse of M, (n, m, m) m/H, for magnets of reluctivity `magnet`."""
+    filler = NU_0 / ring.filler_permeability
+    apart = orders[:, None] - orders[None, :]
+    half = 0.5 * np.pi / ring.pole_pairs * ring.arc_ratio[:, None, None]
+    share = ring.arc_ratio[:, None, None] * np.sinc(apart * half / np.pi)
+    eye = np.eye(orders.size)
+    inverse = eye / filler + (1.0 / magnet - 1.0 / filler) * share
+    return filler * eye + (magnet - filler) * share, np.asarray(np.linalg.inv(inverse))
+
+
 def _ring_matrix(ring: Ring, orders: IntArray, magnet_permeability: float) -> ComplexArray:
     """Matrix (n, 2 m + 1, 2 m + 1) of the ring's equations for (a, h, r)."""
-    n, pairs = orders, ring.pole_pairs
-    count = n.size
-    magnet, filler = NU_0 / magnet_permeability, NU_0 / ring.filler_permeability
-    apart = n[:, None] - n[None, :]
-    half = 0.5 * np.pi / pairs * ring.arc_ratio[:, None, None]
-    share = ring.arc_ratio[:, None, None] * np.sinc(apart * half / np.pi)
-    eye = np.eye(count)
-    along = np.linalg.inv(filler * eye + (magnet - filler) * share)
-    across = np.linalg.inv(eye / filler + (1.0 / magnet - 1.0 / filler) * share)
+    n, count = orders, orders.size
+    magnet = NU_0 / magnet_permeability
+    uneven, across = ring_reluctivity(ring, orders, magnet)
+    along = np.linalg.inv(uneven)
     radial = np.zeros((ring.arc_ratio.size, count), dtype=np.complex128)
     tangential = np.zeros_like(radial)
     place = np.searchsorted(ring.magnet_orders, np.abs(n))
@@ -134,6 +140,18 @@ def _diagonal(values: FloatArray) -> FloatArray:
     return np.asarray(values[:, :, None] * np.eye(values.shape[1]))
 
 
+def ring_of(batch: BatchField, filler_permeability: float) -> Ring:
+    """Magnets of a batch."""
+    return Ring(
+        batch.sections.magnet_arc_ratio,
+        batch.model.pole_pairs,
+        filler_permeability,
+        batch.model.magnet_orders,
+        batch.remanence[0],
+        batch.remanence[1],
+    )
+
+
 class SeparateMagnets:
     """What separate magnets add to h on the bore of a batch.
 
@@ -148,17 +166,11 @@ class SeparateMagnets:
     def __init__(self, batch: BatchField, filler_permeability: float = 1.0) -> None:
         model = batch.model
         pairs, self.highest = model.pole_pairs, 4 * model.slots
+        self.filler_permeability = filler_permeability
         size = 2 * self.highest + 1
         self.response = np.zeros((LANES, size, size), dtype=np.complex128)
         self.source = np.zeros((LANES, size), dtype=np.complex128)
-        ring = Ring(
-            batch.sections.magnet_arc_ratio,
-            pairs,
-            filler_permeability,
-            model.magnet_orders,
-            batch.remanence[0],
-            batch.remanence[1],
-        )
+        ring = ring_of(batch, filler_permeability)
         every = np.arange(-self.highest, self.highest + 1)
         wanted = {
             int(sign * order) % (2 * pairs)
@@ -195,6 +207,17 @@ class SeparateMagnets:
         if magnets:
             h += self.source.T
         return np.asarray((h / turn)[middle + orders])
+
+    def added_on_both_sides(
+        self, angle: float, orders: IntArray, plus: ComplexArray, minus: ComplexArray
+    ) -> tuple[ComplexArray, ComplexArray]:
+        """Addition to h of a complex field without remanence, positive and negative `orders`."""
+        middle = self.highest
+        field = np.zeros((2 * middle + 1, LANES), dtype=np.complex128)
+        field[middle + orders], field[middle - orders] = plus, minus
+        turn = np.exp(1j * angle * np.arange(-middle, middle + 1))[:, None]
+        h = np.einsum("lnk,kl->nl", self.response, field * turn) / turn
+        return np.asarray(h[middle + orders]), np.asarray(h[middle - orders])
 
     def torque_field(
         self, batch: BatchField, solution: Solution, ampere_turns: FloatArray

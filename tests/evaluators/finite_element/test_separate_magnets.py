@@ -80,8 +80,6 @@ def test_settings() -> None:
     assert chosen.separate_magnets
     with pytest.raises(EvaluatorError, match="rotor = 'round' must be uniform or separate"):
         FiniteElementEvaluator(task, {"rotor": "round"})
-    with pytest.raises(EvaluatorError, match="separate magnets are for the static analysis"):
-        FiniteElementEvaluator(task, {"rotor": "separate", "analysis": "transient"})
 
 
 @pytest.mark.slow

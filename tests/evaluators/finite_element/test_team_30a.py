@@ -11,7 +11,6 @@ import numpy as np
 import pytest
 from numpy.typing import NDArray
 
-from evaluators.finite_element import transient
 from evaluators.finite_element.mesh import geometry as mesh
 from evaluators.finite_element.mesh.lattice import Lattice, Resolution
 from evaluators.finite_element.mesh.symmetry import Sector
@@ -19,6 +18,7 @@ from evaluators.finite_element.outcome import stress
 from evaluators.finite_element.rotor.eddy import Conductors, EddyRotor
 from evaluators.finite_element.rotor.uniform import NU_0, Rotor
 from evaluators.finite_element.solution import newton
+from evaluators.finite_element.solution.admittance import SETTLED, admittance
 from evaluators.finite_element.solution.batch import BatchField, Equations
 from evaluators.finite_element.solution.gap import GapCoupling
 from evaluators.finite_element.solution.lanes import LANES
@@ -114,15 +114,17 @@ def team_30a(speed: float, currents: ComplexArray) -> tuple[FloatArray, FloatArr
     orders = orders[orders <= 31]
     supply = 2.0 * np.pi * 60.0
     answers = [eddy.response(orders, supply + sign * orders * speed) for sign in (1, -1)]
-    field = transient.with_response(
-        batch,
-        equations,
-        np.zeros((1, topology.size, LANES)),
-        (loads[0], loads[1]),
-        orders,
-        (answers[0] - response[orders], answers[1] - response[orders]),
+    still = np.tile(response[orders], (2, 1))
+    change = np.concatenate(answers) - still
+    nothing = np.zeros((1, topology.size, LANES))
+    stator = admittance(batch, equations, nothing, [(loads[0], loads[1])], orders)
+    added, unsettled = stator.settle(
+        lambda potential: change * potential,
+        lambda missing: missing / (1.0 + change / still),
+        still,
     )
-    plus, minus = batch.coefficients_both_sides(field, sector, lattice.bore, orders)
+    assert np.all(unsettled <= SETTLED)
+    plus, minus = np.split(stator.potential(added), 2, axis=1)
     torque = np.zeros(LANES)
     loss = np.zeros((2, LANES))
     # The real field's coefficients of positive order: half of plus, half of conj(minus).
