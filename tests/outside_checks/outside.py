@@ -238,8 +238,8 @@ def with_unit(text: str, unit: str) -> str:
 
 
 def number(value: float, digits: int = 3) -> str:
-    """The number to some digits, powers of ten without leading zeros."""
-    return re.sub(r"e([+-])0", r"e\1", f"{value:.{digits}g}")
+    """The number to some digits, powers of ten as short as they can be."""
+    return re.sub(r"e\+?(-?)0*", r"e\1", f"{value:.{digits}g}")
 
 
 def size_text(share: float, digits: int = 3) -> str:

@@ -6,6 +6,7 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from outside import OutsideChecks
 
 from evaluators.machine.geometry.cross_sections import CrossSections, cross_sections
 from evaluators.machine.geometry.outlines import Loop, Outline, outlines
@@ -31,6 +32,8 @@ BASE = {
 # The wedge side is drawn by arcs; everything else is exact to rounding.
 WEDGE_TOLERANCE = 1e-6
 ROUNDING = 1e-12
+
+check = OutsideChecks("geometry")
 
 
 def machine(slots: int, p: int, ps: int, **changes: float) -> tuple[CrossSections, Winding]:
@@ -92,9 +95,15 @@ def test_flattened_arcs_enclose_the_same_area(family: tuple[int, int, int]) -> N
     sections, winding = machine(*family)
     for item in outlines(sections, 0, winding):
         for loop in (item.outer, *item.holes):
-            # A chord polygon of 400 steps in at most half a turn misses 1e-5 of its circle; thin
-            # rings lose more of themselves.
-            assert polygon_area(flattened(loop)) == pytest.approx(loop.area, rel=1e-3)
+            check(
+                "area of the outlines of all parts",
+                loop.area,
+                polygon_area(flattened(loop)),
+                relative=1e-3,
+                why="400 chords in at most half a turn miss 1e-5 of their circle; thin rings lose "
+                "more of themselves",
+                source="polygons along the arcs, walked from their centres",
+            )
             assert loop.area > 0.0
 
 
@@ -157,10 +166,16 @@ def test_another_family_is_refused() -> None:
 
 @pytest.mark.parametrize("bulge", [1e-5, 2e-4, 2.6e-4, 1e-3])
 def test_flat_arcs_enclose_a_flat_segment(bulge: float) -> None:
-    """Chord 1, height bulge / 2: two thirds of the rectangle (Archimedes, for flat segments)."""
+    """Chord 1, height bulge / 2."""
     loop = Loop(np.array([[0.0, 0.0], [1.0, 0.0]]), np.array([bulge, 0.0]))
-    # The next term is of the order bulge squared; the difference of two sines loses digits.
-    assert loop.area == pytest.approx(bulge / 3.0, rel=1e-5)
+    check(
+        "area under a flat arc",
+        loop.area,
+        bulge / 3.0,
+        relative=1e-5,
+        why="the next term is of the order bulge squared; the difference of two sines loses digits",
+        source="Archimedes: two thirds of the rectangle",
+    )
 
 
 def test_loop_checks_itself() -> None:

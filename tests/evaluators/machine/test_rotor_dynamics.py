@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 from numpy.typing import NDArray
+from outside import OutsideChecks
 from scipy.optimize import brentq
 
 from evaluators.machine.mechanics.bending import (
@@ -21,6 +22,9 @@ FloatArray = NDArray[np.float64]
 E, RHO, NU, D, LONG = 210e9, 7850.0, 0.3, 0.02, 0.4
 AREA, SECOND = np.pi * D**2 / 4.0, np.pi * D**4 / 64.0
 THIN = 1e30  # shear stiffness of an Euler-Bernoulli beam
+
+check = OutsideChecks("mechanics")
+EIGHT = "eight cubic elements: the error of the first mode is of order (1/8)^4"
 
 
 def uniform(
@@ -45,14 +49,25 @@ def hertz(stiffness: FloatArray, masses: FloatArray) -> FloatArray:
 
 
 def test_free_and_simply_supported_shaft() -> None:
-    """Euler-Bernoulli: beta L = 4.730040745 and pi (closed forms)."""
     stiffness, masses = uniform(8)
     free = hertz(stiffness, masses)
-    # Eight cubic elements: the error of the first mode is of order (1/8)^4.
-    assert free[2] == pytest.approx(575.5390, rel=1e-4)
     assert np.all(free[:2] < 1e-3 * free[2])  # two rigid modes
-    # Springs a hundred million times stiffer than the beam give way by next to nothing.
-    assert hertz(pinned(stiffness), masses)[0] == pytest.approx(253.8895, rel=1e-4)
+    check(
+        "bending frequency of a free shaft",
+        free[2],
+        575.5390,
+        relative=1e-4,
+        why=EIGHT,
+        source="Euler, Bernoulli: beta L = 4.730040745, closed form",
+    )
+    check(
+        "bending frequency of a pinned shaft",
+        hertz(pinned(stiffness), masses)[0],
+        253.8895,
+        relative=1e-4,
+        why=EIGHT + "; springs a hundred million times stiffer than the beam hardly give way",
+        source="Euler, Bernoulli: beta L = pi, closed form",
+    )
 
 
 def test_error_falls_with_the_fourth_power() -> None:
@@ -60,16 +75,30 @@ def test_error_falls_with_the_fourth_power() -> None:
     for elements in (4, 8):
         stiffness, masses = uniform(elements)
         errors.append(hertz(stiffness, masses)[2] / 575.53899 - 1.0)
-    assert 3.5 < np.log2(errors[0] / errors[1]) < 4.5  # cubic shapes converge with h^4
+    check.within(
+        "order of convergence of the bending frequency",
+        np.log2(errors[0] / errors[1]),
+        3.5,
+        4.5,
+        why="half an order, for so few elements",
+        source="cubic shapes converge with h^4 (theory of finite elements)",
+    )
 
 
 def test_cantilever_by_a_heavy_end() -> None:
-    """A huge mass at one tip clamps the beam: beta L = 1.875104 (closed form)."""
+    """A huge mass at one tip clamps the beam."""
     stiffness, masses = uniform(8)
     masses[0, 0, 0] += 1e6
     masses[0, 1, 1] += 1e6
     expected = 1.875104**2 / LONG**2 * np.sqrt(E * SECOND / (RHO * AREA)) / (2.0 * np.pi)
-    assert hertz(stiffness, masses)[2] == pytest.approx(expected, rel=1e-4)
+    check(
+        "bending frequency of a cantilever",
+        hertz(stiffness, masses)[2],
+        expected,
+        relative=1e-4,
+        why=EIGHT,
+        source="Euler, Bernoulli: beta L = 1.875104, closed form",
+    )
 
 
 def test_stubby_pinned_beam_by_timoshenko() -> None:
@@ -92,7 +121,14 @@ def test_stubby_pinned_beam_by_timoshenko() -> None:
     euler = k * k * np.sqrt(E * SECOND / (RHO * AREA))
     exact = brentq(determinant, 0.1 * euler, euler) / (2.0 * np.pi)
     found = hertz(pinned(stiffness), masses)[0]
-    assert found == pytest.approx(exact, rel=5e-4)  # cubic shapes, ten elements
+    check(
+        "bending frequency of a stubby pinned shaft",
+        found,
+        exact,
+        relative=5e-4,
+        why="ten elements, shear and rotation included",
+        source="sine modes of Timoshenko's beam (1921)",
+    )
     assert found < 0.97 * euler / (2.0 * np.pi)  # shear and rotation matter here
 
 
@@ -102,10 +138,14 @@ def test_stiff_body_on_a_spring() -> None:
     stiffness[0, 0, 0] += 5.0
     stiffness[0, -2, -2] += 5.0
     mass = RHO * AREA * LONG
-    speeds = natural_speeds(stiffness, masses)[0]
-    # The beam bends by E I/(k L³), some 2500 times less than the springs.
-    assert speeds[0] == pytest.approx(np.sqrt(10.0 / mass), rel=1e-4)
-    assert speeds[1] == pytest.approx(np.sqrt(3.0 * 10.0 / mass), rel=1e-4)
+    check(
+        "rigid modes of a body on two springs",
+        natural_speeds(stiffness, masses)[0, :2],
+        [np.sqrt(10.0 / mass), np.sqrt(3.0 * 10.0 / mass)],
+        relative=1e-4,
+        why="the beam bends by E I/(k L³), some 2500 times less than the springs",
+        source="sqrt(k/m) and sqrt(3 k/m), closed form",
+    )
 
 
 def test_stepped_beam_by_its_mass_and_symmetry() -> None:
@@ -138,9 +178,15 @@ def test_stepped_beam_by_its_mass_and_symmetry() -> None:
     (10.0, 15.0, 25.0), (100.0, 16.0, 26.0),
 ])  # fmt: skip
 def test_required_margin(factor: float, below: float, above: float) -> None:
-    """API 617 / RP 684 (formula from memory), in percent."""
-    assert 100.0 * required_margin(factor, above=False) == pytest.approx(below, abs=5e-6)
-    assert 100.0 * required_margin(factor, above=True) == pytest.approx(above, abs=5e-6)
+    check(
+        "separation margins below and above a bending speed",
+        [100.0 * required_margin(factor, above=side) for side in (False, True)],
+        [below, above],
+        absolute=5e-6,
+        unit="% of speed",
+        why="printed digits",
+        source="API 617 / RP 684 (formula from memory)",
+    )
 
 
 def test_separation_margin() -> None:

@@ -7,6 +7,7 @@ from dataclasses import replace
 import machines
 import numpy as np
 import pytest
+from outside import OutsideChecks
 
 from evaluators.machine.materials.gas import gas_state
 from evaluators.machine.task.cooling import Cooling
@@ -15,6 +16,9 @@ from evaluators.machine.thermal.coolant import frame_conductance
 from evaluators.machine.thermal.machine import NODES, conduction_of, machine_network
 from evaluators.machine.thermal.network import Network, series
 
+check = OutsideChecks("heat")
+BY_HAND = {"relative": 1e-7, "why": "rounding", "source": "circuit laws, by hand"}
+
 
 def test_two_nodes_by_hand() -> None:
     """10 W over 2 W/K to a node that 4 W/K hold to 20 degC: 22.5 and 27.5 degC."""
@@ -22,7 +26,7 @@ def test_two_nodes_by_hand() -> None:
     net.connect("inside", "outside", np.array([2.0]))
     net.connect_to("outside", 20.0, np.array([4.0]))
     found = net.solve(np.array([[10.0, 0.0]]))
-    np.testing.assert_allclose(found, [[27.5, 22.5]])
+    check("temperatures of two nodes in line", found, [[27.5, 22.5]], **BY_HAND)
     np.testing.assert_allclose(net.outflow(found), [10.0])
 
 
@@ -30,7 +34,8 @@ def test_growing_source_is_solved_in_one_step() -> None:
     """5 W at 0 degC and 0.5 W/K more against 1 W/K to 0 degC: (5 + T/2) = T."""
     net = Network(1, ("wire",))
     net.connect_to("wire", 0.0, np.array([1.0]))
-    np.testing.assert_allclose(net.solve(np.array([[5.0]]), np.array([[0.5]])), [[10.0]])
+    found = net.solve(np.array([[5.0]]), np.array([[0.5]]))
+    check("temperature of a wire whose loss grows with it", found, [[10.0]], **BY_HAND)
 
 
 def test_resistances_in_series() -> None:
@@ -80,9 +85,15 @@ def test_heat_of_the_yoke_meets_resistances_in_line() -> None:
     watt = np.zeros((net.rows, len(NODES)))
     watt[:, NODES.index("yoke")] = 1.0
     rise = net.solve(watt)[:, NODES.index("yoke")] - 40.0
-    # Some percent leave through the winding and the end shields.
     assert np.all(rise <= resistance)
-    np.testing.assert_allclose(rise, resistance, rtol=0.06)
+    check(
+        "rise of a yoke that alone is heated",
+        rise,
+        resistance,
+        relative=0.06,
+        why="some per cent leave through the winding and the end shields",
+        source="yoke, joint, frame and jacket in line, by hand",
+    )
 
 
 def test_still_walls_see_the_swirl_and_not_the_rotor() -> None:
@@ -98,9 +109,15 @@ def test_still_walls_see_the_swirl_and_not_the_rotor() -> None:
     conductance = -np.linalg.inv(rise)[:, NODES.index("end_space"), NODES.index("frame")]
     shields = conductance / (2.0 * np.pi * sections.outer_radius**2)
     surface = sections.rotor_radius * task.duty.speed
-    assert np.all(shields < 15.0 * (1.0 + 0.4 * (0.5 * surface) ** 0.9))
-    # Enclosed turbulent discs: 0.4 to 0.46 of the speed between them (from memory).
-    assert np.all(shields > 15.0 * (1.0 + 0.4 * (0.4 * surface) ** 0.9))
+    check.within(
+        "swirl in the end space over the speed of the rotor's surface",
+        ((shields / 15.0 - 1.0) / 0.4) ** (1.0 / 0.9) / surface,
+        0.4,
+        0.5,
+        why="between a turning and a still face, 0.4 to 0.46 of the speed when turbulent, less "
+        "than half by symmetry",
+        source="enclosed rotating discs (from memory), by Schubert's coefficient backwards",
+    )
 
 
 def test_blown_gap_cools_the_rotor() -> None:
@@ -130,7 +147,14 @@ def test_blown_gap_takes_up_what_its_mean_temperature_says() -> None:
     )
     # ... and all of it leaves through the jacket.
     taken = jacket * (found[:, NODES.index(frame)] - 40.0)
-    np.testing.assert_allclose(taken, brought, rtol=1e-9)
+    check(
+        "heat of warm gas blown through the gap, at the jacket",
+        taken,
+        brought,
+        relative=1e-9,
+        why="rounding of the solution",
+        source="first law: twice the flow's heat capacity times its mean fall",
+    )
 
 
 def test_heat_runs_along_the_copper_as_in_rods() -> None:
@@ -162,5 +186,11 @@ def test_heat_runs_along_the_copper_as_in_rods() -> None:
         between = 0.5 * (step + np.roll(step, -1))
         rise = np.concatenate([[0.0], np.cumsum(-flow * between / copper[row])[:-1]])
         difference = rise[:cells].mean() - rise[cells:].mean()
-        # A little still leaves through the resin.
-        assert found[row, winding] - found[row, end_turns] == pytest.approx(difference, rel=0.04)
+        check(
+            "slot part of the winding over its end turns",
+            found[row, winding] - found[row, end_turns],
+            difference,
+            relative=0.04,
+            why="a little still leaves through the resin",
+            source="heat along a closed copper ring by 800 finite volumes",
+        )

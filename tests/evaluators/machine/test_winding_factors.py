@@ -9,6 +9,7 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from outside import OutsideChecks
 
 from evaluators.machine.winding.families import design_winding
 from evaluators.machine.winding.spectrum import differential_leakage
@@ -18,6 +19,23 @@ from evaluators.machine.winding.winding import Family, Winding
 PRINTED = 6e-7  # half a unit of the sixth printed decimal, and a little for its rounding
 ROUNDING = 1e-12  # sums of at most some hundred unit phasors
 
+check = OutsideChecks("winding")
+SIX = {"absolute": PRINTED, "why": "six printed decimals"}
+EXACT = {"absolute": ROUNDING, "why": "rounding of sums of phasors"}
+HANDBOOK = (
+    "Pyrhonen, Jokinen, Hrabovcova, Design of Rotating Electrical Machines, 2nd ed. 2014, ch. 2 "
+    "and 4; Richter, Elektrische Maschinen I, 1924 (first order and leakage from memory; other "
+    "orders by the closed forms there)"
+)
+TOOTH_COILS = (
+    "Cros, Viarouge, IEEE Trans. Energy Conv. 17(2), 2002; Magnussen, Sadarangani, IEMDC 2003; "
+    "Skaar, Krovel, Nilssen, ICEM 2006 (three digits, from memory)"
+)
+COMBINED = (
+    "computed from the definition; principle ps = p ± 1 in Chiba et al., Magnetic Bearings and "
+    "Bearingless Drives, 2005, and Severson et al., IEEE Trans. Ind. Appl. 53(5), 2017"
+)
+
 
 def torque_winding(slots: int, pole_pairs: int, pitch: int) -> Winding:
     """All coils in group a: an ordinary winding, also where no combined winding exists."""
@@ -26,10 +44,7 @@ def torque_winding(slots: int, pole_pairs: int, pitch: int) -> Winding:
     return Winding(family, phase, np.zeros(slots, dtype=np.int64), sense)
 
 
-# Pyrhonen, Jokinen, Hrabovcova, Design of Rotating Electrical Machines, 2nd ed. 2014, ch. 2 and 4,
-# and Richter, Elektrische Maschinen I, 1924: k_w1 and sigma_d columns, from memory; the other
-# columns were computed from the closed forms there. Two-pole windings, factors of electrical
-# orders 1, 3, 5, 7, 11, 13, then sigma_d.
+# Two-pole windings, factors of electrical orders 1, 3, 5, 7, 11, 13, then sigma_d.
 INTEGRAL_SLOT = {
     (1, 3): (1.0, 1.0, 1.0, 1.0, 1.0, 1.0, 0.096623),
     (1, 2): (0.866025, 0.0, 0.866025, 0.866025, 0.866025, 0.866025, 0.096623),
@@ -46,9 +61,7 @@ INTEGRAL_SLOT = {
     (4, 8): (0.829360, 0.0, 0.177825, 0.136450, 0.109187, 0.109187, None),
 }
 
-# Cros and Viarouge, IEEE Trans. Energy Conv. 17(2), 2002; Magnussen and Sadarangani, IEMDC 2003;
-# Skaar, Krovel and Nilssen, ICEM 2006: k_w1 to three digits, from memory. lcm and gcd (Q, 2p):
-# Zhu and Howe, IEEE Trans. Energy Conv. 15(4), 2000. sigma_d of 3/2 is 4 pi^2/27 - 1.
+# k_w1, sigma_d, lcm and gcd of slots and poles. sigma_d of 3/2 is 4 pi^2/27 - 1.
 TOOTH_COIL = {
     (3, 2): (0.866025, 0.462164, 6, 1),
     (6, 4): (0.866025, 0.462164, 12, 2),
@@ -75,28 +88,42 @@ def test_integral_slot_factors_match_the_handbook(q: int, pitch: int) -> None:
     *factors, leakage = INTEGRAL_SLOT[q, pitch]
     winding = torque_winding(6 * q, 1, pitch)
     found = winding.winding_factors([1, 3, 5, 7, 11, 13])[0]
-    assert found == pytest.approx(factors, abs=PRINTED)
+    check("factors of integral-slot windings, orders 1 to 13", found, factors, **SIX,
+          source=HANDBOOK)  # fmt: skip
     if leakage is not None:
-        assert winding.differential_leakage("torque") == pytest.approx(leakage, abs=PRINTED)
+        found = winding.differential_leakage("torque")
+        check("differential leakage of integral-slot windings", found, leakage, **SIX,
+              source=HANDBOOK)  # fmt: skip
 
 
 @pytest.mark.parametrize(("slots", "poles"), TOOTH_COIL)
 def test_tooth_coil_factors_match_published_tables(slots: int, poles: int) -> None:
     factor, leakage, cogging, force_order = TOOTH_COIL[slots, poles]
     winding = torque_winding(slots, poles // 2, 1)
-    assert winding.torque_winding_factor == pytest.approx(factor, abs=PRINTED)
-    assert winding.family.cogging_periods == cogging
-    assert winding.family.no_load_force_order == force_order
+    found = winding.torque_winding_factor
+    check("factors of tooth coils", found, factor, **SIX, source=TOOTH_COILS)
+    check.same(
+        "periods of cogging and order of the no-load force",
+        [winding.family.cogging_periods, winding.family.no_load_force_order],
+        [cogging, force_order],
+        source="lcm and gcd of slots and poles: Zhu, Howe, IEEE Trans. Energy Conv. 15(4), 2000",
+    )
     if leakage is not None:
-        assert winding.differential_leakage("torque") == pytest.approx(leakage, abs=PRINTED)
+        found = winding.differential_leakage("torque")
+        source = "Richter, Elektrische Maschinen I, 1924 (from memory; digits by its closed form)"
+        check("differential leakage of tooth coils", found, leakage, **SIX, source=source)
 
 
 def test_leakage_closed_forms() -> None:
-    # q = 1: pi^2/9 - 1; a third of a slot per pole and phase: 4 pi^2/27 - 1 (Richter, from memory).
-    full = torque_winding(6, 1, 3).differential_leakage("torque")
-    assert full == pytest.approx(math.pi**2 / 9 - 1, rel=1e-12)  # rounding
-    tooth = torque_winding(3, 1, 1).differential_leakage("torque")
-    assert tooth == pytest.approx(4 * math.pi**2 / 27 - 1, rel=1e-12)  # rounding
+    # q = 1: pi^2/9 - 1; a half slot per pole and phase: 4 pi^2/27 - 1.
+    check(
+        "differential leakage of one slot and of half a slot per pole and phase",
+        [torque_winding(*case).differential_leakage("torque") for case in ((6, 1, 3), (3, 1, 1))],
+        [math.pi**2 / 9 - 1, 4 * math.pi**2 / 27 - 1],
+        relative=1e-12,
+        why="rounding",
+        source="closed forms of Richter, Elektrische Maschinen I, 1924 (from memory)",
+    )
 
 
 def test_leakage_is_the_sum_of_the_series() -> None:
@@ -105,9 +132,13 @@ def test_leakage_is_the_sum_of_the_series() -> None:
     forward, backward = winding.rotating_factors("suspension", orders)
     series = np.sum((forward / orders) ** 2 + (backward / orders) ** 2)
     main = (winding.suspension_winding_factor / 4) ** 2
-    # The rest of the series is below 2 / 60000 of 1, over main = 0.035.
-    assert winding.differential_leakage("suspension") == pytest.approx(
-        series / main - 1, abs=2 / 60_000 / main
+    check(
+        "differential leakage of a suspension winding",
+        winding.differential_leakage("suspension"),
+        series / main - 1,
+        absolute=2 / 60_000 / main,
+        why="the rest of the series is below 2/60000 of 1, over main = 0.035",
+        source="series of 60,000 orders, by the definition",
     )
 
 
@@ -118,17 +149,20 @@ def test_leakage_refuses_a_wave_that_is_not_made() -> None:
 
 
 def test_waves_of_twelve_slots_ten_poles() -> None:
-    # Orders of the 12/10 double layer (Cros and Viarouge 2002, from memory).
     winding = design_winding(12, 5, 4)
     orders = np.arange(1, 20)
     forward, backward = winding.rotating_factors("torque", orders)
     expected = {1: 0.066987, 5: 0.933013, 7: 0.933013, 11: 0.066987, 13: 0.066987}
     expected |= {17: 0.933013, 19: 0.933013}  # 12 + 5, 12 + 7: slot harmonics
-    assert forward + backward == pytest.approx([expected.get(n, 0.0) for n in orders], abs=PRINTED)
+    check(
+        "waves of twelve slots and ten poles",
+        forward + backward,
+        [expected.get(n, 0.0) for n in orders],
+        **SIX,
+        source="Cros, Viarouge 2002 (from memory)",
+    )
 
 
-# Computed from the definition; principle ps = p +- 1 in Chiba et al., Magnetic Bearings and
-# Bearingless Drives, 2005, and Severson et al., IEEE Trans. Ind. Appl. 53(5), 2017.
 @pytest.mark.parametrize(
     ("pitch", "torque", "suspension"),
     [
@@ -144,11 +178,13 @@ def test_combined_two_pole_winding(
     pitch: int, torque: dict[int, float], suspension: dict[int, float]
 ) -> None:
     winding = design_winding(24, 1, 2, pitch)
-    for n, value in torque.items():
-        assert winding.winding_factors(n)[0][0] == pytest.approx(value, abs=PRINTED)
-        assert winding.winding_factors(n)[1][0] == pytest.approx(0.0, abs=ROUNDING)
-    for n, value in suspension.items():
-        assert winding.winding_factors(n)[1][0] == pytest.approx(value, abs=PRINTED)
+    found = winding.winding_factors(list(torque))
+    check("torque factors of a combined two-pole winding", found[0], list(torque.values()), **SIX,
+          source=COMBINED)  # fmt: skip
+    assert found[1] == pytest.approx(np.zeros(len(torque)), abs=ROUNDING)
+    found = winding.winding_factors(list(suspension))[1]
+    check("suspension factors of a combined two-pole winding", found, list(suspension.values()),
+          **SIX, source=COMBINED)  # fmt: skip
     assert winding.winding_factors([2, 4, 6, 8, 10])[0] == pytest.approx(np.zeros(5), abs=ROUNDING)
 
 
@@ -164,25 +200,31 @@ def test_combined_tooth_coils_of_twelve_slots_eight_poles() -> None:
         (suspension, ({5: 0.683013, 11: 0.183013}, {7: 0.683013, 1: 0.183013})),
     ):
         for found, values in zip(waves, expected, strict=True):
-            assert found == pytest.approx([values.get(n, 0.0) for n in orders], abs=PRINTED)
+            wanted = [values.get(n, 0.0) for n in orders]
+            check("waves of combined tooth coils, 12 slots and 8 poles", found, wanted, **SIX,
+                  source=COMBINED)  # fmt: skip
 
 
 @given(q=st.integers(1, 5), p=st.integers(1, 4), n=st.integers(0, 20), data=st.data())
 @settings(deadline=None, max_examples=60)
 def test_integral_slot_closed_form(q: int, p: int, n: int, data: st.DataObject) -> None:
-    """k_d sin and k_p sin of Pyrhonen et al., 2014, ch. 2 (from memory), n = 1, 3, 5 ..."""
     n = 2 * n + 1
     pitch = data.draw(st.integers(1, 3 * q))
     below = q * math.sin(n * math.pi / (6 * q))
     distribution = math.sin(n * math.pi / 6) / below if abs(below) > 1e-9 else 1.0
     expected = abs(distribution * math.sin(n * math.pi * pitch / (6 * q)))
     winding = torque_winding(6 * p * q, p, pitch)
-    assert winding.winding_factors(n * p)[0][0] == pytest.approx(expected, abs=ROUNDING)
+    check(
+        "factors of any integral-slot winding, odd orders",
+        winding.winding_factors(n * p)[0][0],
+        expected,
+        **EXACT,
+        source="k_d and k_p of Pyrhonen et al., 2014, ch. 2 (from memory)",
+    )
 
 
 @pytest.mark.parametrize("numbers", [(6, 2, 1), (12, 4, 5), (18, 5, 4), (24, 1, 2), (30, 7, 8)])
 def test_factors_are_plain_phasor_sums(numbers: tuple[int, int, int]) -> None:
-    """The definition (cf. Ouamara and Dubas, Acta Polytechnica 59(2), 2019), coil by coil."""
     winding = design_winding(*numbers)
     slots, pitch = winding.family.slots, winding.family.coil_pitch
     orders = range(1, 2 * slots)
@@ -196,8 +238,14 @@ def test_factors_are_plain_phasor_sums(numbers: tuple[int, int, int]) -> None:
             reach = math.sin(math.pi * n * pitch / slots) * int(winding.sense[coil])
             sums[0] += reach * axis
             sums[1] += reach * axis * (-1 if winding.group[coil] else 1)
-        assert torque[n - 1] == pytest.approx(abs(sums[0]) / (slots / 3), abs=ROUNDING * 10)
-        assert suspension[n - 1] == pytest.approx(abs(sums[1]) / (slots / 3), abs=ROUNDING * 10)
+        check(
+            "torque and suspension factors of all orders, coil by coil",
+            [torque[n - 1], suspension[n - 1]],
+            [abs(total) / (slots / 3) for total in sums],
+            absolute=ROUNDING * 10,
+            why="rounding of sums of phasors",
+            source="the definition, cf. Ouamara, Dubas, Acta Polytechnica 59(2), 2019",
+        )
 
 
 def test_star_that_does_not_divide_is_refused() -> None:

@@ -6,12 +6,15 @@ import pickle
 
 import numpy as np
 import pytest
+from outside import OutsideChecks
 
 from evaluators.machine.winding.families import design_winding
 from evaluators.machine.winding.winding import Connection, Family, Winding
 
 FAMILIES = [(6, 2, 1), (12, 4, 5), (12, 5, 4), (18, 4, 5), (24, 1, 2), (24, 2, 1), (36, 7, 8)]
 ROUNDING = 1e-12  # sums of some dozens of unit phasors
+
+check = OutsideChecks("winding")
 
 
 def slot_currents(winding: Winding, connection: Connection, angle: float) -> np.ndarray:
@@ -78,9 +81,13 @@ def test_suspension_force_stands_still(numbers: tuple[int, int, int]) -> None:
             values.append(np.mean(magnet * mmf * np.exp(1j * theta)))
     suspension = np.array(forces["suspension"])
     assert np.abs(suspension[0]) > 0.05
-    # Samples lie evenly within each step, so that sampling keeps the symmetries: 1e-9 is rounding.
-    assert suspension == pytest.approx(np.full(12, suspension[0]), abs=1e-9)
-    assert np.abs(forces["torque"]) == pytest.approx(np.zeros(12), abs=1e-9)
+    words = {
+        "absolute": 1e-9,
+        "why": "samples lie evenly within each step and keep the symmetries: rounding",
+        "source": "Maxwell's stress of the staircase of magnetomotive force, integrated",
+    }
+    check("force of the suspension winding over a turn", suspension, suspension[0], **words)
+    check("force of the torque winding over a turn", np.array(forces["torque"]), 0.0, **words)
 
 
 @pytest.mark.parametrize("numbers", FAMILIES)
@@ -100,7 +107,15 @@ def test_mmf_spectrum_is_that_of_the_staircase(
     for n, found in zip(spectrum.orders, coefficients, strict=True):
         # (1/pi) int f exp(j n theta), exact on each flat step between two slots.
         pieces = steps * (np.exp(1j * n * edges[1:]) - np.exp(1j * n * edges[:-1])) / (1j * n)
-        assert found == pytest.approx(np.sum(pieces) / np.pi, abs=1e-11)  # rounding
+        check(
+            "spectrum of the magnetomotive force",
+            found,
+            np.sum(pieces) / np.pi,
+            absolute=1e-11,
+            unit="A",
+            why="rounding",
+            source="Fourier integral of the staircase of slot currents, step by step",
+        )
 
 
 @pytest.mark.parametrize("numbers", FAMILIES)
@@ -112,18 +127,30 @@ def test_phase_phasors_give_the_flux_linkage(numbers: tuple[int, int, int]) -> N
     linkage = potential[winding.coil_slots[:, 1]] - potential[winding.coil_slots[:, 0]]
     phasors = winding.phase_phasors("torque", order)[:, 0] * np.exp(-1j * lead)
     for k in range(3):
-        expected = np.sum((linkage * winding.sense)[winding.phase == k])
-        assert 2 * slots / 3 * phasors[k].real == pytest.approx(expected, abs=ROUNDING * 10)
+        check(
+            "flux linkage of a phase by its phasor",
+            2 * slots / 3 * phasors[k].real,
+            np.sum((linkage * winding.sense)[winding.phase == k]),
+            absolute=ROUNDING * 10,
+            unit="of the potential",
+            why="rounding",
+            source="potential at go less potential at return, summed over coils",
+        )
 
 
 def test_main_mmf_is_the_textbook_one() -> None:
-    # (m/2)(4/pi) N k_w / (2p) per ampere peak, N turns in series per phase
-    # (Pyrhonen et al., 2014, ch. 2; from memory).
+    # N turns in series per phase.
     winding = design_winding(24, 5, 4)
     turns = 24 / 3
-    expected = 1.5 * 4 / np.pi * turns * winding.torque_winding_factor / (2 * 5)
     spectrum = winding.mmf_spectrum("torque", 5)
-    assert np.abs(spectrum.forward[4]) == pytest.approx(expected, rel=1e-12)  # rounding
+    check(
+        "main magnetomotive force per ampere",
+        np.abs(spectrum.forward[4]),
+        1.5 * 4 / np.pi * turns * winding.torque_winding_factor / (2 * 5),
+        relative=1e-12,
+        why="rounding",
+        source="(m/2)(4/pi) N k_w/(2p), Pyrhonen et al., 2014, ch. 2 (from memory)",
+    )
     assert np.abs(spectrum.backward[4]) < ROUNDING
 
 

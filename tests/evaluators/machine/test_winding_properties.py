@@ -5,11 +5,15 @@ from __future__ import annotations
 import numpy as np
 from hypothesis import assume, given, settings
 from hypothesis import strategies as st
+from outside import OutsideChecks
 
 from evaluators.machine.winding.families import WindingError, design_winding
 from evaluators.machine.winding.winding import Winding
 
 ROUNDING = 1e-11  # sums of up to 200 unit phasors
+
+check = OutsideChecks("winding")
+WORDS = {"absolute": ROUNDING, "why": "rounding of sums of up to 200 phasors"}
 
 
 @st.composite
@@ -29,24 +33,27 @@ def windings(draw: st.DrawFn) -> Winding:
 @given(winding=windings())
 @settings(deadline=None, max_examples=60)
 def test_parity_and_slot_harmonics(winding: Winding) -> None:
-    """Severson et al., IEEE Trans. Ind. Appl. 53(5), 2017 (principle; from memory): no crosstalk.
-
-    Torque current makes only orders of the parity of p, suspension current only the others.
-    Slot harmonics kQ +- p have the factor of p (any textbook).
-    """
+    """No crosstalk; slot harmonics have the factor of the main order."""
     family = winding.family
     orders = np.arange(0, 3 * family.slots)
     torque, suspension = winding.winding_factors(orders)
     odd = (orders - family.pole_pairs) % 2 == 1
-    assert np.all(torque[odd] < ROUNDING)
-    assert np.all(suspension[~odd] < ROUNDING)
+    check(
+        "torque factors at orders of other parity than p, suspension factors at those of the same",
+        np.where(odd, torque, suspension),
+        0.0,
+        **WORDS,
+        source="Severson et al., IEEE Trans. Ind. Appl. 53(5), 2017 (principle; from memory)",
+    )
     assert winding.residual_voltage == 0.0
     for factors, main in (
         (winding.winding_factors, family.pole_pairs),
         (lambda n: winding.winding_factors(n)[::-1], family.suspension_pole_pairs),
     ):
         harmonics = [k * family.slots + sign * main for k in (1, 2, 3) for sign in (1, -1)]
-        assert np.ptp(factors([main, *harmonics])[0]) < ROUNDING
+        found = factors([main, *harmonics])[0]
+        source = "orders kQ ± p have the factor of p (common practice)"
+        check("factors of slot harmonics", found[1:], found[0], **WORDS, source=source)
 
 
 @given(winding=windings())

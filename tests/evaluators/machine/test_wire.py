@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
+from outside import OutsideChecks
 
 from evaluators.machine.drive.wire import choose_strands, wire_sizes
 from evaluators.machine.losses.copper import winding_resistance
@@ -11,26 +12,41 @@ from evaluators.machine.materials.library import Conductor, load
 
 MM = 1e-3
 
+check = OutsideChecks("drive")
+
 
 @pytest.mark.parametrize(("bare", "grade_1", "grade_2"), [
     (0.200, 0.226, 0.239), (0.315, 0.349, 0.367), (0.500, 0.544, 0.566), (0.710, 0.762, 0.789),
     (0.800, 0.855, 0.884), (1.000, 1.062, 1.094),
 ])  # fmt: skip
 def test_overall_diameters(bare: float, grade_1: float, grade_2: float) -> None:
-    """IEC 60317-0-1 table 1, from memory, hence the tolerance of 3 um."""
     for grade, overall in ((1, grade_1), (2, grade_2)):
         sizes = wire_sizes(grade)
         row = int(np.argmin(np.abs(sizes.bare - bare * MM)))
         assert sizes.bare[row] == pytest.approx(bare * MM, abs=1e-9)
-        assert sizes.overall[row] == pytest.approx(overall * MM, abs=0.003 * MM)
+        check(
+            "overall diameters of enamelled wires, grades 1 and 2",
+            sizes.overall[row] / MM,
+            overall,
+            absolute=0.003,
+            unit="mm",
+            why="from memory",
+            source="IEC 60317-0-1, table 1 (from memory)",
+        )
 
 
 def test_sizes_are_preferred_numbers() -> None:
-    """ISO 3, series R 20: twenty steps a decade, rounded by up to 1.3 percent."""
+    """Twenty steps a decade; the lowest decade of the table leaves out some sizes."""
     bare = wire_sizes(1).bare / MM
     number = 20.0 * np.log10(bare)
-    # The lowest decade of the table leaves out some sizes.
-    np.testing.assert_allclose(bare, 10.0 ** (np.round(number) / 20.0), rtol=0.014)
+    check(
+        "bare diameters of wires",
+        bare,
+        10.0 ** (np.round(number) / 20.0),
+        relative=0.014,
+        why="preferred numbers are rounded by up to 1.3 %",
+        source="ISO 3, series R 20",
+    )
     assert np.all(np.diff(bare) > 0.0)
 
 
@@ -49,10 +65,16 @@ def test_enamel_thickens_with_grade_and_size() -> None:
     (35.0, 0.524), (50.0, 0.387),
 ])  # fmt: skip
 def test_copper_stays_below_the_limit_of_cable_conductors(area: float, ohm_per_km: float) -> None:
-    """IEC 60228 class 1 and 2, largest resistance at 20 degC (from memory): one-sided."""
     resistivity = load(Conductor, "Copper").resistivity.at(20.0)
     ours = float(winding_resistance(1.0, 1000.0, area * 1e-6, resistivity))
-    assert 0.85 * ohm_per_km < ours < ohm_per_km
+    check.within(
+        "resistance of cable conductors over the largest that is permitted",
+        ours / ohm_per_km,
+        0.85,
+        1.0,
+        why="one-sided limit; real cables may have less copper than their name and a lay",
+        source="IEC 60228, classes 1 and 2, at 20 °C (from memory)",
+    )
 
 
 def test_strands_by_hand() -> None:
@@ -64,7 +86,14 @@ def test_strands_by_hand() -> None:
         if bare * (1 + 1e-9) >= 0.25 * MM and bare <= 0.5 * MM * (1 + 1e-9):
             strands = int(0.8 * 50e-6 / overall**2 / 10.0)
             best = max(best, 10 * strands * np.pi * bare**2 / 4.0)
-    assert chosen.copper_area[0] == pytest.approx(best, rel=1e-12)
+    check(
+        "copper of the best whole number of strands",
+        chosen.copper_area[0],
+        best,
+        relative=1e-12,
+        why="rounding",
+        source="all sizes counted one by one",
+    )
     assert chosen.per_turn[0] == np.floor(chosen.per_turn[0])
     assert chosen.occupied[0] <= 1.0
 
