@@ -9,6 +9,7 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from outside import OutsideChecks
 
 from evaluators.analytic.evaluator import AnalyticEvaluator
 from evaluators.machine.drive.wire import choose_strands
@@ -33,6 +34,8 @@ from evaluators.machine.thermal.conduction import (
 from evaluators.machine.thermal.machine import machine_network
 
 FIXED = Cooling(temperatures="fixed")
+
+check = OutsideChecks("heat")
 
 
 class Solved:
@@ -90,8 +93,14 @@ def test_losses_leave_through_the_coolant(sleeve: str) -> None:
     lost = state.copper_slots + state.copper_ends + state.friction
     lost = lost + length * (field.loss_teeth + field.loss_yoke + field.loss_magnet)
     lost = lost + length * field.loss_sleeve
-    # The last step of the iteration was below 0.02 K of some tens.
-    np.testing.assert_allclose(net.outflow(state.temperatures), lost, rtol=2e-3)
+    check(
+        "heat into the coolant of a settled machine",
+        net.outflow(state.temperatures),
+        lost,
+        relative=2e-3,
+        why="the last step of the iteration was below 0.02 K of some tens",
+        source="first law: all losses, friction included",
+    )
 
 
 def test_same_end_from_any_start(solved: Solved) -> None:
@@ -151,13 +160,19 @@ def test_a_field_solved_with_induced_currents_has_their_drag(solved: Solved) -> 
 
 
 def test_copper_loss_has_the_resistance_of_its_temperature(solved: Solved) -> None:
-    """235 rule of IEC 60034-1 against 0.00393 per kelvin: within 0.3 percent up to 200 degC."""
     task = replace(solved.task, cooling=FIXED)
     cold = replace(task, conditions=Conditions(winding_temperature=20.0))
     hot = replace(task, conditions=Conditions(winding_temperature=120.0))
     # The end turns have no eddy currents.
     ratio = solved.settle(hot).copper_ends / solved.settle(cold).copper_ends
-    np.testing.assert_allclose(ratio, 355.0 / 255.0, rtol=3e-3)
+    check(
+        "copper loss of end turns at 120 °C over that at 20 °C",
+        ratio,
+        355.0 / 255.0,
+        relative=3e-3,
+        why="rule and 0.00393 1/K agree within 0.3 % up to 200 °C",
+        source="rule of (235 + t) of IEC 60034-1",
+    )
 
 
 def test_better_cooling_is_cooler(solved: Solved) -> None:
@@ -226,6 +241,14 @@ def test_hot_spot_is_the_middle_of_the_slot(solved: Solved) -> None:
     excess = heated_bar_peak_rise(source, width, 2.0 * depth, mixture)
     excess = excess - heated_bar_mean_rise(source, width, 2.0 * depth, mixture)
     rise = found["hot_spot_temperature_C"] - 10.0 - found["winding_temperature_C"]
-    # Slot and end turns differ from their common mean by some kelvin either way.
-    np.testing.assert_allclose(rise, excess, rtol=0.5, atol=6.0)
+    check(
+        "hot spot over the mean of the winding",
+        rise,
+        excess,
+        relative=0.5,
+        absolute=6.0,
+        unit="K",
+        why="slot and end turns differ from their common mean by some kelvin either way",
+        source="heated bar with cold walls, twice as deep as the slot; loss spread evenly",
+    )
     assert np.all(rise > 0.0)
