@@ -10,7 +10,6 @@ from __future__ import annotations
 import json
 import time
 import zlib
-from collections.abc import Sequence
 from contextlib import ExitStack
 from pathlib import Path
 from types import TracebackType
@@ -20,15 +19,17 @@ import numpy as np
 import pyarrow as pa
 import pyarrow.compute as pc
 
-from optimizer.archive.durable import make_folder, remove_leftovers, write_durably
+from optimizer.archive.durable import make_folder, remove, remove_leftovers, write_durably
 from optimizer.archive.identity import (
     IDENTITY_NAME,
     check_owner,
     differences,
     identity_of,
     read_identity,
+    written_identity,
 )
 from optimizer.archive.lock import writer_lock
+from optimizer.archive.merging import MERGED_ROWS, piled_up, small
 from optimizer.archive.parts import (
     DamagedPartError,
     check_part,
@@ -62,8 +63,6 @@ from optimizer.running.progress import Settings
 SHORTEST_INTERVAL_S = 1.0  # between two parts
 # A part is held back until the run has lasted this many times what the last part took to write.
 LARGEST_SHARE = 20.0
-MERGE_FROM = 8  # parts; fewer are left as they are at the end of a run
-MERGED_ROWS = 100_000
 
 
 class Archive:
@@ -95,6 +94,7 @@ class Archive:
         self._schema = archive_schema(problem, settings)
         self._identity = identity_of(problem, settings)
         self._waiting: list[Rows] = []
+        self._rows: dict[Path, int] = {}  # of each part
         self._written_at = time.monotonic()
         self._interval = SHORTEST_INTERVAL_S
         make_folder(folder)
@@ -183,11 +183,11 @@ class Archive:
             return
         begin = time.monotonic()
         table = to_table(join_rows(self._waiting), self._schema, self._problem, self._settings)
-        write_part(self.folder, self._number, table)
-        self._number += 1
+        self._write(table)
         self._waiting.clear()
+        self._interval = max(SHORTEST_INTERVAL_S, LARGEST_SHARE * (time.monotonic() - begin))
+        self._merge(piled_up(self._rows))
         self._written_at = time.monotonic()
-        self._interval = max(SHORTEST_INTERVAL_S, LARGEST_SHARE * (self._written_at - begin))
 
     def finish(self, front: IntArray) -> None:
         """Write what is waiting, merge small parts, and write the front.
@@ -203,7 +203,7 @@ class Archive:
             If something cannot be written.
         """
         self.flush()
-        self._merge()
+        self._merge(small(self._rows))
         wanted = pa.array(np.sort(front), type=pa.int64())
         tables = []
         for path in part_paths(self.folder):
@@ -219,16 +219,16 @@ class Archive:
 
     def _settle_identity(self) -> None:
         stored = read_identity(self.folder)
-        if stored is None:
-            text = json.dumps(self._identity, indent=1, sort_keys=True) + "\n"
-            write_durably(self.folder / IDENTITY_NAME, text.encode())
-        elif stored != self._identity:
+        if stored is not None and stored != self._identity:
             msg = (
                 f"{self.folder} holds evaluations of another study or of other settings"
                 f" ({'; '.join(differences(stored, self._identity))}); use another folder, or"
                 " settings as they were"
             )
             raise ArchiveMismatchError(msg)
+        if written_identity(self.folder) != self._identity:
+            text = json.dumps(self._identity, indent=1, sort_keys=True) + "\n"
+            write_durably(self.folder / IDENTITY_NAME, text.encode())
 
     def _load(self) -> None:
         names = needed_columns(self._problem)
@@ -239,6 +239,7 @@ class Archive:
                 damaged.append(set_aside(path))
             else:
                 tables.append(table)
+                self._rows[path] = table.num_rows
         self.damaged = tuple(damaged)
         table = pa.concat_tables(tables) if tables else self._schema.empty_table().select(names)
         evaluations, self._x, self._outcome = from_table(table, self._problem)
@@ -255,24 +256,27 @@ class Archive:
         except DamagedPartError:
             return None
 
-    def _merge(self) -> None:
+    def _write(self, table: pa.Table) -> Path:
+        path = write_part(self.folder, self._number, table)
+        self._rows[path] = table.num_rows
+        self._number += 1
+        return path
+
+    def _merge(self, paths: list[Path]) -> None:
         """Turn many small parts into few; a crash in between leaves rows twice, never lost."""
-        paths = part_paths(self.folder)
-        tables: Sequence[tuple[Path, pa.Table | None]] = (
-            [(path, self._checked(path)) for path in paths] if len(paths) >= MERGE_FROM else []
-        )
-        small = [(p, t) for p, t in tables if t is not None and t.num_rows < MERGED_ROWS // 2]
-        if len(small) < MERGE_FROM:
+        tables = {path: self._checked(path) for path in paths}
+        sound = {path: table for path, table in tables.items() if table is not None}
+        if len(sound) < 2:
             return
-        merged = _in_order(pa.concat_tables([table for _, table in small]))
+        merged = _in_order(pa.concat_tables(sound.values()))
         for start in range(0, merged.num_rows, MERGED_ROWS):
-            path = write_part(self.folder, self._number, merged.slice(start, MERGED_ROWS))
-            self._number += 1
+            path = self._write(merged.slice(start, MERGED_ROWS))
             if self._checked(path) is None:
                 msg = f"{path} reads back changed; the disk is not reliable"
                 raise ArchiveError(msg)
-        for path, _ in small:
-            path.unlink(missing_ok=True)
+        for path in sound:
+            remove(path)
+            del self._rows[path]
 
 
 def _in_order(table: pa.Table) -> pa.Table:

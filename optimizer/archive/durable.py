@@ -3,10 +3,14 @@
 from __future__ import annotations
 
 import contextlib
+import errno
 import os
 from pathlib import Path
 
 from optimizer.errors import storage_error
+
+# Some file systems, above all of networks, have no such operation for folders.
+_CANNOT_SYNC = (errno.EINVAL, errno.ENOTSUP)
 
 
 def write_durably(path: Path, data: bytes) -> None:
@@ -35,16 +39,19 @@ def write_durably(path: Path, data: bytes) -> None:
 
 
 def sync_folder(folder: Path) -> None:
-    """Make new and renamed entries of ``folder`` last."""
+    """Make new, renamed and removed entries of ``folder`` last."""
     handle = os.open(folder, os.O_RDONLY)
     try:
         os.fsync(handle)
+    except OSError as error:
+        if error.errno not in _CANNOT_SYNC:
+            raise
     finally:
         os.close(handle)
 
 
 def make_folder(folder: Path) -> None:
-    """Make ``folder`` and its parents unless they exist.
+    """Make ``folder`` and its parents unless they exist, so that they outlast a loss of power.
 
     Raises
     ------
@@ -52,9 +59,26 @@ def make_folder(folder: Path) -> None:
         If it cannot be made.
     """
     try:
+        new = [place for place in (folder, *folder.parents) if not place.exists()]
         folder.mkdir(parents=True, exist_ok=True)
+        for place in new:
+            sync_folder(place.parent)
     except OSError as error:
         raise storage_error(error, folder, "make the folder") from error
+
+
+def remove(path: Path) -> None:
+    """Remove a file if it is there.
+
+    Raises
+    ------
+    ArchiveError
+        If it cannot be removed.
+    """
+    try:
+        path.unlink(missing_ok=True)
+    except OSError as error:
+        raise storage_error(error, path, "remove") from error
 
 
 def remove_leftovers(folder: Path) -> None:

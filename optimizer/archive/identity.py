@@ -56,14 +56,15 @@ def identity_of(problem: Problem, settings: Settings) -> Identity:
 def read_identity(folder: Path) -> Identity | None:
     """Return what the parts of a folder belong to; None for a new folder.
 
-    It is ``archive.json``; if that is missing or damaged, what most parts say.
+    It is what ``archive.json`` says; where that is missing, damaged or another archive's, what
+    most parts say.
 
     Raises
     ------
     ArchiveError
-        If a newer version wrote it, it cannot be read, or no part agrees with it.
+        If a newer version wrote it, or it cannot be read.
     """
-    identity = _file_identity(folder / IDENTITY_NAME)
+    identity = written_identity(folder)
     if identity is not None:
         check_version(identity, folder)
         if _agreeing(folder, identity):
@@ -74,13 +75,7 @@ def read_identity(folder: Path) -> Identity | None:
     texts = Counter(json.dumps(item, sort_keys=True) for item in said)
     most: Identity = json.loads(texts.most_common(1)[0][0])
     check_version(most, folder)
-    if identity is None or identity in said:
-        return most if identity is None else identity
-    msg = (
-        f"{folder / IDENTITY_NAME} is of another archive than the parts beside it"
-        f" ({'; '.join(differences(most, identity))}); delete it, and what the parts say counts"
-    )
-    raise ArchiveError(msg)
+    return most
 
 
 def check_version(identity: Mapping[str, Any], place: Path) -> None:
@@ -225,7 +220,15 @@ def _sound_identity(path: Path) -> Identity | None:
         return None
 
 
-def _file_identity(path: Path) -> Identity | None:
+def written_identity(folder: Path) -> Identity | None:
+    """Return what ``archive.json`` says; None if it is missing or damaged.
+
+    Raises
+    ------
+    ArchiveError
+        If it cannot be read.
+    """
+    path = folder / IDENTITY_NAME
     if not path.is_file():
         return None
     try:

@@ -17,7 +17,7 @@ from pathlib import Path
 import pyarrow as pa
 import pyarrow.parquet as pq
 
-from optimizer.archive.durable import write_durably
+from optimizer.archive.durable import sync_folder, write_durably
 from optimizer.errors import storage_error
 
 QUARANTINE = "quarantine"
@@ -192,6 +192,10 @@ def set_aside(path: Path) -> Path:
     aside = path.parent / QUARANTINE / path.name
     try:
         aside.parent.mkdir(exist_ok=True)
-        return path.replace(aside)
+        path.replace(aside)
+        # The new place first: after a loss of power it may lie in both, never in neither.
+        for folder in (aside.parent, path.parent):
+            sync_folder(folder)
+        return aside
     except OSError as error:
         raise storage_error(error, path, "set aside") from error

@@ -10,6 +10,7 @@ import numpy as np
 import pytest
 
 from optimizer.archive import archive as archive_module
+from optimizer.archive import merging
 from optimizer.archive.archive import open_archive
 from optimizer.archive.parts import part_paths
 from optimizer.errors import ArchiveMismatchError, ProblemError
@@ -58,7 +59,7 @@ def test_exactly_the_budget_is_stored(tmp_path, plates, budget) -> None:
 def test_a_run_in_pieces_equals_a_run_at_once(
     tmp_path, failing_plates, rows_of, state, monkeypatch
 ) -> None:
-    monkeypatch.setattr(archive_module, "MERGE_FROM", 10**9)
+    monkeypatch.setattr(merging, "MERGE_FROM", 10**9)
     whole, pieces, other = tmp_path / "whole", tmp_path / "pieces", tmp_path / "other"
     expected = run(failing_plates, whole, settings())
     if state == "of another run":
@@ -254,7 +255,7 @@ def test_the_rate_leaves_out_rows_from_the_archive(tmp_path, plates, monkeypatch
 def test_slow_chunks_are_stored_as_they_finish(tmp_path, plates, monkeypatch) -> None:
     monkeypatch.setattr(archive_module, "SHORTEST_INTERVAL_S", 0.02)
     monkeypatch.setattr(archive_module, "LARGEST_SHARE", 0.0)
-    monkeypatch.setattr(archive_module, "MERGE_FROM", 10**9)
+    monkeypatch.setattr(merging, "MERGE_FROM", 10**9)
     evaluate, seen = plates.evaluate, []
 
     def slow(x: np.ndarray) -> Outcome:
