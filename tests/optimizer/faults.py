@@ -275,11 +275,10 @@ def ledger(root: Path) -> Path:
 
 def found_after(root: Path) -> dict[str, Any]:
     """What a reader finds before anything is mended, and what is missing of what was safe."""
-    folder = root / "results" / "slopes"
-    if not archive.is_archive(folder):
-        return {"rows": 0, "lost": []}
-    table = archive.open_archive(folder).table(["evaluation"])
-    there = table["evaluation"].to_pylist() if table.num_rows else []
+    folder, there = root / "results" / "slopes", []
+    if archive.is_archive(folder):
+        table = archive.open_archive(folder).table(["evaluation"])
+        there = table["evaluation"].to_pylist() if table.num_rows else []
     safe = json.loads(ledger(root).read_text()) if ledger(root).exists() else []
     return {"rows": len(there), "lost": sorted(set(safe) - set(there))}
 
