@@ -163,15 +163,22 @@ def build(
     Raises
     ------
     EvaluatorError
-        If no such evaluator is installed, or it rejects a setting.
+        If no such evaluator is installed, it cannot be loaded, or it rejects a setting.
     """
     found = installed()
     if name not in found:
         known = ", ".join(sorted(found)) or "none; is hovergap installed?"
         msg = f"no evaluator is called {name!r}; installed are: {known}"
         raise EvaluatorError(msg)
-    factory = cast("EvaluatorFactory", found[name].load())
-    evaluator = factory(task, dict(settings or {}))
+    try:
+        factory = cast("EvaluatorFactory", found[name].load())
+        evaluator = factory(task, dict(settings or {}))
+    except EvaluatorError:
+        raise
+    except Exception as error:  # others' code, which raises anything
+        text = " ".join(f"{type(error).__name__}: {error}".split()).rstrip(": ")
+        msg = f"the evaluator {name!r} ({found[name].value}) cannot be built: {text}"
+        raise EvaluatorError(msg) from error
     if allow_program and isinstance(evaluator, StartsProgram):
         evaluator.allow_program()
     return evaluator

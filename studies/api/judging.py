@@ -15,6 +15,7 @@ from studies.choice.decision import decide
 from studies.choice.preferences import Market, preferences
 from studies.choice.preferences import Method as Ranking
 from studies.errors import StudiesError
+from studies.running.evaluating import time_limit_of
 from studies.sensitivity import study as sensitivity_room
 from studies.sensitivity.indices import TooFewError
 from studies.sensitivity.tables import indices_csv, lines_csv
@@ -104,7 +105,9 @@ def sensitivity(
     samples: int = sensitivity_room.BASE_SAMPLES,
     seed: int = 1,
     evaluator: str = "",
-    workers: int | None = 1,
+    workers: int | None = None,
+    cluster: str = "",
+    time_limit_s: float | None = None,
     allow_program: bool = False,
 ) -> tuple[pa.Table, pa.Table]:
     """What a design depends on.
@@ -117,6 +120,8 @@ def sensitivity(
         Of each line.
     samples : int
         Base samples of Sobol indices, rounded up to a power of 2.
+    workers, cluster, time_limit_s
+        As of `verify`, but this process alone for the analytic evaluator.
 
     Returns
     -------
@@ -126,7 +131,8 @@ def sensitivity(
         metric, variable, indices with their confidence; empty for ``none``.
     """
     chosen = _chosen(folder, design, evaluator, allow_program)
-    with dispatcher_for(chosen.problem, workers) as dispatcher:
+    limit = time_limit_of(chosen.results.study, chosen.problem, time_limit_s)
+    with dispatcher_for(chosen.problem, workers, limit, cluster) as dispatcher:
         try:
             found = sensitivity_room.sensitivity(
                 chosen,
@@ -155,13 +161,16 @@ def tolerance(
     lots: int | None = None,
     seed: int = 1,
     evaluator: str = "",
-    workers: int | None = 1,
+    workers: int | None = None,
+    cluster: str = "",
+    time_limit_s: float | None = None,
     allow_program: bool = False,
 ) -> pa.Table:
     """Machines as built: one row a machine with deviations, metrics and margins.
 
     The yield is the mean of ``meets_all_limits``. `scatter` holds entries such as
     ``tooth_width_mm=0.05`` or ``magnet_remanence=3%``; `only` leaves out the default ones.
+    `workers`, `cluster` and `time_limit_s` are as of `sensitivity`.
     """
     chosen = _chosen(folder, design, evaluator, allow_program)
     scatters = overridden(defaults(chosen.task.materials), scatter)
@@ -172,7 +181,8 @@ def tolerance(
         raise StudiesError(msg)
     count = machines or (300 if chosen.problem.evaluator_name == QUICK_EVALUATOR else 40)
     drawn = draw(scatters, count, min(count, lots or max(10, count // 10)), seed, distribution)
-    with dispatcher_for(chosen.problem, workers) as dispatcher:
+    limit = time_limit_of(chosen.results.study, chosen.problem, time_limit_s)
+    with dispatcher_for(chosen.problem, workers, limit, cluster) as dispatcher:
         result = tolerance_room.tolerance_result(built_machines(chosen, drawn, dispatcher))
     return table_of_csv(tolerance_room.machines_csv(result))
 
@@ -185,6 +195,8 @@ def verify(
     families: Sequence[str] = (),
     top: int | None = 10,
     workers: int | None = None,
+    cluster: str = "",
+    time_limit_s: float | None = None,
     allow_program: bool = False,
     stop: Callable[[], bool] | None = None,
 ) -> pa.Table:
@@ -195,6 +207,12 @@ def verify(
     top : int or None
         Designs of each front nearest to the ideal, the best of each objective besides; None for
         whole fronts.
+    workers : int, optional
+        Processes; by default one for each processor.
+    cluster : str
+        Address of a Dask scheduler instead, whose workers evaluate.
+    time_limit_s : float, optional
+        Longest time of one evaluation; by default the study's for the study's own evaluator.
     stop : callable, optional
         Asked before each chunk; True ends with what is stored.
 
@@ -207,7 +225,8 @@ def verify(
     made = verification_plans(results, families, evaluator, settings or {}, top, allow_program)
     plans = [plan for plan in made.plans if len(plan)]
     if plans:
-        with dispatcher_for(plans[0].problem, workers) as dispatcher:
+        limit = time_limit_of(results.study, plans[0].problem, time_limit_s)
+        with dispatcher_for(plans[0].problem, workers, limit, cluster) as dispatcher:
             for plan in plans:
                 verify_family(
                     plan, dispatcher, stop or _never, lambda done, new: None, lambda text: None

@@ -10,11 +10,13 @@ import pyarrow as pa
 
 from optimizer.archive.lock import writer_lock
 from optimizer.running.progress import Progress, Summary
+from optimizer.workers.dispatch import Dispatcher
 from studies.api.tables import Folder, table_of
 from studies.new_study.beginning import begin_study
 from studies.running import sweep as room
+from studies.running.evaluating import dispatcher_of
 from studies.running.problem import MachineProblem
-from studies.running.spending import Spending, dispatcher_of
+from studies.running.spending import Spending
 from studies.shipped.library import find_study
 from studies.stored.layout import Request, Results, create, open_results, save_request
 from studies.study_file.definition import Study
@@ -65,6 +67,7 @@ def sweep(
     evaluations: int | None = None,
     seed: int | None = None,
     workers: int | None = None,
+    cluster: str = "",
     allow_program: bool = False,
     progress: Watch | None = None,
     stop: Stop | None = None,
@@ -82,6 +85,8 @@ def sweep(
         Instead of the study's.
     workers : int, optional
         Processes; by default one for each processor. The results do not depend on it.
+    cluster : str
+        Address of a Dask scheduler instead, whose workers evaluate.
     allow_program : bool
         Consent to start the program that the evaluator's settings name.
     progress : callable, optional
@@ -111,7 +116,9 @@ def sweep(
         evaluations_per_family=evaluations or wanted.search.evaluations_per_family,
         seed=wanted.search.seed if seed is None else seed,
     )
-    return _search(create(Path(results), wanted, request), problems, workers, progress, stop)
+    with dispatcher_of(wanted, workers, cluster) as dispatcher:
+        results_of_study = create(Path(results), wanted, request)
+        return _search(results_of_study, problems, dispatcher, progress, stop)
 
 
 def resume(
@@ -120,6 +127,7 @@ def resume(
     families: Sequence[str] = (),
     evaluations: int | None = None,
     workers: int | None = None,
+    cluster: str = "",
     allow_program: bool = False,
     progress: Watch | None = None,
     stop: Stop | None = None,
@@ -137,17 +145,17 @@ def resume(
         request = replace(request, evaluations_per_family=evaluations)
     searched = tuple(name for name in study.families if name in {*chosen, *request.families})
     results = save_request(results, replace(request, families=searched))
-    return _search(results, problems, workers, progress, stop)
+    with dispatcher_of(study, workers, cluster) as dispatcher:
+        return _search(results, problems, dispatcher, progress, stop)
 
 
 def _search(
     results: Results,
     problems: dict[str, MachineProblem],
-    workers: int | None,
+    dispatcher: Dispatcher,
     progress: Watch | None,
     stop: Stop | None,
 ) -> pa.Table:
-    dispatcher = dispatcher_of(results.study, workers or room.usable_workers())
     searched = ""
 
     def begin(family: str) -> None:
@@ -158,7 +166,7 @@ def _search(
         if progress is not None:
             progress(searched, state)
 
-    with writer_lock(results.folder), dispatcher:
+    with writer_lock(results.folder):
         spending = Spending(
             results,
             problems,

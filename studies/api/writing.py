@@ -10,7 +10,7 @@ from studies.export.files import write_folder
 from studies.export.front import front_files, front_table
 from studies.report.build import report_html
 from studies.report.collect import collect
-from studies.running.sweep import usable_workers
+from studies.running.evaluating import usable_workers
 from studies.sheet.content import design_sheet
 from studies.stored.design import choose_design
 from studies.stored.layout import open_results, storage

@@ -34,7 +34,7 @@ def report(
     """
     from studies.report.build import report_html
     from studies.report.collect import collect
-    from studies.running.sweep import usable_workers
+    from studies.running.evaluating import usable_workers
     from studies.stored.damage import report_damage
     from studies.stored.layout import open_results, storage
 

@@ -4,8 +4,8 @@ from __future__ import annotations
 
 import click
 
-from studies.commands.options import allow_program_option
-from studies.commands.sweep import LARGEST_BUDGET, MOST_WORKERS
+from studies.commands.options import allow_program_option, workers_options
+from studies.commands.sweep import LARGEST_BUDGET
 
 
 @click.command()
@@ -16,7 +16,7 @@ from studies.commands.sweep import LARGEST_BUDGET, MOST_WORKERS
     type=click.IntRange(1, LARGEST_BUDGET),
     help="Evaluations of each family from now on; more than before extends the search.",
 )
-@click.option("--workers", type=click.IntRange(1, MOST_WORKERS), help="Processes.")
+@workers_options
 @allow_program_option
 @click.option(
     "--study",
@@ -32,6 +32,7 @@ def resume(
     family: tuple[str, ...],
     budget: int | None,
     workers: int | None,
+    cluster: str,
     allow_program: bool,
     study_file: str,
 ) -> None:
@@ -44,6 +45,7 @@ def resume(
 
     from studies.consent import announce_program
     from studies.running import sweep as room
+    from studies.running.evaluating import dispatcher_of
     from studies.stored.layout import open_results, save_request
 
     results = open_results(Path(results_folder))
@@ -59,6 +61,7 @@ def resume(
         )
     families = room.chosen_families(study, family or results.request.families)
     problems = room.problems_of(study, families, allow_program)
+    dispatcher = context.with_resource(dispatcher_of(study, workers, cluster))
     if budget is not None:
         results = save_request(results, replace(results.request, evaluations_per_family=budget))
     wanted = tuple(
@@ -71,4 +74,4 @@ def resume(
         f"{study.name}: {room.counted(families)}, "
         f"{results.request.evaluations_per_family:,} evaluations each, in {results.folder}"
     )
-    context.exit(room.search_families(results, problems, workers or room.usable_workers()))
+    context.exit(room.search_families(results, problems, dispatcher))

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import click
 
-from studies.commands.options import allow_program_option
+from studies.commands.options import allow_program_option, time_limit_option, workers_options
 
 
 @click.command()
@@ -32,7 +32,8 @@ from studies.commands.options import allow_program_option
     "more than there are free variables.",
 )
 @click.option("--seed", type=click.IntRange(0, 2**31 - 1), default=1, show_default=True)
-@click.option("--workers", type=click.IntRange(1, 256), help="Processes.")
+@workers_options
+@time_limit_option
 @allow_program_option
 @click.option(
     "--output", type=click.Path(file_okay=False), help="Write tables and pictures to this folder."
@@ -47,6 +48,8 @@ def sensitivity(
     samples: int,
     seed: int,
     workers: int | None,
+    cluster: str,
+    time_limit_s: float | None,
     allow_program: bool,
     output: str | None,
     force: bool,
@@ -61,6 +64,7 @@ def sensitivity(
     from studies.consent import announce_program
     from studies.errors import StudiesError
     from studies.export.files import write_folder
+    from studies.running.evaluating import time_limit_of
     from studies.sensitivity import study as room
     from studies.sensitivity.indices import TooFewError
     from studies.sensitivity.tables import sensitivity_text
@@ -71,7 +75,8 @@ def sensitivity(
     chosen = designs.choose_design(results, design, evaluator, allow_program)
     if allow_program:
         announce_program([chosen.problem], err=False)
-    with designs.dispatcher_for(chosen.problem, workers) as dispatcher:
+    limit = time_limit_of(results.study, chosen.problem, time_limit_s)
+    with designs.dispatcher_for(chosen.problem, workers, limit, cluster) as dispatcher:
         try:
             found = room.sensitivity(
                 chosen,

@@ -4,10 +4,9 @@ from __future__ import annotations
 
 import click
 
-from studies.commands.options import allow_program_option
+from studies.commands.options import allow_program_option, workers_options
 
 LARGEST_BUDGET = 10_000_000
-MOST_WORKERS = 256
 
 
 @click.command()
@@ -24,11 +23,7 @@ MOST_WORKERS = 256
 @click.option(
     "--budget", type=click.IntRange(1, LARGEST_BUDGET), help="Evaluations of each family."
 )
-@click.option(
-    "--workers",
-    type=click.IntRange(1, MOST_WORKERS),
-    help="Processes; by default one for each processor. The results do not depend on it.",
-)
+@workers_options
 @allow_program_option
 @click.option("--seed", type=click.IntRange(0, 2**31 - 1), help="Seed of the search.")
 @click.pass_context
@@ -39,6 +34,7 @@ def sweep(
     family: tuple[str, ...],
     budget: int | None,
     workers: int | None,
+    cluster: str,
     allow_program: bool,
     seed: int | None,
 ) -> None:
@@ -51,6 +47,7 @@ def sweep(
 
     from studies.consent import announce_program
     from studies.running import sweep as room
+    from studies.running.evaluating import dispatcher_of
     from studies.shipped.library import find_study
     from studies.stored.layout import Request, create
 
@@ -64,6 +61,7 @@ def sweep(
         evaluations_per_family=budget or study.search.evaluations_per_family,
         seed=study.search.seed if seed is None else seed,
     )
+    dispatcher = context.with_resource(dispatcher_of(study, workers, cluster))
     results = create(Path(results_folder), study, request)
     if allow_program:
         announce_program(problems.values())
@@ -71,4 +69,4 @@ def sweep(
         f"{study.name}: {room.counted(families)}, {request.evaluations_per_family:,} evaluations "
         f"each, into {results.folder}"
     )
-    context.exit(room.search_families(results, problems, workers or room.usable_workers()))
+    context.exit(room.search_families(results, problems, dispatcher))

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import click
 
-from studies.commands.options import allow_program_option
+from studies.commands.options import allow_program_option, time_limit_option, workers_options
 
 NOTES = (
     "Each dimension scatters on its own; materials, fill and interference are shared by the "
@@ -44,7 +44,8 @@ NOTES = (
 )
 @click.option("--lots", type=click.IntRange(2, 10_000), help="By default a tenth of the machines.")
 @click.option("--seed", type=click.IntRange(0, 2**31 - 1), default=1, show_default=True)
-@click.option("--workers", type=click.IntRange(1, 256), help="Processes.")
+@workers_options
+@time_limit_option
 @allow_program_option
 @click.option("--json", "as_json", is_flag=True, help="Print JSON.")
 @click.option("--output", type=click.Path(file_okay=False), help="Write tables to this folder.")
@@ -60,6 +61,8 @@ def tolerance(
     lots: int | None,
     seed: int,
     workers: int | None,
+    cluster: str,
+    time_limit_s: float | None,
     allow_program: bool,
     as_json: bool,
     output: str | None,
@@ -75,6 +78,7 @@ def tolerance(
 
     from studies.consent import announce_program
     from studies.errors import StudiesError
+    from studies.running.evaluating import time_limit_of
     from studies.stored import design as designs
     from studies.stored.layout import open_results
     from studies.tolerance import report
@@ -100,7 +104,8 @@ def tolerance(
         seed,
         cast("Distribution", distribution),
     )
-    with designs.dispatcher_for(chosen.problem, workers) as dispatcher:
+    limit = time_limit_of(results.study, chosen.problem, time_limit_s)
+    with designs.dispatcher_for(chosen.problem, workers, limit, cluster) as dispatcher:
         result = report.tolerance_result(built_machines(chosen, drawn, dispatcher))
     if as_json:
         click.echo(json.dumps(report.tolerance_json(result), indent=2, allow_nan=False))

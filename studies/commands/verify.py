@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import click
 
-from studies.commands.options import allow_program_option
+from studies.commands.options import allow_program_option, time_limit_option, workers_options
 
 
 @click.command()
@@ -25,7 +25,8 @@ from studies.commands.options import allow_program_option
     multiple=True,
     help="A setting of that evaluator, such as analysis=transient; repeatable.",
 )
-@click.option("--workers", type=click.IntRange(1, 256), help="Processes.")
+@workers_options
+@time_limit_option
 @allow_program_option
 @click.pass_context
 def verify(
@@ -37,6 +38,8 @@ def verify(
     evaluator: str,
     settings: tuple[str, ...],
     workers: int | None,
+    cluster: str,
+    time_limit_s: float | None,
     allow_program: bool,
 ) -> None:
     """Evaluate stored designs again with another evaluator.
@@ -50,7 +53,9 @@ def verify(
     from studies import verification as room
     from studies.consent import announce_program
     from studies.errors import EXIT_NOTHING_FEASIBLE, StudiesError
+    from studies.running.evaluating import time_limit_of
     from studies.stored.damage import report_damage
+    from studies.stored.design import dispatcher_for
     from studies.stored.layout import open_results
 
     if front and top is not None:
@@ -74,6 +79,10 @@ def verify(
     again += [word for item in family for word in ("--family", item)]
     again += ["--evaluator", evaluator] if evaluator != "finite_element" else []
     again += [word for item in settings for word in ("--setting", item)]
+    again += [] if time_limit_s is None else ["--time-limit", f"{time_limit_s:g}"]
     again += ["--allow-program"] if allow_program else []
-    code = room.verify_all(results, made.plans, workers, shlex.join(again))
+    problem = made.plans[0].problem
+    limit = time_limit_of(results.study, problem, time_limit_s)
+    dispatcher = context.with_resource(dispatcher_for(problem, workers, limit, cluster))
+    code = room.verify_all(results, made.plans, dispatcher, shlex.join(again))
     context.exit(code or report_damage(made.damaged))

@@ -9,13 +9,11 @@ from dataclasses import replace
 from optimizer.running.progress import Progress, Settings, Summary
 from optimizer.running.runner import run
 from optimizer.running.stopping import StopRules
-from optimizer.workers.dispatch import Dispatcher, Serial
-from optimizer.workers.pool import Pool
+from optimizer.workers.dispatch import Dispatcher
 from studies.running.ended import Ended, note_end
 from studies.running.problem import MachineProblem
 from studies.running.spreading import ROUNDS, prospects, read_rows
 from studies.stored.layout import Results
-from studies.study_file.definition import Study
 
 SPENDING_KEYS = (
     "evaluations_per_family",
@@ -32,14 +30,6 @@ Begin = Callable[[str], None]
 Show = Callable[[Progress], None]
 Stop = Callable[[], bool]
 SettingsOf = Callable[[MachineProblem], Settings]
-
-
-def dispatcher_of(study: Study, workers: int) -> Dispatcher:
-    """What evaluates the designs of a study."""
-    limit = study.search.time_limit_s
-    if limit is not None:
-        return Pool(workers, limit)
-    return Serial() if workers == 1 else Pool(workers)
 
 
 class Spending:

@@ -4,21 +4,22 @@ from __future__ import annotations
 
 import hashlib
 import json
-import os
 import shlex
 import tomllib
 from collections.abc import Sequence
 from pathlib import Path
 
 from optimizer.archive.lock import writer_lock
+from optimizer.errors import ClusterError
 from optimizer.running.progress import Settings, Summary
+from optimizer.workers.dispatch import Dispatcher
 from studies.comparison.infeasible import explain
 from studies.consent import program_of, require_consent
-from studies.errors import EXIT_NOTHING_FEASIBLE, EXIT_OK, StudiesError
+from studies.errors import EXIT_FAILED, EXIT_NOTHING_FEASIBLE, EXIT_OK, StudiesError
 from studies.running.interruption import Interruption
 from studies.running.problem import MachineProblem, machine_problem
 from studies.running.progress import ProgressLine, duration
-from studies.running.spending import SPENDING_KEYS, Spending, dispatcher_of
+from studies.running.spending import SPENDING_KEYS, Spending
 from studies.shipped.library import shipped
 from studies.stored.layout import Results, changes
 from studies.study_file.definition import Study
@@ -26,11 +27,6 @@ from studies.suggestions import suggest
 from studies.tables import number, percent, text_table
 
 SHIPPED_MARK = " (shipped)"
-
-
-def usable_workers() -> int:
-    """Processors this process may use."""
-    return len(os.sched_getaffinity(0)) if hasattr(os, "sched_getaffinity") else os.cpu_count() or 1
 
 
 def chosen_families(study: Study, wanted: Sequence[str]) -> tuple[str, ...]:
@@ -87,13 +83,16 @@ def study_digest(study: Study) -> str:
     return hashlib.sha256(text.encode()).hexdigest()
 
 
-def search_families(results: Results, problems: dict[str, MachineProblem], workers: int) -> int:
+def search_families(
+    results: Results, problems: dict[str, MachineProblem], dispatcher: Dispatcher
+) -> int:
     """Search one family after the other and say how it went.
 
     Returns
     -------
     int
-        Exit code: 0, `EXIT_NOTHING_FEASIBLE`, or 128 plus a signal if stopped.
+        Exit code: 0, `EXIT_NOTHING_FEASIBLE`, `EXIT_FAILED` if a cluster was lost, or 128 plus a
+        signal if stopped.
 
     Raises
     ------
@@ -103,8 +102,8 @@ def search_families(results: Results, problems: dict[str, MachineProblem], worke
     families = tuple(problems)
     line = ProgressLine(families)
     summaries: dict[str, Summary] = {}
-    dispatcher = dispatcher_of(results.study, workers)
-    with Interruption() as interruption, writer_lock(results.folder), dispatcher:
+    lost = False
+    with Interruption() as interruption, writer_lock(results.folder):
         spending = Spending(
             results,
             problems,
@@ -120,6 +119,9 @@ def search_families(results: Results, problems: dict[str, MachineProblem], worke
                 line.say(_family_text(family, summary))
         except KeyboardInterrupt:
             line.say("stopped at once; the designs in hand were given up")
+        except ClusterError as error:
+            line.say(str(error))
+            lost = True
         unfinished = [
             family
             for family in families
@@ -129,13 +131,13 @@ def search_families(results: Results, problems: dict[str, MachineProblem], worke
                 and not summaries[family].ended
             )
         ]
-    if interruption.asked and unfinished:
+    if lost or (interruption.asked and unfinished):
         line.say(
             "Everything evaluated so far is stored. Go on with:\n  "
             + resume_command(results.folder, families, results.request.families)
             + (" --allow-program" if any(map(program_of, problems.values())) else "")
         )
-        return interruption.exit_code
+        return EXIT_FAILED if lost else interruption.exit_code
     return _closing(line, results, summaries)
 
 

@@ -14,11 +14,11 @@ from evaluators.machine.geometry.cross_sections import CrossSections, cross_sect
 from evaluators.machine.geometry.variables import VARIABLE_NAMES
 from evaluators.machine.task.task import Task
 from optimizer.problem import Outcome, join_outcomes
-from optimizer.workers.dispatch import Chunk, Dispatcher, Serial
-from optimizer.workers.pool import Pool
+from optimizer.workers.dispatch import Chunk, Dispatcher
 from studies.consent import require_consent
-from studies.errors import ResultsError, StudiesError
+from studies.errors import ResultsError
 from studies.inspection.design import Inspection, inspect_design
+from studies.running.evaluating import made_dispatcher
 from studies.running.problem import MachineProblem, machine_problem
 from studies.stored.layout import Results
 
@@ -133,23 +133,25 @@ def with_evaluator(problem: MachineProblem, evaluator: str) -> MachineProblem:
     return problem
 
 
-def dispatcher_for(problem: MachineProblem, workers: int | None) -> Dispatcher:
-    """Worker processes if more than one is asked for; this process for the quick evaluator.
+def dispatcher_for(
+    problem: MachineProblem,
+    workers: int | None,
+    time_limit_s: float | None = None,
+    cluster: str = "",
+) -> Dispatcher:
+    """What evaluates; by default this process for the quick evaluator, else worker processes.
+
+    Parameters as of `studies.running.evaluating.made_dispatcher`.
 
     Raises
     ------
     StudiesError
-        If `workers` is below 1, or a program would be started without consent.
+        As `made_dispatcher`, or if a program would be started without consent.
     """
     require_consent(problem)
-    if workers is not None and workers < 1:
-        msg = f"workers is {workers}; at least 1 is wanted"
-        raise StudiesError(msg)
-    if workers is None:
-        from studies.running.sweep import usable_workers
-
-        workers = 1 if problem.evaluator_name == QUICK_EVALUATOR else usable_workers()
-    return Serial() if workers == 1 else Pool(workers)
+    if workers is None and not cluster and problem.evaluator_name == QUICK_EVALUATOR:
+        workers = 1
+    return made_dispatcher(problem.evaluator_name, workers, cluster, time_limit_s)
 
 
 def evaluate_all(problem: MachineProblem, x: FloatArray, dispatcher: Dispatcher) -> Outcome:

@@ -10,13 +10,14 @@ from typing import Any
 
 import pyarrow as pa
 
+from optimizer.errors import ClusterError
 from optimizer.running.meter import Meter
+from optimizer.workers.dispatch import Dispatcher
 from studies.comparison.numbers import compare_families
-from studies.errors import EXIT_OK
+from studies.errors import EXIT_FAILED, EXIT_OK
 from studies.running.interruption import Interruption
 from studies.running.problem import machine_problem
 from studies.running.sweep import chosen_families
-from studies.stored.design import dispatcher_for
 from studies.stored.layout import Results
 from studies.verification.run import Plan, verify_family
 from studies.verification.selection import nearest_and_extreme, verifying_problem
@@ -83,21 +84,23 @@ def plans(
     return Plans(tuple(made), tuple(damaged))
 
 
-def verify_all(results: Results, made: Sequence[Plan], workers: int | None, again: str) -> int:
+def verify_all(
+    results: Results, made: Sequence[Plan], dispatcher: Dispatcher, again: str
+) -> int:
     """Verify family after family and say how it went.
 
     Parameters
     ----------
     results : Results
     made : sequence of Plan
-    workers : int or None
+    dispatcher : Dispatcher
     again : str
         The command that goes on if this is stopped.
 
     Returns
     -------
     int
-        Exit code: 0, or 128 plus a signal if stopped.
+        Exit code: 0, 1 if a cluster was lost, or 128 plus a signal if stopped.
 
     Raises
     ------
@@ -108,10 +111,8 @@ def verify_all(results: Results, made: Sequence[Plan], workers: int | None, agai
     line = VerifyLine({plan.family: len(plan) for plan in made})
     meter = Meter(None, sum(map(len, made)))
     unfinished = len(made)
-    with (
-        Interruption() as interruption,
-        dispatcher_for(made[0].problem, workers) as dispatcher,
-    ):
+    lost = False
+    with Interruption() as interruption:
         try:
             for plan in made:
 
@@ -128,9 +129,12 @@ def verify_all(results: Results, made: Sequence[Plan], workers: int | None, agai
                     break
         except KeyboardInterrupt:
             line.say("stopped at once; the designs in hand were given up")
-    if interruption.asked and unfinished:
+        except ClusterError as error:
+            line.say(str(error))
+            lost = True
+    if lost or (interruption.asked and unfinished):
         line.say(f"Everything verified so far is stored. Go on with:\n  {again}")
-        return interruption.exit_code
+        return EXIT_FAILED if lost else interruption.exit_code
     command = shlex.join(["hovergap", "compare", str(results.folder), "--verified"])
     line.say(f"Compare the families by these values with: {command}")
     return EXIT_OK
