@@ -11,16 +11,14 @@ from numpy.typing import NDArray
 
 from evaluators.analytic.model import AnalyticModel, Resolution
 from evaluators.analytic.waveforms import waveforms
-from evaluators.interface import Capability, Evaluations, EvaluatorError, Status, Waveform
-from evaluators.machine.field import excitation
-from evaluators.machine.geometry.cross_sections import batch_length, cross_sections
+from evaluators.batching import Batch
+from evaluators.interface import Capability, Evaluations, EvaluatorError, Waveform
 from evaluators.machine.metrics import METRICS
 from evaluators.machine.performance import performance
 from evaluators.machine.task.task import Task
 
 FloatArray = NDArray[np.float64]
 
-PER_MM2 = 1e6
 FINEST = {"slot_modes": 32, "reach": 64, "highest_order": 1024, "positions": 360}
 """Largest settings: results stand long before, while memory grows with their product."""
 
@@ -46,28 +44,12 @@ class AnalyticEvaluator:
 
     def evaluate(self, designs: Mapping[str, FloatArray]) -> Evaluations:
         """Evaluate n designs; see `evaluators.interface`."""
-        rows = batch_length(designs)
-        task = self.task
-        sections, valid, reasons = cross_sections(task.winding.family, designs, task.construction)
-        result = {name: np.full(rows, np.nan) for name in self.metrics}
-        reason = reasons.astype(object)
-        status = np.full(rows, Status.INVALID_GEOMETRY.value, dtype=object)
-        if valid.size:
-            density = np.asarray(designs["current_density_A_mm2"], dtype=np.float64)[valid]
-            exciting = excitation(sections, density * PER_MM2, task.duty, task.construction)
-            field = self.model.solve(sections, exciting)
-            done = performance(task, sections, exciting, field)
-            values = np.array([done.metrics[name] for name in self.metrics])
-            finite = np.all(np.isfinite(values), axis=0)
-            status[valid] = np.where(finite, Status.OK.value, Status.FAILED.value)
-            reason[valid] = np.where(
-                finite | (done.reasons != ""), done.reasons, "a metric is not a finite number"
-            )
-            for name, column in zip(self.metrics, values, strict=True):
-                result[name][valid] = np.where(finite, column, np.nan)
-        return Evaluations(
-            metrics=result, status=status.astype(np.str_), reason=reason.astype(np.str_)
-        )
+        batch = Batch(self.task, designs, self.metrics)
+        if len(batch):
+            field = self.model.solve(batch.sections, batch.exciting)
+            done = performance(self.task, batch.sections, batch.exciting, field)
+            batch.settle(np.arange(len(batch)), done.metrics, done.reasons)
+        return batch.evaluations()
 
     def waveforms(self, design: Mapping[str, float]) -> tuple[Waveform, ...]:
         """Torque, cogging, force, EMF, tooth and yoke density over one turn.

@@ -9,6 +9,7 @@ from pathlib import Path
 import numpy as np
 from numpy.typing import NDArray
 
+from evaluators.batching import Batch
 from evaluators.external.licences import licence
 from evaluators.external.process import Ended, run_program
 from evaluators.external.quantities import FIELD
@@ -25,8 +26,8 @@ from evaluators.interface import (
     Status,
     Waveform,
 )
-from evaluators.machine.field import Excitation, FieldSolution, excitation
-from evaluators.machine.geometry.cross_sections import CrossSections, batch_length, cross_sections
+from evaluators.machine.field import Excitation, FieldSolution
+from evaluators.machine.geometry.cross_sections import CrossSections
 from evaluators.machine.geometry.variables import VARIABLE_NAMES
 from evaluators.machine.metrics import METRICS
 from evaluators.machine.performance import performance
@@ -36,7 +37,6 @@ FloatArray = NDArray[np.float64]
 
 EXCHANGE_VERSION = "1"
 REQUEST, REPLY = "request.json", "reply.json"
-PER_MM2 = 1e6
 
 
 class _RunError(Exception):
@@ -104,37 +104,24 @@ class ExternalEvaluator:
         ConsentError
             If `allow_program` was not called.
         """
-        rows = batch_length(designs)
+        batch = Batch(self.task, designs, self.metrics)
         if not self._path:
             msg = f"the program {quoted(self.program[0])} may not be started without consent"
             raise ConsentError(msg)
-        task = self.task
-        sections, valid, reasons = cross_sections(task.winding.family, designs, task.construction)
-        result = {name: np.full(rows, np.nan) for name in self.metrics}
-        reason = reasons.astype(object)
-        status = np.full(rows, Status.INVALID_GEOMETRY.value, dtype=object)
-        density = np.asarray(designs["current_density_A_mm2"], dtype=np.float64)[valid]
-        exciting = excitation(sections, density * PER_MM2, task.duty, task.construction)
-        replies: dict[int, Reply] = {}  # by position among the valid rows
-        for position, row in enumerate(valid.tolist()):
+        replies: dict[int, Reply] = {}  # by place among the cross-sections
+        for place, row in enumerate(batch.valid.tolist()):
             values = {name: float(designs[name][row]) for name in VARIABLE_NAMES}
             try:
-                replies[position] = self._reply(sections, exciting, position, values)
+                replies[place] = self._reply(batch.sections, batch.exciting, place, values)
             except _RunError as error:
-                status[row], reason[row] = error.status.value, str(error)
+                batch.fail(place, str(error), error.status)
         if replies:
             solved = np.array(list(replies), dtype=np.int64)
-            columns, words = self._columns(sections, exciting, solved, list(replies.values()))
-            finite = np.all([np.isfinite(column) for column in columns.values()], axis=0)
-            good = finite & (words == "")
-            words[~finite & (words == "")] = "a metric is not a finite number"
-            status[valid[solved]] = np.where(good, Status.OK.value, Status.FAILED.value)
-            reason[valid[solved]] = words
-            for name in self.metrics:
-                result[name][valid[solved]] = np.where(good, columns[name], np.nan)
-        return Evaluations(
-            metrics=result, status=status.astype(np.str_), reason=reason.astype(np.str_)
-        )
+            columns, reasons = self._columns(
+                batch.sections, batch.exciting, solved, list(replies.values())
+            )
+            batch.settle(solved, columns, reasons)
+        return batch.evaluations()
 
     def waveforms(self, design: Mapping[str, float]) -> tuple[Waveform, ...]:
         """None: the exchange does not carry them."""
@@ -158,7 +145,7 @@ class ExternalEvaluator:
                     for item in FIELD
                 }
             )
-            current = Excitation(exciting.torque[solved], exciting.suspension[solved])
+            current = exciting.rows(solved)
             # Numbers within their ranges can still make no machine together; that is a row.
             with np.errstate(all="ignore"):
                 done = performance(self.task, sections.rows(solved), current, field)

@@ -2,21 +2,21 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
-from dataclasses import fields
+from collections.abc import Iterator, Mapping
 
 import numpy as np
 from numpy.typing import NDArray
 
+from evaluators.batching import Batch
 from evaluators.finite_element import analysis
 from evaluators.finite_element.mesh.geometry import MeshError
 from evaluators.finite_element.model import FieldModel
 from evaluators.finite_element.outcome.waveforms import waveforms
 from evaluators.finite_element.settings import read_settings
 from evaluators.finite_element.solution.lanes import LANES
-from evaluators.interface import Capability, Evaluations, Status, Waveform
-from evaluators.machine.field import Excitation, FieldSolution, excitation
-from evaluators.machine.geometry.cross_sections import CrossSections, batch_length, cross_sections
+from evaluators.interface import Capability, Evaluations, Waveform
+from evaluators.machine.field import Excitation, FieldSolution
+from evaluators.machine.geometry.cross_sections import CrossSections
 from evaluators.machine.metrics import METRICS
 from evaluators.machine.performance import performance
 from evaluators.machine.task.task import Task
@@ -24,7 +24,7 @@ from evaluators.machine.task.task import Task
 FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
 
-PER_MM2 = 1e6
+NOT_CONVERGED = "the field did not converge within the allowed Newton iterations"
 
 
 class FiniteElementEvaluator:
@@ -60,59 +60,60 @@ class FiniteElementEvaluator:
 
     def evaluate(self, designs: Mapping[str, FloatArray]) -> Evaluations:
         """Evaluate n designs; see `evaluators.interface`."""
-        rows = batch_length(designs)
-        task = self.task
-        sections, valid, reasons = cross_sections(task.winding.family, designs, task.construction)
-        result = {name: np.full(rows, np.nan) for name in self.metrics}
-        reason = reasons.astype(object)
-        status = np.full(rows, Status.INVALID_GEOMETRY.value, dtype=object)
-        density = np.asarray(designs["current_density_A_mm2"], dtype=np.float64)[valid]
-        exciting = excitation(sections, density * PER_MM2, task.duty, task.construction)
-        for first in range(0, valid.size, LANES):
-            chosen = np.arange(first, min(first + LANES, valid.size))
-            padded = np.resize(chosen, LANES)
-            row = valid[chosen]
-            part, current = sections.rows(padded), _rows(exciting, padded)
-            try:
-                fields_of_batch = analysis.solve(self.model, part, current)
-            except MeshError as error:
-                status[row] = Status.FAILED.value
-                reason[row] = str(error)
-                continue
-            found = analysis.evaluate(fields_of_batch, current)
-            done = performance(task, part, current, found.field)
-            values = np.array([done.metrics[name] for name in self.metrics])[:, : chosen.size]
-            words = done.reasons[: chosen.size].astype(object)
-            words[~found.converged[: chosen.size]] = (
-                "the field did not converge within the allowed Newton iterations"
-            )
-            good = np.all(np.isfinite(values), axis=0) & (words == "")
-            words[~good & (words == "")] = "a metric is not a finite number"
-            status[row] = np.where(good, Status.OK.value, Status.FAILED.value)
-            reason[row] = words
-            for name, column in zip(self.metrics, values, strict=True):
-                result[name][row] = np.where(good, column, np.nan)
-        return Evaluations(
-            metrics=result, status=status.astype(np.str_), reason=reason.astype(np.str_)
-        )
+        batch = Batch(self.task, designs, self.metrics)
+        for some in _lanes(len(batch)):
+            for places, result in self._results(batch.sections, batch.exciting, some):
+                if isinstance(result, str):
+                    batch.fail(places, result)
+                    continue
+                # All lanes each time, so that no row depends on how many there are.
+                lanes, kept = np.resize(places, LANES), slice(places.size)
+                done = performance(
+                    self.task,
+                    batch.sections.rows(lanes),
+                    batch.exciting.rows(lanes),
+                    result.field,
+                )
+                metrics = {name: column[kept] for name, column in done.metrics.items()}
+                reasons = np.where(result.converged, done.reasons, NOT_CONVERGED)
+                batch.settle(places, metrics, reasons[kept])
+        return batch.evaluations()
+
+    def _results(
+        self, sections: CrossSections, exciting: Excitation, places: IntArray
+    ) -> Iterator[tuple[IntArray, analysis.Result | str]]:
+        """Results of the designs at up to LANES `places`, or why there is none.
+
+        A design that cannot be meshed is found by solving each one by itself.
+        """
+        padded = np.resize(places, LANES)
+        current = exciting.rows(padded)
+        try:
+            solved = analysis.solve(self.model, sections.rows(padded), current)
+        except MeshError as error:
+            if places.size == 1:
+                yield places, str(error)
+                return
+            for place in places:
+                yield from self._results(sections, exciting, np.array([place]))
+            return
+        yield places, analysis.evaluate(solved, current)
 
     def field_solution(self, sections: CrossSections, exciting: Excitation) -> FieldSolution:
-        """Field quantities of n cross-sections, (n,) each, without the metrics made of them."""
+        """Field quantities of n cross-sections, (n,) each, without the metrics made of them.
+
+        Raises
+        ------
+        MeshError
+            If a design cannot be meshed.
+        """
         parts = []
-        for first in range(0, len(sections), LANES):
-            padded = np.resize(np.arange(first, min(first + LANES, len(sections))), LANES)
-            current = _rows(exciting, padded)
-            solved = analysis.solve(self.model, sections.rows(padded), current)
-            parts.append(analysis.evaluate(solved, current).field)
-        return FieldSolution(
-            **{
-                item.name: np.concatenate([getattr(part, item.name) for part in parts])[
-                    : len(sections)
-                ]
-                for item in fields(FieldSolution)
-                if getattr(parts[0], item.name) is not None
-            }
-        )
+        for places in _lanes(len(sections)):
+            for solved, result in self._results(sections, exciting, places):
+                if isinstance(result, str):
+                    raise MeshError(result)
+                parts.append(result.field.rows(slice(solved.size)))
+        return FieldSolution.joined(parts)
 
     def waveforms(self, design: Mapping[str, float]) -> tuple[Waveform, ...]:
         """Waveforms of one design over one turn of the rotor.
@@ -125,5 +126,7 @@ class FiniteElementEvaluator:
         return waveforms(self.model, design)
 
 
-def _rows(exciting: Excitation, rows: IntArray) -> Excitation:
-    return Excitation(torque=exciting.torque[rows], suspension=exciting.suspension[rows])
+def _lanes(count: int) -> Iterator[IntArray]:
+    """The places 0..count-1, LANES at a time."""
+    for first in range(0, count, LANES):
+        yield np.arange(first, min(first + LANES, count))

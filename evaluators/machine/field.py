@@ -6,6 +6,7 @@ that all evaluators mean the same by the same name.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, fields
 
 import numpy as np
@@ -15,6 +16,7 @@ from evaluators.machine.geometry.cross_sections import CrossSections
 from evaluators.machine.task.task import Construction, Duty
 
 FloatArray = NDArray[np.float64]
+Selection = NDArray[np.bool_] | NDArray[np.int64] | slice
 
 
 @dataclass(frozen=True)
@@ -27,6 +29,10 @@ class Excitation:
 
     torque: FloatArray
     suspension: FloatArray
+
+    def rows(self, selection: Selection) -> Excitation:
+        """The excitation of the selected designs only."""
+        return Excitation(self.torque[selection], self.suspension[selection])
 
 
 def excitation(
@@ -125,3 +131,17 @@ class FieldSolution:
         if 0 < sum(part is None for part in parts) < len(parts):
             msg = "iron loss by mechanism needs hysteresis, eddy and excess loss, or none of them"
             raise ValueError(msg)
+
+    def rows(self, selection: Selection) -> FieldSolution:
+        """The field of the selected designs only."""
+        return FieldSolution(**{name: value[selection] for name, value in self._known().items()})
+
+    @classmethod
+    def joined(cls, parts: Sequence[FieldSolution]) -> FieldSolution:
+        """The fields of several batches one after the other."""
+        known = [part._known() for part in parts]
+        return cls(**{name: np.concatenate([part[name] for part in known]) for name in known[0]})
+
+    def _known(self) -> dict[str, FloatArray]:
+        values = {item.name: getattr(self, item.name) for item in fields(self)}
+        return {name: value for name, value in values.items() if value is not None}

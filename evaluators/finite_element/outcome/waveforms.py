@@ -5,8 +5,8 @@ from __future__ import annotations
 from collections.abc import Mapping
 
 import numpy as np
-from numpy.typing import NDArray
 
+from evaluators.batching import one_machine
 from evaluators.finite_element import analysis
 from evaluators.finite_element.model import FieldModel
 from evaluators.finite_element.outcome import nonlinear_force
@@ -14,33 +14,27 @@ from evaluators.finite_element.outcome.emf import emf, phase_linkage
 from evaluators.finite_element.outcome.quantities import suspension_force
 from evaluators.finite_element.solution.lanes import LANES
 from evaluators.interface import Waveform
-from evaluators.machine.field import Excitation, excitation
-from evaluators.machine.geometry.cross_sections import cross_sections
+from evaluators.machine.field import Excitation
+from evaluators.turning import TurningMachine
 
-FloatArray = NDArray[np.float64]
-
-TURN = "rotor angle, rad"
 SHARES = np.arange(1, LANES + 1) / LANES
 """Suspension currents of the force curve over the whole slot current, one a lane."""
 
 
 def waveforms(model: FieldModel, design: Mapping[str, float]) -> tuple[Waveform, ...]:
-    """Torque, cogging, forces with the currents that command them, EMF, and the force curve.
+    """Those of `TurningMachine`, and the force curve.
 
-    The force is given without suspension current and with the one that commands a mean force along
-    x, and along y. That current, as ampere-turns of one coil of phase one, keeps its phase to the
-    rotor. The EMF is that of the magnets alone, without currents induced in the rotor.
+    The EMF is without currents induced in the rotor.
+
+    Raises
+    ------
+    ValueError
+        If the design has no cross-section.
     """
     task = model.task
-    batch = {name: np.array([float(value)]) for name, value in design.items()}
-    sections, valid, reasons = cross_sections(task.winding.family, batch, task.construction)
-    if not valid.size:
-        raise ValueError(str(reasons[0]))
-    exciting = excitation(
-        sections, batch["current_density_A_mm2"] * 1e6, task.duty, task.construction
-    )
+    sections, exciting = one_machine(task, design)
     lanes = np.zeros(LANES, dtype=np.int64)
-    current = Excitation(exciting.torque[lanes], exciting.suspension[lanes])
+    current = exciting.rows(lanes)
     fields = analysis.solve(model, sections.rows(lanes), current)
     result = analysis.evaluate(fields, current)
     family = task.winding.family
@@ -50,31 +44,16 @@ def waveforms(model: FieldModel, design: Mapping[str, float]) -> tuple[Waveform,
         for direction in (0.0, 0.5 * np.pi)
     ]
     along_x, along_y = (result.force.at(phasor)[:, 0] for phasor in phasors)
-    rest = result.force.at(0.0 * phasors[0])[:, 0]
-    turn = 2.0 * np.pi * np.arange(rest.size) / rest.size
-    command_x, command_y = (
-        np.real(phasor[0] * np.exp(1j * family.pole_pairs * turn)) for phasor in phasors
+    turn = TurningMachine(
+        pole_pairs=family.pole_pairs,
+        torque=np.tile(result.torque[:, 0], 6 * family.pole_pairs),
+        cogging=np.tile(result.cogging[:, 0], family.cogging_periods),
+        commanded=(along_x, along_y),
+        rest=result.force.rest[:, 0],
+        command=(complex(phasors[0][0]), complex(phasors[1][0])),
+        emf=emf(phase_linkage(fields.batch, fields.unloaded), task.duty.speed)[:, 0],
     )
-    voltage = emf(phase_linkage(fields.batch, fields.unloaded), task.duty.speed)[:, 0]
-
-    def over_turn(name: str, unit: str, values: FloatArray) -> Waveform:
-        angle = 2.0 * np.pi * np.arange(values.size) / values.size
-        return Waveform(name, unit, TURN, angle, values)
-
-    return (
-        over_turn("torque", "N m/m", np.tile(result.torque[:, 0], 6 * family.pole_pairs)),
-        over_turn("cogging torque", "N m/m", np.tile(result.cogging[:, 0], family.cogging_periods)),
-        over_turn("force along x, commanded along x", "N/m", along_x.real),
-        over_turn("force along y, commanded along x", "N/m", along_x.imag),
-        over_turn("force along x, commanded along y", "N/m", along_y.real),
-        over_turn("force along y, commanded along y", "N/m", along_y.imag),
-        over_turn("force along x, no suspension current", "N/m", rest.real),
-        over_turn("force along y, no suspension current", "N/m", rest.imag),
-        over_turn("suspension current of phase one, commanded along x", "A turns", command_x),
-        over_turn("suspension current of phase one, commanded along y", "A turns", command_y),
-        over_turn("EMF of phase one per turn of a coil", "V/m", voltage),
-        *force_curve(fields, current, forward),
-    )
+    return (*turn.waveforms(), *force_curve(fields, current, forward))
 
 
 def force_curve(

@@ -3,15 +3,21 @@
 from __future__ import annotations
 
 import tomllib
+from dataclasses import replace
 from pathlib import Path
+from typing import Any
 
 import machines
 import numpy as np
 import pytest
 from conformance import EvaluatorConformance
 
+from evaluators.finite_element import analysis
 from evaluators.finite_element.evaluator import FiniteElementEvaluator
+from evaluators.finite_element.mesh.geometry import MeshError
 from evaluators.interface import Evaluator, EvaluatorError
+from evaluators.machine.field import Excitation
+from evaluators.machine.geometry.cross_sections import CrossSections
 from evaluators.machine.task.task import Task
 
 COARSE = {
@@ -98,3 +104,42 @@ def test_force_curve_starts_at_the_linear_force_and_bends() -> None:
     top = int(np.argmax(per_ampere))
     assert np.all(np.diff(per_ampere[top:]) < 0.0)
     assert np.ptp(per_ampere) > 0.01 * slope
+
+
+def test_only_the_design_that_cannot_be_meshed_fails(monkeypatch: pytest.MonkeyPatch) -> None:
+    evaluator = FiniteElementEvaluator(machines.task(), COARSE)
+    batch = machines.scattered(11, seed=3)
+    whole = evaluator.evaluate(batch)
+    bad = 1e-3 * batch["rotor_radius_mm"][[2, 9]]
+    solve = analysis.solve
+
+    def solve_some(model: Any, sections: CrossSections, exciting: Excitation) -> Any:
+        if np.any(np.isclose(sections.rotor_radius[:, None], bad)):
+            msg = "a cell of the mesh is folded over"
+            raise MeshError(msg)
+        return solve(model, sections, exciting)
+
+    monkeypatch.setattr(analysis, "solve", solve_some)
+    found = evaluator.evaluate(batch)
+    failed = np.isin(np.arange(11), [2, 9])
+    assert np.all(whole.status == "ok")
+    assert found.status.tolist() == np.where(failed, "failed", "ok").tolist()
+    assert set(found.reason[failed].tolist()) == {"a cell of the mesh is folded over"}
+    for name, column in found.metrics.items():
+        assert np.array_equal(column, np.where(failed, np.nan, whole.metrics[name]), equal_nan=True)
+
+
+def test_a_field_that_does_not_converge_fails_its_own_row(monkeypatch: pytest.MonkeyPatch) -> None:
+    evaluator = FiniteElementEvaluator(machines.task(), COARSE)
+    batch = machines.scattered(5, seed=3)
+    evaluate = analysis.evaluate
+
+    def third_fails(*arguments: Any) -> analysis.Result:
+        result = evaluate(*arguments)
+        return replace(result, converged=np.arange(result.converged.size) != 2)
+
+    monkeypatch.setattr(analysis, "evaluate", third_fails)
+    found = evaluator.evaluate(batch)
+    assert found.status.tolist() == ["ok", "ok", "failed", "ok", "ok"]
+    assert "did not converge" in found.reason[2]
+    assert all(np.isnan(column[2]) for column in found.metrics.values())
