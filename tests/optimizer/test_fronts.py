@@ -9,6 +9,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 from hypothesis.extra.numpy import arrays
+from outside import OutsideChecks
 
 import optimizer.fronts as fronts
 from optimizer.fronts import (
@@ -22,6 +23,9 @@ from optimizer.fronts import (
     non_dominated,
     normalise,
 )
+
+check = OutsideChecks("search")
+DEFINITION = "the definition, point by point"
 
 # Few distinct values, so that ties and equal points are common.
 coarse = st.integers(0, 5).map(float)
@@ -50,7 +54,8 @@ def brute_front(values: np.ndarray) -> np.ndarray:
 
 @given(points)
 def test_non_dominated_is_what_the_definition_says(values: np.ndarray) -> None:
-    assert np.array_equal(non_dominated(values), brute_front(values))
+    check.same("non-dominated points", non_dominated(values), brute_front(values),
+               source=DEFINITION)  # fmt: skip
 
 
 @pytest.mark.parametrize("sort_below", [0, 10_000])
@@ -73,18 +78,37 @@ def test_a_growing_front_equals_the_front_of_all(sort_below, values, seed) -> No
 
 def test_hypervolume_of_three_points_counted_by_hand() -> None:
     # Unit squares below (4, 4): 1 x 3 + 1 x 2 + 1 x 1.
-    assert hypervolume([[1, 3], [2, 2], [3, 1]], [4, 4]) == pytest.approx(6.0, rel=1e-14)
+    check(
+        "hypervolume of three points",
+        hypervolume([[1, 3], [2, 2], [3, 1]], [4, 4]),
+        6.0,
+        relative=1e-14,
+        why="rounding",
+        source="unit squares counted by hand",
+    )
+
+
+def share_of_integral(what: str, got: float, whole: float, step: float, source: str) -> None:
+    """A sampled front has a little less than the integral: stairs of a step each."""
+    check.within(
+        f"hypervolume of {what}: what is missing of the integral, over the steps",
+        (whole - got) / step,
+        0.0,
+        1.0,
+        why="stairs between the samples miss less than one step in all, and never add",
+        source=source,
+    )
 
 
 def test_hypervolume_of_finely_sampled_fronts_tends_to_the_integral() -> None:
-    # 1.1 x 1.1 less the area under 1 - sqrt(f1), ZDT1 of Zitzler, Deb and Thiele, Evol. Comput.
-    # 8 (2000) 173-195: 1.21 - 1/3. With n steps the missing stairs are below 1/n in all.
+    # 1.1 x 1.1 less the area under 1 - sqrt(f1): 1.21 - 1/3; or less a triangle.
     f = np.linspace(0.0, 1.0, 4001)
     got = hypervolume(np.column_stack([f, 1.0 - np.sqrt(f)]), [1.1, 1.1])
-    assert 1.21 - 1.0 / 3.0 - 1.0 / 4000 < got < 1.21 - 1.0 / 3.0
-    # The straight front of MW2, Ma and Wang, IEEE Trans. Evol. Comput. 23 (2019) 972-986.
+    source = "integral of ZDT1, Zitzler, Deb, Thiele, Evol. Comput. 8 (2000) 173-195"
+    share_of_integral("the front of ZDT1", got, 1.21 - 1.0 / 3.0, 1.0 / 4000, source)
     got = hypervolume(np.column_stack([f, 1.0 - f]), [1.1, 1.1])
-    assert 0.71 - 1.0 / 4000 < got < 0.71
+    source = "integral of MW2, Ma, Wang, IEEE Trans. Evol. Comput. 23 (2019) 972-986"
+    share_of_integral("the straight front of MW2", got, 0.71, 1.0 / 4000, source)
 
 
 def test_hypervolume_of_simplex_and_sphere_tends_to_the_integral() -> None:
@@ -94,10 +118,12 @@ def test_hypervolume_of_simplex_and_sphere_tends_to_the_integral() -> None:
     grid = np.array([(i, j) for i in range(steps + 1) for j in range(steps + 1 - i)]) / steps
     simplex = np.column_stack([grid, 1.0 - grid.sum(axis=1)])
     got = hypervolume(simplex, [1.1] * 3)
-    assert 1.331 - 1.0 / 6.0 - 3.0 / steps < got < 1.331 - 1.0 / 6.0
+    source = "volume of a tetrahedron"
+    share_of_integral("a simplex", got, 1.331 - 1.0 / 6.0, 3.0 / steps, source)
     sphere = simplex / np.linalg.norm(simplex, axis=1, keepdims=True)
     got = hypervolume(sphere, [1.1] * 3)
-    assert 1.331 - math.pi / 6.0 - 3.0 / steps < got < 1.331 - math.pi / 6.0
+    source = "volume of an eighth of a ball"
+    share_of_integral("a sphere", got, 1.331 - math.pi / 6.0, 3.0 / steps, source)
 
 
 @given(points)
@@ -106,22 +132,28 @@ def test_hypervolume_counts_unit_cells(values: np.ndarray) -> None:
     m = values.shape[1]
     corners = np.stack(np.meshgrid(*[np.arange(6)] * m, indexing="ij"), axis=-1).reshape(-1, m)
     cells = sum(bool((values <= corner).all(axis=1).any()) for corner in corners)
-    # Whole numbers below 6^4 add up exactly but for rounding in the recursion.
-    assert hypervolume(values, [6.0] * m) == pytest.approx(cells, abs=1e-9)
+    check(
+        "hypervolume of any whole points in one to four objectives",
+        hypervolume(values, [6.0] * m),
+        cells,
+        absolute=1e-9,
+        why="whole numbers below 6^4 add up exactly but for rounding in the recursion",
+        source="unit cells counted one by one",
+    )
 
 
 @given(pairs)
 def test_coverage_and_epsilon_are_what_their_definitions_say(pair) -> None:
     a, b = pair
     covered = [any((p <= q).all() for p in a) for q in b]
-    assert coverage(a, b) == sum(covered) / len(b)
     epsilon = max(min(max(p - q) for p in a) for q in b)
-    assert additive_epsilon(a, b) == epsilon
+    check.same("coverage and additive epsilon", [coverage(a, b), additive_epsilon(a, b)],
+               [sum(covered) / len(b), epsilon], source=DEFINITION)  # fmt: skip
     # Shifted by epsilon, a covers all of b; that is what epsilon means.
     assert coverage(a - epsilon, b) == 1.0
     distance = np.mean([min(np.linalg.norm(np.maximum(p - q, 0.0)) for p in a) for q in b])
-    # Sums in another order.
-    assert igd_plus(a, b) == pytest.approx(distance, rel=1e-12, abs=1e-12)
+    check("inverted generational distance plus", igd_plus(a, b), distance, relative=1e-12,
+          absolute=1e-12, why="sums in another order", source=DEFINITION)  # fmt: skip
 
 
 @given(pairs)
@@ -140,8 +172,14 @@ def test_the_estimated_hypervolume_is_near_repeatable_and_never_falls() -> None:
     grown = [hypervolume_estimate(front[: n + 1], corner) for n in range(len(front))]
     assert (np.diff(grown) >= 0.0).all()
     assert grown[-1] == hypervolume_estimate(front, corner)
-    # 16384 samples: a relative deviation of about 1/128 if they were random.
-    assert grown[-1] == pytest.approx(hypervolume(front, corner), rel=0.02)
+    check(
+        "estimated hypervolume in six objectives",
+        grown[-1],
+        hypervolume(front, corner),
+        relative=0.02,
+        why="16384 samples: about 1/128 if they were random",
+        source="exact hypervolume of the library",
+    )
     assert hypervolume_estimate(front + 1.0, corner) == 0.0
 
 
@@ -179,8 +217,12 @@ def test_the_compromise_is_nearest_to_the_ideal_whatever_the_units() -> None:
     # On the circle (1 - cos t, 1 - sin t) the point nearest to (0, 0) is at 45 degrees.
     t = np.linspace(0.0, np.pi / 2.0, 91)
     front = np.column_stack([1.0 - np.cos(t), 1.0 - np.sin(t)])
-    assert compromise(front) == 45
-    assert compromise(front * [1e3, 1e-3] + [7.0, -2.0]) == 45
+    check.same(
+        "compromise on a quarter of a circle, in two systems of units",
+        [compromise(front), compromise(front * [1e3, 1e-3] + [7.0, -2.0])],
+        [45, 45],
+        source="nearest point to the ideal, by symmetry",
+    )
 
 
 def test_normalise_keeps_a_flat_objective_finite() -> None:

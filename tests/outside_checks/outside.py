@@ -43,6 +43,8 @@ TOPICS = {
     "studies": "Studies and what is made of their results",
 }
 
+PLAIN = "abs."  # unit of an absolute deviation of a pure number
+
 Key = tuple[str, str, str, str, str, str]
 
 
@@ -125,7 +127,7 @@ class OutsideChecks:
         why
             The reason for the tolerance.
         unit
-            Of `absolute`.
+            Of `absolute`; empty for pure numbers.
         source
             Where `expected` comes from.
         """
@@ -141,7 +143,7 @@ class OutsideChecks:
             by_size = relative * size >= absolute
             share = np.where(deviation == 0.0, 0.0, deviation / size)
         limits = [size_text(relative)] if relative > 0.0 else []
-        limits += [with_unit(number(absolute), unit)] if absolute > 0.0 else []
+        limits += [with_unit(number(absolute), unit or PLAIN)] if absolute > 0.0 else []
         row = self._row(what, " or ".join(limits), why, source, unit)
         inside = np.isfinite(tolerance) & (deviation <= tolerance) | (deviation == 0.0)
         if not np.all(inside):

@@ -13,6 +13,7 @@ import pytest
 from click.testing import Result
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from outside import OutsideChecks
 
 from evaluators.machine.geometry.cross_sections import cross_sections
 from evaluators.machine.task.task import Construction
@@ -42,6 +43,9 @@ BASE = {
 }
 
 
+check = OutsideChecks("studies")
+
+
 def normal(x: float) -> float:
     """Standard normal distribution function."""
     return 0.5 * (1.0 + erf(x / sqrt(2.0)))
@@ -63,12 +67,25 @@ def test_yield_and_contributors_of_a_linear_metric_are_the_closed_form() -> None
     limit = 7.4
     found = yield_of(values <= limit, drawn.lot)
     exact = normal((limit - 7.0) / whole)
-    # Five standard errors of 20,000 independent machines; a Latin hypercube is better still.
-    assert found.share == pytest.approx(exact, abs=5.0 * sqrt(exact * (1.0 - exact) / 20_000))
+    source = "normal distribution of a sum, closed form"
+    check(
+        "yield of a linear metric",
+        found.share,
+        exact,
+        absolute=5.0 * sqrt(exact * (1.0 - exact) / 20_000),
+        why="five standard errors of 20,000 independent machines; a Latin hypercube is better",
+        source=source,
+    )
     assert found.low <= exact <= found.high
     parts = contributions(drawn.deviations, drawn.sigma, values)
-    # Sample variances and correlations of 20,000 draws are right to about 1 %.
-    assert parts.shares == pytest.approx((slopes * sigmas) ** 2 / whole**2, abs=0.02)
+    check(
+        "shares of the sources in the variance of a linear metric",
+        parts.shares,
+        (slopes * sigmas) ** 2 / whole**2,
+        absolute=0.02,
+        why="sample variances and correlations of 20,000 draws are right to about 1 %",
+        source=source,
+    )
     assert parts.slopes == pytest.approx(slopes, rel=1e-9)  # noise-free, so exact
     assert parts.explained == pytest.approx(1.0, abs=1e-12)
     assert parts.deviation == pytest.approx(whole, rel=0.02)
@@ -102,11 +119,16 @@ def test_lots_that_differ_widen_the_interval() -> None:
     apart = yield_of(lot < 5, lot)  # whole lots pass or fail
     assert alike.share == apart.share == 0.5
     assert apart.high - apart.low > 2.0 * (alike.high - alike.low)
-    # Wilson's interval for 100 of 200, from its published formula.
-    assert (alike.low, alike.high) == pytest.approx((0.4314, 0.5686), abs=1e-4)
     all_pass = yield_of(np.ones(50, dtype=bool), np.arange(50) % 5)
     assert all_pass.high == 1.0
-    assert all_pass.low == pytest.approx(1.0 / (1.0 + 1.959964**2 / 50.0), abs=1e-6)
+    check(
+        "interval of a yield: 100 of 200 machines, 50 of 50",
+        [alike.low, alike.high, all_pass.low],
+        [0.4313609, 0.5686391, 1.0 / (1.0 + 1.959964**2 / 50.0)],
+        absolute=1e-6,
+        why="printed digits",
+        source="Wilson 1927, own evaluation of his formula",
+    )
 
 
 @settings(max_examples=60, deadline=None)
@@ -193,8 +215,14 @@ def test_command_gives_the_closed_form_for_a_linear_metric(
     )  # fmt: skip
     assert done.exit_code == 0, done.output
     found = json.loads(done.stdout)
-    # Stratified draws of the only source that matters: right to a machine or two of 400.
-    assert found["yield"]["share"] == pytest.approx(normal(0.8), abs=2.0 / 400.0)
+    check(
+        "yield of a swept design whose tip speed alone is limited",
+        found["yield"]["share"],
+        normal(0.8),
+        absolute=2.0 / 400.0,
+        why="stratified draws of the only source that matters: a machine or two of 400",
+        source="normal distribution, closed form",
+    )
     limited = found["limits"][0]
     assert limited["metric"] == "tip_speed_m_s"
     assert limited["mean"] == pytest.approx(radius * 1e-3 * speed, rel=1e-3)
