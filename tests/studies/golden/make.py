@@ -1,4 +1,4 @@
-"""Made ``layout_1`` beside this file: results folders as the first version of their layout has them.
+"""Made ``layout_1`` beside this file: results as the first version of their layout has them.
 
 Run once for each new layout or schema version, by the code that writes it, and never again: what
 it wrote must stay readable. The toy evaluator of these tests has to be installed, as the fixture
