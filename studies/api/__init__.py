@@ -45,10 +45,12 @@ from studies.api.judging import choose, sensitivity, tolerance, verify
 from studies.api.listing import families, materials, metrics, variables
 from studies.api.reading import (
     compare,
+    compare_searches,
     evaluations,
     front,
     inspect,
     open_study,
+    order_certainty,
     status,
     verified,
 )
@@ -58,6 +60,7 @@ from studies.api.writing import export_design, export_fronts, report, sheet
 __all__ = [
     "choose",
     "compare",
+    "compare_searches",
     "evaluations",
     "export_design",
     "export_fronts",
@@ -69,6 +72,7 @@ __all__ = [
     "metrics",
     "new_study",
     "open_study",
+    "order_certainty",
     "report",
     "resume",
     "sensitivity",

@@ -8,13 +8,16 @@ from pathlib import Path
 import pyarrow as pa
 
 from studies.api.tables import Folder, Folders, described, opened, table_of, table_of_csv
+from studies.comparison.certainty import order_certainty as order_certainty_of
+from studies.comparison.certainty import pair_rows, search_rows
 from studies.comparison.numbers import compare_families
 from studies.comparison.text import summary_csv
-from studies.export.front import front_table
+from studies.export.front_table import front_table
 from studies.inspection.design import inspect_design
 from studies.running.status import study_status
-from studies.stored.families import design_id, stored_families, stored_family
+from studies.stored.families import stored_families, stored_family
 from studies.stored.layout import Results, open_results
+from studies.stored.naming import design_id
 from studies.stored.verified import evaluator_for, read_verified, verified_evaluators
 
 
@@ -30,7 +33,7 @@ def open_study(folder: Folder) -> Results:
 
 
 def status(folders: Folders) -> pa.Table:
-    """How far each family is: one row a family, with study, folder and seed.
+    """How far each search is: one row a search of a family, with study, folder and seed.
 
     ``damaged_parts`` counts parts of the study that cannot be read; `resume` evaluates them again.
     """
@@ -51,7 +54,7 @@ def status(folders: Folders) -> pa.Table:
 def evaluations(
     folder: Folder, families: Sequence[str] = (), columns: Sequence[str] | None = None
 ) -> pa.Table:
-    """Every evaluation stored, family by family in the order in which they were asked for.
+    """Every evaluation stored, search by search in the order in which they were asked for.
 
     Parameters
     ----------
@@ -65,8 +68,9 @@ def evaluations(
     Returns
     -------
     pyarrow.Table
-        ``design`` and ``family`` first, then the columns: variables, metrics, ``status`` and
-        ``reason``, ``objective:...`` (minimised), ``margin:...`` (met at 0 or below).
+        ``design`` (which names the search from the second on) and ``family`` first, then the
+        columns: variables, metrics, ``status`` and ``reason``, ``objective:...`` (minimised),
+        ``margin:...`` (met at 0 or below).
 
     Raises
     ------
@@ -79,11 +83,11 @@ def evaluations(
     else:
         found = stored_families(results)
     parts = []
-    for stored in found:
+    for stored in [search for family in found for search in family.searches]:
         wanted = None if columns is None else list(dict.fromkeys(["evaluation", *columns]))
         table = stored.reader.table(wanted).replace_schema_metadata(None)
         numbers = table["evaluation"].to_pylist()
-        ids = pa.array([design_id(stored.family, number) for number in numbers], pa.string())
+        ids = pa.array([design_id(stored.name, number) for number in numbers], pa.string())
         names = pa.array([stored.family] * len(numbers), pa.string())
         if columns is not None and "evaluation" not in columns:
             table = table.drop_columns(["evaluation"])
@@ -127,7 +131,9 @@ def compare(
     pyarrow.Table
         study, family, evaluations, feasible, failed, front_size, hypervolume (share of the common
         box), joint_front_share, ``best:...`` of each objective in its own sense, the compromise
-        design and its metrics.
+        design and its metrics. Where families were searched several times also searches,
+        ``hypervolume_smallest``, ``_median``, ``_largest`` and ``hypervolume:1`` and so on, each
+        search's own.
 
     Raises
     ------
@@ -138,6 +144,27 @@ def compare(
     wanted = verified_by is not None or verified_only
     name = evaluator_for(results, verified_by or "") if wanted else ""
     return table_of_csv(summary_csv(compare_families(results, name, verified_only=verified_only)))
+
+
+def compare_searches(folders: Folders) -> pa.Table:
+    """Every search by itself on the common scale of `compare`: one row a search.
+
+    Columns label (of the family), search, seed, evaluations, front_size, hypervolume; the family
+    with the largest median first. Empty if every family was searched once.
+    """
+    certainty = order_certainty_of(compare_families(opened(folders)))
+    return table_of(search_rows(certainty) if certainty else [], ["label", "search"])
+
+
+def order_certainty(folders: Folders) -> pa.Table:
+    """How sure the order of the families is: one row a pair of families.
+
+    Columns first (the one with the larger median) and second, pairs_of_searches, first_ahead,
+    equal, probability that a search of the first reaches the larger hypervolume, p of the exact
+    two-sided rank-sum test, p_corrected for all pairs. Empty if every family was searched once.
+    """
+    certainty = order_certainty_of(compare_families(opened(folders)))
+    return table_of(pair_rows(certainty) if certainty else [], ["first", "second"])
 
 
 def inspect(folder: Folder, design: str) -> pa.Table:
@@ -162,11 +189,11 @@ def verified(folder: Folder, evaluator: str = "") -> pa.Table:
     """
     results = open_study(folder)
     rows = []
-    for stored in stored_families(results):
+    for stored in [search for family in stored_families(results) for search in family.searches]:
         for name in verified_evaluators(stored.folder):
             if evaluator in ("", name):
                 rows += [
-                    {"design": design_id(stored.family, number), "family": stored.family}
+                    {"design": design_id(stored.name, number), "family": stored.family}
                     | dict(row.values)
                     for number, row in sorted(read_verified(stored.folder, name).rows.items())
                 ]

@@ -19,6 +19,7 @@ from studies.running.problem import MachineProblem
 from studies.running.spending import Spending
 from studies.shipped.library import find_study
 from studies.stored.layout import Request, Results, create, open_results, save_request
+from studies.stored.naming import split_search_name
 from studies.study_file.definition import Study
 
 Watch = Callable[[str, Progress], None]
@@ -65,6 +66,7 @@ def sweep(
     *,
     families: Sequence[str] = (),
     evaluations: int | None = None,
+    searches: int | None = None,
     seed: int | None = None,
     workers: int | None = None,
     cluster: str = "",
@@ -81,8 +83,9 @@ def sweep(
         Folder in which the study gets a folder of its own.
     families : sequence of str
         Empty for all.
-    evaluations, seed : int, optional
-        Instead of the study's.
+    evaluations, searches, seed : int, optional
+        Evaluations of each search, independent searches of each family, and seed, instead of the
+        study's.
     workers : int, optional
         Processes; by default one for each processor. The results do not depend on it.
     cluster : str
@@ -90,15 +93,16 @@ def sweep(
     allow_program : bool
         Consent to start the program that the evaluator's settings name.
     progress : callable, optional
-        Called with the family and its `optimizer.running.progress.Progress` several times a second.
+        Called with the name of the search (the family, or such as ``Q12p4s5.2``) and its
+        `optimizer.running.progress.Progress` several times a second.
     stop : callable, optional
         Asked often; True lets the designs in hand finish, stores them and ends.
 
     Returns
     -------
     pyarrow.Table
-        One row a family searched: family, evaluations, new, feasible, failed, front_size,
-        hypervolume, seconds, stopped, ended (why it got fewer evaluations than
+        One row a search: family, search (its number), evaluations, new, feasible, failed,
+        front_size, hypervolume, seconds, stopped, ended (why it got fewer evaluations than
         wanted, empty if it got them).
 
     Raises
@@ -115,7 +119,9 @@ def sweep(
         families=chosen,
         evaluations_per_family=evaluations or wanted.search.evaluations_per_family,
         seed=wanted.search.seed if seed is None else seed,
+        searches_per_family=searches or wanted.search.searches_per_family,
     )
+    room.announced(wanted, chosen, request)
     with dispatcher_of(wanted, workers, cluster) as dispatcher:
         results_of_study = create(Path(results), wanted, request)
         return _search(results_of_study, problems, dispatcher, progress, stop)
@@ -126,13 +132,14 @@ def resume(
     *,
     families: Sequence[str] = (),
     evaluations: int | None = None,
+    searches: int | None = None,
     workers: int | None = None,
     cluster: str = "",
     allow_program: bool = False,
     progress: Watch | None = None,
     stop: Stop | None = None,
 ) -> pa.Table:
-    """Go on with a sweep that was stopped, or extend it with more `evaluations`.
+    """Go on with a sweep that was stopped, or extend it with more `evaluations` or `searches`.
 
     Parameters and result as of `sweep`; `folder` is the results folder of the study.
     """
@@ -140,11 +147,15 @@ def resume(
     study = results.study
     chosen = room.chosen_families(study, families or results.request.families)
     problems = room.problems_of(study, chosen, allow_program)
-    request = results.request
-    if evaluations is not None:
-        request = replace(request, evaluations_per_family=evaluations)
-    searched = tuple(name for name in study.families if name in {*chosen, *request.families})
-    results = save_request(results, replace(request, families=searched))
+    asked = results.request
+    request = replace(
+        asked,
+        families=tuple(item for item in study.families if item in {*chosen, *asked.families}),
+        evaluations_per_family=evaluations or asked.evaluations_per_family,
+        searches_per_family=searches or asked.searches_per_family,
+    )
+    room.announced(study, chosen, request)
+    results = save_request(results, request)
     with dispatcher_of(study, workers, cluster) as dispatcher:
         return _search(results, problems, dispatcher, progress, stop)
 
@@ -158,9 +169,9 @@ def _search(
 ) -> pa.Table:
     searched = ""
 
-    def begin(family: str) -> None:
+    def begin(search: str) -> None:
         nonlocal searched
-        searched = family
+        searched = search
 
     def show(state: Progress) -> None:
         if progress is not None:
@@ -169,25 +180,29 @@ def _search(
     with writer_lock(results.folder):
         spending = Spending(
             results,
-            problems,
-            lambda problem: room.search_settings(results, problem),
+            room.problems_of_searches(results, problems),
+            lambda name, problem: room.search_settings(
+                results, problem, split_search_name(name)[1]
+            ),
             dispatcher,
             begin,
             show,
             stop or _never,
         )
-        return table_of([_row(family, summary) for family, summary in spending.families()])
+        return table_of([_row(name, summary) for name, summary in spending.searches()])
 
 
 def _never() -> bool:
     return False
 
 
-def _row(family: str, summary: Summary) -> dict[str, object]:
+def _row(name: str, summary: Summary) -> dict[str, object]:
+    family, search = split_search_name(name)
     names = ("evaluations", "new", "feasible", "failed", "front_size", "hypervolume", "seconds")
     return {
         "family": family,
-        **{name: getattr(summary, name) for name in names},
+        "search": search,
+        **{item: getattr(summary, item) for item in names},
         "stopped": summary.stopped,
         "ended": summary.ended,
     }

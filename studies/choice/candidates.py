@@ -16,8 +16,9 @@ from evaluators.machine.geometry.variables import VARIABLE_NAMES
 from studies.choice.preferences import Preferences, scenario_prices
 from studies.errors import ResultsError
 from studies.running.problem import margin
-from studies.stored.families import Stored, design_id, matrix, stored_families
+from studies.stored.families import StoredFamily, matrix, stored_families
 from studies.stored.layout import Results
+from studies.stored.naming import design_id
 from studies.study_file.crosschecks import Limit
 
 FloatArray = NDArray[np.float64]
@@ -39,6 +40,10 @@ class Pool:
         Family, with the folder of the study before it if several studies are compared.
     results : Results
     family : str
+    searches : tuple of str
+        Names of the family's searches.
+    owner : array (n,) of int
+        Which of them each candidate is of.
     evaluations : array (n,) of int
     values : array (n, criteria)
         In their own sense.
@@ -51,6 +56,8 @@ class Pool:
     label: str
     results: Results
     family: str
+    searches: tuple[str, ...]
+    owner: NDArray[np.int64]
     evaluations: NDArray[np.int64]
     values: FloatArray
     feasible_before: int
@@ -58,7 +65,7 @@ class Pool:
 
     def design(self, row: int) -> str:
         """Id of a candidate."""
-        return design_id(self.family, int(self.evaluations[row]))
+        return design_id(self.searches[self.owner[row]], int(self.evaluations[row]))
 
 
 def candidate_pools(opened: Sequence[Results], wanted: Preferences) -> list[Pool]:
@@ -77,7 +84,7 @@ def candidate_pools(opened: Sequence[Results], wanted: Preferences) -> list[Pool
     pools = []
     for results in opened:
         for stored in stored_families(results):
-            if stored.reader.rows:
+            if any(item.reader.rows for item in stored.searches):
                 label = f"{results.folder.name}/{stored.family}" if several else stored.family
                 pools.append(_pool(label, results, stored, wanted))
     if not pools:
@@ -100,7 +107,7 @@ def _check_alike(opened: Sequence[Results], wanted: Preferences) -> None:
                 raise ResultsError(msg)
 
 
-def _pool(label: str, results: Results, stored: Stored, wanted: Preferences) -> Pool:
+def _pool(label: str, results: Results, stored: StoredFamily, wanted: Preferences) -> Pool:
     study = results.study
     goals = {goal.name: goal for goal in study.objectives}
     limits = [*study.limits, *wanted.limits]
@@ -111,13 +118,14 @@ def _pool(label: str, results: Results, stored: Stored, wanted: Preferences) -> 
         needed |= {COST, LENGTH, MASS, *VARIABLE_NAMES}
     if wanted.market != "base":
         needed |= {COST, f"{COST}_{wanted.market}"}
-    missing = sorted(needed - set(stored.reader.schema.names))
+    missing = sorted(needed - stored.columns)
     if missing:
-        msg = f"{stored.folder}: {missing[0]} is not stored; its evaluator does not return it"
+        msg = (
+            f"{stored.searches[0].folder}: {missing[0]} is not stored; its evaluator does not "
+            "return it"
+        )
         raise ResultsError(msg)
-    table = stored.reader.table(["evaluation", "status", *sorted(needed)])
-    ok = np.asarray(table["status"].to_pylist()) == "ok"
-    table = table.filter(pa.array(ok))
+    table, owner = _evaluated(stored, sorted(needed))
     metrics = {name: matrix(table, [name])[:, 0] for name in sorted(needed)}
     if wanted.prices:
         metrics[COST] = _scenario_cost(results, stored, metrics, wanted)
@@ -140,11 +148,26 @@ def _pool(label: str, results: Results, stored: Stored, wanted: Preferences) -> 
         label=label,
         results=results,
         family=stored.family,
+        searches=tuple(item.name for item in stored.searches),
+        owner=owner[kept],
         evaluations=table["evaluation"].to_numpy()[kept],
         values=values[kept],
         feasible_before=int(np.count_nonzero(own)),
         best_limited=best,
     )
+
+
+def _evaluated(stored: StoredFamily, names: list[str]) -> tuple[pa.Table, NDArray[np.int64]]:
+    """Evaluated designs of all searches, and which search each is of."""
+    tables = []
+    for item in stored.searches:
+        table = item.reader.table(["evaluation", "status", *names])
+        if table.num_rows:
+            ok = np.asarray(table["status"].to_pylist()) == "ok"
+            table = table.filter(pa.array(ok)).replace_schema_metadata(None)
+        tables.append(table)
+    owner = np.repeat(np.arange(len(tables)), [table.num_rows for table in tables])
+    return pa.concat_tables([table for table in tables if table.num_columns]), owner
 
 
 def _meets(metrics: dict[str, FloatArray], limits: Sequence[Limit], rows: int) -> BoolArray:
@@ -161,7 +184,7 @@ def _best(values: FloatArray, smallest: bool) -> float:
 
 
 def _scenario_cost(
-    results: Results, stored: Stored, metrics: dict[str, FloatArray], wanted: Preferences
+    results: Results, stored: StoredFamily, metrics: dict[str, FloatArray], wanted: Preferences
 ) -> FloatArray:
     """Cost at the scenario's prices from stored dimensions and masses; no field is solved again.
 
@@ -182,8 +205,8 @@ def _scenario_cost(
     known = metrics[COST][valid]
     if len(valid) < len(metrics[COST]) or np.any(np.abs(own - known) > SAME_COST * known):
         msg = (
-            f"{stored.folder}: the stored cost cannot be worked out again from the dimensions, so "
-            "prices cannot be exchanged; sweep the study anew with this version"
+            f"{stored.searches[0].folder}: the stored cost cannot be worked out again from the "
+            "dimensions, so prices cannot be exchanged; sweep the study anew with this version"
         )
         raise ResultsError(msg)
     return active_material_cost(masses, scenario_prices(task.prices, wanted.prices))

@@ -12,6 +12,7 @@ from studies.choice.candidates import Pool
 from studies.choice.preferences import Preferences
 from studies.choice.ranking import Scale, achievement, scale_of, weighted_sum
 from studies.errors import ResultsError
+from studies.stored.naming import split_design_id
 
 FloatArray = NDArray[np.float64]
 
@@ -164,12 +165,14 @@ def _row_of(pools: list[Pool], take: str) -> int:
     """Row of a design among all candidates."""
     before = 0
     found = []
+    folder, _, design = take.rpartition("/")
+    search, number = split_design_id(design)
     for pool in pools:
-        family, _, number = take.rpartition("/")[2].rpartition("-")
-        folder = take.rpartition("/")[0]
-        if family == pool.family and folder in ("", pool.results.folder.name):
-            wanted = int(number) if number.isdecimal() else -1
-            found += [before + int(row) for row in np.flatnonzero(pool.evaluations == wanted)]
+        if search in pool.searches and folder in ("", pool.results.folder.name):
+            own = pool.owner == pool.searches.index(search)
+            found += [
+                before + int(row) for row in np.flatnonzero(own & (pool.evaluations == number))
+            ]
         before += len(pool.values)
     if len(found) == 1:
         return found[0]

@@ -31,11 +31,12 @@ def compare(
 ) -> None:
     """Compare the families of one or several studies by their fronts."""
     from studies.comparison import text as comparison_text
+    from studies.comparison.certainty import certainty_json, order_certainty
     from studies.comparison.numbers import as_json as comparison_json
     from studies.comparison.numbers import compare_families
     from studies.stored.damage import report_damage, report_verified_damage
     from studies.stored.layout import open_results
-    from studies.stored.verified import VerifiedStored, evaluator_for
+    from studies.stored.verified import VerifiedFamily, evaluator_for
 
     distinct = dict.fromkeys(str(Path(folder)) for folder in folders)
     opened = [open_results(Path(folder)) for folder in distinct]
@@ -49,15 +50,17 @@ def compare(
     if front_csv:
         _write(Path(front_csv), comparison_text.front_csv(comparison))
     if as_json:
-        click.echo(json.dumps(comparison_json(comparison), indent=2, allow_nan=False))
+        content = comparison_json(comparison)
+        content["certainty"] = certainty_json(order_certainty(comparison))
+        click.echo(json.dumps(content, indent=2, allow_nan=False))
     else:
         click.echo(comparison_text.comparison_text(comparison))
-    damaged = [part for member in comparison.members for part in member.stored.reader.damaged]
+    damaged = [part for member in comparison.members for part in member.stored.damaged]
     verified_damage = [
         part
         for member in comparison.members
-        if isinstance(member.stored, VerifiedStored)
-        for part in member.stored.values.damaged
+        if isinstance(member.stored, VerifiedFamily)
+        for part in member.stored.damaged_values
     ]
     context.exit(max(report_damage(damaged), report_verified_damage(verified_damage)))
 

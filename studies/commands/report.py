@@ -47,5 +47,5 @@ def report(
         file.write_bytes(page)
     shown = sum(len(family.ids) for family in data.families)
     click.echo(f"wrote {file}: {shown} designs, {len(page) / 1e6:.1f} MB")
-    damaged = [part for family in data.families for part in family.member.stored.reader.damaged]
+    damaged = [part for family in data.families for part in family.member.stored.damaged]
     context.exit(report_damage(damaged))

@@ -5,7 +5,7 @@ from __future__ import annotations
 import click
 
 from studies.commands.options import allow_program_option, workers_options
-from studies.commands.sweep import LARGEST_BUDGET
+from studies.commands.sweep import LARGEST_BUDGET, MOST_SEARCHES
 
 
 @click.command()
@@ -14,7 +14,12 @@ from studies.commands.sweep import LARGEST_BUDGET
 @click.option(
     "--budget",
     type=click.IntRange(1, LARGEST_BUDGET),
-    help="Evaluations of each family from now on; more than before extends the search.",
+    help="Evaluations of each search from now on; more than before extends the search.",
+)
+@click.option(
+    "--searches",
+    type=click.IntRange(1, MOST_SEARCHES),
+    help="Independent searches of each family from now on; more than before adds searches.",
 )
 @workers_options
 @allow_program_option
@@ -31,12 +36,13 @@ def resume(
     results_folder: str,
     family: tuple[str, ...],
     budget: int | None,
+    searches: int | None,
     workers: int | None,
     cluster: str,
     allow_program: bool,
     study_file: str,
 ) -> None:
-    """Go on with a sweep that was stopped, or extend it with --budget.
+    """Go on with a sweep that was stopped, or extend it with --budget and --searches.
 
     The stored copy of the study decides; what has changed in the study file since then is said.
     """
@@ -62,16 +68,17 @@ def resume(
     families = room.chosen_families(study, family or results.request.families)
     problems = room.problems_of(study, families, allow_program)
     dispatcher = context.with_resource(dispatcher_of(study, workers, cluster))
-    if budget is not None:
-        results = save_request(results, replace(results.request, evaluations_per_family=budget))
-    wanted = tuple(
-        item for item in study.families if item in families or item in results.request.families
+    asked = results.request
+    wanted = tuple(item for item in study.families if item in families or item in asked.families)
+    request = replace(
+        asked,
+        families=wanted,
+        evaluations_per_family=budget or asked.evaluations_per_family,
+        searches_per_family=searches or asked.searches_per_family,
     )
-    results = save_request(results, replace(results.request, families=wanted))
+    said = room.announced(study, families, request)
+    results = save_request(results, request)
     if allow_program:
         announce_program(problems.values())
-    click.echo(
-        f"{study.name}: {room.counted(families)}, "
-        f"{results.request.evaluations_per_family:,} evaluations each, in {results.folder}"
-    )
+    click.echo(f"{said}, in {results.folder}")
     context.exit(room.search_families(results, problems, dispatcher))

@@ -23,6 +23,7 @@ def status(context: click.Context, results_folder: str, as_json: bool) -> None:
     from studies.running.status import study_status
     from studies.stored.damage import report_damage
     from studies.stored.layout import STUDY_FILE, open_results, storage, studies_in
+    from studies.stored.naming import search_name
     from studies.tables import percent, text_table
 
     root = Path(results_folder)
@@ -47,7 +48,7 @@ def status(context: click.Context, results_folder: str, as_json: bool) -> None:
         click.echo(f"{entry['study']} in {entry['folder']}, {entry['state']}")
         rows = [
             [
-                family["family"],
+                search_name(family["family"], family["search"]),
                 f"{family['evaluations']:,}/{family['budget']:,}",
                 percent(family["feasible"] / max(1, family["evaluations"])),
                 f"{family['failed']:,}",
@@ -56,7 +57,9 @@ def status(context: click.Context, results_folder: str, as_json: bool) -> None:
             ]
             for family in entry["families"]
         ]
-        head = ["family", "evaluations", "feasible", "failed", "front", "state"]
+        several = any(family["search"] > 1 for family in entry["families"])
+        first = "search" if several else "family"
+        head = [first, "evaluations", "feasible", "failed", "front", "state"]
         click.echo(text_table(head, rows) + "\n")
     for text in failures:
         click.echo(text, err=True)

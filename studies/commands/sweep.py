@@ -7,6 +7,7 @@ import click
 from studies.commands.options import allow_program_option, workers_options
 
 LARGEST_BUDGET = 10_000_000
+MOST_SEARCHES = 100
 
 
 @click.command()
@@ -21,7 +22,12 @@ LARGEST_BUDGET = 10_000_000
 )
 @click.option("--family", "family", multiple=True, help="Search only this family; repeatable.")
 @click.option(
-    "--budget", type=click.IntRange(1, LARGEST_BUDGET), help="Evaluations of each family."
+    "--budget", type=click.IntRange(1, LARGEST_BUDGET), help="Evaluations of each search."
+)
+@click.option(
+    "--searches",
+    type=click.IntRange(1, MOST_SEARCHES),
+    help="Independent searches of each family; several show how much of the order is chance.",
 )
 @workers_options
 @allow_program_option
@@ -33,6 +39,7 @@ def sweep(
     results_folder: str,
     family: tuple[str, ...],
     budget: int | None,
+    searches: int | None,
     workers: int | None,
     cluster: str,
     allow_program: bool,
@@ -60,13 +67,12 @@ def sweep(
         families=families,
         evaluations_per_family=budget or study.search.evaluations_per_family,
         seed=study.search.seed if seed is None else seed,
+        searches_per_family=searches or study.search.searches_per_family,
     )
+    said = room.announced(study, families, request)
     dispatcher = context.with_resource(dispatcher_of(study, workers, cluster))
     results = create(Path(results_folder), study, request)
     if allow_program:
         announce_program(problems.values())
-    click.echo(
-        f"{study.name}: {room.counted(families)}, {request.evaluations_per_family:,} evaluations "
-        f"each, into {results.folder}"
-    )
+    click.echo(f"{said}, into {results.folder}")
     context.exit(room.search_families(results, problems, dispatcher))

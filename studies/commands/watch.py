@@ -42,7 +42,7 @@ def watch(results_folder: str, interval: float | None, wait: bool, once: bool) -
             writer = writer_of(folder)
             if writer:
                 seen, idle_since = True, time.monotonic()
-                state.results = open_results(folder)  # `resume --budget` may have raised it
+                state.follow(open_results(folder))  # `resume` may have raised what is wanted
             state.refresh()
             at_work = f"searched by {writer}" if writer else "not being searched"
             screen.show([f"{state.results.study.name}: {at_work}", *state.lines(screen.width)])

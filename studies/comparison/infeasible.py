@@ -5,8 +5,9 @@ from __future__ import annotations
 import re
 from collections import Counter
 
-from studies.stored.families import Stored, least_violating, stored_family, violation_statistics
+from studies.stored.families import StoredFamily, stored_family
 from studies.stored.layout import Results
+from studies.stored.violations import least_violating, violation_statistics
 from studies.tables import number, percent, text_table
 
 SHOWN_DESIGNS = 3
@@ -46,7 +47,7 @@ def explain(results: Results, family: str, designs: int = SHOWN_DESIGNS) -> str:
     if nearest:
         lines.append("Nearest to feasible:")
     for item in nearest:
-        row = stored.reader.row(int(item.design.rpartition("-")[2]))
+        row = stored.row(item.design)
         said = []
         for name, margin in item.margins.items():
             if margin > 0.0:
@@ -57,11 +58,11 @@ def explain(results: Results, family: str, designs: int = SHOWN_DESIGNS) -> str:
     return "\n".join(lines)
 
 
-def _reasons(stored: Stored) -> str:
+def _reasons(stored: StoredFamily) -> str:
     """The commonest reasons of failed rows, alike but for their numbers counted as one."""
     examples: dict[str, str] = {}
     counts: Counter[str] = Counter()
-    for reason in stored.reader.table(["reason"])["reason"].to_pylist():
+    for reason in stored.table(["reason"])["reason"].to_pylist():
         kind = NUMBER.sub("#", reason)
         counts[kind] += 1
         examples.setdefault(kind, reason)

@@ -12,9 +12,10 @@ import numpy as np
 from evaluators.machine.metrics import METRIC
 from optimizer.fronts import additive_epsilon, coverage, hypervolume, non_dominated, normalise
 from studies.errors import ResultsError
-from studies.stored.families import FloatArray, Stored, least_violating, stored_families
+from studies.stored.families import FloatArray, StoredFamily, stored_families
 from studies.stored.layout import Results
-from studies.stored.verified import VerifiedStored, with_verified
+from studies.stored.verified import VerifiedFamily
+from studies.stored.violations import least_violating
 from studies.study_file.crosschecks import Objective
 
 REFERENCE = 1.1  # in every objective, once the joint fronts span 0 to 1
@@ -47,7 +48,8 @@ class Member:
     """One family in a comparison."""
 
     label: str
-    stored: Stored
+    results: Results
+    stored: StoredFamily
     limits: tuple[str, ...]
     hypervolume: float
     joint_share: float
@@ -96,7 +98,7 @@ def compare_families(
     ----------
     opened : sequence of Results
     verified_by : str
-        Evaluator whose verified values count where there are any; see `VerifiedStored`.
+        Evaluator whose verified values count where there are any; see `VerifiedFamily`.
     verified_only : bool
         Leave out designs that were not verified by it.
 
@@ -119,8 +121,10 @@ def compare_families(
             raise ResultsError(msg)
     several = len(opened) > 1
 
-    def counted(stored: Stored) -> Stored:
-        return with_verified(stored, verified_by, verified_only) if verified_by else stored
+    def counted(stored: StoredFamily) -> StoredFamily:
+        if not verified_by:
+            return stored
+        return VerifiedFamily(stored.searches, verified_by, verified_only)
 
     # Folder names serve as labels where two studies carry one name.
     found = [
@@ -157,6 +161,7 @@ def compare_families(
         members.append(
             Member(
                 label=label,
+                results=results,
                 stored=stored,
                 limits=limits,
                 hypervolume=hypervolume(points, corner) / box if len(points) else 0.0,
@@ -175,7 +180,7 @@ def compare_families(
     return Comparison(tuple(members), first.objectives, ideal, nadir, covered, epsilon, dominated)
 
 
-def _binding(stored: Stored, limits: tuple[str, ...]) -> dict[str, float]:
+def _binding(stored: StoredFamily, limits: tuple[str, ...]) -> dict[str, float]:
     """Share of the front that each limit binds, only those that bind at all."""
     if not stored.front.num_rows:
         return {}
@@ -264,8 +269,8 @@ def _member_json(comparison: Comparison, member: Member) -> dict[str, Any]:
     return entry
 
 
-def _verified_json(stored: Stored) -> dict[str, Any] | None:
-    if not isinstance(stored, VerifiedStored):
+def _verified_json(stored: StoredFamily) -> dict[str, Any] | None:
+    if not isinstance(stored, VerifiedFamily):
         return None
     counts = stored.verified_counts
     return {

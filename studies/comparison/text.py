@@ -6,6 +6,8 @@ from collections.abc import Iterator, Sequence
 from textwrap import fill
 
 from evaluators.machine.metrics import METRIC
+from studies.comparison.certainty import FamilySearches, order_certainty
+from studies.comparison.certainty_text import certainty_text
 from studies.comparison.numbers import (
     BINDING,
     KEY_METRICS,
@@ -15,8 +17,8 @@ from studies.comparison.numbers import (
     Member,
     extremes,
 )
-from studies.stored.families import least_violating
-from studies.stored.verified import VerifiedStored
+from studies.stored.verified import VerifiedFamily
+from studies.stored.violations import least_violating
 from studies.tables import csv_text, number, percent, text_table, wide_table
 
 MUCH = 0.5  # share of a front that is worth a sentence when another family covers it
@@ -24,7 +26,12 @@ MUCH = 0.5  # share of a front that is worth a sentence when another family cove
 
 def comparison_text(comparison: Comparison) -> str:
     """Everything, section by section."""
-    sections = [_overview(comparison), _verified(comparison), _statement(comparison)]
+    sections = [
+        _overview(comparison),
+        _verified(comparison),
+        _statement(comparison),
+        certainty_text(comparison),
+    ]
     if any(member.compromise is not None for member in comparison.members):
         if len(comparison.members) > 1:
             sections += [
@@ -90,7 +97,7 @@ def _verified(comparison: Comparison) -> str:
     rows = []
     partly = False
     for member in comparison.members:
-        if isinstance(member.stored, VerifiedStored):
+        if isinstance(member.stored, VerifiedFamily):
             counts = member.stored.verified_counts
             cells = (counts.front, counts.verified, counts.broke_limit, counts.failed)
             rows.append([member.label, counts.evaluator, *map(str, cells)])
@@ -241,8 +248,11 @@ def _binding(comparison: Comparison) -> str:
 
 
 def summary_csv(comparison: Comparison) -> str:
-    """One line a family."""
+    """One line a family, with the hypervolume of each search where some have several."""
     goals = comparison.objectives
+    certainty = order_certainty(comparison)
+    searches = {family.label: family for family in certainty.families} if certainty else {}
+    most = max(map(len, searches.values()), default=0)
     head = [
         "study",
         "family",
@@ -255,6 +265,7 @@ def summary_csv(comparison: Comparison) -> str:
         *(f"best:{goal.name}" for goal in goals),
         "compromise_design",
         *(f"compromise:{name}" for name in METRIC),
+        *_search_head(most),
     ]
     rows: list[list[object]] = []
     for member in comparison.members:
@@ -272,9 +283,30 @@ def summary_csv(comparison: Comparison) -> str:
                 *(best[goal.name][0] if best else "" for goal in goals),
                 design,
                 *(row.get(name, "") for name in METRIC),
+                *(_search_cells(searches[member.label], most) if searches else ()),
             ]
         )
     return csv_text(head, rows)
+
+
+def _search_head(most: int) -> list[str]:
+    if not most:
+        return []
+    spans = [f"hypervolume_{word}" for word in ("smallest", "median", "largest")]
+    return ["searches", *spans, *(f"hypervolume:{search}" for search in range(1, most + 1))]
+
+
+def _search_cells(family: FamilySearches, most: int) -> list[object]:
+    volumes = family.hypervolumes
+    each = volumes.tolist()
+    return [
+        len(family),
+        float(volumes.min()),
+        family.median,
+        float(volumes.max()),
+        *each,
+        *[""] * (most - len(each)),
+    ]
 
 
 def front_csv(comparison: Comparison) -> str:

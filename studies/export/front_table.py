@@ -69,11 +69,13 @@ def front_table(results: Results) -> FrontTable:
     tables, damaged = [], []
     for stored in stored_families(results):
         front = stored.front
-        damaged += [str(path) for path in stored.reader.damaged]
+        damaged += [str(path) for path in stored.damaged]
         if not front.num_rows:
             continue
         kept = {k: v for k, v in (front.schema.metadata or {}).items() if k != PARTS_KEY}
-        ids = _text_column("design", "family and evaluation number", stored.front_ids)
+        ids = _text_column(
+            "design", "family, its search from the second on, evaluation number", stored.front_ids
+        )
         family = _text_column("family", "slots, pole pairs, suspension pole pairs", stored.family)
         table = front.replace_schema_metadata(kept)
         for position, (name, values) in enumerate((ids, family)):

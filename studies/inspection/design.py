@@ -17,8 +17,9 @@ from evaluators.machine.task import description
 from evaluators.machine.task.task import Task
 from evaluators.machine.winding.winding import Winding
 from studies.errors import ResultsError
-from studies.stored.families import design_id, split_design_id, stored_family
+from studies.stored.families import stored_family, stored_search
 from studies.stored.layout import Results
+from studies.stored.naming import design_id, split_design_id
 from studies.stored.verified import VerifiedRow, all_verified, deviation
 from studies.study_file.crosschecks import Limit
 
@@ -105,31 +106,32 @@ def inspect_design(results: Results, design: str) -> Inspection:
     ResultsError
         If the id is none, or no such evaluation is stored.
     """
-    family, evaluation = split_design_id(design)
-    stored = stored_family(results, family)
+    name, evaluation = split_design_id(design)
+    stored = stored_search(results, name)
+    family = stored.family
     numbers = stored.reader.table(["evaluation"])
     known = numbers["evaluation"].to_pylist() if numbers.num_rows else []
     if evaluation not in known:
-        last = design_id(family, known[-1]) if known else "none"
+        last = design_id(name, known[-1]) if known else "none"
         missing = " (a damaged part is missing)" if stored.reader.damaged else ""
         msg = (
-            f"{results.folder}: design {design} is not stored{missing}; the last one of {family} "
+            f"{results.folder}: design {design} is not stored{missing}; the last one of {name} "
             f"is {last}"
         )
         raise ResultsError(msg)
     row = stored.reader.row(evaluation)
-    front = set(stored.front["evaluation"].to_pylist()) if stored.front.num_rows else set()
+    design = design_id(name, evaluation)
     winding = results.study.winding(family)
     designs = {item.name: np.array([float(row[item.name])]) for item in VARIABLES}
     sections, valid, _ = cross_sections(winding.family, designs, results.study.construction)
     return Inspection(
-        design=design_id(family, evaluation),
+        design=design,
         study=results.study.name,
         row=row,
         winding=winding,
         lengths_mm=_lengths(sections) if valid.size else {},
         limits=results.study.limits,
-        on_front=evaluation in front,
+        on_front=design in stored_family(results, family).front_ids,
         currency=results.study.prices.currency,
         verified=tuple(all_verified(stored.folder, evaluation)),
         task=results.study.task(family),

@@ -12,12 +12,18 @@ import numpy as np
 from bokeh.embed import components
 from bokeh.resources import Resources
 
-from evaluators.machine.geometry.cross_sections import cross_sections
 from evaluators.machine.geometry.variables import VARIABLES
 from studies.comparison.numbers import BINDING, KEY_METRICS, LOSSES
-from studies.drawing.cross_section import cross_section_svg
 from studies.drawing.palette import Mark, family_mark
-from studies.drawing.winding_diagram import winding_svg
+from studies.report.cards import cards
+from studies.report.certainty import (
+    CertaintyData,
+    all_surfaces,
+    certainty_content,
+    certainty_data,
+    certainty_html,
+)
+from studies.report.certainty_figures import attainment_figure, order_figure
 from studies.report.collect import FamilyData, ReportData
 from studies.report.columns import title
 from studies.report.encoding import coarse, packed, script_json, single
@@ -25,13 +31,18 @@ from studies.report.families import families_html
 from studies.report.figures import fill_progress, fill_spread, report_figures
 from studies.report.html import facts, paragraph, swatch
 from studies.report.method import method_html
-from studies.report.waves import TurnCurves, all_curves
 
-PROGRAM = ("base.js", "plots.js", "limits.js", "table.js", "card.js", "print.js", "main.js")
+PROGRAM = (
+    "base.js",
+    "plots.js",
+    "limits.js",
+    "table.js",
+    "card.js",
+    "print.js",
+    "certainty.js",
+    "main.js",
+)
 MOST_AXES = 11
-LONGEST_CURVES_S = 60.0
-"""Curves are left to the compromises if the stored evaluations were so slow that all of them
-would take longer than this on one processor."""
 
 
 def report_html(data: ReportData, workers: int) -> str:
@@ -54,7 +65,9 @@ def report_html(data: ReportData, workers: int) -> str:
     )
     fill_spread(figures, [values[:, varied] for values in scaled], marks)
     fill_progress(figures, [family.progress for family in data.families])
-    script, places = components(figures.by_place, wrap_script=False)
+    chance = certainty_data(data)
+    places_of_chance = _chance_figures(data, chance, marks)
+    script, places = components({**figures.by_place, **places_of_chance}, wrap_script=False)
     parts = {
         "title": escape(_title(data)),
         "style": _asset("report.css"),
@@ -64,9 +77,13 @@ def report_html(data: ReportData, workers: int) -> str:
         "axis_options": _options(data),
         "card": _asset("card.html"),
         "families": families_html(data, marks),
+        "certainty": certainty_html(data, chance, marks),
+        "certainty_link": '<a href="#certainty">Chance</a>\n' if chance else "",
         "method": method_html(data),
-        "data": script_json(_content(data, marks)),
-        "cards": script_json(packed(_cards(data, workers))),
+        "data": script_json(
+            {**_content(data, marks), "certainty": certainty_content(data, chance)}
+        ),
+        "cards": script_json(packed(cards(data, workers))),
         "library": Resources(mode="inline", components=["bokeh"]).js_raw[0],
         "figures": script,
         "program": "(() => {\n" + "\n".join(_asset(name) for name in PROGRAM) + "\n})();",
@@ -78,6 +95,18 @@ def report_html(data: ReportData, workers: int) -> str:
         end = page.index("</div>", start)
         page = page[:end] + figure + page[end:]
     return page
+
+
+def _chance_figures(
+    data: ReportData, chance: CertaintyData | None, marks: Sequence[Mark]
+) -> dict[str, Any]:
+    if chance is None:
+        return {}
+    ordered = [marks[position] for position in chance.order]
+    found = {"plot-order": order_figure(chance.certainty.families, ordered)}
+    for place, surfaces in enumerate(all_surfaces(data, chance)):
+        found[f"plot-attainment-{place}"] = attainment_figure(place, surfaces, marks)
+    return found
 
 
 def _asset(name: str) -> str:
@@ -203,7 +232,7 @@ def _family_content(
     data: ReportData, family: FamilyData, mark: Mark, offset: int
 ) -> dict[str, Any]:
     names = {column.name for column in data.columns}
-    settings = family.member.stored.reader.settings
+    settings = family.member.stored.settings
     return {
         "label": family.label,
         "study": family.results.study.name,
@@ -228,9 +257,8 @@ def _family_content(
 def _verified_content(data: ReportData, offsets: np.ndarray[Any, Any]) -> list[dict[str, Any]]:
     found = []
     for family, offset in zip(data.families, offsets[:-1], strict=True):
-        numbers = family.shown["evaluation"].to_pylist() if family.ids else []
-        for position, evaluation in enumerate(numbers):
-            item = family.verified.get(evaluation)
+        for position, design in enumerate(family.ids):
+            item = family.verified.get(design)
             if item is not None:
                 found.append(
                     {
@@ -293,88 +321,6 @@ def _loss_columns(data: ReportData) -> dict[str, Any]:
     parts = [name for name in LOSSES if name != "loss_total_W"]
     total = _positions(data, ["loss_total_W"])
     return {"parts": _positions(data, parts), "total": total[0] if total else -1}
-
-
-# -- cards ----------------------------------------------------------------------------------------
-
-
-def _cards(data: ReportData, workers: int) -> dict[str, Any]:
-    designs = []
-    for family, curves in zip(data.families, _curves(data, workers), strict=True):
-        sections = _sections(family)
-        designs += [
-            {"section": section, "curves": _curve_content(item)}
-            for section, item in zip(sections, curves, strict=True)
-        ]
-    return {
-        "windings": [winding_svg(family.winding) for family in data.families],
-        "designs": designs,
-    }
-
-
-def _sections(family: FamilyData) -> list[str]:
-    if not family.ids:
-        return []
-    designs = {item.name: family.shown[item.name].to_numpy() for item in VARIABLES}
-    study = family.results.study
-    sections, valid, _ = cross_sections(family.winding.family, designs, study.construction)
-    drawn = [""] * len(family.ids)
-    for row, position in enumerate(valid.tolist()):
-        drawn[position] = cross_section_svg(
-            sections, row, family.winding, family.ids[position], "cs"
-        )
-    return drawn
-
-
-def _curves(data: ReportData, workers: int) -> list[list[TurnCurves | None]]:
-    """Curves of all designs, or of the compromises alone where all would take too long."""
-    chosen = []
-    for family in data.families:
-        rows = family.shown.to_pylist()
-        time = float(np.median([row["time_s"] for row in rows])) if rows else 0.0
-        # Curves of one design take longer than its share of a batch.
-        slow = 10.0 * time * sum(len(f.ids) for f in data.families) > LONGEST_CURVES_S
-        few = [] if family.compromise is None else [family.compromise]
-        chosen.append(few if slow else list(range(len(rows))))
-    tasks = []
-    for family, rows_of in zip(data.families, chosen, strict=True):
-        study = family.results.study
-        rows = family.shown.to_pylist()
-        tasks.append(
-            (
-                study.task(family.member.stored.family),
-                study.evaluator.name,
-                study.evaluator.settings,
-                [rows[position] for position in rows_of],
-            )
-        )
-    found = all_curves(tasks, workers)
-    whole: list[list[TurnCurves | None]] = []
-    for family, rows_of, curves in zip(data.families, chosen, found, strict=True):
-        line: list[TurnCurves | None] = [None] * len(family.ids)
-        for position, item in zip(rows_of, curves, strict=True):
-            line[position] = item
-        whole.append(line)
-    return whole
-
-
-def _curve_content(curves: TurnCurves | None) -> dict[str, Any] | None:
-    if curves is None:
-        return None
-    parts = {
-        "torque": curves.torque,
-        "cogging": curves.cogging,
-        "xx": curves.force_x.real,
-        "xy": curves.force_x.imag,
-        "yx": curves.force_y.real,
-        "yy": curves.force_y.imag,
-    }
-    content: dict[str, Any] = {key: coarse(part) for key, part in parts.items() if part.size}
-    content["current"] = [float(f"{item:.5g}") for item in curves.current]
-    content["force"] = [float(f"{item:.5g}") for item in curves.force]
-    content["angle"] = [float(f"{item:.5g}") for item in curves.error_angle]
-    content["error"] = [float(f"{item:.5g}") for item in curves.error_magnitude]
-    return content
 
 
 def _spread(data: ReportData) -> list[np.ndarray[Any, Any]]:

@@ -7,19 +7,20 @@ from dataclasses import dataclass
 
 import numpy as np
 import pyarrow as pa
-import pyarrow.compute as pc
 from numpy.typing import NDArray
 
 from evaluators.machine.metrics import METRICS
 from evaluators.machine.winding.winding import Winding
 from optimizer.fronts import hypervolume, non_dominated, normalise
+from studies.comparison.certainty import Certainty, order_certainty
 from studies.comparison.numbers import REFERENCE, Comparison, Member, compare_families
 from studies.errors import ResultsError
 from studies.report.columns import Column, report_columns, stored_names, values
 from studies.report.thinning import spread
 from studies.report.verified import Verified, verified_values
-from studies.stored.families import Stored, matrix
+from studies.stored.families import Stored, StoredFamily, matrix
 from studies.stored.layout import Results
+from studies.stored.naming import split_design_id
 
 FloatArray = NDArray[np.float64]
 
@@ -48,8 +49,9 @@ class FamilyData:
         Of the whole front.
     context : array (c, columns)
         Other feasible designs, the rest of the front among them.
-    progress : array (points, 2)
-        Evaluations and hypervolume of what was found until then, on the report's scale.
+    progress : tuple of array (points, 2)
+        Of each search, evaluations and hypervolume of what was found until then, on the report's
+        scale.
     compromise : int or None
         Row of `shown`.
     """
@@ -62,9 +64,9 @@ class FamilyData:
     values: FloatArray
     front_values: FloatArray
     context: FloatArray
-    progress: FloatArray
+    progress: tuple[FloatArray, ...]
     compromise: int | None
-    verified: dict[int, Verified]
+    verified: dict[str, Verified]
 
     @property
     def label(self) -> str:
@@ -85,6 +87,7 @@ class ReportData:
     comparison: Comparison
     columns: tuple[Column, ...]
     families: tuple[FamilyData, ...]
+    certainty: Certainty | None
 
     def position(self, name: str) -> int:
         """Index of the column called `name`."""
@@ -114,26 +117,19 @@ def collect(opened: Sequence[Results], shown: int = SHOWN) -> ReportData:
             "`hovergap compare` says what comes nearest"
         )
         raise ResultsError(msg)
-    there = {name for member in comparison.members for name in member.stored.reader.schema.names}
+    there = {name for member in comparison.members for name in member.stored.columns}
     metrics = [metric.name for metric in METRICS if metric.name in there]
     columns = report_columns(comparison.objectives, metrics, currencies.pop())
-    owners = {
-        results.family_folder(family): results
-        for results in opened
-        for family in results.study.families
-    }
     feasible = [member.stored.counts[1] for member in comparison.members]
     step = max(1, -(-sum(feasible) // min(CONTEXT, CONTEXT_NUMBERS // len(columns))))
     families = tuple(
-        _family(member, owners[member.stored.folder], comparison, columns, shown, step)
-        for member in comparison.members
+        _family(member, comparison, columns, shown, step) for member in comparison.members
     )
-    return ReportData(tuple(opened), comparison, columns, families)
+    return ReportData(tuple(opened), comparison, columns, families, order_certainty(comparison))
 
 
 def _family(
     member: Member,
-    results: Results,
     comparison: Comparison,
     columns: tuple[Column, ...],
     shown: int,
@@ -149,41 +145,46 @@ def _family(
             rows = np.sort(np.append(rows, member.compromise))
     chosen = front.take(pa.array(rows)) if front.num_rows else front
     goals = comparison.objectives
+    ids = [stored.front_ids[int(row)] for row in rows]
     compromise = None
     if member.compromise is not None:
         compromise = int(np.flatnonzero(rows == member.compromise)[0])
     return FamilyData(
         member=member,
-        results=results,
-        winding=results.study.winding(stored.family),
+        results=member.results,
+        winding=member.results.study.winding(stored.family),
         shown=chosen,
-        ids=[stored.front_ids[int(row)] for row in rows],
+        ids=ids,
         values=values(chosen, columns, goals),
         front_values=values(front, columns, goals),
-        context=_context(stored, columns, comparison, chosen, step),
-        progress=_progress(stored, comparison),
+        context=_context(stored, columns, comparison, set(ids), step),
+        progress=tuple(_progress(search, comparison) for search in stored.searches),
         compromise=compromise,
-        verified=verified_values(stored.folder),
+        verified=verified_values(stored),
     )
 
 
 def _context(
-    stored: Stored,
+    stored: StoredFamily,
     columns: tuple[Column, ...],
     comparison: Comparison,
-    shown: pa.Table,
+    shown: set[str],
     step: int,
 ) -> FloatArray:
-    """Every `step`-th feasible design that is not shown."""
-    known = [name for name in stored_names(columns) if name in stored.reader.schema.names]
-    table = stored.reader.table(["evaluation", "feasible", *known])
-    if not table.num_rows:
-        return np.zeros((0, len(columns)))
-    keep = table["feasible"]
-    if shown.num_rows:
-        taken = pc.is_in(table["evaluation"], value_set=shown["evaluation"].combine_chunks())
-        keep = pc.and_(keep, pc.invert(taken))
-    return values(table.filter(keep), columns, comparison.objectives)[::step]
+    """Every `step`-th feasible design of all searches that is not shown."""
+    taken: dict[str, list[int]] = {}
+    for design in shown:
+        name, evaluation = split_design_id(design)
+        taken.setdefault(name, []).append(evaluation)
+    found = [np.zeros((0, len(columns)))]
+    for search in stored.searches:
+        known = [name for name in stored_names(columns) if name in search.reader.schema.names]
+        table = search.reader.table(["evaluation", "feasible", *known])
+        if table.num_rows:
+            others = ~np.isin(table["evaluation"].to_numpy(), taken.get(search.name, []))
+            keep = pa.array(table["feasible"].to_numpy() & others)
+            found.append(values(table.filter(keep), columns, comparison.objectives))
+    return np.concatenate(found)[::step]
 
 
 def _progress(stored: Stored, comparison: Comparison) -> FloatArray:

@@ -7,6 +7,7 @@ from collections.abc import Sequence
 import numpy as np
 
 from evaluators.machine.geometry.variables import VARIABLES
+from studies.comparison.certainty_text import once_only
 from studies.comparison.numbers import BINDING, REFERENCE, extremes
 from studies.drawing.palette import Mark
 from studies.drawing.winding_diagram import winding_svg
@@ -25,6 +26,7 @@ def families_html(data: ReportData, marks: Sequence[Mark]) -> str:
     return "".join(
         [
             _overview(data, marks),
+            _once_only(data),
             _best(data, marks),
             '<div class="two"><div>',
             element("h3", "Search progress"),
@@ -50,6 +52,11 @@ def families_html(data: ReportData, marks: Sequence[Mark]) -> str:
             _windings(data),
         ]
     )
+
+
+def _once_only(data: ReportData) -> str:
+    said = "" if data.certainty else once_only(data.comparison)
+    return paragraph(said.replace("`", ""), "quiet") if said else ""
 
 
 def _overview(data: ReportData, marks: Sequence[Mark]) -> str:

@@ -104,7 +104,8 @@ def report_figures(marks: Sequence[Mark], rows: Sequence[str], families: Sequenc
     )
 
 
-def _figure(height: int, tools: Sequence[Tool], **options: Any) -> Any:
+def plain_figure(height: int, tools: Sequence[Tool], **options: Any) -> Any:
+    """A figure in the style of the page, without data."""
     plot = figure(
         height=height,
         sizing_mode="stretch_width",
@@ -140,7 +141,7 @@ def _front(
         {name: [] for name in ("x", "y", "x0", "y0", "design")}, name="verified"
     )
     box, wheel = BoxSelectTool(), WheelZoomTool()
-    plot = _figure(
+    plot = plain_figure(
         440,
         [PanTool(), wheel, TapTool(), box, LassoSelectTool(), ResetTool(), SaveTool()],
         x_range=DataRange1d(name="front-x"),
@@ -209,7 +210,7 @@ def _front(
 def _axes(front: ColumnDataSource, passing: CDSView, failing: CDSView) -> Any:
     """Parallel coordinates: one line a design, its values scaled to 0..1 on every axis."""
     box = BoxSelectTool(dimensions="height", name="axis-box")
-    plot = _figure(
+    plot = plain_figure(
         360,
         [TapTool(), box, ResetTool(), SaveTool()],
         x_range=Range1d(start=-0.4, end=10.4, name="axes-x"),
@@ -263,7 +264,7 @@ def _curves(
     # Two points until a card is shown: ranges cannot follow nothing.
     source = ColumnDataSource({column: [0.0, 1.0] for column in columns}, name=f"curve-{name}")
     options: dict[str, Any] = {"x_range": Range1d(start=span[0], end=span[1])} if span else {}
-    plot = _figure(210, [HoverTool(tooltips=[("", "@x{0.[0]}, $y{0.[000]}")])], **options)
+    plot = plain_figure(210, [HoverTool(tooltips=[("", "@x{0.[0]}, $y{0.[000]}")])], **options)
     plot.toolbar_location = None
     plot.xaxis.axis_label, plot.yaxis.axis_label = labels
     for index, (legend, colour, dash) in enumerate(lines):
@@ -302,7 +303,7 @@ def _locus() -> Any:
         )
         for direction in "xy"
     }
-    plot = _figure(250, [], match_aspect=True)
+    plot = plain_figure(250, [], match_aspect=True)
     plot.xaxis.axis_label = "along the command, % of the mean force"
     plot.yaxis.axis_label = "across, %"
     for direction, colour, dash in (("x", BLUE, "solid"), ("y", SKY, "solid")):
@@ -323,7 +324,7 @@ def _locus() -> Any:
 def _spread(rows: Sequence[str], marks: Sequence[Mark]) -> Any:
     """Where the designs of each front lie between the bounds of every variable."""
     source = ColumnDataSource({"x": [], "y": [], "line": []}, name="spread")
-    plot = _figure(
+    plot = plain_figure(
         60 + len(rows) * max(34, 9 * len(marks)),
         [],
         x_range=Range1d(start=-0.02, end=1.02),
@@ -343,7 +344,7 @@ def _spread(rows: Sequence[str], marks: Sequence[Mark]) -> Any:
 
 
 def _progress(marks: Sequence[Mark]) -> Any:
-    plot = _figure(300, [], name="progress-plot")
+    plot = plain_figure(300, [], name="progress-plot")
     plot.xaxis.axis_label = "evaluations"
     plot.yaxis.axis_label = "hypervolume, share of the common box"
     plot.yaxis.axis_label_text_font_size = SMALL
@@ -376,12 +377,19 @@ def fill_spread(figures: Figures, scaled: Sequence[FloatArray], marks: Sequence[
     source.data = {"x": np.concatenate(across), "y": np.concatenate(down), "line": colours}
 
 
-def fill_progress(figures: Figures, curves: Sequence[FloatArray]) -> None:
-    """Put the curves (points, 2) of evaluations and hypervolume into the figure of progress."""
+def fill_progress(figures: Figures, curves: Sequence[Sequence[FloatArray]]) -> None:
+    """Put the curves (points, 2) of evaluations and hypervolume into the figure of progress.
+
+    One curve a search; those of a family share a source, with a gap between them.
+    """
     plot = figures.by_place["plot-progress"]
-    for position, curve in enumerate(curves):
-        if len(curve):
+    gap = np.full((1, 2), np.nan)
+    for position, family in enumerate(curves):
+        drawn = [curve for curve in family if len(curve)]
+        if drawn:
+            joined = np.concatenate([part for curve in drawn for part in (gap, curve)][1:])
             line = plot.select_one({"name": f"progress-{position}"})
-            line.data = {"x": curve[:, 0], "y": curve[:, 1]}
+            line.data = {"x": joined[:, 0], "y": joined[:, 1]}
+            ends = np.array([curve[-1] for curve in drawn])
             end = plot.select_one({"name": f"progress-end-{position}"})
-            end.data = {"x": curve[-1:, 0], "y": curve[-1:, 1]}
+            end.data = {"x": ends[:, 0], "y": ends[:, 1]}

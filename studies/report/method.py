@@ -164,22 +164,32 @@ def _bounds(study: Study) -> str:
 
 
 def _origin(data: ReportData) -> str:
-    """Evaluators, seeds and budgets, one line a family."""
+    """Evaluators, seeds and budgets, one line a search."""
     rows = []
     for family in data.families:
-        settings = family.member.stored.reader.settings
-        evaluations = family.member.stored.counts[0]
-        rows.append(
-            [
-                family.label,
-                f"{settings.get('evaluator', '-')} {settings.get('evaluator_version', '')}".strip(),
-                str(settings.get("seed", "-")),
-                f"{evaluations:,}",
-                str(settings.get("search", "-")),
-                family.results.study.digest[:16],
-            ]
-        )
-    head = ["family", "evaluator", "seed", "evaluations", "search", "study file, SHA-256"]
+        prefix = family.label.removesuffix(family.member.stored.family)
+        for search in family.member.stored.searches:
+            settings = search.reader.settings
+            evaluator = f"{settings.get('evaluator', '-')} {settings.get('evaluator_version', '')}"
+            rows.append(
+                [
+                    f"{prefix}{search.name}",
+                    evaluator.strip(),
+                    str(settings.get("seed", "-")),
+                    f"{search.counts[0]:,}",
+                    str(settings.get("search", "-")),
+                    family.results.study.digest[:16],
+                ]
+            )
+    several = any(len(family.member.stored.searches) > 1 for family in data.families)
+    head = [
+        "search" if several else "family",
+        "evaluator",
+        "seed",
+        "evaluations",
+        "search",
+        "study file, SHA-256",
+    ]
     return (
         element("h3", "Where the numbers come from")
         + paragraph(f"Written by hovergap {program_version()}.")

@@ -6,6 +6,8 @@ from dataclasses import dataclass
 from pathlib import Path
 
 from studies.errors import ResultsError
+from studies.stored.families import StoredFamily
+from studies.stored.naming import design_id
 from studies.stored.verified import read_verified, verified_evaluators
 
 
@@ -18,8 +20,8 @@ class Verified:
     metrics: dict[str, float]
 
 
-def verified_values(folder: Path) -> dict[int, Verified]:
-    """Verified values of one family by evaluation number; empty if there are none.
+def verified_values(stored: StoredFamily) -> dict[str, Verified]:
+    """Verified values of one family by design; empty if there are none.
 
     Of several evaluators the one used last counts; designs it could not evaluate are left out.
 
@@ -28,6 +30,14 @@ def verified_values(folder: Path) -> dict[int, Verified]:
     ResultsError
         If some of them cannot be read.
     """
+    return {
+        design_id(search.name, evaluation): values
+        for search in stored.searches
+        for evaluation, values in _of_search(search.folder).items()
+    }
+
+
+def _of_search(folder: Path) -> dict[int, Verified]:
     names = verified_evaluators(folder)
     if not names:
         return {}

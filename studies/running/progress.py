@@ -61,24 +61,24 @@ class StatusLine:
 
 
 class ProgressLine(StatusLine):
-    """Shows the progress of one family after the other.
+    """Shows the progress of one search after the other.
 
     Parameters
     ----------
-    families : tuple of str
-        All families of this sweep, in order, for the time left in all.
+    searches : tuple of str
+        All searches of this sweep, in order, for the time left in all.
     stream : TextIO, optional
         By default standard output.
     """
 
-    def __init__(self, families: tuple[str, ...], stream: TextIO | None = None) -> None:
+    def __init__(self, searches: tuple[str, ...], stream: TextIO | None = None) -> None:
         super().__init__(stream)
-        self._families = families
-        self._family = ""
+        self._searches = searches
+        self._search = ""
 
-    def begin(self, family: str) -> None:
-        """Turn to the next family."""
-        self._family = family
+    def begin(self, search: str) -> None:
+        """Turn to the next search."""
+        self._search = search
         self._shown_at = -math.inf
 
     def show(self, state: Progress) -> None:
@@ -88,8 +88,8 @@ class ProgressLine(StatusLine):
     def _text(self, state: Progress) -> str:
         done = state.evaluations
         share = state.feasible / done if done else 0.0
-        later = len(self._families) - 1 - self._families.index(self._family)
-        parts = [f"{self._family}  {done:,}/{state.budget:,}"]
+        later = len(self._searches) - 1 - self._searches.index(self._search)
+        parts = [f"{self._search}  {done:,}/{state.budget:,}"]
         known = math.isfinite(state.rate) and state.rate > 0.0
         if known:
             left = f"left {duration(state.seconds_left)}"
@@ -97,11 +97,10 @@ class ProgressLine(StatusLine):
                 left += f", all {duration(state.seconds_left + later * state.budget / state.rate)}"
             parts.append(left)
         # The most wanted stands first, because a narrow terminal cuts the end.
-        parts += [
-            f"feasible {100.0 * share:.1f} %",
-            f"hypervolume {state.hypervolume:.3f}",
-            f"front {state.front_size}",
-        ]
+        parts.append(f"feasible {100.0 * share:.1f} %")
+        if state.hypervolume > 0.0:
+            parts.append(f"hypervolume {state.hypervolume:.3f}")
+        parts.append(f"front {state.front_size}")
         if known:
             parts.append(speed(state.rate))
         return "  ".join(parts)

@@ -1,4 +1,4 @@
-"""How a sweep spends its evaluations and its time on the families."""
+"""How a sweep spends its evaluations and its time on the searches of the families."""
 
 from __future__ import annotations
 
@@ -14,9 +14,11 @@ from studies.running.ended import Ended, note_end
 from studies.running.problem import MachineProblem
 from studies.running.spreading import ROUNDS, prospects, read_rows
 from studies.stored.layout import Results
+from studies.stored.naming import family_of
 
 SPENDING_KEYS = (
     "evaluations_per_family",
+    "searches_per_family",
     "total_evaluations",
     "stagnation_generations",
     "stagnation_gain",
@@ -29,21 +31,23 @@ SPENDING_KEYS = (
 Begin = Callable[[str], None]
 Show = Callable[[Progress], None]
 Stop = Callable[[], bool]
-SettingsOf = Callable[[MachineProblem], Settings]
+SettingsOf = Callable[[str, MachineProblem], Settings]
 
 
 class Spending:
-    """Searches families, one after the other or in rounds.
+    """Searches families, one search after the other or in rounds.
 
     Parameters
     ----------
     results : Results
-    problems : dict of family to MachineProblem
+    problems : dict of search to MachineProblem
+        By the names of the searches, in the order in which they are begun.
     settings : callable
-        Settings of a problem's archive; its budget is the most a family gets.
+        Settings of a search's archive, from its name and problem; its budget is the most a search
+        gets.
     dispatcher : Dispatcher
     begin : callable
-        Told which family is searched from now on.
+        Told which search goes on from now on.
     show : callable
         Told its progress.
     stop : callable
@@ -67,8 +71,8 @@ class Spending:
         self._new = dict.fromkeys(problems, 0)
         self._seconds = dict.fromkeys(problems, 0.0)
 
-    def families(self) -> Iterator[tuple[str, Summary]]:
-        """Search; yields each family when nothing more is spent on it.
+    def searches(self) -> Iterator[tuple[str, Summary]]:
+        """Search; yields each search when nothing more is spent on it.
 
         Raises
         ------
@@ -76,57 +80,58 @@ class Spending:
             If the results cannot be written.
         """
         total = self._results.study.search.total_evaluations
-        for family, summary in self._in_turn() if total is None else self._in_rounds(total):
-            yield family, replace(summary, new=self._new[family], seconds=self._seconds[family])
+        for name, summary in self._in_turn() if total is None else self._in_rounds(total):
+            yield name, replace(summary, new=self._new[name], seconds=self._seconds[name])
             if summary.stopped:
                 return
 
     def _in_turn(self) -> Iterator[tuple[str, Summary]]:
-        for position, (family, problem) in enumerate(self._problems.items()):
-            most = self._settings(problem).budget
-            summary = self._search(family, most, len(self._problems) - position)
-            self._note(family, summary, most)
-            yield family, summary
+        for position, (name, problem) in enumerate(self._problems.items()):
+            most = self._settings(name, problem).budget
+            summary = self._search(name, most, len(self._problems) - position)
+            self._note(name, summary, most)
+            yield name, summary
 
     def _in_rounds(self, total: int) -> Iterator[tuple[str, Summary]]:
-        most = {name: self._settings(item).budget for name, item in self._problems.items()}
+        most = {name: self._settings(name, item).budget for name, item in self._problems.items()}
         quota = dict.fromkeys(self._problems, 0)
         last: dict[str, Summary] = {}
         active = list(self._problems)
         for left in range(ROUNDS, 0, -1):
             share = max((total - sum(quota.values())) // left // max(len(active), 1), 0)
             over: dict[str, str] = {}
-            for family in active:
-                quota[family] = min(quota[family] + share, most[family])
-                summary = last[family] = self._search(family, max(quota[family], 1), 1)
+            for name in active:
+                quota[name] = min(quota[name] + share, most[name])
+                summary = last[name] = self._search(name, max(quota[name], 1), 1)
                 if summary.stopped:
-                    yield family, summary
+                    yield name, summary
                     return
                 if summary.ended:
-                    quota[family] = min(quota[family], summary.evaluations)
-                    over[family] = summary.ended
-                elif quota[family] == most[family]:
-                    over[family] = ""
+                    quota[name] = min(quota[name], summary.evaluations)
+                    over[name] = summary.ended
+                elif quota[name] == most[name]:
+                    over[name] = ""
             if left > 1:
-                rows = {name: read_rows(self._results, name, quota[name]) for name in quota}
-                for family, reason in prospects(rows, most).items():
-                    if family in active:
-                        over.setdefault(family, reason)
+                largest = {family_of(name): most[name] for name in most}
+                gone = prospects(read_rows(self._results, quota), largest)
+                for name in active:
+                    if family_of(name) in gone:
+                        over.setdefault(name, gone[family_of(name)])
             else:
                 over |= {
-                    family: "the evaluations for all families are used"
-                    for family in active
-                    if family not in over
+                    name: "the evaluations for all families are used"
+                    for name in active
+                    if name not in over
                 }
-            for family, reason in over.items():
-                summary = replace(last[family], ended=reason, budget=most[family])
-                self._note(family, summary, most[family])
-                active.remove(family)
-                yield family, summary
+            for name, reason in over.items():
+                summary = replace(last[name], ended=reason, budget=most[name])
+                self._note(name, summary, most[name])
+                active.remove(name)
+                yield name, summary
 
-    def _search(self, family: str, budget: int, sharers: int) -> Summary:
-        """Search one family, with its part of the time left if it shares that with others."""
-        search, problem = self._results.study.search, self._problems[family]
+    def _search(self, name: str, budget: int, sharers: int) -> Summary:
+        """Go on with one search, with its part of the time left if it shares that with others."""
+        search, problem = self._results.study.search, self._problems[name]
         left = None
         if self._deadline is not None:
             left = max(self._deadline - time.monotonic(), 0.0) / sharers
@@ -136,22 +141,22 @@ class Spending:
             feasible_within=search.feasible_within,
             wall_time_s=left,
         )
-        self._begin(family)
+        self._begin(name)
         summary = run(
             problem,
-            self._results.family_folder(family),
-            replace(self._settings(problem), budget=budget),
+            self._results.search_folder(name),
+            replace(self._settings(name, problem), budget=budget),
             self._dispatcher,
             self._show,
             self._stop,
             rules,
         )
-        self._new[family] += summary.new
-        self._seconds[family] += summary.seconds
+        self._new[name] += summary.new
+        self._seconds[name] += summary.seconds
         return summary
 
-    def _note(self, family: str, summary: Summary, most: int) -> None:
+    def _note(self, name: str, summary: Summary, most: int) -> None:
         early = bool(summary.ended) and summary.evaluations < most
         final = not summary.ended.startswith("its wall time")
         note = Ended(summary.evaluations, summary.ended, final) if early else None
-        note_end(self._results, family, note)
+        note_end(self._results, name, note)

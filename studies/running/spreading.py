@@ -1,7 +1,9 @@
 """One budget for all families: who shows no prospect makes room for the others.
 
-The budget is spent in rounds, each shared evenly among the families still searched. After a
-round a family is given up if it could not catch up at its own pace. The judgement rests on the
+The budget is spent in rounds, each shared evenly among the searches still going on. After a
+round a family is given up, with all its searches, if it could not catch up at its own pace; its
+searches are judged together, for were one of them cut short alone, they could no longer be held
+against each other. The judgement rests on the
 first rows of each archive alone, so that an interrupted sweep comes to the same one.
 """
 
@@ -18,6 +20,7 @@ from optimizer.fronts import hypervolume, hypervolume_estimate, non_dominated
 from optimizer.running.tally import EXACT_OBJECTIVES
 from studies.stored.families import matrix
 from studies.stored.layout import Results
+from studies.stored.naming import family_of
 
 FloatArray = NDArray[np.float64]
 
@@ -27,7 +30,7 @@ _CORNER = 1.1  # reference point, so that the ends of a front count too
 
 @dataclass(frozen=True)
 class Rows:
-    """Feasible rows of one family among its first ``wanted``.
+    """Feasible rows of one family among the first ``wanted`` of each of its searches.
 
     Attributes
     ----------
@@ -46,19 +49,44 @@ class Rows:
         return points[non_dominated(points)] if len(points) else points
 
 
-def read_rows(results: Results, family: str, wanted: int) -> Rows:
-    """Read what :func:`prospects` judges by."""
-    names = [f"objective:{goal.name}" for goal in results.study.objectives]
-    folder = results.family_folder(family)
-    none = Rows(np.zeros(0, dtype=np.int64), np.zeros((0, len(names))), wanted)
+def read_rows(results: Results, quota: Mapping[str, int]) -> dict[str, Rows]:
+    """Read what :func:`prospects` judges by.
+
+    Parameters
+    ----------
+    results : Results
+    quota : mapping of search to int
+        How many rows of each search count.
+
+    Returns
+    -------
+    dict of family to Rows
+    """
+    goals = [f"objective:{goal.name}" for goal in results.study.objectives]
+    parts: dict[str, list[Rows]] = {}
+    for name, wanted in quota.items():
+        parts.setdefault(family_of(name), []).append(_rows(results, name, goals, wanted))
+    return {
+        family: Rows(
+            np.concatenate([item.evaluations for item in found]),
+            np.concatenate([item.objectives for item in found]),
+            max(item.wanted for item in found),
+        )
+        for family, found in parts.items()
+    }
+
+
+def _rows(results: Results, name: str, goals: list[str], wanted: int) -> Rows:
+    folder = results.search_folder(name)
+    none = Rows(np.zeros(0, dtype=np.int64), np.zeros((0, len(goals))), wanted)
     if not is_archive(folder):
         return none
-    table = open_archive(folder).table(["evaluation", "feasible", *names])
+    table = open_archive(folder).table(["evaluation", "feasible", *goals])
     if not table.num_rows:
         return none
     evaluations = table["evaluation"].to_numpy()
     chosen = table["feasible"].to_numpy() & (evaluations < wanted)
-    return Rows(evaluations[chosen], matrix(table, names)[chosen], wanted)
+    return Rows(evaluations[chosen], matrix(table, goals)[chosen], wanted)
 
 
 def prospects(rows: Mapping[str, Rows], most: Mapping[str, int]) -> dict[str, str]:
@@ -72,7 +100,7 @@ def prospects(rows: Mapping[str, Rows], most: Mapping[str, int]) -> dict[str, st
     ----------
     rows : mapping of family to Rows
     most : mapping of family to int
-        Evaluations each could hold in the end.
+        Evaluations each of its searches could hold in the end.
     """
     fronts = {family: item.front(item.wanted) for family, item in rows.items()}
     found = {family: front for family, front in fronts.items() if len(front)}

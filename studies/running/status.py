@@ -9,40 +9,45 @@ from optimizer.errors import ArchiveError, ArchiveLockedError
 from studies.running.ended import ended_families
 from studies.stored.families import stored_families
 from studies.stored.layout import Results
+from studies.stored.naming import family_of, search_names, split_search_name
 
 
 def study_status(results: Results) -> dict[str, Any]:
-    """State of every family as values of JSON."""
+    """State of every search of every family as values of JSON."""
     budget = results.request.evaluations_per_family
-    stored = {item.family: item for item in stored_families(results)}
+    asked = tuple(item for item in results.study.families if item in results.request.families)
+    wanted = search_names(asked, results.request.searches_per_family)
+    stored = {item.name: item for family in stored_families(results) for item in family.searches}
     notes = ended_families(results)
     families: list[dict[str, Any]] = []
     damaged: list[str] = []
-    for family in results.study.families:
-        wanted = family in results.request.families
+    for name in _names(results, wanted, tuple(stored)):
+        family, search = split_search_name(name)
         entry: dict[str, Any] = {
             "family": family,
+            "search": search,
             "evaluations": 0,
-            "budget": budget if wanted else 0,
+            "budget": budget if name in wanted else 0,
             "feasible": 0,
             "failed": 0,
             "front_size": 0,
             "ended": False,
-            "state": "not begun" if wanted else "left out",
+            "state": "not begun" if name in wanted else "left out",
         }
-        if family in stored:
-            evaluations, feasible, failed = stored[family].counts
+        if name in stored:
+            evaluations, feasible, failed = stored[name].counts
             entry |= {
                 "evaluations": evaluations,
                 "feasible": feasible,
                 "failed": failed,
-                "front_size": stored[family].front.num_rows,
-                "state": "complete" if evaluations >= budget else "begun",
+                "front_size": stored[name].front.num_rows,
             }
-            note = notes.get(family)
-            if note is not None and evaluations == note.evaluations < budget:
+            if name in wanted:
+                entry["state"] = "complete" if evaluations >= budget else "begun"
+            note = notes.get(name)
+            if name in wanted and note is not None and evaluations == note.evaluations < budget:
                 entry |= {"state": note.state, "ended": note.final}
-            damaged += [str(path) for path in stored[family].reader.damaged]
+            damaged += [str(path) for path in stored[name].reader.damaged]
         families.append(entry)
     if being_written(results):
         state = "being searched now"
@@ -58,6 +63,17 @@ def study_status(results: Results) -> dict[str, Any]:
         "families": families,
         "damaged_parts": damaged,
     }
+
+
+def _names(results: Results, wanted: tuple[str, ...], stored: tuple[str, ...]) -> tuple[str, ...]:
+    """Searches that are asked for or stored, and families never searched, in the study's order."""
+    first = results.study.families
+    return tuple(
+        sorted(
+            {*first, *wanted, *stored},
+            key=lambda name: (first.index(family_of(name)), split_search_name(name)[1]),
+        )
+    )
 
 
 def being_written(results: Results) -> bool:

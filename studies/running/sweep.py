@@ -21,7 +21,9 @@ from studies.running.problem import MachineProblem, machine_problem
 from studies.running.progress import ProgressLine, duration
 from studies.running.spending import SPENDING_KEYS, Spending
 from studies.shipped.library import shipped
-from studies.stored.layout import Results, changes
+from studies.stored.layout import Request, Results, changes
+from studies.stored.naming import family_of, search_names, search_seed, split_search_name
+from studies.study_file.crosschecks import too_few_in_all
 from studies.study_file.definition import Study
 from studies.suggestions import suggest
 from studies.tables import number, percent, text_table
@@ -49,6 +51,28 @@ def chosen_families(study: Study, wanted: Sequence[str]) -> tuple[str, ...]:
 def counted(families: Sequence[str]) -> str:
     """The number of families in words."""
     return "1 family" if len(families) == 1 else f"{len(families)} families"
+
+
+def announced(study: Study, families: Sequence[str], request: Request) -> str:
+    """What is going to be searched, in words.
+
+    Raises
+    ------
+    StudiesError
+        If the study's total budget leaves each search too little.
+    """
+    searches = request.searches_per_family
+    total = study.search.total_evaluations
+    short = total and too_few_in_all(total, len(families), searches)
+    if short:
+        msg = f"search.total_evaluations {short[0]}; {short[1]}"
+        raise StudiesError(msg)
+    several = f", {searches} searches each" if searches > 1 else ""
+    of_each = "of each search" if searches > 1 else "each"
+    return (
+        f"{study.name}: {counted(families)}{several}, {request.evaluations_per_family:,} "
+        f"evaluations {of_each}"
+    )
 
 
 def problems_of(
@@ -86,7 +110,7 @@ def study_digest(study: Study) -> str:
 def search_families(
     results: Results, problems: dict[str, MachineProblem], dispatcher: Dispatcher
 ) -> int:
-    """Search one family after the other and say how it went.
+    """Search one family after the other, as often as is asked for, and say how it went.
 
     Returns
     -------
@@ -100,35 +124,36 @@ def search_families(
         If the results cannot be written or are in use.
     """
     families = tuple(problems)
-    line = ProgressLine(families)
+    searches = problems_of_searches(results, problems)
+    line = ProgressLine(tuple(searches))
     summaries: dict[str, Summary] = {}
     lost = False
     with Interruption() as interruption, writer_lock(results.folder):
         spending = Spending(
             results,
-            problems,
-            lambda problem: search_settings(results, problem),
+            searches,
+            lambda name, problem: search_settings(results, problem, split_search_name(name)[1]),
             dispatcher,
             line.begin,
             line.show,
             interruption,
         )
         try:
-            for family, summary in spending.families():
-                summaries[family] = summary
-                line.say(_family_text(family, summary))
+            for name, summary in spending.searches():
+                summaries[name] = summary
+                line.say(_search_text(name, summary))
         except KeyboardInterrupt:
             line.say("stopped at once; the designs in hand were given up")
         except ClusterError as error:
             line.say(str(error))
             lost = True
         unfinished = [
-            family
-            for family in families
-            if family not in summaries
+            name
+            for name in searches
+            if name not in summaries
             or (
-                summaries[family].evaluations < results.request.evaluations_per_family
-                and not summaries[family].ended
+                summaries[name].evaluations < results.request.evaluations_per_family
+                and not summaries[name].ended
             )
         ]
     if lost or (interruption.asked and unfinished):
@@ -180,12 +205,20 @@ def changes_since_frozen(results: Results, file: str) -> list[str]:
     return changes(results.study.content, content)
 
 
-def search_settings(results: Results, problem: MachineProblem) -> Settings:
-    """How the archive of one family is searched."""
+def problems_of_searches(
+    results: Results, problems: dict[str, MachineProblem]
+) -> dict[str, MachineProblem]:
+    """The problem of each search that is asked for, by its name, in the order of searching."""
+    names = search_names(tuple(problems), results.request.searches_per_family)
+    return {name: problems[family_of(name)] for name in names}
+
+
+def search_settings(results: Results, problem: MachineProblem, search: int = 1) -> Settings:
+    """How one search of a family is made."""
     study, evaluator, family = results.study, problem.evaluator, problem.task.winding.family
     return Settings(
         budget=results.request.evaluations_per_family,
-        seed=results.request.seed,
+        seed=search_seed(results.request.seed, family, search),
         population=study.search.population,
         chunk=study.search.designs_per_call,
         evaluator=evaluator.name,
@@ -195,41 +228,47 @@ def search_settings(results: Results, problem: MachineProblem) -> Settings:
             "study_digest": study_digest(study),
             "family": family.id,
             "coil_pitch": str(family.coil_pitch),
+            **({"search": str(search)} if search > 1 else {}),
         },
     )
 
 
-def _family_text(family: str, summary: Summary) -> str:
+def _search_text(name: str, summary: Summary) -> str:
     text = (
-        f"{family}: {summary.evaluations:,} evaluations ({summary.new:,} new in "
+        f"{name}: {summary.evaluations:,} evaluations ({summary.new:,} new in "
         f"{duration(summary.seconds)}), feasible "
         f"{percent(summary.feasible / max(1, summary.evaluations))}, failed {summary.failed:,}, "
-        f"front {summary.front_size}, hypervolume {number(summary.hypervolume)}"
+        f"front {summary.front_size}"
     )
+    if summary.hypervolume > 0.0:  # too few feasible designs span no box to measure it in
+        text += f", hypervolume {number(summary.hypervolume)}"
     if summary.ended and summary.evaluations < summary.budget:
-        text += f"\n{family}: ended early: {summary.ended}"
+        text += f"\n{name}: ended early: {summary.ended}"
     for path in summary.damaged:
-        text += f"\n{family}: a damaged part was set aside as {path}; its rows were evaluated again"
+        text += f"\n{name}: a damaged part was set aside as {path}; its rows were evaluated again"
     return text
 
 
 def _closing(line: ProgressLine, results: Results, summaries: dict[str, Summary]) -> int:
     rows = [
         [
-            family,
+            name,
             f"{item.evaluations:,}",
             percent(item.feasible / max(1, item.evaluations)),
             f"{item.failed:,}",
             str(item.front_size),
         ]
-        for family, item in summaries.items()
+        for name, item in summaries.items()
     ]
-    head = ["family", "evaluations", "feasible", "failed", "front"]
+    one_each = results.request.searches_per_family == 1
+    head = ["family" if one_each else "search", "evaluations", "feasible", "failed", "front"]
     line.say("\n" + text_table(head, rows))
-    barren = [family for family, item in summaries.items() if not item.feasible]
+    families = dict.fromkeys(map(family_of, summaries))
+    fertile = {family_of(name) for name, item in summaries.items() if item.feasible}
+    barren = [family for family in families if family not in fertile]
     for family in barren:
         line.say("\n" + explain(results, family, 3 if len(barren) == 1 else 1))
-    if len(barren) == len(summaries):
+    if not fertile:
         line.say(
             f"\nNo feasible design was found in any family. Every evaluation is stored in "
             f"{results.folder}; loosen a limit or widen the bounds."

@@ -20,6 +20,7 @@ from studies.running.ended import ended_families
 from studies.running.progress import duration
 from studies.stored.families import matrix
 from studies.stored.layout import Results
+from studies.stored.naming import search_names
 from studies.tables import number, percent, text_table
 
 WINDOW_S = 30.0  # over which the rate is taken
@@ -27,14 +28,14 @@ WRITER = re.compile(r"process (\d{1,10}) on (.{1,120})")
 
 
 @dataclass
-class FamilyWatch:
-    """What is known of one family, brought up to date by `refresh`.
+class SearchWatch:
+    """What is known of one search of a family, brought up to date by `refresh`.
 
     Parts never change once they are there, so each is read once; at the end of a run the searching
     process merges them, and rows that come again under another name are known by their number.
     """
 
-    family: str
+    name: str
     folder: Path
     objectives: tuple[str, ...]
     read: set[str] = field(default_factory=set)
@@ -95,44 +96,51 @@ class FamilyWatch:
 
 @dataclass
 class StudyWatch:
-    """All families of one study that a sweep was asked for."""
+    """All searches of one study that a sweep was asked for."""
 
     results: Results
-    families: tuple[FamilyWatch, ...]
+    searches: tuple[SearchWatch, ...] = ()
 
     @classmethod
     def of(cls, results: Results) -> StudyWatch:
-        """Watch the families of the last request."""
+        """Watch the searches of the last request."""
+        watch = cls(results)
+        watch.follow(results)
+        return watch
+
+    def follow(self, results: Results) -> None:
+        """Watch the searches of a newer request, keeping what is known of those there are."""
         goals = tuple(goal.name for goal in results.study.objectives)
-        wanted = [item for item in results.study.families if item in results.request.families]
-        return cls(
-            results,
-            tuple(FamilyWatch(item, results.family_folder(item), goals) for item in wanted),
+        request = results.request
+        wanted = tuple(item for item in results.study.families if item in request.families)
+        known = {item.name: item for item in self.searches}
+        self.results = results
+        self.searches = tuple(
+            known.get(name) or SearchWatch(name, results.search_folder(name), goals)
+            for name in search_names(wanted, request.searches_per_family)
         )
 
     @property
     def budget(self) -> int:
-        """Evaluations wanted of each family."""
+        """Evaluations wanted of each search."""
         return self.results.request.evaluations_per_family
 
     @property
     def complete(self) -> bool:
-        """Whether every family has its evaluations or was ended before."""
+        """Whether every search has its evaluations or was ended before."""
         notes = ended_families(self.results)
         ended = {
-            item.family
-            for item in self.families
-            if item.family in notes
-            and notes[item.family].final
-            and notes[item.family].evaluations == item.evaluations
+            item.name
+            for item in self.searches
+            if item.name in notes
+            and notes[item.name].final
+            and notes[item.name].evaluations == item.evaluations
         }
-        return all(
-            item.evaluations >= self.budget or item.family in ended for item in self.families
-        )
+        return all(item.evaluations >= self.budget or item.name in ended for item in self.searches)
 
     def refresh(self) -> None:
         """Read what is new."""
-        for item in self.families:
+        for item in self.searches:
             item.refresh()
 
     def lines(self, width: int) -> list[str]:
@@ -140,7 +148,7 @@ class StudyWatch:
         now = time.time()
         goals = self.results.study.objectives
         rows = []
-        for item in self.families:
+        for item in self.searches:
             rate = item.rate(now)
             left = (self.budget - item.evaluations) / rate if rate > 0.0 else float("nan")
             points = item.front.points
@@ -151,7 +159,7 @@ class StudyWatch:
             done = item.evaluations >= self.budget
             rows.append(
                 [
-                    item.family,
+                    item.name,
                     f"{item.evaluations:,}/{self.budget:,}",
                     percent(item.feasible / item.evaluations) if item.evaluations else "-",
                     f"{item.failed:,}",
@@ -162,7 +170,8 @@ class StudyWatch:
                 ]
             )
         best_of = [f"best {goal.name}" for goal in goals]
-        head = ["family", "evaluations", "feasible", "failed", "rate", "left", "front", *best_of]
+        first = "family" if self.results.request.searches_per_family == 1 else "search"
+        head = [first, "evaluations", "feasible", "failed", "rate", "left", "front", *best_of]
         return [line[:width] for line in text_table(head, rows).split("\n")]
 
 

@@ -125,7 +125,7 @@ def _delta(chosen: Chosen, seed: int) -> Indices:
     free = _free(chosen)
     stored = stored_family(chosen.results, chosen.task.winding.family.id)
     names = [f"objective:{name}" for name in stored.objectives]
-    table = stored.reader.table([*free, *names, "status"])
+    table = stored.table([*free, *names, "status"])
     objectives = matrix(table, names)
     values = {
         goal.name: goal.sign * objectives[:, column] for column, goal in enumerate(study.objectives)

@@ -27,7 +27,6 @@ from studies.report.columns import UNITS, title
 from studies.report.method import material_rows, task_rows
 from studies.sheet.blocks import Block, Cautions, Drawing, Grid, Heading, Sheet, Text
 from studies.sheet.checks import worked_checks
-from studies.stored.families import split_design_id
 from studies.stored.layout import Results, program_version
 from studies.tables import number, percent
 
@@ -50,7 +49,7 @@ def design_sheet(results: Results, design: str) -> Sheet:
         )
         raise ResultsError(msg)
     study = results.study
-    family, _ = split_design_id(found.design)
+    family = found.winding.family.id
     designs = {item.name: np.array([float(found.row[item.name])]) for item in VARIABLES}
     sections, _, _ = cross_sections(found.winding.family, designs, study.construction)
     blocks: list[Block] = [

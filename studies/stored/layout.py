@@ -1,7 +1,8 @@
 """The results folder of one study: the frozen study file, what was asked for, the families.
 
 ``RESULTS/STUDY/study.toml`` is the study file byte for byte, ``study.json`` says where it came
-from and what was asked for on the command line, and each family has a folder of its own.
+from and what was asked for on the command line, and each search of a family has a folder of its
+own.
 """
 
 from __future__ import annotations
@@ -41,6 +42,8 @@ class Request:
     seed : int
     hovergap : str
         Version that wrote it.
+    searches_per_family : int
+        Independent searches of each family.
     """
 
     origin: str
@@ -48,6 +51,7 @@ class Request:
     evaluations_per_family: int
     seed: int
     hovergap: str = ""
+    searches_per_family: int = 1
 
     def table(self) -> dict[str, Any]:
         """Content of ``study.json``."""
@@ -62,9 +66,9 @@ class Results:
     study: Study
     request: Request
 
-    def family_folder(self, family: str) -> Path:
-        """Where the evaluations of one family lie."""
-        return self.folder / family
+    def search_folder(self, search: str) -> Path:
+        """Where the evaluations of one search of a family lie; see `studies.stored.naming`."""
+        return self.folder / search
 
 
 def program_version() -> str:
@@ -238,7 +242,13 @@ def _request(folder: Path, study: Study) -> Request:
         table = json.loads(content)
         if not table:  # written by hand, or lost: the study itself says what is wanted
             search = study.search
-            return Request("", study.families, search.evaluations_per_family, search.seed)
+            return Request(
+                "",
+                study.families,
+                search.evaluations_per_family,
+                search.seed,
+                searches_per_family=search.searches_per_family,
+            )
         if table["layout"] != LAYOUT:
             msg = f"{file}: layout {quoted(table['layout'])} is of another version of hovergap"
             raise ResultsError(msg)
@@ -248,6 +258,7 @@ def _request(folder: Path, study: Study) -> Request:
             evaluations_per_family=int(table["evaluations_per_family"]),
             seed=int(table["seed"]),
             hovergap=str(table["hovergap"]),
+            searches_per_family=int(table.get("searches_per_family", 1)),
         )
     except (ValueError, KeyError, TypeError):
         msg = (

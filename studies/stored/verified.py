@@ -1,6 +1,6 @@
 """Stored designs evaluated again by another evaluator: where these values lie, and reading them.
 
-``RESULTS/STUDY/FAMILY/verified-EVALUATOR`` is a folder of Parquet parts like those of an archive.
+``RESULTS/STUDY/SEARCH/verified-EVALUATOR`` is a folder of Parquet parts like those of an archive.
 One row is one design: its ``evaluation``, the evaluator with version and settings, every metric
 under its own name, ``objective:`` and ``margin:`` columns as in the archive, and beside each number
 the archive's (``stored:``) and the deviation from it (``deviation:``, over the size of the
@@ -23,7 +23,7 @@ from evaluators.machine.metrics import METRIC
 from optimizer.archive.parts import DamagedPartError, check_part, part_paths, read_part
 from optimizer.fronts import non_dominated
 from studies.errors import ResultsError
-from studies.stored.families import Stored, matrix
+from studies.stored.families import StoredFamily, matrix, stored_families
 from studies.stored.layout import Results
 
 PREFIX = "verified-"
@@ -68,7 +68,7 @@ class VerifiedRow:
 
 @dataclass(frozen=True)
 class VerifiedValues:
-    """What one evaluator said of one family's designs.
+    """What one evaluator said of the designs of one search.
 
     Attributes
     ----------
@@ -83,16 +83,14 @@ class VerifiedValues:
     damaged: tuple[Path, ...] = ()
 
 
-def verified_folder(family_folder: Path, evaluator: str) -> Path:
+def verified_folder(folder: Path, evaluator: str) -> Path:
     """Where the values of one evaluator lie; its name may hold any characters."""
-    return family_folder / f"{PREFIX}{quote(evaluator, safe='')}"
+    return folder / f"{PREFIX}{quote(evaluator, safe='')}"
 
 
-def verified_evaluators(family_folder: Path) -> list[str]:
+def verified_evaluators(folder: Path) -> list[str]:
     """Evaluators with stored values, the one that was used last at the end."""
-    found = [
-        item for item in family_folder.glob(f"{PREFIX}*") if item.is_dir() and part_paths(item)
-    ]
+    found = [item for item in folder.glob(f"{PREFIX}*") if item.is_dir() and part_paths(item)]
     newest = {item: max(part.stat().st_mtime for part in part_paths(item)) for item in found}
     return [
         unquote(item.name.removeprefix(PREFIX))
@@ -100,12 +98,12 @@ def verified_evaluators(family_folder: Path) -> list[str]:
     ]
 
 
-def read_verified(family_folder: Path, evaluator: str) -> VerifiedValues:
-    """Read what one evaluator said of one family's designs; empty if nothing is there."""
-    folder = verified_folder(family_folder, evaluator)
-    if not folder.is_dir():
+def read_verified(folder: Path, evaluator: str) -> VerifiedValues:
+    """Read what one evaluator said of the designs of one search; empty if nothing is there."""
+    place = verified_folder(folder, evaluator)
+    if not place.is_dir():
         return VerifiedValues(evaluator, {})
-    return _retried(lambda: _read(folder, evaluator))
+    return _retried(lambda: _read(place, evaluator))
 
 
 def _read(folder: Path, evaluator: str) -> VerifiedValues:
@@ -149,12 +147,13 @@ class VerifiedCounts:
 
 
 @dataclass(frozen=True)
-class VerifiedStored(Stored):
+class VerifiedFamily(StoredFamily):
     """A family whose front counts with verified values where there are any.
 
-    Of the archive's front, designs that fail or break a limit when verified are left out, and so
-    are those that others then dominate. Designs behind that front are not drawn in: their values
-    were never verified, and might be better than the verified ones by the model's error alone.
+    Of the front as it was searched, designs that fail or break a limit when verified are left
+    out, and so are those that others then dominate. Designs behind that front are not drawn in:
+    their values were never verified, and might be better than the verified ones by the model's
+    error alone.
     """
 
     evaluator: str = ""
@@ -162,62 +161,57 @@ class VerifiedStored(Stored):
     """Leave out designs that were not verified."""
 
     @cached_property
-    def values(self) -> VerifiedValues:
-        """All verified rows of the family."""
-        return read_verified(self.folder, self.evaluator)
+    def values(self) -> dict[str, VerifiedValues]:
+        """All verified rows by the name of their search."""
+        return {item.name: read_verified(item.folder, self.evaluator) for item in self.searches}
+
+    @property
+    def damaged_values(self) -> tuple[Path, ...]:
+        """Parts of verified values that could not be read."""
+        return tuple(path for item in self.values.values() for path in item.damaged)
 
     @cached_property
-    def searched_front(self) -> pa.Table:
-        """The front as the search found it."""
-        return Stored(self.study, self.family, self.folder, self.objectives, self.reader).front
+    def _searched(self) -> tuple[pa.Table, tuple[str, ...], list[VerifiedRow | None]]:
+        """The front as the search found it, whose each row is, and what was verified of it."""
+        table, owners = StoredFamily(self.searches).joined
+        numbers = table["evaluation"].to_pylist() if table.num_rows else []
+        rows = [
+            self.values[name].rows.get(number) for name, number in zip(owners, numbers, strict=True)
+        ]
+        return table, owners, rows
 
     @cached_property
     def verified_counts(self) -> VerifiedCounts:
         """What became of that front."""
-        table = self.searched_front
-        numbers = table["evaluation"].to_pylist() if table.num_rows else []
-        rows = [self.values.rows[item] for item in numbers if item in self.values.rows]
+        _, owners, found = self._searched
+        rows = [row for row in found if row is not None]
         names = dict.fromkeys(row.evaluator for row in rows)
         return VerifiedCounts(
             evaluator=" and ".join(names) or self.evaluator,
-            front=len(numbers),
+            front=len(owners),
             verified=len(rows),
             broke_limit=sum(row.ok and not row.feasible for row in rows),
             failed=sum(not row.ok for row in rows),
         )
 
     @cached_property
-    def front(self) -> pa.Table:
+    def joined(self) -> tuple[pa.Table, tuple[str, ...]]:
         """The front of verified values, with the columns of the archive's."""
-        table = self.searched_front
+        table, owners, verified = self._searched
         if not table.num_rows:
-            return table
-        rows = self.values.rows
-        kept = []
-        for row in table.to_pylist():
-            found = rows.get(row["evaluation"])
+            return table, ()
+        kept: list[tuple[str, dict[str, Any]]] = []
+        for row, name, found in zip(table.to_pylist(), owners, verified, strict=True):
             if found is None and not self.only:
-                kept.append(row)
+                kept.append((name, row))
             elif found is not None and found.feasible:
-                kept.append({name: found.values.get(name, row[name]) for name in row})
-        mixed = pa.Table.from_pylist(kept, schema=table.schema)
+                kept.append((name, {key: found.values.get(key, row[key]) for key in row}))
+        mixed = pa.Table.from_pylist([row for _, row in kept], schema=table.schema)
         if not kept:
-            return mixed
-        points = matrix(mixed, [f"objective:{name}" for name in self.objectives])
-        return mixed.filter(pa.array(non_dominated(points)))
-
-
-def with_verified(stored: Stored, evaluator: str, only: bool) -> VerifiedStored:
-    """The family with verified values in its front."""
-    return VerifiedStored(
-        stored.study,
-        stored.family,
-        stored.folder,
-        stored.objectives,
-        stored.reader,
-        evaluator,
-        only,
-    )
+            return mixed, ()
+        best = non_dominated(matrix(mixed, [f"objective:{name}" for name in self.objectives]))
+        names = tuple(name for (name, _), stays in zip(kept, best.tolist(), strict=True) if stays)
+        return mixed.filter(pa.array(best)), names
 
 
 def evaluator_for(opened: Sequence[Results], wanted: str = "") -> str:
@@ -232,8 +226,9 @@ def evaluator_for(opened: Sequence[Results], wanted: str = "") -> str:
         {
             name
             for results in opened
-            for family in results.study.families
-            for name in verified_evaluators(results.family_folder(family))
+            for family in stored_families(results)
+            for search in family.searches
+            for name in verified_evaluators(search.folder)
         }
     )
     place = opened[0].folder
@@ -252,10 +247,9 @@ def evaluator_for(opened: Sequence[Results], wanted: str = "") -> str:
     return wanted or there[0]
 
 
-def all_verified(family_folder: Path, evaluation: int) -> list[VerifiedRow]:
+def all_verified(folder: Path, evaluation: int) -> list[VerifiedRow]:
     """What every evaluator used so far said of one design."""
     found = [
-        read_verified(family_folder, name).rows.get(evaluation)
-        for name in verified_evaluators(family_folder)
+        read_verified(folder, name).rows.get(evaluation) for name in verified_evaluators(folder)
     ]
     return [row for row in found if row is not None]

@@ -260,7 +260,7 @@ def check_material(kind: str, name: str, known: Iterable[str], key: str) -> list
     return [Finding(("materials", key), problem, remedy)]
 
 
-LEAST_SHARE = 100  # evaluations a family needs on average before it can be judged
+LEAST_SHARE = 100  # evaluations a search needs on average before its family can be judged
 
 
 def check_search(table: object, families: int) -> list[Finding]:
@@ -271,9 +271,22 @@ def check_search(table: object, families: int) -> list[Finding]:
     if "stagnation_gain" in table and "stagnation_generations" not in table:
         problem = "has no effect without stagnation_generations"
         found.append(Finding(("search", "stagnation_gain"), problem, "state both or leave it out"))
-    total = table.get("total_evaluations")
-    if isinstance(total, int) and 0 < total < LEAST_SHARE * families:
-        problem = f"is too few for {families} families (got {total})"
-        remedy = f"give at least {LEAST_SHARE * families}, or leave out families"
-        found.append(Finding(("search", "total_evaluations"), problem, remedy))
+    total, each = table.get("total_evaluations"), table.get("searches_per_family", 1)
+    if isinstance(total, int) and isinstance(each, int) and total > 0:
+        short = too_few_in_all(total, families, each)
+        if short:
+            found.append(Finding(("search", "total_evaluations"), *short))
     return found
+
+
+def too_few_in_all(total: int, families: int, searches: int) -> tuple[str, str] | None:
+    """What is wrong with a total that leaves each search too little, and what would be right."""
+    least = LEAST_SHARE * families * max(searches, 1)
+    if total >= least:
+        return None
+    several = f" with {searches} searches each" if searches > 1 else ""
+    fewer = "families or searches" if searches > 1 else "families"
+    return (
+        f"is too few for {families} families{several} (got {total})",
+        f"give at least {least}, or leave out {fewer}",
+    )

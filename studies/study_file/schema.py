@@ -258,7 +258,14 @@ class SearchSection(Section):
     """How much is spent."""
 
     evaluations_per_family: int = Field(
-        4000, ge=1, le=10_000_000, description="designs evaluated in each family"
+        4000, ge=1, le=10_000_000, description="designs evaluated in each search of a family"
+    )
+    searches_per_family: int = Field(
+        1,
+        ge=1,
+        le=100,
+        description="independent searches of each family, each with a seed of its own; several "
+        "show how much of the order of the families is chance",
     )
     population: int | None = Field(
         None, ge=4, le=10_000, description="designs of one generation; chosen if left out"
@@ -275,14 +282,14 @@ class SearchSection(Section):
         None,
         ge=1,
         le=1_000_000_000,
-        description="designs evaluated in all families together; families without prospects make "
-        "room for the others, and evaluations_per_family is the most one gets",
+        description="designs evaluated in all searches together; families without prospects make "
+        "room for the others, and evaluations_per_family is the most one search gets",
     )
     stagnation_generations: int | None = Field(
         None,
         ge=1,
         le=1_000_000,
-        description="generations of little gain in hypervolume that end a family",
+        description="generations of little gain in hypervolume that end a search",
     )
     stagnation_gain: float = Field(
         DEFAULT_GAIN,
@@ -294,13 +301,13 @@ class SearchSection(Section):
         None,
         ge=1,
         le=10_000_000,
-        description="evaluations without a feasible design that end a family",
+        description="evaluations without a feasible design that end a search",
     )
     wall_time_min: float | None = Field(
         None,
         ge=0.001,
         le=1e7,
-        description="longest duration of one sweep or resume, shared among the families",
+        description="longest duration of one sweep or resume, shared among the searches",
     )
     time_limit_s: float | None = Field(
         None,

@@ -21,12 +21,12 @@ from studies.running.sweep import chosen_families
 from studies.stored.layout import Results
 from studies.verification.run import Plan, verify_family
 from studies.verification.selection import nearest_and_extreme, verifying_problem
-from studies.verification.text import VerifyLine, family_text
+from studies.verification.text import VerifyLine, search_text
 
 
 @dataclass(frozen=True)
 class Plans:
-    """What there is to do in each family, and parts of the archives that are damaged."""
+    """What there is to do in each search, and parts of the archives that are damaged."""
 
     plans: tuple[Plan, ...]
     damaged: tuple[Path, ...]
@@ -70,24 +70,27 @@ def plans(
         stored = member.stored
         if stored.family not in wanted:
             continue
-        rows = stored.front
+        rows, owners = stored.joined
         if count is not None and rows.num_rows:
-            rows = rows.take(pa.array(nearest_and_extreme(comparison, member, count)))
+            chosen = nearest_and_extreme(comparison, member, count)
+            rows, owners = rows.take(pa.array(chosen)), tuple(owners[row] for row in chosen)
         problem = verifying_problem(
             machine_problem(results.study, stored.family, allow_program),
             evaluator,
             settings,
-            str(stored.reader.settings.get("evaluator_version", "")),
+            str(stored.settings.get("evaluator_version", "")),
         )
-        made.append(Plan(stored.family, stored.folder, problem, rows))
-        damaged += stored.reader.damaged
+        for search in stored.searches:
+            own = rows.filter(pa.array([name == search.name for name in owners], pa.bool_()))
+            made.append(Plan(search.name, search.folder, problem, own))
+        damaged += stored.damaged
     return Plans(tuple(made), tuple(damaged))
 
 
 def verify_all(
     results: Results, made: Sequence[Plan], dispatcher: Dispatcher, again: str
 ) -> int:
-    """Verify family after family and say how it went.
+    """Verify search after search and say how it went.
 
     Parameters
     ----------
@@ -108,7 +111,7 @@ def verify_all(
         If the values cannot be stored or are in use.
     """
     made = [plan for plan in made if len(plan)]
-    line = VerifyLine({plan.family: len(plan) for plan in made})
+    line = VerifyLine({plan.search: len(plan) for plan in made})
     meter = Meter(None, sum(map(len, made)))
     unfinished = len(made)
     lost = False
@@ -116,14 +119,14 @@ def verify_all(
         try:
             for plan in made:
 
-                def progress(done: int, new: int, family: str = plan.family) -> None:
+                def progress(done: int, new: int, search: str = plan.search) -> None:
                     meter.evaluated(new)
-                    line.show(family, done, meter.rate())
+                    line.show(search, done, meter.rate())
 
                 meter.start()
                 done = verify_family(plan, dispatcher, interruption, progress, line.say)
-                line.finish(plan.family)
-                line.say(f"{family_text(done, results.study)}\n")
+                line.finish(plan.search)
+                line.say(f"{search_text(done, results.study)}\n")
                 unfinished -= done.complete
                 if interruption.asked:
                     break

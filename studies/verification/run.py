@@ -1,4 +1,4 @@
-"""Evaluating designs of one family again, stored as they come."""
+"""Evaluating designs of one search again, stored as they come."""
 
 from __future__ import annotations
 
@@ -38,20 +38,21 @@ NO_SETTINGS = "{}"
 
 @dataclass(frozen=True)
 class Plan:
-    """What there is to do for one family.
+    """What there is to do for one search of a family.
 
     Attributes
     ----------
-    family : str
+    search : str
+        Its name.
     folder : Path
-        Of the family's archive.
+        Of its archive.
     problem : MachineProblem
         With the evaluator that verifies.
     designs : Table
         Rows of the archive, all columns.
     """
 
-    family: str
+    search: str
     folder: Path
     problem: MachineProblem
     designs: pa.Table
@@ -71,7 +72,7 @@ class Plan:
 
 @dataclass(frozen=True)
 class Done:
-    """What a verification leaves behind for one family.
+    """What a verification leaves behind for one search.
 
     Attributes
     ----------
@@ -115,7 +116,7 @@ def verify_family(
     Raises
     ------
     OptimizerError
-        If the values cannot be stored, or another process is verifying the same family.
+        If the values cannot be stored, or another process is verifying the same search.
     """
     folder = verified_folder(plan.folder, plan.problem.evaluator_name)
     make_folder(folder)
@@ -181,10 +182,10 @@ def _notices(plan: Plan, outdated: dict[str, int], damaged: list[Path]) -> Itera
     if identity["settings"] != NO_SETTINGS:
         now += f" with settings {identity['settings']}"
     for made_by, count in outdated.items():
-        yield f"{plan.family}: {counted(count)} verified before by {made_by}, now again by {now}"
+        yield f"{plan.search}: {counted(count)} verified before by {made_by}, now again by {now}"
     for path in damaged:
         yield (
-            f"{plan.family}: a damaged part was set aside as {path}; its designs are verified again"
+            f"{plan.search}: a damaged part was set aside as {path}; its designs are verified again"
         )
 
 

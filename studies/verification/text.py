@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 
 from evaluators.machine.metrics import METRIC
 from studies.running.progress import StatusLine, duration, speed
-from studies.stored.families import design_id
+from studies.stored.naming import design_id
 from studies.stored.verified import STORED, VerifiedRow
 from studies.study_file.definition import Study
 from studies.tables import number, percent, text_table
@@ -23,11 +23,11 @@ MOST_NAMED = 20  # designs named one by one; all are in the Parquet files
 
 
 class VerifyLine(StatusLine):
-    """Progress over all families.
+    """Progress over all searches.
 
     Parameters
     ----------
-    counts : dict of family to designs planned
+    counts : dict of search to designs planned
     """
 
     def __init__(self, counts: dict[str, int]) -> None:
@@ -36,16 +36,16 @@ class VerifyLine(StatusLine):
         self._total = sum(counts.values())
         self._before = 0
 
-    def show(self, family: str, done: int, rate: float) -> None:
-        """Designs of `family` done so far, and designs a second (NaN if unknown)."""
-        self.put(lambda: self._text(family, done, rate))
+    def show(self, search: str, done: int, rate: float) -> None:
+        """Designs of `search` done so far, and designs a second (NaN if unknown)."""
+        self.put(lambda: self._text(search, done, rate))
 
-    def finish(self, family: str) -> None:
-        """Turn to the next family."""
-        self._before += self._counts[family]
+    def finish(self, search: str) -> None:
+        """Turn to the next search."""
+        self._before += self._counts[search]
 
-    def _text(self, family: str, done: int, rate: float) -> str:
-        parts = [f"{family}  {done:,}/{self._counts[family]:,}"]
+    def _text(self, search: str, done: int, rate: float) -> str:
+        parts = [f"{search}  {done:,}/{self._counts[search]:,}"]
         parts.append(f"all {self._before + done:,}/{self._total:,}")
         if math.isfinite(rate) and rate > 0.0:
             parts.append(f"left {duration((self._total - self._before - done) / rate)}")
@@ -53,25 +53,25 @@ class VerifyLine(StatusLine):
         return "  ".join(parts)
 
 
-def family_text(done: Done, study: Study) -> str:
-    """Deviations and broken limits of one family."""
-    family, rows = done.plan.family, done.rows
+def search_text(done: Done, study: Study) -> str:
+    """Deviations and broken limits of the designs of one search."""
+    search, rows = done.plan.search, done.rows
     good = [row for row in rows if row.ok]
     broken = [row for row in good if not row.feasible]
     head = (
-        f"{family}: {counted(len(rows))} verified by "
+        f"{search}: {counted(len(rows))} verified by "
         f"{' and '.join(dict.fromkeys(row.evaluator for row in rows))} ({done.new:,} now); "
         f"{len(good) - len(broken):,} meet all limits"
     )
     parts = [head]
     if good:
-        parts.append(_table(family, good, study))
+        parts.append(_table(search, good, study))
     if broken:
-        parts.append(_broken(family, broken, study))
+        parts.append(_broken(search, broken, study))
     failed = [row for row in rows if not row.ok]
     if failed:
         lines = [
-            f"{_name(family, row)} could not be evaluated: {row.values['reason']}" for row in failed
+            f"{_name(search, row)} could not be evaluated: {row.values['reason']}" for row in failed
         ]
         parts.append(_shortened(lines))
     return "\n".join(parts)
@@ -110,7 +110,7 @@ def _unit(unit: str, study: Study) -> str:
     return {"1": "", "money": study.prices.currency}.get(unit, unit)
 
 
-def _table(family: str, rows: Sequence[VerifiedRow], study: Study) -> str:
+def _table(search: str, rows: Sequence[VerifiedRow], study: Study) -> str:
     body = []
     for item in _quantities(study):
         pairs = np.array(
@@ -133,7 +133,7 @@ def _table(family: str, rows: Sequence[VerifiedRow], study: Study) -> str:
                 number(float(typical[0])),
                 _change(float(np.median(change[known])), item),
                 _change(float(change[worst]), item),
-                _name(family, rows[worst]) if change[worst] else "",
+                _name(search, rows[worst]) if change[worst] else "",
             ]
         )
     head = ["quantity", "unit", "stored", "verified", "deviation", "largest", "at design"]
@@ -147,7 +147,7 @@ def _change(value: float, item: _Quantity) -> str:
     return f"{'+' if value > 0.0 else ''}{percent(value)}"
 
 
-def _broken(family: str, rows: Sequence[VerifiedRow], study: Study) -> str:
+def _broken(search: str, rows: Sequence[VerifiedRow], study: Study) -> str:
     lines = []
     for row in rows:
         said = [
@@ -155,7 +155,7 @@ def _broken(family: str, rows: Sequence[VerifiedRow], study: Study) -> str:
             for limit in study.limits
             if row.number(f"margin:{limit.name}") > 0.0
         ]
-        lines.append(f"{_name(family, row)} breaks a limit: {'; '.join(said)}")
+        lines.append(f"{_name(search, row)} breaks a limit: {'; '.join(said)}")
     return _shortened(lines)
 
 
@@ -165,5 +165,5 @@ def _shortened(lines: list[str]) -> str:
     return "\n".join([*lines[:MOST_NAMED], f"... and {len(lines) - MOST_NAMED} more"])
 
 
-def _name(family: str, row: VerifiedRow) -> str:
-    return design_id(family, int(row.values["evaluation"]))
+def _name(search: str, row: VerifiedRow) -> str:
+    return design_id(search, int(row.values["evaluation"]))

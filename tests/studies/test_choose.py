@@ -31,7 +31,9 @@ A, B, C, D = range(4)
 
 def pool(values: np.ndarray, family: str = "Q6p2s1", folder: str = "results/hand") -> Pool:
     results = SimpleNamespace(folder=Path(folder), study=None)
-    return Pool(family, results, family, np.arange(len(values)), values, len(values), {})  # type: ignore[arg-type]
+    rows = len(values)
+    owner = np.zeros(rows, dtype=np.int64)
+    return Pool(family, results, family, (family,), owner, np.arange(rows), values, rows, {})  # type: ignore[arg-type]
 
 
 def wanted(
@@ -124,9 +126,11 @@ def test_another_design_may_be_taken_if_it_is_a_candidate() -> None:
     decision = decide([pool(FRONT)], wanted(), 1, take="Q6p2s1-000002")
     assert decision is not None
     assert decision.taken.design == "Q6p2s1-000002"
-    for name in ("Q6p2s1-000009", "Q12p4s5-000001", "nonsense"):
+    for name in ("Q6p2s1-000009", "Q12p4s5-000001", "Q6p2s1.2-000002"):
         with pytest.raises(ResultsError, match="not among the candidates"):
             decide([pool(FRONT)], wanted(), 1, take=name)
+    with pytest.raises(ResultsError, match="is no design"):
+        decide([pool(FRONT)], wanted(), 1, take="nonsense")
     both = [pool(FRONT), pool(FRONT, folder="results/other")]
     with pytest.raises(ResultsError, match="several studies"):
         decide(both, wanted(), 1, take="Q6p2s1-000001")
@@ -156,9 +160,9 @@ def test_command_ranks_every_stored_design_and_stores_the_decision(
     results = open_results(swept)
     rows = []
     for family in results.study.families:
-        from studies.stored.families import stored_family
+        from studies.stored.families import stored_search
 
-        rows += stored_family(results, family).reader.table().to_pylist()
+        rows += stored_search(results, family).reader.table().to_pylist()
     rows = [row for row in rows if row["feasible"] and row["tip_speed_m_s"] <= 60.0]
     assert sum(item["meet_all_limits"] for item in content["candidates"]) == len(rows)
     z = np.array([[row["loss_total_W"], row["cost"]] for row in rows])
@@ -235,9 +239,9 @@ def test_scenario_prices_equal_a_new_evaluation(hovergap: Run, write_study: Writ
         prices = scenario_prices(results.study.prices, scenario)
         task = replace(problem.task, prices=prices)
         problem = replace(problem, task=task, _built={})
-        from studies.stored.families import stored_family
+        from studies.stored.families import stored_search
 
-        reader = stored_family(results, found.family).reader
+        reader = stored_search(results, found.family).reader
         rows = [reader.row(int(item)) for item in found.evaluations]
         x = np.array([[row[item.name] for item in problem.variables] for row in rows])
         outcome = problem.evaluate(x)

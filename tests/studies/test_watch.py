@@ -77,8 +77,8 @@ def test_watch_follows_a_running_sweep_to_its_end(sweep: subprocess.Popen[bytes]
     # What it ends with is what the archive holds.
     state = StudyWatch.of(open_results(Path("results/small")))
     state.refresh()
-    for item in state.families:
-        stored = stored_family(state.results, item.family)
+    for item in state.searches:
+        stored = stored_family(state.results, item.name)
         assert (item.evaluations, item.feasible, item.failed) == stored.counts
         assert len(item.front) == stored.front.num_rows
 
@@ -132,7 +132,7 @@ def test_merged_parts_are_not_counted_twice(hovergap: Run, write_study: Write) -
     hovergap("sweep", "small.toml", "--budget", "60", "--workers", "1", "--family", "Q6p2s1")
     state = StudyWatch.of(open_results(Path("results/small")))
     state.refresh()
-    [family] = state.families
+    [family] = state.searches
     counts = family.evaluations, family.feasible, len(family.front)
     # The same rows under a new name, as after a merge.
     for part in family.folder.glob("part-*.parquet"):

@@ -43,6 +43,7 @@ function begin() {
   fillChoices();
   connectPlots();
   connectPrinting();
+  connectCertainty();
   drawFront();
   drawAxes();
   applyLimits();

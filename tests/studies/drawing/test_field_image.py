@@ -13,7 +13,7 @@ from click.testing import CliRunner, Result
 from evaluators.machine.geometry.cross_sections import MILLI
 from evaluators.machine.geometry.outlines import outlines
 from studies.drawing.field_picture import colours, loop_points
-from studies.stored.families import stored_family
+from studies.stored.families import stored_search
 from studies.stored.layout import open_results
 
 Run = Callable[..., Result]
@@ -37,7 +37,7 @@ def searched(tmp_path_factory: pytest.TempPathFactory, study_text: str) -> Path:
 @pytest.fixture(scope="module")
 def design(searched: Path) -> str:
     """A design that could be evaluated."""
-    table = stored_family(open_results(searched), FAMILY).reader.table(["evaluation", "status"])
+    table = stored_search(open_results(searched), FAMILY).reader.table(["evaluation", "status"])
     row = table["status"].to_pylist().index("ok")
     return f"{FAMILY}-{table['evaluation'].to_pylist()[row]:06d}"
 

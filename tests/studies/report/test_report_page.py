@@ -26,7 +26,7 @@ from studies.report.families import tip_shapes
 from studies.report.html import table
 from studies.report.verified import verified_values
 from studies.report.waves import turn_curves
-from studies.stored.families import stored_family
+from studies.stored.families import Stored, StoredFamily, stored_search
 from studies.stored.layout import open_results
 from studies.stored.verified import verified_folder
 
@@ -75,7 +75,7 @@ def test_page_holds_the_front_exactly_enough(text: str, results_folder: Path) ->
     values = np.frombuffer(base64.b64decode(held["designs"]["values"]), dtype="<f4")
     values = values.reshape(len(held["columns"]), -1)
     names = [column["name"] for column in held["columns"]]
-    reader = stored_family(open_results(results_folder), "Q6p2s1").reader
+    reader = stored_search(open_results(results_folder), "Q6p2s1").reader
     for position, design in enumerate(held["designs"]["ids"]):
         family, evaluation = design.rsplit("-", 1)
         if family != "Q6p2s1":
@@ -128,9 +128,10 @@ def test_same_results_give_the_same_file(results_folder: Path, page: Path, tmp_p
 
 def test_progress_ends_at_the_hypervolume_of_the_comparison(data: ReportData) -> None:
     for family in data.families:
-        assert family.progress[-1, 0] == family.member.stored.counts[0]
-        assert family.progress[-1, 1] == pytest.approx(family.member.hypervolume, rel=1e-12)
-        assert (np.diff(family.progress[:, 1]) >= -1e-12).all()
+        [curve] = family.progress  # one search
+        assert curve[-1, 0] == family.member.stored.counts[0]
+        assert curve[-1, 1] == pytest.approx(family.member.hypervolume, rel=1e-12)
+        assert (np.diff(curve[:, 1]) >= -1e-12).all()
 
 
 def test_context_and_cards_are_all_feasible_designs(data: ReportData) -> None:
@@ -222,7 +223,9 @@ def test_tip_shapes() -> None:
 
 
 def test_verified_values_are_read_where_they_are(tmp_path: Path) -> None:
-    assert verified_values(tmp_path) == {}
+    search = Stored("small", "Q6p2s1", tmp_path, (), None, search=2)  # type: ignore[arg-type]
+    family = StoredFamily((search,))
+    assert verified_values(family) == {}
     table = pa.table(
         {
             "evaluation": [7],
@@ -236,11 +239,11 @@ def test_verified_values_are_read_where_they_are(tmp_path: Path) -> None:
     folder = verified_folder(tmp_path, "finer")
     folder.mkdir()
     path = write_part(folder, 0, table)
-    found = verified_values(tmp_path)[7]
+    found = verified_values(family)["Q6p2s1.2-000007"]
     assert (found.evaluator, found.metrics) == ("finer", {"torque_Nm": 1.25})
     path.write_bytes(b"PAR1 no")
     with pytest.raises(ResultsError, match="verified"):
-        verified_values(tmp_path)
+        verified_values(family)
 
 
 def test_nothing_feasible_is_said(write_study: Any, hovergap: Any, tmp_path: Path) -> None:
