@@ -75,6 +75,7 @@ def begin(folder: Path) -> None:
 
 def interrupted(folder: Path) -> None:
     """What a killed run leaves, with one part that was damaged since and one foreign file."""
+    merging.MERGE_FROM = merging.MERGE_MEANWHILE = 10**9
     search(folder, Settings(**{**vars(SETTINGS), "budget": 12}))
     part = parts.part_paths(folder)[1]
     part.write_bytes(part.read_bytes()[:-100])
@@ -190,7 +191,9 @@ class Steps:
             self.disk.sync(place)
 
     def _lock(self, handle: Any, operation: int) -> None:
-        self.step("lock")
+        number = handle if isinstance(handle, int) else handle.fileno()
+        if operation & fcntl.LOCK_EX and os.readlink(f"/proc/self/fd/{number}").endswith(".lock"):
+            self.step("lock")
         self._flock(handle, operation)
 
     def _open_to_write(self, path: Path, mode: str) -> Any:

@@ -34,8 +34,9 @@ ERRORS = {
     "EIO": "the disk reports an input/output error",
     "EACCES": "permission is denied",
 }
-# Steps whose failure costs nothing: a note for people, and what is tidied up.
-HARMLESS = {"open writer", "remove writer", "remove front.parquet"}
+# Steps whose failure costs nothing: a note for people, what is tidied up, and a file without a
+# name by which the lock's library tries the file system.
+HARMLESS = {"open writer", "remove writer", "remove front.parquet", "open slopes"}
 
 
 @pytest.fixture
@@ -75,25 +76,29 @@ def all_sound(place: Path, environment, rows_of, scenario: str, fault: str, step
     lines = broken(place, environment, scenario, fault, steps)
     assert lines
     whole = rows_of(place / "warm")
+    harmless = HARMLESS | ({"mkdir slopes"} if scenario == "interrupted" else set())
     for told in lines:
         if fault == "kill":
             assert told["code"] == -signal.SIGKILL, told
         elif fault == "power":
             assert told["code"] == faults.POWER_CUT, told
-        elif told["name"] not in HARMLESS:
+        else:
             assert told["code"] == 0, told
-            assert ERRORS[fault] in told["said"], told
             assert "\n" not in told["said"], told
+            if told["name"] == "lock":  # its library takes some errors for another's lock
+                assert str(place) in told["said"], told
+            elif told["name"] not in harmless:
+                assert ERRORS[fault] in told["said"], told
         sound(told, whole, rows_of)
         # Only the part that was damaged before: no step leaves a torn one behind.
         aside = list(Path(told["folder"]).glob("quarantine/*"))
         assert len(aside) == (scenario == "interrupted"), told
 
 
-# Together one of each kind of step but for every third, in two states of the archive.
+# A quarter of the kinds of step each; all steps are tried below.
 @pytest.mark.parametrize(
     ("scenario", "fault", "steps"),
-    [("begin", "kill", "0/3"), ("interrupted", "power", "1/3")],
+    [("begin", "kill", "0/4"), ("interrupted", "power", "2/4")],
 )
 def test_some_steps(place, python_path, rows_of, scenario, fault, steps) -> None:
     all_sound(place, python_path, rows_of, scenario, fault, steps)
