@@ -6,12 +6,13 @@ from evaluators.machine.geometry.dxf import dxf_bytes
 from evaluators.machine.geometry.outlines import outlines
 from studies.drawing.cross_section import cross_section_svg
 from studies.drawing.winding_diagram import winding_svg
-from studies.export.files import ExportedFile, text_file
+from studies.export.files import ExportedFile, svg_file
 from studies.export.front import FrontTable
 from studies.export.machine import machine_file
 from studies.export.materials import material_files
 from studies.export.suspension import suspension_files, suspension_known
 from studies.export.winding import winding_files
+from studies.inspection.design import SHORT_CAUTIONS
 from studies.stored.design import Chosen
 from studies.stored.layout import Results
 
@@ -32,16 +33,16 @@ def design_files(chosen: Chosen) -> list[ExportedFile]:
     files = [
         ExportedFile(
             DRAWING,
-            dxf_bytes(parts, title, facts, "Read README.txt beside this file."),
+            dxf_bytes(parts, title, facts, "Read README.txt beside this file.", SHORT_CAUTIONS),
             "cross-section to scale in mm, a layer for each part, closed outlines; the dimension "
             "on the layer scale must read the stator's outer diameter",
         ),
-        text_file(
+        svg_file(
             PICTURE,
             cross_section_svg(chosen.sections, 0, chosen.task.winding, chosen.design, "part"),
             "the same as a picture with a scale bar, coil sides by phase",
         ),
-        text_file(DIAGRAM, winding_svg(chosen.task.winding), "the winding unrolled"),
+        svg_file(DIAGRAM, winding_svg(chosen.task.winding), "the winding unrolled"),
         machine_file(chosen, parts),
         *winding_files(chosen.task.winding, int(chosen.metric("turns_per_coil"))),
         *material_files(chosen.task),

@@ -11,7 +11,7 @@ from typing import Any
 
 from optimizer.archive.durable import make_folder, write_durably
 from studies.errors import StorageError
-from studies.inspection.design import CAUTIONS
+from studies.inspection.design import CAUTIONS, SHORT_CAUTIONS
 from studies.stored.layout import program_version, storage
 
 README = "README.txt"
@@ -32,9 +32,16 @@ def text_file(name: str, text: str, description: str) -> ExportedFile:
 
 
 def json_file(name: str, content: Mapping[str, Any], description: str) -> ExportedFile:
-    """A JSON file; NaN and infinity, which JSON does not know, are refused."""
-    text = json.dumps(content, indent=2, allow_nan=False, ensure_ascii=False)
+    """A JSON file with the cautions; NaN and infinity, which JSON does not know, are refused."""
+    whole = {**content, "cautions": list(CAUTIONS)}
+    text = json.dumps(whole, indent=2, allow_nan=False, ensure_ascii=False)
     return text_file(name, text + "\n", description)
+
+
+def svg_file(name: str, svg: str, description: str) -> ExportedFile:
+    """A drawing with the short cautions as its description, which viewers show or read out."""
+    head, rest = svg.split(">", 1)
+    return text_file(name, f"{head}><desc>{' '.join(SHORT_CAUTIONS)}</desc>{rest}", description)
 
 
 def write_folder(

@@ -56,6 +56,12 @@ CAUTIONS = (
     "housings for that event, and test it.",
 )
 
+SHORT_CAUTIONS = (
+    "Rotors burst: spin-test under containment. Magnets crush. DC links kill after switch-off.",
+    "Local codes apply; design and approval belong to licensed engineers.",
+)
+"""For drawings, which travel without the text beside them."""
+
 
 @dataclass(frozen=True)
 class Inspection:

@@ -136,6 +136,8 @@ def test_drawing_audits_clean_and_its_areas_are_the_evaluators(
     assert dimension.get_measurement() == pytest.approx(2e3 * float(sections.outer_radius[0]))
     words = " ".join(text.dxf.text for text in space.query("TEXT"))
     assert "not released for manufacture" in words
+    for caution in ("burst", "crush", "DC links kill", "Local codes", "licensed"):
+        assert caution in words
 
 
 def test_pictures_are_well_formed_and_names_stay_text(
@@ -304,6 +306,9 @@ def test_every_export_carries_the_cautions(hovergap: Run, swept: Path) -> None:
             assert re.search(word, text), word
         for item in Path(folder).iterdir():
             assert item.name == "README.txt" or item.name in text
+            # What is likely to travel alone carries them itself.
+            if item.suffix in (".json", ".svg"):
+                assert re.search(r"burst.*containment.*crush.*DC link", item.read_text(), re.DOTALL)
 
 
 def test_a_failed_or_unknown_design_is_refused_in_one_sentence(

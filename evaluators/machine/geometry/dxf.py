@@ -29,7 +29,11 @@ NOTE = "Calculated, not released for manufacture."
 
 
 def dxf_bytes(
-    parts: tuple[Outline, ...], title: str, facts: dict[str, str], hint: str = ""
+    parts: tuple[Outline, ...],
+    title: str,
+    facts: dict[str, str],
+    hint: str = "",
+    cautions: tuple[str, ...] = (),
 ) -> bytes:
     """Drawing in millimetres, rotor at angle 0, origin on the shaft axis.
 
@@ -44,6 +48,8 @@ def dxf_bytes(
         Custom properties of the file.
     hint : str
         Added to the note that this is no released drawing.
+    cautions : tuple of str
+        Lines of their own below it.
     """
     from ezdxf import units
     from ezdxf.enums import TextEntityAlignment
@@ -66,9 +72,10 @@ def dxf_bytes(
     radius = max(abs(x) for part in parts for x in part.outer.vertices[:, 0].tolist())
     height = TEXT_SHARE * radius
     _scale_check(doc, radius, height)
-    for line, text in enumerate((title, f"{NOTE} {hint}".rstrip())):
+    lines = (title, f"{NOTE} {hint}".rstrip(), *cautions)
+    for above, text in enumerate(reversed(lines)):
         space.add_text(text, height=height, dxfattribs={"layer": "notes"}).set_placement(
-            (0.0, radius * 1.15 - 1.6 * line * height), align=TextEntityAlignment.MIDDLE_CENTER
+            (0.0, radius * 1.1 + 1.6 * above * height), align=TextEntityAlignment.MIDDLE_CENTER
         )
     stream = io.StringIO()
     doc.write(stream)
