@@ -98,6 +98,8 @@ def site(tmp_path_factory: pytest.TempPathFactory) -> Path:
         "[hovergap.evaluators]",
         "toy = toy_evaluator:ToyEvaluator",
         "toy_finer = toy_evaluator:FinerToyEvaluator",
+        "toy_broken = toy_evaluator:BrokenToyEvaluator",
+        "toy_missing = toy_of_nobody:Evaluator",
     ]
     declared = tomllib.loads((PROJECT / "pyproject.toml").read_text())["project"]["entry-points"]
     found = {point.name for point in entry_points(group="hovergap.evaluators")}

@@ -85,3 +85,13 @@ class FinerToyEvaluator(ToyEvaluator):
         factors = {"loss_total_W": 1.1, "tip_speed_m_s": 1.5}
         metrics = {name: values * factors.get(name, 1.0) for name, values in found.metrics.items()}
         return Evaluations(metrics, found.status, found.reason)
+
+
+class BrokenToyEvaluator(ToyEvaluator):
+    """A third party's mistake."""
+
+    name = "toy_broken"
+
+    def __init__(self, task: Task, settings: Mapping[str, object]) -> None:
+        super().__init__(task, settings)
+        raise LookupError("no licence\n for this machine")
