@@ -178,11 +178,11 @@ class OutsideChecks:
         got = np.asarray(found, dtype=np.float64)
         _some(what, got)
         if math.isinf(low):
-            limits = f"at most {with_unit(number(high), unit)}"
+            limits = f"at most {with_unit(number(high, 4), unit)}"
         elif math.isinf(high):
-            limits = f"at least {with_unit(number(low), unit)}"
+            limits = f"at least {with_unit(number(low, 4), unit)}"
         else:
-            limits = with_unit(f"{number(low)} to {number(high)}", unit)
+            limits = with_unit(f"{number(low, 4)} to {number(high, 4)}", unit)
         row = self._row(what, limits, why, source, unit)
         outside = ~((got >= low) & (got <= high))
         if np.any(outside):

@@ -86,7 +86,7 @@ def found_text(row: Row) -> str:
     Rounding noise, which differs from machine to machine, is told as such.
     """
     if row.lowest <= row.highest:
-        ends = [number(value, 2) for value in (row.lowest, row.highest)]
+        ends = [number(value, 3) for value in (row.lowest, row.highest)]
         return with_unit(ends[0] if ends[0] == ends[1] else " to ".join(ends), row.unit)
     parts = []
     if row.relative is not None:

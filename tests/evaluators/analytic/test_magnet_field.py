@@ -1,11 +1,7 @@
 """Field of the magnets under a smooth bore, against the published solution and closed forms.
 
-Tables: harmonics and sums evaluated from Zhu, Howe, Bolte, Ackermann, "Instantaneous magnetic field
-distribution in brushless permanent magnet DC motors, Part I: open-circuit field", IEEE Trans. Magn.
-29(1), 1993 (radial magnetisation) and Zhu, Howe, Chan, "Improved analytical model for predicting
-the magnetic field distribution in brushless permanent-magnet machines", IEEE Trans. Magn. 38(1),
-2002 (both), and harmonic by harmonic from a boundary-value problem of the scalar potential; all
-digits printed agree. Positive on the magnet axis at theta = 0.
+Tables: harmonics and sums evaluated from the papers, and harmonic by harmonic from a boundary-value
+problem of the scalar potential; all digits printed agree. Positive on the magnet axis at theta = 0.
 """
 
 from __future__ import annotations
@@ -13,6 +9,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 from numpy.typing import NDArray
+from outside import OutsideChecks
 
 from evaluators.analytic.rotor import (
     MU_0,
@@ -24,7 +21,14 @@ from evaluators.analytic.rotor import (
 )
 
 FloatArray = NDArray[np.float64]
-PRINTED = 1e-7  # the tables hold eight digits
+PRINTED = {"relative": 1e-7, "why": "the tables hold eight digits"}
+
+check = OutsideChecks(
+    "field",
+    "own evaluation of Zhu, Howe, Bolte, Ackermann, IEEE Trans. Magn. 29(1), 1993 (radial) and "
+    "Zhu, Howe, Chan, IEEE Trans. Magn. 38(1), 2002 (both directions)",
+)
+DIRECT = "boundary-value problem of rotor and gap solved directly"
 
 CASE_A_ORDERS = (2, 6, 10, 14, 18, 22)
 CASE_A = {
@@ -89,7 +93,14 @@ def amplitudes(
 def test_harmonics_of_a_four_pole_ring(direction: str) -> None:
     rotor = radii(20e-3, 24e-3, 25e-3, 1.05)
     found = amplitudes(rotor, np.array(CASE_A_ORDERS), 2, 0.8, direction)
-    np.testing.assert_allclose(np.transpose(found), CASE_A[direction], rtol=PRINTED, atol=1e-12)
+    check(
+        "harmonics of a four-pole magnet ring in mid-gap and at the bore",
+        np.transpose(found),
+        CASE_A[direction],
+        **PRINTED,
+        absolute=1e-12,
+        unit="T",
+    )
 
 
 @pytest.mark.parametrize("direction", ["radial", "parallel"])
@@ -101,8 +112,15 @@ def test_sum_over_the_harmonics(direction: str, angle: int) -> None:
     theta = np.radians(angle)
     cosine, sine = np.cos(orders * theta), np.sin(orders * theta)
     found = (radial @ cosine, tangential @ sine, bore @ cosine)
-    # Cancellation among terms of 1 T leaves eight digits after the point.
-    np.testing.assert_allclose(found, CASE_A_SUMS[direction][angle], rtol=PRINTED, atol=1e-8)
+    check(
+        "field of a four-pole magnet ring, 200 harmonics summed",
+        found,
+        CASE_A_SUMS[direction][angle],
+        relative=1e-7,
+        absolute=1e-8,
+        unit="T",
+        why="cancellation among terms of 1 T leaves eight digits after the point",
+    )
 
 
 def test_two_pole_branch() -> None:
@@ -110,7 +128,8 @@ def test_two_pole_branch() -> None:
     rotor = radii(10e-3, 18e-3, 20e-3, 1.05)
     orders = np.array([1, 3, 7])
     parallel = np.transpose(amplitudes(rotor, orders, 1, 1.0, "parallel"))
-    np.testing.assert_allclose(parallel[0], (0.93663599, 0.048001056, 0.88863494), rtol=PRINTED)
+    what = "harmonics of a two-pole magnet ring, whose first order is a case of its own"
+    check(what, parallel[0], (0.93663599, 0.048001056, 0.88863494), **PRINTED)
     # A whole two-pole ring magnetised in one direction makes no other order.
     np.testing.assert_allclose(parallel[1:], 0.0, atol=1e-12)
     radial = np.transpose(amplitudes(rotor, orders, 1, 0.8, "radial"))
@@ -119,16 +138,20 @@ def test_two_pole_branch() -> None:
         (-0.16320046, -0.024916908, -0.15322277),
         (0.053301196, 0.018355848, 0.047538747),
     )
-    np.testing.assert_allclose(radial, table, rtol=PRINTED)
+    check(what, radial, table, **PRINTED)
 
 
 def test_solid_uniformly_magnetised_cylinder_in_a_perfect_bore() -> None:
-    # Field of a diametral cylinder inside a perfect iron tube: B_r = Br a^2/b^2 at the bore
-    # (boundary-value problem in any textbook, e.g. Furlani, Permanent Magnet and Electromechanical
-    # Devices, 2001). The core is shrunk until it no longer matters: (1 um/10 mm)^2 = 1e-8.
     rotor = radii(1e-6, 10e-3, 12e-3, 1.0)
     _, _, bore = amplitudes(rotor, np.array([1]), 1, 1.0, "parallel")
-    assert bore[0] == pytest.approx(0.83333333, rel=1e-7)
+    check(
+        "field at the bore of a diametral cylinder in an iron tube",
+        bore[0],
+        0.83333333,
+        relative=1e-7,
+        why="the core is shrunk until it no longer matters: (1 um/10 mm)² = 1e-8",
+        source="B_r = Br a²/b²: Furlani, Permanent Magnet and Electromechanical Devices, 2001",
+    )
 
 
 @pytest.mark.parametrize(
@@ -144,15 +167,20 @@ def test_solid_uniformly_magnetised_cylinder_in_a_perfect_bore() -> None:
 def test_current_sheet_on_the_bore(order: int, at_bore: float, at_core: float) -> None:
     """B_r = mu0 K (Rs/r) ((r/Rr)^n + (Rr/r)^n) / ((Rs/Rr)^n - (Rr/Rs)^n), both sides iron.
 
-    Hughes, Miller, "Analysis of fields and inductances in air-cored and iron-cored synchronous
-    machines", Proc. IEE 124(2), 1977; K = 10 kA/m, 25 and 20 mm.
+    K = 10 kA/m, 25 and 20 mm.
     """
     rotor = radii(20e-3, 24e-3, 25e-3, 1.0)
     orders, core = np.array([order]), np.zeros((1, 1))
     potential = response(rotor, orders, core)[0, 0] * MU_0 * 1e4
-    assert order * abs(potential) / 25e-3 == pytest.approx(at_bore, rel=2e-6)  # seven digits
     share = core_share(rotor, orders, core)[0, 0]
-    assert order * abs(potential * share) / 20e-3 == pytest.approx(at_core, rel=2e-6)
+    check(
+        "field of a current sheet at the bore and on the core",
+        [order * abs(potential) / 25e-3, order * abs(potential * share) / 20e-3],
+        [at_bore, at_core],
+        relative=2e-6,
+        why="seven digits",
+        source="own evaluation of Hughes, Miller, Proc. IEE 124(2), 1977",
+    )
 
 
 @pytest.mark.parametrize("order", [1, 2, 4, 14])
@@ -195,19 +223,30 @@ def test_rotor_of_finite_permeability(order: int, permeability: float, hole: flo
     rotor = radii(core, magnet, bore, recoil)
     admittance = np.array([[recoil / permeability / np.tanh(-n * np.log(hole))]])
     found = source(rotor, np.array([[radial]]), np.array([[tangential]]), np.array([n]), admittance)
-    # Two solutions of one linear problem; 1e-9 leaves room for the conditioning of r^-14.
-    assert found.bore[0, 0] == pytest.approx(value(bore) @ answer[4:], rel=1e-9)
-    assert found.core[0, 0] == pytest.approx(value(core) @ answer[:2], rel=1e-9)
+    words = {
+        "relative": 1e-9,
+        "why": "two solutions of one linear problem; room for the conditioning of r^-14",
+        "source": DIRECT,
+    }
+    check(
+        "potential of magnets on a core of finite permeability, at bore and core",
+        [found.bore[0, 0], found.core[0, 0]],
+        [value(bore) @ answer[4:], value(core) @ answer[:2]],
+        **words,
+    )
 
     # Without magnets, a field mu0 H_theta = 1 T at the bore: A there, and A at the core over it.
     matrix[5, 4:], right[:] = -slope(bore), 0.0
     right[5] = 1.0
     answer = np.linalg.solve(matrix, right)
-    assert response(rotor, np.array([n]), admittance)[0, 0] == pytest.approx(
-        (value(bore) @ answer[4:]).real, rel=1e-9
-    )
     share = (value(core) @ answer[:2]) / (value(bore) @ answer[4:])
-    assert core_share(rotor, np.array([n]), admittance)[0, 0] == pytest.approx(share.real, rel=1e-9)
+    found_share = core_share(rotor, np.array([n]), admittance)[0, 0]
+    check(
+        "answer of a rotor of finite permeability to currents, at bore and core",
+        [response(rotor, np.array([n]), admittance)[0, 0], found_share],
+        [(value(bore) @ answer[4:]).real, share.real],
+        **words,
+    )
 
 
 def test_field_scales_with_remanence_and_not_with_size() -> None:

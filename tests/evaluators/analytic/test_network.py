@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 from numpy.typing import NDArray
+from outside import OutsideChecks
 from scipy.optimize import root
 
 from evaluators.analytic import network
@@ -20,6 +21,8 @@ CURVE = MagnetizationCurve(
     [0.0, 16.0, 54.0, 143.0, 210.0, 247.0, 342.0, 509.0, 933.0, 1934.0, 4993.0, 9423.0],
     [0.0, 0.0025, 0.0125, 0.05, 0.2, 0.5, 1.0, 1.3, 1.5, 1.6, 1.7, 1.8],
 )
+
+check = OutsideChecks("field")
 
 
 def circuit(rows: int = 1) -> StatorCircuit:
@@ -63,7 +66,6 @@ def lost_voltage(of: StatorCircuit, potential: FloatArray) -> FloatArray:
 
 @pytest.mark.parametrize("amplitude", [2e-3, 8e-3, 12e-3])
 def test_solution_against_a_general_solver(amplitude: float) -> None:
-    """scipy.optimize.root (Powell's hybrid method) on the circuit's equation, slot by slot."""
     of, answer, alone = circuit(), gap_answer(), wave(amplitude)
     state = network.solve(of, answer, alone, alone, 1)
     for k in range(alone.shape[1]):
@@ -73,7 +75,14 @@ def test_solution_against_a_general_solver(amplitude: float) -> None:
 
         expected = root(equation, state.potential[0, k] * 0.95, tol=1e-13)
         assert np.abs(equation(state.potential[0, k])).max() < 1e-9 * amplitude
-        np.testing.assert_allclose(state.potential[0, k], expected.x, atol=1e-8 * amplitude)
+        check(
+            "potentials of the saturated circuit of teeth and yoke over the wave's amplitude",
+            state.potential[0, k] / amplitude,
+            expected.x / amplitude,
+            absolute=1e-8,
+            why="both stop at 1e-9 of the amplitude or below",
+            source="scipy.optimize.root (Powell's hybrid method), slot by slot",
+        )
         np.testing.assert_allclose(
             state.lost[0, k], lost_voltage(of, state.potential[0, k]), atol=1e-12
         )
@@ -105,7 +114,6 @@ def test_one_period_tells_all_slots(pole_pairs: int, period: int, sign: int) -> 
 
 
 def test_small_field_on_top_is_the_derivative() -> None:
-    """Central difference of the full solution; its error falls with the square of the step."""
     of, answer, alone = circuit(), gap_answer(), wave(9e-3)
     state = network.solve(of, answer, alone, alone, 1)
     rng = np.random.default_rng(4)
@@ -116,7 +124,16 @@ def test_small_field_on_top_is_the_derivative() -> None:
         for side in (1.0, -1.0)
     )
     found = network.small_lost(state, answer, direction[..., None])[..., 0]
-    np.testing.assert_allclose(found, (up - down) / (2.0 * step), rtol=1e-4, atol=1e-5)
+    check(
+        "voltage that saturated iron takes of a small field",
+        found,
+        (up - down) / (2.0 * step),
+        relative=1e-4,
+        absolute=1e-5,
+        why="the difference errs with the square of the step; rounding over the step where it is "
+        "small",
+        source="central difference of the full solution",
+    )
 
 
 def test_newton_converges_quadratically(monkeypatch: pytest.MonkeyPatch) -> None:

@@ -7,35 +7,54 @@ from dataclasses import replace
 import machines
 import numpy as np
 import pytest
+from outside import OutsideChecks
 
 from evaluators.analytic.gap import GapField
 from evaluators.analytic.rotor import MU_0, RotorRadii, magnetisation, source
 from evaluators.analytic.rotor_state import displacement_stiffness, lowest_magnet_density
 from evaluators.machine.geometry.cross_sections import CrossSections
 
+check = OutsideChecks("force")
+check_magnets = OutsideChecks(
+    "demagnetisation", "Furlani, Permanent Magnet and Electromechanical Devices, 2001"
+)
+
 
 @pytest.mark.parametrize(
     ("pole_pairs", "density", "expected"), [(1, 1.039318, 4_573_941), (2, 1.031641, 7_774_065)]
 )
 def test_exact_stiffness_with_curvature(pole_pairs: int, density: float, expected: float) -> None:
-    # Rr = 20, Rs = 25 mm, fundamental only. The closed form was confirmed by an eccentric rotor in
-    # scikit-fem (second order, 10 um): 4 573 902 and 7 774 009 N/m per m.
+    # Rr = 20, Rs = 25 mm, fundamental only.
     found = displacement_stiffness(
         np.array([20e-3]), np.array([25e-3]), np.array([pole_pairs]), np.array([[density]])
     )
-    assert found[0] == pytest.approx(expected, rel=2e-6)  # B1 has seven digits
+    check(
+        "stiffness of a displaced rotor, magnets' fundamental",
+        found[0],
+        expected,
+        relative=2e-6,
+        why="B1 has seven digits",
+        source="closed form (own derivation), confirmed to 1e-5 by an eccentric rotor in "
+        "scikit-fem: 4,573,902 and 7,774,009 N/m per m",
+    )
 
 
 @pytest.mark.parametrize("order", [1, 2, 5])
 def test_thin_gap_limit(order: int) -> None:
-    # k/L = pi R B^2/(2 mu0 g), half of it for two poles without a homopolar path. Covo, "Unbalanced
-    # magnetic pull in induction motors with eccentric rotors", AIEE Trans. 73, 1954 (from memory).
+    # Half of it for two poles without a homopolar path.
     gap, radius, density = 1e-6, 25e-3, 0.8
     found = displacement_stiffness(
         np.array([radius - gap]), np.array([radius]), np.array([order]), np.array([[density]])
     )
     thin = np.pi * radius * density**2 / (2.0 * MU_0 * gap) * (0.5 if order == 1 else 1.0)
-    assert found[0] == pytest.approx(thin, rel=1e-4)  # gap over radius, times the order
+    check(
+        "stiffness of a displaced rotor in a thin gap",
+        found[0],
+        thin,
+        relative=1e-4,
+        why="gap over radius, times the order",
+        source="pi R B²/(2 mu0 g): Covo, AIEE Trans. 73, 1954 (from memory)",
+    )
 
 
 def two_pole(core: float, magnet: float, bore: float, arc: float = 1.0) -> CrossSections:
@@ -72,9 +91,8 @@ def no_current() -> GapField:
 
 def test_uniform_density_of_a_diametral_cylinder() -> None:
     # B inside a uniformly magnetised cylinder in an iron tube is uniform along its magnetisation,
-    # (Br/2)(1 + a^2/b^2) for mu_r = 1: 1.016667 T for a = 10, b = 12 mm, 1.2 T (Furlani, Permanent
-    # Magnet and Electromechanical Devices, 2001). Every point of the surface tells it, the edges
-    # too, where the radial component is nearly nothing. The core of 1 um does not matter.
+    # (Br/2)(1 + a^2/b^2) for mu_r = 1: 1.016667 T for a = 10, b = 12 mm, 1.2 T. Every point of the
+    # surface tells it, the edges too, where the radial component is nearly nothing.
     sections = two_pole(1e-6, 10e-3, 12e-3)
     found = lowest_magnet_density(
         sections,
@@ -84,11 +102,17 @@ def test_uniform_density_of_a_diametral_cylinder() -> None:
         1.0,
         1.2,
     )
-    assert found[0] == pytest.approx(1.016667, rel=1e-6)
+    check_magnets(
+        "density in a diametral cylinder in an iron tube",
+        found[0],
+        1.016667,
+        relative=1e-6,
+        why="seven printed digits; the core of 1 um does not matter",
+    )
 
 
 def test_recoil_permeability_lowers_it() -> None:
-    # Same with mu_r = 1.05 (boundary-value problem): 1.008959 T, uniform as well.
+    # Uniform as well.
     sections = two_pole(1e-6, 10e-3, 12e-3)
     found = lowest_magnet_density(
         sections,
@@ -98,7 +122,14 @@ def test_recoil_permeability_lowers_it() -> None:
         1.05,
         1.2,
     )
-    assert found[0] == pytest.approx(1.008959, rel=1e-6)
+    check_magnets(
+        "density in that cylinder with a permeability of 1.05",
+        found[0],
+        1.008959,
+        relative=1e-6,
+        why="seven printed digits",
+        source="boundary-value problem, own evaluation",
+    )
 
 
 def test_current_against_the_magnets_lowers_it() -> None:

@@ -5,10 +5,13 @@ from __future__ import annotations
 import machines
 import numpy as np
 import pytest
+from outside import OutsideChecks
 from slot_solution import solve_slot
 
 from evaluators.analytic.slots import mouth
 from evaluators.machine.geometry.cross_sections import CrossSections
+
+check = OutsideChecks("field")
 
 
 def slot(numbers: machines.Numbers = (12, 4, 5), **changes: float) -> CrossSections:
@@ -31,23 +34,35 @@ def channel(depth: float, width: float, wound: float) -> CrossSections:
 
 def test_uniform_channel_is_a_short_circuited_line() -> None:
     # A ~ cosh(k pi/w (bottom - x)) cos/sin(k pi y/w): potential over current of mode k is
-    # coth(k pi depth/w) / (k pi/2) in half-widths (separation of variables).
+    # coth(k pi depth/w) / (k pi/2) in half-widths.
     depth, width, modes = 6e-3, 12e-3, 7
     answer = mouth(channel(depth, width, 4e-3), modes)
     wave = np.pi * np.arange(1, modes + 1) / width
     expected = 1.0 / (0.5 * width * wave * np.tanh(wave * depth))
-    # The walls open by a slot pitch over 1 km, 1e-5 of the width.
-    np.testing.assert_allclose(np.diag(answer.compliance[0]), expected, rtol=1e-4)
+    why = "the walls open by a slot pitch over 1 km, 1e-5 of the width"
+    check(
+        "modes of a slot with parallel walls",
+        np.diag(answer.compliance[0]),
+        expected,
+        relative=1e-4,
+        why=why,
+        source="separation of variables in a channel",
+    )
     rest = answer.compliance[0] - np.diag(np.diag(answer.compliance[0]))
     assert np.abs(rest).max() < 1e-4
     assert np.abs(answer.current_share).max() < 1e-4
 
 
 def test_leakage_of_a_rectangular_slot() -> None:
-    # Permeance number h/(3 b) of the wound part and h'/b of the part above it (any textbook, e.g.
-    # Pyrhonen, Jokinen, Hrabovcova, Design of Rotating Electrical Machines, 2014, ch. 4).
     answer = mouth(channel(18e-3, 6e-3, 15e-3), 5)
-    assert answer.permeance[0] == pytest.approx(15.0 / 18.0 + 3.0 / 6.0, rel=1e-4)
+    check(
+        "leakage permeance of a rectangular slot",
+        answer.permeance[0],
+        15.0 / 18.0 + 3.0 / 6.0,
+        relative=1e-4,
+        why="the walls open by a slot pitch over 1 km, 1e-5 of the width",
+        source="h/(3 b) of the wound part and h'/b above it: Pyrhonen et al., 2014, ch. 4",
+    )
 
 
 def test_wound_part_with_parallel_tooth() -> None:
@@ -60,9 +75,15 @@ def test_wound_part_with_parallel_tooth() -> None:
     wound = np.trapezoid(enclosed**2 / (radius * angle), radius)
     above = np.linspace(sections.bore_radius[0], sections.wedge_radius[0], 20_001)
     passage = np.trapezoid(1.0 / (above * sections.slot_angle(above[None])[0]), above)
-    # With straight walls the field across the slot hardly varies: within 0.5 % of one dimension,
-    # and above it, as flux that is free to vary finds more ways.
-    assert 1.0 < mouth(sections, 5).permeance[0] / (wound + passage) < 1.005
+    check.within(
+        "leakage of a slot between parallel-sided teeth over that of a one-dimensional field",
+        mouth(sections, 5).permeance[0] / (wound + passage),
+        1.0,
+        1.005,
+        why="with straight walls the field across the slot hardly varies; flux that is free to "
+        "vary finds more ways, never fewer",
+        source="enclosed current squared over r times angle, by fine steps",
+    )
 
 
 TAPERS = {
@@ -80,19 +101,26 @@ def test_taper_against_finite_elements(
     changes: dict[str, float],
     error: float,
 ) -> None:
-    """Finite elements are converged to 1e-5 (checked by halving); the rest is mode truncation.
-
-    Modes of a channel do not have the slope of the field at an oblique wall, so they converge with
-    1/modes only; `error` is that of the leakage with the evaluator's five.
-    """
+    """`error` is that of the leakage with the evaluator's five modes."""
     sections = slot(numbers, **changes)
     compliance, share, permeance = solve_slot(sections, 5)
     answer = mouth(sections, 5)
-    assert answer.permeance[0] == pytest.approx(permeance, rel=error)
+    words = {
+        "why": "modes of a channel lack the slope of the field at an oblique wall and converge "
+        "with 1/modes only; five of them",
+        "source": "finite elements (scikit-fem), converged to 1e-5",
+    }
+    name = next(name for name, taper in TAPERS.items() if taper == (numbers, changes, error))
+    what = f"leakage permeance of a slot, {name}"
+    check(what, answer.permeance[0], permeance, relative=error, **words)
     # What counts for the gap: potentials per current, the lowest mode most.
-    assert answer.compliance[0, 0, 0] == pytest.approx(compliance[0, 0], rel=0.02)
-    np.testing.assert_allclose(answer.compliance[0], compliance, atol=0.03 * compliance[0, 0])
-    np.testing.assert_allclose(answer.current_share[0], share, atol=0.008)
+    what = "potential per current of the lowest mode of tapered slots"
+    check(what, answer.compliance[0, 0, 0], compliance[0, 0], relative=0.02, **words)
+    what = "potentials per current of all modes of tapered slots, over the lowest"
+    lowest = compliance[0, 0]
+    check(what, answer.compliance[0] / lowest, compliance / lowest, absolute=0.03, **words)
+    what = "share of the slot's current in the modes of tapered slots"
+    check(what, answer.current_share[0], share, absolute=0.008, **words)
     assert np.sign(answer.current_share[0, 1]) == np.sign(share[1])
     finer = mouth(sections, 20)
     left, coarse = (abs(item.permeance[0] / permeance - 1.0) for item in (finer, answer))

@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 from numpy.typing import NDArray
+from outside import OutsideChecks
 
 from evaluators.analytic import stress
 from evaluators.analytic.rotor import MU_0, RotorRadii, magnetisation, response, source
@@ -12,6 +13,13 @@ from evaluators.analytic.rotor import MU_0, RotorRadii, magnetisation, response,
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
 ORDERS = 12
+
+check = OutsideChecks("force")
+SHEET = (
+    "exact: pi Rs B1 K/2 (coth(nu ln(Rs/Rr)) ± 1), Maxwell and Lorentz part add or oppose: "
+    "Bichsel, dissertation ETH Zurich 1990 (from memory; own evaluation)"
+)
+PRINTED = {"relative": 1e-6, "why": "seven printed digits"}
 
 
 def quadrature(
@@ -39,10 +47,15 @@ def test_sums_equal_the_stress_on_any_circle(radius: float) -> None:
         for _ in range(2)
     )
     torque, force = quadrature(rising, falling, 25e-3, radius)
-    # The same sum in another order: rounding only.
-    assert stress.torque(rising[None], falling[None])[0] == pytest.approx(torque, rel=1e-9)
     found = stress.force(rising[None], falling[None], np.array([25e-3]))[0]
-    assert found == pytest.approx(force, rel=1e-9)
+    check(
+        "torque and force of any field",
+        [stress.torque(rising[None], falling[None])[0], found],
+        [torque, force],
+        relative=1e-9,
+        why="the same sum in another order: rounding",
+        source="Maxwell's stress summed over points of any circle in the gap",
+    )
 
 
 def test_force_of_two_fields_is_the_mixed_part() -> None:
@@ -105,10 +118,15 @@ def test_force_and_torque_on_wires() -> None:
     rising, falling = wires_in_the_gap(bore)
     forces = lorentz(INSIDE, OUTSIDE)
     found = stress.force(rising[None], falling[None], np.array([bore]))[0]
-    # Series of ratio 9/41 per order, cut at 80: rounding only.
-    assert found == pytest.approx(forces.sum(), rel=1e-9)
     torque = sum((np.conj(place(w)) * f).imag for w, f in zip(INSIDE, forces, strict=True))
-    assert stress.torque(rising[None], falling[None])[0] == pytest.approx(torque, rel=1e-9)
+    check(
+        "force and torque on wires within wires",
+        [found, stress.torque(rising[None], falling[None])[0]],
+        [forces.sum(), torque],
+        relative=1e-9,
+        why="series of ratio 9/41 per order, cut at 80: rounding",
+        source="Biot, Savart and Lorentz: mu0 I1 I2/(2 pi d) between every two wires",
+    )
 
 
 def test_action_equals_reaction() -> None:
@@ -126,9 +144,7 @@ def test_action_equals_reaction() -> None:
 
 SHEET_FORCE = [
     # p, B1 at the bore (T), order of the sheet, force (N/m) of 10 kA/m. Radii 20, 24, 25 mm,
-    # radial magnetisation over 0.8 of the pitch, 1.2 T, mu_r = 1. Exact:
-    # F/L = pi Rs B1 K/2 (coth(nu ln(Rs/Rr)) +- 1), + for nu = p + 1: Maxwell and Lorentz part add
-    # or oppose (stated by Bichsel, dissertation ETH Zurich 1990, from memory; values evaluated).
+    # radial magnetisation over 0.8 of the pitch, 1.2 T, mu_r = 1; + for nu = p + 1.
     (1, 1.039318, 2, 1382.586),
     (2, 1.031641, 1, 1440.442),
     (2, 1.031641, 3, 1098.112),
@@ -164,7 +180,8 @@ def test_force_of_a_sheet_one_pole_pair_apart(
     rotor, rising, falling, fundamental = magnets_and_sheet(pole_pairs, sheet_order, 1e4)
     assert fundamental == pytest.approx(density, rel=1e-6)  # seven digits printed
     force = stress.force(rising, falling, rotor.bore)[0]
-    assert abs(force) == pytest.approx(expected, rel=1e-6)
+    what = "force of magnets and a current sheet one pole pair apart"
+    check(what, abs(force), expected, **PRINTED, source=SHEET)
     # Turning the sheet by an angle of its own order turns the force by that angle, no more.
     turned = stress.force(
         *magnets_and_sheet(pole_pairs, sheet_order, 1e4 * np.exp(0.7j))[1:3], rotor.bore
@@ -175,7 +192,13 @@ def test_force_of_a_sheet_one_pole_pair_apart(
 
 @pytest.mark.parametrize(("pole_pairs", "expected"), [(1, 40.81392), (2, 40.51243), (4, 39.37265)])
 def test_torque_of_an_aligned_sheet(pole_pairs: int, expected: float) -> None:
-    # T/L = pi Rs^2 B1 K of a sheet of order p in phase with the flux density, 20 kA/m, same rotor.
-    # B_r ~ cos(p theta) pushes a sheet K ~ cos along +z by z x r, counter-clockwise.
+    # A sheet of order p in phase with the flux density, 20 kA/m, same rotor. B_r ~ cos(p theta)
+    # pushes a sheet K ~ cos along +z by z x r, counter-clockwise.
     _, rising, falling, _ = magnets_and_sheet(pole_pairs, pole_pairs, 2e4)
-    assert stress.torque(rising, falling)[0] == pytest.approx(-expected, rel=1e-6)
+    check(
+        "torque of magnets and an aligned current sheet",
+        stress.torque(rising, falling)[0],
+        -expected,
+        **PRINTED,
+        source="Lorentz: pi Rs² B1 K, own evaluation",
+    )
