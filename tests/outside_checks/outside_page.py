@@ -23,9 +23,10 @@ do not edit. {date}: {versions}.
 {rows} checks of {values} values in {files} test files, all passed{missing}. *Deviation* is the
 largest over all values of the check, to two digits, as share of the expected value unless it
 carries a unit; *abs.* marks absolute deviations of pure numbers. Where a range is allowed, what was
-found is given instead. A row that names two allowances lets a value pass by either. `From memory` marks values that were not looked up again when the test was written,
-`common practice` facts of the trade. What the computations leave out is told in
-[NEGLECTED.md](NEGLECTED.md).
+found is given instead. A row that names two allowances lets a value pass by either. `From memory`
+marks values that were not looked up again when the test was written, `common practice` facts of the
+trade, *own evaluation* a published formula evaluated apart from the code it checks. What the
+computations leave out is told in [NEGLECTED.md](NEGLECTED.md).
 """
 
 HEAD = """\

@@ -8,6 +8,7 @@ import numpy as np
 import pytest
 from analytic_case import AnalyticCase
 from numpy.typing import NDArray
+from outside import OutsideChecks
 
 from evaluators.analytic.gap import GapField
 from evaluators.analytic.model import Resolution
@@ -16,6 +17,8 @@ from evaluators.machine.winding.winding import Connection
 
 FloatArray = NDArray[np.float64]
 FINE = Resolution(slot_modes=4, reach=10, highest_order=96, positions=12)
+
+check = OutsideChecks("force", "plain sums over the turn, position by position and slot by slot")
 
 
 @pytest.fixture(scope="module", params=[(6, 2, 1), (12, 4, 5), (12, 5, 4), (12, 1, 2)], ids=str)
@@ -57,10 +60,20 @@ def test_force_and_its_errors(case: AnalyticCase) -> None:
         for value in force:
             worst_magnitude = max(worst_magnitude, abs(abs(value) / abs(mean) - 1.0))
             worst_angle = max(worst_angle, abs(np.angle(value / mean)))
-    # The mean over a turn does not depend on the positions; extremes are met by the same ones.
-    assert field.force[0] == pytest.approx(np.mean(size), rel=1e-9)
-    assert field.force_error_magnitude[0] == pytest.approx(worst_magnitude, rel=1e-6)
-    assert field.force_error_angle[0] == pytest.approx(worst_angle, rel=1e-6)
+    check(
+        "mean force of the suspension",
+        field.force[0],
+        np.mean(size),
+        relative=1e-9,
+        why="the mean over a turn does not depend on the positions",
+    )
+    check(
+        "largest errors of the force in magnitude and angle",
+        [field.force_error_magnitude[0], field.force_error_angle[0]],
+        [worst_magnitude, worst_angle],
+        relative=1e-6,
+        why="extremes are met by the same positions",
+    )
     assert field.force_per_ampere_turn[0] * exciting.suspension[0] == pytest.approx(size[0])
 
 
@@ -88,7 +101,14 @@ def test_inductance_by_slots(case: AnalyticCase, connection: Connection) -> None
     # Re(phasor exp(j t)) at t = 0 and a quarter of a period later.
     found = (linkage(0.0) - 1j * linkage(0.5 * np.pi)) / current
     expected = field.torque_inductance if connection == "torque" else field.suspension_inductance
-    assert expected[0] == pytest.approx(found.real, rel=1e-9)
+    check(
+        "inductance to torque and suspension current",
+        expected[0],
+        found.real,
+        relative=1e-9,
+        why="rounding",
+        source="potentials at the coil sides of phase one, summed",
+    )
 
 
 def slot_potentials(
@@ -149,8 +169,14 @@ def test_flux_linkage_and_iron_density_by_slots(case: AnalyticCase) -> None:
         side.torque_direction * magnets[side.slot] for side in winding.coil_sides if side.phase == 0
     )
     fundamental = 2.0 * np.mean(linkage * np.exp(-1j * electrical))
-    # The sheets' permeability of ten million leaves 1e-6.
-    assert field.flux_linkage[0] == pytest.approx(abs(fundamental), rel=1e-5)
+    check(
+        "flux linkage of the magnets",
+        field.flux_linkage[0],
+        abs(fundamental),
+        relative=1e-5,
+        why="the sheets' permeability of ten million leaves 1e-6",
+        source="potentials at the coil sides of phase one over a period",
+    )
     # The torque current leads the linkage by a quarter period: in phase with the EMF.
     assert phasor / fundamental / 1j == pytest.approx(abs(phasor / fundamental), rel=1e-9)
 

@@ -6,6 +6,7 @@ from collections.abc import Callable
 
 import numpy as np
 import pytest
+from outside import OutsideChecks
 
 from evaluators.finite_element.outcome import stress
 from evaluators.finite_element.outcome.displacement import stiffness
@@ -15,9 +16,10 @@ from evaluators.finite_element.solution.lanes import LANES
 SlotlessMaker = Callable[..., BatchField]
 NO_CURRENT = np.zeros(LANES)
 
-# Radial flux density at the bore, T: amplitude of each order. Closed form of Zhu, Howe, Chan, IEEE
-# Trans. Magn. 38(1), 2002, evaluated by a four-region boundary-value solution; Rr, Rm, Rs = 20, 24,
-# 25 mm, p = 2, and 10, 18, 20 mm, p = 1; arc 0.8, mu_r 1.05, Br 1.2 T.
+check_field, check_force = OutsideChecks("field"), OutsideChecks("force")
+
+# Radial flux density at the bore, T: amplitude of each order. Rr, Rm, Rs = 20, 24, 25 mm, p = 2,
+# and 10, 18, 20 mm, p = 1; arc 0.8, mu_r 1.05, Br 1.2 T.
 BORE_FIELD = {
     ("radial", 2): {2: 1.0219770, 6: 0.19538660, 14: 0.064130039, 18: 0.069260756},
     ("parallel", 2): {2: 1.0262970, 6: 0.066337260, 10: 0.087402510, 14: 0.10418244},
@@ -40,13 +42,20 @@ def test_magnet_field_at_the_bore(
     for order, expected in BORE_FIELD[magnetisation, p].items():
         place = int(np.searchsorted(waves.orders, order))
         found = 2.0 * order * np.abs(waves.potential[0, place]) / batch.sections.bore_radius
-        # Only the trace on the bore is discretised; measured 2e-6 (n = p) to 1 % (n = 9 p).
-        tolerance = 1e-5 if order == p else 1e-2
-        assert found == pytest.approx(np.full(LANES, expected), rel=tolerance)
+        main = order == p
+        check_field(
+            f"{'main order' if main else 'higher orders'} of the magnets' field at a slotless bore",
+            found,
+            expected,
+            relative=1e-5 if main else 1e-2,
+            why="only the trace on the bore is discretised: on coarse meshes 1e-5 (n = p) to 1 % "
+            "(n = 9 p)",
+            source="closed form of Zhu, Howe, Chan, IEEE Trans. Magn. 38(1), 2002, by a "
+            "four-region boundary-value solution of its own",
+        )
 
 
 def test_error_falls_with_refinement(slotless_machine: SlotlessMaker) -> None:
-    """Quadratic elements: the error of the field falls at least as h^3."""
     numbers, core, magnet, bore = MACHINE[2]
     errors = []
     for refinement in (1, 2):
@@ -55,20 +64,32 @@ def test_error_falls_with_refinement(slotless_machine: SlotlessMaker) -> None:
         place = int(np.searchsorted(waves.orders, 18))
         found = 36.0 * np.abs(waves.potential[0, place, 0]) / batch.sections.bore_radius[0]
         errors.append(abs(found - 0.069260756))
-    assert errors[1] < errors[0] / 2**3
+    check_field.within(
+        "fall of the error of the ninth order when the mesh is halved",
+        errors[0] / errors[1],
+        2**3,
+        np.inf,
+        why="a rate that is better does no harm",
+        source="quadratic elements: at least h^3 (theory of finite elements)",
+    )
 
 
 def test_hardly_any_torque_at_no_load(slotless_machine: SlotlessMaker) -> None:
     batch = slotless_machine(*MACHINE[2])
     waves = batch.solve_torque(np.array([0.0, 0.05, 0.1]), NO_CURRENT).waves
     torque = stress.torque(waves.orders, waves.potential, waves.tangential)
-    # The torque of a 20 kA/m sheet is 40 N m/m; the mesh's own slot pitch makes 6e-4 of that
-    # (measured), from orders that it resolves by a few elements.
-    assert np.max(np.abs(torque)) < 1e-3 * 40.0
+    check_force(
+        "torque of a slotless machine without current over that of a sheet of 20 kA/m",
+        torque / 40.0,
+        0.0,
+        absolute=1e-3,
+        why="the mesh's own slot pitch makes 6e-4 (measured), from orders that it resolves by a "
+        "few elements",
+        source="symmetry: none",
+    )
 
 
-# Aligned current sheet of 10 kA/m on the bore, N/m: pi Rs B1 K/2 (coth(nu ln(Rs/Rr)) +- 1), exact
-# with curvature (own derivation; Bichsel, dissertation, ETH Zurich 1990, from memory).
+# Aligned current sheet of 10 kA/m on the bore, N/m.
 FORCE = {((12, 1, 2), 2): 1382.586, ((12, 2, 1), 1): 1440.442, ((12, 2, 1), 3): 1098.112}
 
 
@@ -97,14 +118,19 @@ def test_force_of_a_current_sheet(
         )
     ]
     force = 2.0 * stress.pair(fields[0], fields[1], radius)
-    # Measured 1e-5: only the orders' own traces enter.
-    assert np.abs(force[0]) == pytest.approx(np.full(LANES, FORCE[numbers, nu]), rel=1e-4)
+    check_force(
+        "force of a current sheet in a slotless machine",
+        np.abs(force[0]),
+        FORCE[numbers, nu],
+        relative=1e-4,
+        why="only the orders' own traces on the bore are discretised: 1e-5 on coarse meshes",
+        source="pi Rs B1 K/2 (coth(nu ln(Rs/Rr)) ± 1), exact with curvature (own derivation; "
+        "Bichsel, dissertation, ETH Zurich 1990, from memory)",
+    )
     assert np.max(np.abs(force.imag)) < 1e-6 * np.max(np.abs(force))
 
 
-# pi B1^2/(4 mu0) ((p+1)(coth((p+1)x) + 1) + (p-1)(coth((p-1)x) - 1)), x = ln(Rs/Rr), exact linear
-# stiffness of concentric cylinders, p = 1 without homopolar path (own derivation, confirmed to 1e-5
-# with scikit-fem on eccentric meshes). B1 = 1.039318 T (p = 1), 1.031641 T (p = 2) at the bore.
+# N/m per m, p = 1 without homopolar path. B1 = 1.039318 T (p = 1), 1.031641 T (p = 2) at the bore.
 STIFFNESS = {(12, 1, 2): 4_573_941.0, (12, 2, 1): 7_774_065.0}
 
 
@@ -115,5 +141,12 @@ def test_stiffness_of_concentric_cylinders(
     batch = slotless_machine(numbers, 20.0, 24.0, 25.0, recoil=1.0, fundamental_only=True)
     equations = batch.equations(batch.model.suspension)
     found = stiffness(batch, no_load(batch, 0.2), [0], equations)
-    # Measured 1e-5.
-    assert found[0] == pytest.approx(np.full(LANES, STIFFNESS[numbers]), rel=1e-4)
+    check_force(
+        "stiffness of a displaced slotless rotor",
+        found[0],
+        STIFFNESS[numbers],
+        relative=1e-4,
+        why="only traces on the bore are discretised: 1e-5 on coarse meshes",
+        source="pi B1²/(4 mu0) ((p+1)(coth((p+1)x) + 1) + (p-1)(coth((p-1)x) - 1)), "
+        "x = ln(Rs/Rr) (own derivation, confirmed to 1e-5 with scikit-fem on eccentric meshes)",
+    )
