@@ -1,4 +1,4 @@
-"""Pytest option `--checks-page FILE`: write what the outside checks of a run have found."""
+"""Pytest option `--checks-page FILE`: run the tests with outside checks, write what they find."""
 
 from __future__ import annotations
 
@@ -21,7 +21,9 @@ LIBRARIES = ("hovergap", "numpy", "scipy", "numba")
 
 def pytest_addoption(parser: pytest.Parser) -> None:
     parser.addoption(
-        "--checks-page", metavar="FILE", help="write a page of all outside checks of this run"
+        "--checks-page",
+        metavar="FILE",
+        help="run only tests with outside checks, and write a page of what these have found",
     )
 
 
@@ -49,10 +51,15 @@ class Page:
     def __init__(self, config: pytest.Config, file: Path) -> None:
         self.config = config
         self.file = file
-        self.holding: set[str] = set()
         self.absent: list[Absent] = []
         self.told = ""
         RECORDS.rows.clear()
+
+    @pytest.hookimpl(trylast=True)
+    def pytest_collection_modifyitems(self, items: list[pytest.Item]) -> None:
+        others = [item for item in items if not holds_checks(item)]
+        items[:] = [item for item in items if holds_checks(item)]
+        self.config.hook.pytest_deselected(items=others)
 
     def pytest_deselected(self, items: Sequence[pytest.Item]) -> None:
         for item in items:
@@ -61,16 +68,13 @@ class Page:
                 reason = f"marked {' and '.join(marks)}" if marks else "not selected"
                 self.absent.append(Absent(_name(item.nodeid), reason))
 
-    def pytest_collection_finish(self, session: pytest.Session) -> None:
-        self.holding = {item.nodeid for item in session.items if holds_checks(item)}
-
     def pytest_collectreport(self, report: pytest.CollectReport) -> None:
         file = self.config.rootpath / report.nodeid
         if report.skipped and file.is_file() and "OutsideChecks(" in file.read_text():
             self.absent.append(Absent(report.nodeid, f"skipped: {_reason(report)}"))
 
     def pytest_runtest_logreport(self, report: pytest.TestReport) -> None:
-        if report.skipped and report.nodeid in self.holding:
+        if report.skipped:
             self.absent.append(Absent(_name(report.nodeid), f"skipped: {_reason(report)}"))
 
     def pytest_sessionfinish(self, session: pytest.Session) -> None:
@@ -96,13 +100,23 @@ class Page:
 
 
 def holds_checks(item: pytest.Item) -> bool:
-    """Whether the body of the test names an `OutsideChecks` of its file."""
+    """Whether the test or a function of its file that it calls names an `OutsideChecks`."""
     function = getattr(item, "obj", None)
     inner = getattr(function, "hypothesis", None)
-    code = getattr(inner.inner_test if inner else function, "__code__", None)
     scope = vars(getattr(item, "module", object))
-    checks = {name for name, value in scope.items() if isinstance(value, OutsideChecks)}
-    return code is not None and not checks.isdisjoint(_names(code))
+    waiting, seen = [inner.inner_test if inner else function], set()
+    while waiting:
+        code = getattr(waiting.pop(), "__code__", None)
+        if code is None or code in seen:
+            continue
+        seen.add(code)
+        named = [scope[name] for name in _names(code) if name in scope]
+        if OutsideChecks in named or any(isinstance(value, OutsideChecks) for value in named):
+            return True
+        waiting += [
+            value for value in named if getattr(value, "__module__", "") == item.module.__name__
+        ]
+    return False
 
 
 def _names(code: CodeType) -> set[str]:

@@ -83,8 +83,14 @@ def test_skipped(n):
     pytest.skip("no such library")
     check.same("ice", n, n)
 
+def helper():
+    check.same("what a helper compares", "a", "a")
+
+def test_by_a_helper():
+    helper()
+
 def test_of_no_interest():
-    pytest.skip("nothing of the outside here")
+    raise RuntimeError("not run")
 """
 
 
@@ -108,16 +114,17 @@ def run(folder: Path, *arguments: str, text: str = CHILD) -> subprocess.Complete
 def test_the_page(tmp_path: Path) -> None:
     done = run(tmp_path, "-k", "not left_out", "--checks-page", "page.md")
     assert done.returncode == 0, done.stdout + done.stderr
-    assert "page.md is written: 4 outside checks" in done.stdout
+    assert "page.md is written: 5 outside checks" in done.stdout
     page = (tmp_path / "page.md").read_text()
     assert "python -m pytest -q -k 'not left_out' --checks-page page.md" in page
     assert re.search(r"\d{4}-\d\d-\d\d: Python 3\.\d+\.\d+, hovergap .*, numpy ", page)
-    assert "4 checks of 9 values in 1 test files, all passed; 3 tests were not run" in page
+    assert "5 checks of 10 values in 1 test files, all passed; 3 tests were not run" in page
     heat, book = "| `test_child.py` |", "a book \\| of 1900"
+    assert f"| what a helper compares | 0 | none | exact | {book} | 1 {heat}" in page
     assert f"| warmth | 0.3 % | 1 % | two digits | {book} | 2 {heat}" in page
     assert f"| cold | 0, 0.25 K | 1 % or 0.5 K | noise | {book} | 4 {heat}" in page
     assert f"| glow (slow) | below 1e-12 | 1e-9 | rounding | {book} | 1 {heat}" in page
-    assert f"| order | 1 | 0.9 to 2 | wide | memory | 2 {heat}" in page
+    assert f"| order | 0.997 to 1 | 0.9 to 2 | wide | memory | 2 {heat}" in page
     assert page.index("## Winding") < page.index("## Heat") < page.index("## Not in this run")
     assert "| `test_child.py::test_skipped` | skipped: no such library |" in page
     assert "| `test_absent.py` | skipped: could not import 'no_such_library'" in page
