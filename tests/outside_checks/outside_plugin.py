@@ -111,7 +111,7 @@ def holds_checks(item: pytest.Item) -> bool:
             continue
         seen.add(code)
         named = [scope[name] for name in _names(code) if name in scope]
-        if OutsideChecks in named or any(isinstance(value, OutsideChecks) for value in named):
+        if any(value is OutsideChecks or isinstance(value, OutsideChecks) for value in named):
             return True
         waiting += [
             value for value in named if getattr(value, "__module__", "") == item.module.__name__

@@ -58,6 +58,7 @@ def test_a_check_without_words_or_tolerance_is_refused() -> None:
 
 
 CHILD = """
+import numpy as np
 import pytest
 from hypothesis import given, strategies as st
 from outside import OutsideChecks
@@ -83,7 +84,10 @@ def test_skipped(n):
     pytest.skip("no such library")
     check.same("ice", n, n)
 
+ROWS = np.zeros(3)
+
 def helper():
+    assert ROWS.size == 3
     check.same("what a helper compares", "a", "a")
 
 def test_by_a_helper():
