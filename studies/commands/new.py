@@ -6,26 +6,28 @@ from pathlib import Path
 
 import click
 
+from studies.commands.options import Quantity
+
 
 @click.command()
 @click.argument("study_file", metavar="STUDY.toml")
 @click.option(
     "--power",
-    type=click.FloatRange(0.001, 1e5),
+    type=Quantity("kW", 0.001, 1e5),
     default=11.0,
     show_default=True,
     help="Shaft power in kW.",
 )
 @click.option(
     "--speed",
-    type=click.FloatRange(10.0, 900_000.0),
+    type=Quantity("r/min", 10.0, 900_000.0),
     default=48_000.0,
     show_default=True,
     help="Speed in r/min.",
 )
 @click.option(
     "--dc-link",
-    type=click.FloatRange(5.0, 10_000.0),
+    type=Quantity("V", 5.0, 10_000.0),
     default=560.0,
     show_default=True,
     help="DC-link voltage in V.",

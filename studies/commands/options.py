@@ -2,14 +2,59 @@
 
 from __future__ import annotations
 
+import math
+import re
 from collections.abc import Callable
-from typing import Any, TypeVar
+from typing import Any, TypeVar, cast
 
 import click
 
 MOST_WORKERS = 256
 
 Command = TypeVar("Command", bound=Callable[..., Any])
+
+
+class Quantity(click.FloatRange):
+    """A number within a range, in a unit that is not to be written.
+
+    Parameters
+    ----------
+    unit : str
+    low, high : float
+    """
+
+    def __init__(self, unit: str, low: float, high: float) -> None:
+        super().__init__(low, high)
+        self.unit = unit
+
+    def convert(
+        self, value: Any, param: click.Parameter | None, ctx: click.Context | None
+    ) -> float:
+        """The number, or a sentence that says how to write it."""
+        try:
+            found = float(value)
+        except ValueError:
+            found = math.nan
+        if not math.isfinite(found):
+            self.fail(
+                f"{value!r} is no number; give it in {self.unit} without writing the unit"
+                + self._example(value),
+                param,
+                ctx,
+            )
+        if not cast("float", self.min) <= found <= cast("float", self.max):
+            self.fail(
+                f"{found:g} {self.unit} is out of range; give {self.min:g} to {self.max:g}",
+                param,
+                ctx,
+            )
+        return found
+
+    def _example(self, value: Any) -> str:
+        """The number at the start of what was given, if its unit is the one wanted."""
+        match = re.fullmatch(r"\s*([0-9.]+)\s*(\S+)\s*", str(value))
+        same = match and match[2].lower() == self.unit.lower()
+        return f", so {match[1]}" if match and same else ""
 
 
 def allow_program_option(command: Command) -> Command:

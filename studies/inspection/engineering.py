@@ -20,7 +20,7 @@ from evaluators.machine.performance.mechanics import (
 from evaluators.machine.task.task import Task
 from evaluators.machine.thermal.insulation import CLASS_TEMPERATURE
 from studies.inspection.design import Inspection
-from studies.tables import GAP, WIDEST, number, percent, text_table
+from studies.tables import GAP, WIDEST, number, percent, prose_table, text_table
 
 MICRO, MEGA = 1e-6, 1e6
 RPM = 30.0 / math.pi
@@ -28,6 +28,7 @@ NO_ROTOR_DYNAMICS = (
     "These bending speeds are a first estimate (stepped beam, no gyroscopic effect, no controller) "
     "and replace no rotor-dynamic analysis by somebody qualified for it."
 )
+SUPPLIED = "force at "
 NO_PROOF = "The table is a budget for choosing designs, no proof that a controller levitates it."
 
 
@@ -92,10 +93,8 @@ def engineering_json(found: Inspection) -> dict[str, Any]:
 
 
 def sourced_table(head: Sequence[str], rows: Sequence[Sequence[str]], left: int = 1) -> str:
-    """A table whose last column is a source, aligned to the left."""
-    width = max(len(line[-1]) for line in [head, *rows])
-    lines = [[*line[:-1], line[-1].ljust(width)] for line in [head, *rows]]
-    return text_table(lines[0], lines[1:], left)
+    """A table whose last column is a source."""
+    return prose_table(head, rows, left)
 
 
 # -- topics ------------------------------------------------------------------------------------
@@ -267,14 +266,14 @@ def _levitation(task: Task, row: Mapping[str, Any]) -> str:
         [
             item.demand,
             number(item.demand_N),
-            item.supply,
+            item.supply.removeprefix(SUPPLIED),
             number(item.supply_N),
             number(item.ratio, 3) if math.isfinite(item.ratio) else "-",
             item.source,
         ]
         for item in _budget(row, task)
     ]
-    head = ["demand on the suspension", "N", "supply", "N", "ratio", "source of the demand"]
+    head = ["demand on the suspension", "N", SUPPLIED.strip(), "N", "ratio", "source"]
     zones = ", ".join(f"{zone} up to {number(limit, 3)} um" for zone, limit in _zones(row).items())
     table = sourced_table(head, rows)
     return (

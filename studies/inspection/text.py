@@ -53,8 +53,9 @@ def _head(found: Inspection) -> str:
         verdict = "meets all limits; no other design of its family beats it in every objective"
     else:
         verdict = "meets all limits; another design of its family beats it in every objective"
+    said = f"{found.design} of study {found.study}: {verdict}."
     return (
-        f"{found.design} of study {found.study}: {verdict}.\n"
+        f"{fill(said, 100)}\n"
         f"Evaluated by {row['evaluator']} {row['evaluator_version']}, seed {row['seed']}, "
         f"generation {row['generation']}."
     )
@@ -81,7 +82,7 @@ def _limits(found: Inspection) -> str:
         source = METRIC[limit.metric].source
         value = number(found.row[limit.metric])
         rows.append([limit.metric, value, side, spare, verdict, source])
-    return sourced_table(["limit on", "value", "limit", "reserve", "", "source of the value"], rows)
+    return sourced_table(["limit on", "value", "limit", "reserve", "", "source"], rows)
 
 
 def _losses(found: Inspection) -> str:

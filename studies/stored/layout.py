@@ -204,6 +204,8 @@ def storage(place: Path, action: str) -> Iterator[None]:
             errno.ENOTDIR: "a part of the path is a file, not a folder",
             errno.EEXIST: "a file of this name is in the way",
         }
+        if error.errno == errno.ENOENT and not place.parent.is_dir():
+            causes[errno.ENOENT] = f"there is no folder {place.parent}; make it first"
         cause = causes.get(error.errno or 0, (error.strerror or str(error)).lower())
         msg = f"{place}: cannot {action}: {cause}"
         raise StorageError(msg) from None

@@ -10,7 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from studies.study_file.crosschecks import Limit
-from studies.tables import csv_text, number, percent, text_table
+from studies.tables import csv_text, number, percent, prose_table, text_table
 from studies.tolerance.run import Machines
 from studies.tolerance.statistics import Contributions, Yield, contributions, yield_of
 
@@ -18,6 +18,11 @@ FloatArray = NDArray[np.float64]
 
 SHOWN = 3  # sources named for a limit
 WORTH_NAMING = 0.01  # share of the variance
+HARD_SPACE = "\N{NO-BREAK SPACE}"
+SHARES = (
+    "Share: how much of the scatter (as variance) would go if this source did not scatter, by a "
+    "linear fit; in a sample shares need not add up to 100 %."
+)
 
 
 @dataclass(frozen=True)
@@ -120,22 +125,30 @@ def tolerance_text(result: ToleranceResult) -> str:
 def _limit_table(result: ToleranceResult) -> str:
     if not result.limits:
         return "The study has no limits, so every machine that can be evaluated passes."
-    rows = []
-    for item in result.limits:
-        said = ", ".join(f"{name} {percent(share)}" for name, share in strongest(result, item))
-        rows.append(
-            [
-                item.limit.metric,
-                item.limit.text().removeprefix(f"{item.limit.metric} "),
-                percent(item.met.share),
-                f"{number(item.low)} .. {number(item.high)}",
-                f"  {said or 'does not vary'}",
-            ]
-        )
-    head = ["limit on", "limit", "met by", "95 % of machines", "  share of its variance by source"]
-    width = max(len(row[-1]) for row in rows)
-    table = text_table(head, [[*row[:-1], row[-1].ljust(width)] for row in rows])
-    return "\n".join(line.rstrip() for line in table.split("\n"))
+    rows = [
+        [
+            item.limit.metric,
+            item.limit.text().removeprefix(f"{item.limit.metric} "),
+            percent(item.met.share),
+            f"{number(item.low)} .. {number(item.high)}",
+        ]
+        for item in result.limits
+    ]
+    # A share stays in one line with its source.
+    sources = [
+        [
+            item.limit.metric,
+            ", ".join(
+                f"{name}{HARD_SPACE}{percent(share).replace(' ', HARD_SPACE)}"
+                for name, share in strongest(result, item)
+            )
+            or "does not vary",
+        ]
+        for item in result.limits
+    ]
+    table = text_table(["limit on", "limit", "met by", "95 % of machines"], rows)
+    shares = prose_table(["limit on", "share of its variance by source"], sources)
+    return f"{table}\n\n{shares.replace(HARD_SPACE, ' ')}\n{fill(SHARES, 96)}"
 
 
 def tolerance_json(result: ToleranceResult) -> dict[str, Any]:

@@ -87,9 +87,7 @@ def plans(
     return Plans(tuple(made), tuple(damaged))
 
 
-def verify_all(
-    results: Results, made: Sequence[Plan], dispatcher: Dispatcher, again: str
-) -> int:
+def verify_all(results: Results, made: Sequence[Plan], dispatcher: Dispatcher, again: str) -> int:
     """Verify search after search and say how it went.
 
     Parameters

@@ -20,7 +20,7 @@ from evaluators.machine.metrics import METRICS
 from optimizer.archive.archive import open_archive
 from studies.comparison.numbers import BINDING, REFERENCE
 from studies.inspection.design import CAUTIONS
-from studies.tables import csv_text, number, text_table, wide_table
+from studies.tables import csv_text, number, percent, prose_table, text_table, wide_table
 
 Run = Callable[..., Result]
 Write = Callable[..., Path]
@@ -175,6 +175,9 @@ def test_csv_files(hovergap: Run, swept: Path, tmp_path: Path) -> None:
         designs = list(csv.DictReader(stream))
     assert len(designs) == sum(len(front(swept / row["family"])) for row in rows)
     assert all(re.fullmatch(r"Q\d+p\d+s\d+-\d{6}", row["design"]) for row in designs)
+    result = hovergap("compare", swept, "--csv", "none/families.csv")
+    assert result.exit_code == 1
+    assert "there is no folder none; make it first" in result.output
     (tmp_path / "folder").mkdir()
     result = hovergap("compare", swept, "--csv", "folder")
     assert result.exit_code == 1
@@ -291,5 +294,22 @@ def test_tables() -> None:
 
 
 def test_numbers() -> None:
-    shown = [number(v) for v in (0.0, 1234567.0, 12.3456, 0.000123456, 1e-9, -5.0, float("nan"))]
-    assert shown == ["0", "1234567", "12.35", "0.0001235", "1.000e-09", "-5.000", "-"]
+    shown = [number(v) for v in (0.0, 1234567.0, 12.3456, 0.000123456, 1e-9, -5.1, float("nan"))]
+    assert shown == ["0", "1234567", "12.35", "0.0001235", "1.000e-09", "-5.100", "-"]
+    assert [number(v) for v in (41.0, -5.0, 41.0001)] == ["41", "-5", "41.00"]
+    assert [percent(v) for v in (-1e-5, -1e-3, 0.5)] == ["0.0 %", "-0.1 %", "50.0 %"]
+
+
+def test_words_of_a_table_are_broken_into_lines() -> None:
+    rows = [["a", "1", "one two three"], ["long", "22", "x"], ["c", "3", ""]]
+    table = prose_table(["name", "n", "words"], rows, width=20)
+    assert table.splitlines() == [
+        "name   n  words",
+        "----  --  -------------",
+        "a      1  one two three",
+        "long  22  x",
+        "c      3",
+    ]
+    many = prose_table(["name", "n", "words"], [["a", "1", "four " * 12]], width=50)
+    assert max(map(len, many.splitlines())) <= 50
+    assert many.splitlines()[-1].startswith(" " * 9 + "four")

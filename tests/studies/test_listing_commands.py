@@ -100,6 +100,24 @@ def test_new_writes_a_study_that_checks(power: str, speed: str, link: str, hover
     assert Path("fan.toml").read_text() == text
 
 
+@pytest.mark.parametrize(
+    ("option", "value", "said"),
+    [
+        ("--power", "30kW", "give it in kW without writing the unit, so 30"),
+        ("--speed", "9000rpm", "give it in r/min without writing the unit"),
+        ("--power", "nan", "'nan' is no number"),
+        ("--dc-link", "1", "1 V is out of range; give 5 to 10000"),
+    ],
+)
+def test_new_says_how_to_write_a_quantity(
+    option: str, value: str, said: str, hovergap: Run
+) -> None:
+    result = hovergap("new", "fan.toml", option, value)
+    assert result.exit_code == 2
+    assert said in result.output
+    assert not Path("fan.toml").exists()
+
+
 @pytest.mark.parametrize("name", ["fan", "fan.txt", ".toml", "a b.toml", "none/fan.toml"])
 def test_new_refuses_unusable_names(name: str, hovergap: Run) -> None:
     result = hovergap("new", name)

@@ -19,6 +19,7 @@ from evaluators.machine.geometry.cross_sections import cross_sections
 from evaluators.machine.task.task import Construction
 from evaluators.machine.winding.families import design_winding
 from studies.stored.families import stored_family
+from studies.tables import WIDEST
 from studies.tolerance.build import nominal_dimensions, scattered_variables
 from studies.tolerance.scatter import DIMENSIONS, Scatter, draw, overridden
 from studies.tolerance.statistics import contributions, yield_of
@@ -276,6 +277,7 @@ def test_analytic_machines_keep_length_and_turns(hovergap: Run, write_study: Wri
     )  # fmt: skip
     assert done.exit_code == 0, done.output
     assert "20 machines in 4 lots" in done.output
+    assert max(map(len, done.output.splitlines())) <= WIDEST
     with Path("out/machines.csv").open(newline="") as stream:
         rows = [item for item in csv.DictReader(stream) if item["status"] == "ok"]
     assert len(rows) == 20
