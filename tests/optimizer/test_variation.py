@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
+from outside import OutsideChecks
 from scipy import stats
 
 from optimizer.search.variation import (
@@ -19,6 +20,16 @@ from optimizer.search.variation import (
 ROWS = 20_000
 # Probability that a right operator fails a distribution test for one seed; seeds are fixed.
 RARE = 1e-3
+
+check = OutsideChecks("search")
+CROSSOVER = "Deb, Agrawal, Complex Systems 9 (1995) 115-148 (from memory)"
+MUTATION = "Deb, Goyal, Computer Science and Informatics 26 (1996) 30-45 (from memory)"
+
+
+def by_chance(what: str, p: float, source: str) -> None:
+    """Chance of the sample, or a rarer one, if the operator is right."""
+    why = "a right operator falls below one time in a thousand; seeds are fixed"
+    check.within(f"chance of {what}", p, RARE, 1.0, why=why, source=source)
 
 
 def generator() -> np.random.Generator:
@@ -44,7 +55,8 @@ def test_crossover_spreads_as_deb_and_agrawal_define() -> None:
     def distribution(s: np.ndarray) -> np.ndarray:
         return np.where(s < 1.0, 0.5 * s**power, 1.0 - 0.5 * np.maximum(s, 1.0) ** -power)
 
-    assert stats.kstest(spread, distribution).pvalue > RARE
+    p = stats.kstest(spread, distribution).pvalue
+    by_chance("the spread of simulated binary crossover", p, CROSSOVER)
     above = (crossed > 0.5).mean()
     assert abs(above - 0.5) < 5 * 0.5 / np.sqrt(len(crossed))  # five standard deviations
 
@@ -61,7 +73,8 @@ def test_crossover_near_a_bound_is_cut_there() -> None:
         whole = np.where(s < 1.0, 0.5 * s**power, 1.0 - 0.5 * np.maximum(s, 1.0) ** -power)
         return whole / (1.0 - 0.5 * end**-power)
 
-    assert stats.kstest(spread, distribution).pvalue > RARE
+    p = stats.kstest(spread, distribution).pvalue
+    by_chance("the spread of crossover next to a bound", p, CROSSOVER)
 
 
 def test_mutation_moves_as_deb_and_goyal_define() -> None:
@@ -75,7 +88,8 @@ def test_mutation_moves_as_deb_and_goyal_define() -> None:
         cut = 0.5**power
         return 1.0 - ((1.0 - d) ** power - cut) / (1.0 - cut)
 
-    assert stats.kstest(step, distribution).pvalue > RARE
+    p = stats.kstest(step, distribution).pvalue
+    by_chance("the steps of polynomial mutation", p, MUTATION)
     assert abs((moved > 0.5).mean() - 0.5) < 5 * 0.5 / np.sqrt(ROWS)  # five standard deviations
 
 
@@ -121,4 +135,4 @@ def test_pairs_differ_and_come_equally_often() -> None:
     pairs = draw_pairs(pools, generator())
     assert (pairs[:, 0] != pairs[:, 1]).all()
     counts = np.array([(pairs[:, 1] == member).sum() for member in (3, 5, 7, 9)])
-    assert stats.chisquare(counts).pvalue > RARE
+    by_chance("the pairs drawn", stats.chisquare(counts).pvalue, "all pairs equally often")

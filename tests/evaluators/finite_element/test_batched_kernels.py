@@ -5,6 +5,7 @@ from __future__ import annotations
 import machines
 import numpy as np
 import pytest
+from outside import OutsideChecks
 
 from evaluators.finite_element import analysis
 from evaluators.finite_element.mesh.lattice import Lattice, Resolution
@@ -23,6 +24,8 @@ COARSE = Discretisation(
     positions=4,
     cogging_positions=4,
 )
+
+check = OutsideChecks("field")
 
 
 @pytest.fixture(scope="module")
@@ -88,7 +91,7 @@ def test_curve_table_is_the_magnetization_curve(batch: BatchField) -> None:
 
 
 def test_assembly(batch: BatchField) -> None:
-    """Residual and tangent of one lane at a random, partly saturated state."""
+    """Residual and tangent of two lanes at a random, partly saturated state."""
     system, topology = batch.torque.system, batch.model.torque
     generator = np.random.default_rng(1)
     nodes = batch.solve_torque(np.zeros(1), current_of(batch).torque).nodes[0]
@@ -111,10 +114,15 @@ def test_assembly(batch: BatchField) -> None:
             gap,
             nodes[:, lane],
         )
+        words = {"why": "rounding of sums", "source": "plain NumPy and SciPy, element by element"}
         scale = np.max(np.abs(force))
-        assert residual[:, lane] == pytest.approx(force, abs=1e-11 * scale)
-        difference = matrix - full_matrix(topology.pattern, values[:, lane])
-        assert np.max(np.abs(difference.toarray())) < 1e-10 * np.max(np.abs(matrix.toarray()))
+        what = "residual of the finite elements over the largest"
+        check(what, residual[:, lane] / scale, force / scale, absolute=1e-11, **words)
+        whole = matrix.toarray()
+        largest = np.max(np.abs(whole))
+        found = full_matrix(topology.pattern, values[:, lane]).toarray()
+        what = "tangent of the finite elements over the largest entry"
+        check(what, found / largest, whole / largest, absolute=1e-10, **words)
 
 
 def test_tangent_is_the_derivative_of_the_residual(batch: BatchField) -> None:
@@ -129,13 +137,19 @@ def test_tangent_is_the_derivative_of_the_residual(batch: BatchField) -> None:
     _, values = system.tangent(nodes, nothing)
     for lane in range(LANES):
         expected = full_matrix(topology.pattern, values[:, lane]) @ direction[:, lane]
-        # Central difference: the third derivative of H(B) leaves about step^2; kinks of the
-        # piecewise cubic curve leave step at the few points that cross one.
-        assert slope[:, lane] == pytest.approx(expected, abs=1e-5 * np.max(np.abs(expected)))
+        largest = np.max(np.abs(expected))
+        check(
+            "tangent along a random direction over the largest",
+            expected / largest,
+            slope[:, lane] / largest,
+            absolute=1e-5,
+            why="the third derivative of H(B) leaves about step²; kinks of the piecewise cubic "
+            "curve leave a step of 1e-6 at the few points that cross one",
+            source="central difference of the residual",
+        )
 
 
 def test_whole_analysis_with_scipy(batch: BatchField) -> None:
-    """Batched LDL^T and SciPy's LU give the same machine."""
     current = current_of(batch)
     fast = analysis.solve(batch.model, batch.sections, current)
     slow = analysis.solve(batch.model, batch.sections, current, SciPySolver)
@@ -143,10 +157,17 @@ def test_whole_analysis_with_scipy(batch: BatchField) -> None:
     a = analysis.evaluate(fast, current).field
     b = analysis.evaluate(slow, current).field
     for name, value in vars(a).items():
-        # Both stop after the same steps; what differs is rounding, amplified in differences such
-        # as cogging.
         if value is not None:
-            assert value == pytest.approx(getattr(b, name), rel=1e-7), name
+            check(
+                "all quantities of the field of a batch of machines",
+                value,
+                getattr(b, name),
+                relative=1e-7,
+                absolute=1e-12,
+                why="both stop after the same steps; what differs is rounding, amplified in "
+                "differences such as cogging",
+                source="SciPy's LU in place of the batched factorisation",
+            )
 
 
 def test_newton_converges_quadratically(batch: BatchField) -> None:
