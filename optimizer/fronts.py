@@ -88,12 +88,18 @@ def coverage(a: ArrayLike, b: ArrayLike) -> float:
         return float("nan")
     if len(first) == 0:
         return 0.0
+    distinct, counts = np.unique(second, axis=0, return_counts=True)
+    own = non_dominated(distinct)
+    covered = np.zeros(len(distinct), dtype=np.bool_)
+    # Of points that do not dominate one another, those that fall out beside the others do so
+    # because of them: sorting finds that far sooner than comparing every pair.
+    covered[own] = ~non_dominated(np.concatenate([first, distinct[own]]))[len(first) :]
+    rest = np.flatnonzero(~own)
     step = max(1, _BLOCK_ELEMENTS // first.size)
-    covered = 0
-    for start in range(0, len(second), step):
-        block = second[start : start + step, None, :]
-        covered += int(np.any(np.all(first[None] <= block, axis=2), axis=1).sum())
-    return covered / len(second)
+    for start in range(0, len(rest), step):
+        block = rest[start : start + step]
+        covered[block] = np.all(first[None] <= distinct[block, None, :], axis=2).any(axis=1)
+    return float(counts[covered].sum() / len(second))
 
 
 def additive_epsilon(a: ArrayLike, b: ArrayLike) -> float:
