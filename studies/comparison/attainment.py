@@ -42,6 +42,8 @@ def attainment_surface(fronts: Sequence[FloatArray], level: int) -> FloatArray:
         is attained so often.
     """
     across = np.unique(np.concatenate([front[:, 0] for front in fronts]))
+    if not len(across):
+        return np.zeros((0, 2))
     reached = np.full((len(fronts), len(across)), np.inf)
     for row, front in enumerate(fronts):
         place = np.searchsorted(across, front[:, 0])

@@ -7,7 +7,7 @@ from evaluators.machine.geometry.outlines import outlines
 from studies.drawing.cross_section import cross_section_svg
 from studies.drawing.winding_diagram import winding_svg
 from studies.export.files import ExportedFile, svg_file
-from studies.export.front import FrontTable
+from studies.export.front_table import FrontTable
 from studies.export.machine import machine_file
 from studies.export.materials import material_files
 from studies.export.suspension import suspension_files, suspension_known

@@ -87,12 +87,9 @@ def all_surfaces(data: ReportData, shown: CertaintyData) -> list[list[Surfaces]]
 def _surfaces(data: ReportData, family: FamilySearches, pair: tuple[int, int]) -> Surfaces:
     """Best, median and worst surface of one family in two objectives, in their own units."""
     columns = list(pair)
-    fronts = [_seen(front[:, columns]) for front in family.fronts if len(front)]
-    empty = len(family) - len(fronts)
-    fronts += [np.zeros((0, 2))] * empty
+    fronts = [_seen(front[:, columns]) for front in family.fronts]
     best, median, worst = (
-        _path(attainment_surface(fronts, level) if len(fronts) > empty else np.zeros((0, 2)))
-        for level in levels(len(family))
+        _path(attainment_surface(fronts, level)) for level in levels(len(family))
     )
     comparison = data.comparison
     low, high = comparison.ideal[columns], comparison.nadir[columns]

@@ -107,8 +107,9 @@ def attainment_figure(place: int, families: Sequence[Surfaces], marks: Sequence[
         x, y = family.median.T
         plot.line(x, y, line_color=mark.colour, line_width=2, name=f"{name}-line")
         # Corners of the staircase, evenly taken; its ends lie on the edge of the box.
-        inner = np.arange(1, max(len(x) - 1, 1), 2)
-        chosen = inner[np.unique(np.linspace(0, len(inner) - 1, MARKS).astype(int))]
+        inner = np.arange(1, len(x) - 1, 2)
+        evenly = np.unique(np.linspace(0, len(inner) - 1, MARKS).astype(int))
+        chosen = inner[evenly] if len(inner) else inner
         plot.scatter(
             x[chosen],
             y[chosen],

@@ -65,6 +65,8 @@ def test_two_crossing_points_have_known_surfaces() -> None:
     assert attained_share([one, nothing], 2, 4.0) == 0.0
     assert attained_share([one, nothing], 1, 4.0) == pytest.approx(3.0 / 16.0)
     assert len(attainment_surface([one, nothing], 2)) == 0
+    assert attainment_surface([nothing, nothing], 1).shape == (0, 2)
+    assert attained_share([nothing, nothing], 1, 4.0) == 0.0
 
 
 def test_levels_are_best_median_and_worst() -> None:
