@@ -34,7 +34,7 @@ def folder(tmp_path_factory: pytest.TempPathFactory, study_text: str, site: Path
     root = tmp_path_factory.mktemp("chance")
     file = root / "small.toml"
     file.write_text(study_text.replace('"Q12p4s5"]', '"Q12p4s5", "Q12p2s1"]'))
-    options = ["--budget", "70", "--searches", str(SEARCHES), "--workers", "1"]
+    options = ["--budget", "50", "--searches", str(SEARCHES), "--workers", "1"]
     with pytest.MonkeyPatch.context() as patch:
         patch.syspath_prepend(str(site))
         found = CliRunner().invoke(main, ["sweep", str(file), "--results", str(root), *options])
@@ -47,13 +47,15 @@ def chance(folder: Path) -> ReportData:
     return collect([open_results(folder)], 20)
 
 
-@pytest.fixture
-def chance_page(folder: Path, tmp_path: Path) -> Path:
+@pytest.fixture(scope="module")
+def chance_page(folder: Path, site: Path) -> Path:
     from studies.cli import main
 
-    file = tmp_path / "report.html"
-    options = ["--output", str(file), "--workers", "1", "--designs", "20"]
-    found = CliRunner().invoke(main, ["report", str(folder), *options])
+    file = folder.parent / "report.html"
+    options = ["--output", str(file), "--workers", "1", "--designs", "10"]
+    with pytest.MonkeyPatch.context() as patch:
+        patch.syspath_prepend(str(site))
+        found = CliRunner().invoke(main, ["report", str(folder), *options])
     assert found.exit_code == 0, found.output
     return file
 
