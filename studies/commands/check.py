@@ -24,9 +24,12 @@ def check(study_file: str) -> None:
         problem.check()
         program = program_of(problem)
     click.echo(f"{study.name}: {study.description or 'no description'}")
+    searches = study.search.searches_per_family
+    several = f", {searches} searches each" if searches > 1 else ""
+    of_each = "of each search" if searches > 1 else "each"
     click.echo(
-        f"{len(study.families)} families, {study.search.evaluations_per_family:,} evaluations "
-        f"each, seed {study.search.seed}, evaluator {study.evaluator.name}"
+        f"{len(study.families)} families{several}, {study.search.evaluations_per_family:,} "
+        f"evaluations {of_each}, seed {study.search.seed}, evaluator {study.evaluator.name}"
     )
     if program:
         click.echo(f"a sweep starts, only with --allow-program, for every design: {program}")

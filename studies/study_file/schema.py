@@ -264,8 +264,7 @@ class SearchSection(Section):
         1,
         ge=1,
         le=100,
-        description="independent searches of each family, each with a seed of its own; several "
-        "show how much of the order of the families is chance",
+        description="independent searches of each family, each from a seed of its own",
     )
     population: int | None = Field(
         None, ge=4, le=10_000, description="designs of one generation; chosen if left out"
