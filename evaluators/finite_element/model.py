@@ -48,7 +48,7 @@ class Discretisation:
     positions: int = 12
     cogging_positions: int = 8
     orders_per_slot: int = 40
-    iron_rings: int = 3
+    iron_rings: int = 6
     refinement: int = 1
     transient: bool = False
     separate_magnets: bool = False
@@ -59,7 +59,7 @@ class Discretisation:
             "positions": (4, 240),
             "cogging_positions": (4, 240),
             "orders_per_slot": (8, 400),
-            "iron_rings": (1, 20),
+            "iron_rings": (1, 48),
             "refinement": (1, 8),
         }
         for name, (low, high) in limits.items():
@@ -73,13 +73,14 @@ class Discretisation:
         return (self.resolution or Resolution.suited(slots)).refined(self.refinement)
 
     def refined(self, factor: int) -> Discretisation:
-        """Mesh and steps `factor` times as fine."""
+        """Mesh, iron rings and steps `factor` times as fine."""
         return replace(
             self,
             refinement=factor * self.refinement,
             positions=factor * self.positions,
             cogging_positions=factor * self.cogging_positions,
             orders_per_slot=factor * self.orders_per_slot,
+            iron_rings=factor * self.iron_rings,
         )
 
 

@@ -142,10 +142,14 @@ def lattice_points(
         cells = breaks.size - 1
         return np.interp(np.arange(2 * cells + 1) / 2.0, np.arange(cells + 1), breaks)
 
-    tooth, slot = halves(resolution.across_tooth), halves(resolution.across_slot)
+    slot = halves(resolution.across_slot)
+    # Dense at the edge on the bore, where the field is singular; behind the tip the flux spreads
+    # over the whole tooth, whose tips may be long.
+    below = np.minimum(levels, 1.0)[:, None]
+    tooth = (1.0 - below) * halves(resolution.across_tooth) + below * halves(resolution.across_body)
     left = np.concatenate(
         [
-            edge[:, :, None] * tooth[:-1],
+            edge[:, :, None] * tooth[:, :-1],
             edge[:, :, None] + (0.5 * pitch - edge[:, :, None]) * slot,
         ],
         axis=2,

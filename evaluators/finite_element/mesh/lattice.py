@@ -46,11 +46,11 @@ class Resolution:
         Cells over the radial heights of these parts.
     """
 
-    tooth: int = 3
+    tooth: int = 4
     slot: int = 3
     tip: int = 2
     wedge: int = 2
-    body: int = 4
+    body: int = 3
     yoke: int = 3
 
     def __post_init__(self) -> None:
@@ -65,8 +65,8 @@ class Resolution:
         if slots <= 8:
             return cls()
         if slots <= 15:
-            return cls(tooth=2, slot=3, tip=2, wedge=1, body=3, yoke=2)
-        return cls(tooth=2, slot=2, tip=2, wedge=1, body=2, yoke=2)
+            return cls(tooth=4, slot=2, tip=2, wedge=1, body=2, yoke=2)
+        return cls(tooth=3, slot=2, tip=2, wedge=1, body=2, yoke=2)
 
     def refined(self, factor: int) -> Resolution:
         """The same with `factor` times the cells in every direction."""
@@ -84,8 +84,13 @@ class Resolution:
 
     @cached_property
     def across_tooth(self) -> FloatArray:
-        """Break points of half a tooth from axis (0) to edge (1), denser towards the edge."""
+        """Break points of half a tooth on the bore from axis (0) to edge (1), denser there."""
         return graded(self.tooth, 0.55 ** (3.0 / self.tooth))
+
+    @cached_property
+    def across_body(self) -> FloatArray:
+        """Break points of half a tooth behind its tip."""
+        return graded(self.tooth, 0.8 ** (3.0 / self.tooth))
 
     @cached_property
     def across_slot(self) -> FloatArray:
