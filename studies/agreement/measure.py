@@ -18,8 +18,8 @@ from evaluators.machine.geometry.cross_sections import cross_sections
 from evaluators.machine.metrics import METRIC
 from optimizer.workers.dispatch import Dispatcher, single_threaded
 from studies.running.problem import MachineProblem, machine_problem
-from studies.running.sweep import study_digest
 from studies.stored.design import evaluate_all
+from studies.stored.identity import study_digest
 from studies.study_file.definition import Study
 
 FloatArray = NDArray[np.float64]

@@ -9,7 +9,7 @@ from typing import Any
 from studies.choice.decision import Decision, Ranked
 from studies.choice.preferences import Criterion, Preferences
 from studies.inspection.design import CAUTIONS
-from studies.running.sweep import study_digest
+from studies.stored.identity import study_digest
 from studies.stored.layout import program_version
 from studies.tables import number, percent, wide_table
 

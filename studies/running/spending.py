@@ -16,18 +16,6 @@ from studies.running.spreading import ROUNDS, prospects, read_rows
 from studies.stored.layout import Results
 from studies.stored.naming import family_of
 
-SPENDING_KEYS = (
-    "evaluations_per_family",
-    "searches_per_family",
-    "total_evaluations",
-    "stagnation_generations",
-    "stagnation_gain",
-    "feasible_within",
-    "wall_time_min",
-    "time_limit_s",
-)
-"""Keys of [search] that decide how many designs are evaluated, but not which."""
-
 Begin = Callable[[str], None]
 Show = Callable[[Progress], None]
 Stop = Callable[[], bool]

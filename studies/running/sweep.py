@@ -2,13 +2,12 @@
 
 from __future__ import annotations
 
-import hashlib
-import json
 import shlex
-import tomllib
 from collections.abc import Sequence
 from pathlib import Path
 
+from optimizer.archive.archive import is_archive
+from optimizer.archive.identity import read_identity
 from optimizer.archive.lock import writer_lock
 from optimizer.errors import ClusterError
 from optimizer.running.progress import Settings, Summary
@@ -19,10 +18,17 @@ from studies.errors import EXIT_FAILED, EXIT_NOTHING_FEASIBLE, EXIT_OK, StudiesE
 from studies.running.interruption import Interruption
 from studies.running.problem import MachineProblem, machine_problem
 from studies.running.progress import ProgressLine, duration
-from studies.running.spending import SPENDING_KEYS, Spending
+from studies.running.spending import Spending
 from studies.shipped.library import shipped
+from studies.stored.identity import check_owner, labels_of
 from studies.stored.layout import Request, Results, changes
-from studies.stored.naming import family_of, search_names, search_seed, split_search_name
+from studies.stored.naming import (
+    family_of,
+    search_name,
+    search_names,
+    search_seed,
+    split_search_name,
+)
 from studies.study_file.crosschecks import too_few_in_all
 from studies.study_file.definition import Study
 from studies.suggestions import suggest
@@ -92,21 +98,6 @@ def problems_of(
     return problems
 
 
-def study_digest(study: Study) -> str:
-    """SHA-256 of what decides the results: the study without its description and its budgets.
-
-    Comments and layout do not count, so they may be edited in the frozen copy too.
-    """
-    table = tomllib.loads(study.content.decode("utf-8-sig"))
-    table["study"].pop("description", None)
-    for key in SPENDING_KEYS:
-        table.get("search", {}).pop(key, None)
-    for key in ("list", "slots", "pole_pairs"):  # each family has its own archive
-        table["families"].pop(key, None)
-    text = json.dumps(table, sort_keys=True)
-    return hashlib.sha256(text.encode()).hexdigest()
-
-
 def search_families(
     results: Results, problems: dict[str, MachineProblem], dispatcher: Dispatcher
 ) -> int:
@@ -122,9 +113,16 @@ def search_families(
     ------
     OptimizerError
         If the results cannot be written or are in use.
+    ResultsError
+        If an archive that is there belongs to another study.
     """
     families = tuple(problems)
     searches = problems_of_searches(results, problems)
+    for name in searches:
+        folder = results.search_folder(name)
+        settings = read_identity(folder) if is_archive(folder) else None
+        if settings is not None:
+            check_owner(results, name, settings)
     line = ProgressLine(tuple(searches))
     summaries: dict[str, Summary] = {}
     lost = False
@@ -223,13 +221,7 @@ def search_settings(results: Results, problem: MachineProblem, search: int = 1) 
         chunk=study.search.designs_per_call,
         evaluator=evaluator.name,
         evaluator_version=evaluator.version,
-        labels={
-            "study": study.name,
-            "study_digest": study_digest(study),
-            "family": family.id,
-            "coil_pitch": str(family.coil_pitch),
-            **({"search": str(search)} if search > 1 else {}),
-        },
+        labels=labels_of(study, search_name(family.id, search)),
     )
 
 
@@ -245,7 +237,10 @@ def _search_text(name: str, summary: Summary) -> str:
     if summary.ended and summary.evaluations < summary.budget:
         text += f"\n{name}: ended early: {summary.ended}"
     for path in summary.damaged:
-        text += f"\n{name}: a damaged part was set aside as {path}; its rows were evaluated again"
+        text += (
+            f"\n{name}: a part that is damaged or another study's was set aside as {path}; what "
+            "it should hold was evaluated again"
+        )
     return text
 
 

@@ -7,6 +7,7 @@ from pathlib import Path
 
 import click
 
+from optimizer.archive.archive import open_archive
 from studies.errors import EXIT_FAILED, EXIT_OK
 
 
@@ -24,11 +25,12 @@ def report_verified_damage(parts: Iterable[Path]) -> int:
 
 
 def report_damage(parts: Iterable[Path | str]) -> int:
-    """Say which parts are damaged; exit code 1 if any is, because rows are missing then."""
+    """Say what is wrong with parts; exit code 1 if there are any, because rows are missing then."""
     code = EXIT_OK
     for part in dict.fromkeys(map(Path, parts)):
+        trouble = open_archive(part.parent).trouble(part) or "is damaged"
         click.echo(
-            f"{part}: is damaged, so its evaluations are missing above; "
+            f"{part}: {trouble}, so its evaluations are missing above; "
             f"`hovergap resume {part.parent.parent}` sets it aside and evaluates them again",
             err=True,
         )

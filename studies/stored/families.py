@@ -14,11 +14,13 @@ from typing import Any
 
 import numpy as np
 import pyarrow as pa
+import pyarrow.compute as pc
 from numpy.typing import NDArray
 
 from optimizer.archive.archive import ArchiveReader, is_archive, open_archive
 from optimizer.fronts import non_dominated
 from studies.errors import ResultsError
+from studies.stored.identity import check_owner
 from studies.stored.layout import Results
 from studies.stored.naming import design_id, search_name, split_design_id, split_search_name
 from studies.suggestions import suggest
@@ -59,26 +61,14 @@ class Stored:
         if not table.num_rows:
             return 0, 0, 0
         feasible = int(np.count_nonzero(table["feasible"].to_numpy()))
-        failed = sum(word != "ok" for word in table["status"].to_pylist())
+        failed = pc.sum(pc.not_equal(table["status"], "ok")).as_py()
         return table.num_rows, feasible, failed
 
     @cached_property
     def front(self) -> pa.Table:
         """Feasible rows that no other dominates, all columns, in order of evaluation."""
         table = self.reader.front()
-        if not table.num_rows:
-            return table
-        settings = self.reader.settings
-        wanted = [f"objective:{name}" for name in settings["objectives"]]
-        wanted += [f"margin:{name}" for name in settings["constraints"]]
-        missing = [name for name in wanted if name not in table.column_names]
-        if missing:
-            msg = (
-                f"{self.folder}: has parts of another study, which lack the column {missing[0]}; "
-                f"`hovergap resume {self.folder.parent}` sets them aside"
-            )
-            raise ResultsError(msg)
-        return table.sort_by("evaluation")
+        return table.sort_by("evaluation") if table.num_rows else table
 
     @cached_property
     def front_objectives(self) -> FloatArray:
@@ -230,8 +220,8 @@ def stored_searches(results: Results, family: str) -> list[Stored]:
     objectives = tuple(goal.name for goal in results.study.objectives)
     found = []
     for search in _numbers(results, family):
-        folder = results.search_folder(search_name(family, search))
-        reader = _opened(results, folder)
+        name = search_name(family, search)
+        folder, reader = results.search_folder(name), _opened(results, name)
         found.append(Stored(results.study.name, family, folder, objectives, reader, search))
     return found
 
@@ -258,24 +248,10 @@ def stored_families(results: Results) -> list[StoredFamily]:
     return [StoredFamily(tuple(searches)) for searches in found if searches]
 
 
-def _opened(results: Results, folder: Path) -> ArchiveReader:
-    """The archive, if its objectives and limits are those of the study beside it."""
-    reader = open_archive(folder)
-    study = results.study
-    kinds = (
-        ("objectives", "objectives", [goal.name for goal in study.objectives]),
-        ("limits", "constraints", [limit.name for limit in study.limits]),
-    )
-    for word, key, wanted in kinds:
-        there = list(reader.settings[key])
-        if there != wanted:
-            odd = sorted({*there} ^ {*wanted})
-            differs = f"only one of them has {odd[0]}" if odd else "their order differs"
-            msg = (
-                f"{folder}: holds another study than {results.folder / 'study.toml'} says: its "
-                f"{word} are others ({differs}); put the study or the family's folder back"
-            )
-            raise ResultsError(msg)
+def _opened(results: Results, name: str) -> ArchiveReader:
+    """The archive of a search, if it belongs to the study beside it."""
+    reader = open_archive(results.search_folder(name))
+    check_owner(results, name, reader.settings)
     return reader
 
 
@@ -313,7 +289,7 @@ def stored_search(results: Results, name: str) -> Stored:
             raise ResultsError(msg)
         raise ResultsError(_nothing(folder))
     names = tuple(goal.name for goal in results.study.objectives)
-    return Stored(results.study.name, family, folder, names, _opened(results, folder), search)
+    return Stored(results.study.name, family, folder, names, _opened(results, name), search)
 
 
 def _check_family(results: Results, family: str) -> None:

@@ -100,6 +100,7 @@ def create(root: Path, study: Study, request: Request) -> Results:
             draft.mkdir()
             _write(draft / STUDY_FILE, study.content)
             _write(draft / REQUEST_FILE, _json(request))
+            _sync_folder(draft)
             # Fails if another process has made the folder meanwhile and put something in it.
             draft.rename(folder)
             _sync_folder(root)
@@ -166,10 +167,15 @@ def changes(old: bytes, new: bytes) -> list[str]:
     tables = []
     for content in (old, new):
         try:
-            tables.append(dict(_leaves((), tomllib.loads(content.decode("utf-8-sig")))))
+            tables.append(tomllib.loads(content.decode("utf-8-sig")))
         except (tomllib.TOMLDecodeError, UnicodeDecodeError, RecursionError, ValueError):
             return ["the file can no longer be read as TOML"]
-    before, after = tables
+    return changed_keys(*tables)
+
+
+def changed_keys(old: dict[str, Any], new: dict[str, Any]) -> list[str]:
+    """What differs between two tables of study files, one line a key."""
+    before, after = dict(_leaves((), old)), dict(_leaves((), new))
     lines = []
     for path in [*before, *(item for item in after if item not in before)]:
         if path not in after:

@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 import csv
+import importlib
 import io
 import itertools
 import json
 import re
 import shutil
+import sys
 from collections.abc import Callable
 from pathlib import Path
 
@@ -146,14 +148,16 @@ def test_several_studies(hovergap: Run, write_study: Write, swept: Path) -> None
     assert "different objectives" in result.output
 
 
-def test_results_are_read_without_the_evaluator(hovergap: Run, swept: Path) -> None:
-    frozen = swept / "study.toml"
-    frozen.write_text(frozen.read_text().replace('name = "toy"', 'name = "sold"'))
+def test_results_are_read_without_the_evaluator(
+    hovergap: Run, swept: Path, site: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setattr(sys, "path", [item for item in sys.path if item != str(site)])
+    importlib.invalidate_caches()
     for arguments in (("compare", swept), ("inspect", swept, "Q6p2s1-0"), ("status", swept)):
         assert hovergap(*arguments).exit_code == 0
     result = hovergap("resume", swept)
     assert result.exit_code == 2
-    assert "no evaluator is called 'sold'" in result.output
+    assert "no evaluator is called 'toy'" in result.output
 
 
 def test_text_is_readable_when_piped(hovergap: Run, swept: Path) -> None:
@@ -266,21 +270,52 @@ def test_results_of_another_study_are_not_compared(
     other = write_study(('name = "small"', 'name = "other"'), limited, name="other.toml")
     assert hovergap("sweep", other, "--workers", "1").exit_code == 0
     kept = (swept / "study.toml").read_text()
+    reading = (("compare", swept), ("inspect", swept, "Q6p2s1-000001"), ("status", swept))
     shutil.copy("results/other/study.toml", swept / "study.toml")
-    for command in (("compare", swept), ("inspect", swept, "Q6p2s1-000001")):
+    for command in (*reading, ("resume", swept)):
         result = hovergap(*command)
         assert result.exit_code == 2
-        assert "holds another study" in result.output
-        assert "efficiency_at_least" in result.output
+        assert f"{swept / 'Q6p2s1'}: holds another study than" in result.output
+        # The study file it came from is at hand, so every key is named.
+        assert "limits.efficiency.at_least: 0.1 was added" in result.output
+        assert "study.name: 'small' became 'other'" in result.output
     (swept / "study.toml").write_text(kept)
-    for part in Path("results/other/Q6p2s1").glob("part-*.parquet"):
-        part.unlink()
-    for part in (swept / "Q6p2s1").glob("part-*.parquet"):
-        shutil.copy(part, "results/other/Q6p2s1")
-    result = hovergap("compare", "results/other")
+    # A part of the other study among its own: its rows do not count, and it is named.
+    part = next(Path("results/other/Q6p2s1").glob("part-*.parquet"))
+    shutil.copy(part, swept / "Q6p2s1" / part.name.replace("part-0", "part-9"))
+    for command in reading:
+        result = hovergap(*command)
+        assert result.exit_code == (0 if command[0] == "inspect" else 1)
+        told = "belongs to another archive (study 'other' there and 'small' here"
+        assert (told in result.output) == (command[0] != "inspect")
+    assert open_archive(swept / "Q6p2s1").rows == 200
+    result = hovergap("resume", swept, "--workers", "1")
+    assert "damaged or another study's was set aside" in result.output
+    assert hovergap("compare", swept).exit_code == 0
+
+
+def test_a_family_of_a_study_that_is_not_at_hand_is_told_by_what_is_stored(
+    hovergap: Run, write_study: Write, swept: Path
+) -> None:
+    """Alike in name, columns and limits; its study file is nowhere to be found."""
+    wider = ("rotor_radius_mm = [12.0, 24.0]", "rotor_radius_mm = [12.0, 26.0]")
+    other = write_study(wider, name="wider.toml")
+    arguments = ("--results", "elsewhere", "--workers", "1", "--budget", "30")
+    assert hovergap("sweep", other, *arguments).exit_code == 0
+    shutil.rmtree(swept / "Q6p2s1")
+    shutil.copytree("elsewhere/small/Q6p2s1", swept / "Q6p2s1")
+    for command in (("compare", swept), ("inspect", swept, "Q6p2s1-1"), ("resume", swept)):
+        result = hovergap(*command)
+        assert result.exit_code == 2
+        said = "(rotor_radius_mm from 12 to 26 there and from 12 to 24 here)"
+        assert said in result.output
+        assert "digest" not in result.output
+    # A folder under another family's name.
+    shutil.rmtree(swept / "Q6p2s1")
+    shutil.copytree(swept / "Q12p4s5", swept / "Q6p2s1")
+    result = hovergap("compare", swept)
     assert result.exit_code == 2
-    assert "parts of another study" in result.output
-    assert "hovergap resume results/other" in result.output
+    assert "family 'Q12p4s5' there and 'Q6p2s1' here" in result.output
 
 
 def test_tables() -> None:
