@@ -12,8 +12,8 @@ from typing import Any
 
 import numpy as np
 import pytest
-
 from outside import OutsideChecks
+
 from evaluators.finite_element.rotor.conducting_magnets import ConductingMagnets, Spaces
 from evaluators.finite_element.rotor.eddy import Conductors, EddyRotor
 from evaluators.finite_element.rotor.separate_magnets import Ring, ring_reluctivity
