@@ -251,7 +251,7 @@ def _connected(address: str) -> Any:
         If there is none.
     """
     try:
-        from distributed import Client
+        from distributed import Client, Security
     except ImportError as error:
         msg = (
             "a cluster needs the package distributed, which is not installed; install it with: "
@@ -265,9 +265,13 @@ def _connected(address: str) -> Any:
     try:
         if Path(address).is_file():
             where = {"scheduler_file": address}
+        security = Security()
+        if address.startswith("tls:") and not security.get_connection_args("client")["ssl_context"]:
+            msg = "tls needs the certificates that Dask's configuration names, comm.tls.client"
+            raise ClusterError(msg)
         with warnings.catch_warnings():
             warnings.simplefilter("ignore")  # of versions, which every worker compares itself
-            return Client(**where, timeout=CONNECT_S, set_as_default=False)
+            return Client(**where, security=security, timeout=CONNECT_S, set_as_default=False)
     except Exception as error:  # wrong schemes, names, ports, files, certificates, versions
         text = " ".join(str(error).split()) or type(error).__name__
         msg = (

@@ -190,6 +190,18 @@ def test_a_run_that_is_left_early_leaves_nothing_behind(cluster) -> None:
     assert_only(by_row(cluster.run(Ridge(), chunks())), {})
 
 
+def test_numerical_libraries_keep_to_one_thread(cluster) -> None:
+    def look(x: np.ndarray) -> None:
+        import scipy.linalg  # noqa: F401 -- brings a library of its own
+        from threadpoolctl import threadpool_info
+
+        threads = {info["num_threads"] for info in threadpool_info()}
+        if threads != {1}:
+            raise RuntimeError(str(threads))
+
+    assert_only(by_row(cluster.run(Ridge(look), chunks(2))), {}, 10)
+
+
 def test_an_answer_of_the_wrong_shape_is_an_error(cluster) -> None:
     class Wrong(Ridge):
         def evaluate(self, x: np.ndarray) -> Outcome:
@@ -217,7 +229,10 @@ def test_other_versions_are_refused(machines, monkeypatch) -> None:
         list(cluster.run(Ridge(), chunks()))
 
 
-@pytest.mark.parametrize("address", ["tcp://127.0.0.1:1", "no-such-scheme://127.0.0.1:1", "a b"])
+@pytest.mark.parametrize(
+    "address",
+    ["tcp://127.0.0.1:1", "tls://127.0.0.1:1", "no-such-scheme://127.0.0.1:1", "a b", "/no/file"],
+)
 def test_a_wrong_address_is_one_sentence(address, monkeypatch) -> None:
     monkeypatch.setattr(room, "CONNECT_S", 0.5)
     with pytest.raises(ClusterError, match="no scheduler of a cluster answers at") as caught:
@@ -309,7 +324,7 @@ def test_workers_come_and_go(tmp_path, python_path) -> None:
     ):
         seen: set[int] = set()
         windows = []
-        for done in cluster.run(Ridge(slow), chunks(400, 5)):
+        for done in cluster.run(Ridge(slow), chunks(200, 5)):
             if not seen:
                 machines.add_workers(1, nanny=False)
             seen |= set(done.outcome.columns["worker"].tolist())

@@ -29,6 +29,7 @@ Process = Callable[..., "subprocess.CompletedProcess[str]"]
 
 PROJECT = Path(__file__).parents[2]
 SLOW = ('name = "toy"', 'name = "toy"\n[evaluator.settings]\ndelay_s = 0.1')
+ONE_FAMILY = ('list = ["Q6p2s1", "Q12p4s5"]', 'list = ["Q6p2s1"]')
 FAMILIES = ("Q6p2s1", "Q12p4s5")
 NOWHERE = "tcp://127.0.0.1:1"
 
@@ -95,9 +96,19 @@ def test_verify_and_tolerance_give_what_one_machine_gives(
 def test_ctrl_c_ends_cleanly_and_one_machine_goes_on(
     hovergap: Run, write_study: Write, rows: Rows, machines: LocalCluster
 ) -> None:
-    file = write_study(SLOW)
+    file = write_study(SLOW, ONE_FAMILY)
     child = subprocess.Popen(
-        [sys.executable, "-m", "studies", "sweep", str(file), "--cluster", machines.address],
+        [
+            sys.executable,
+            "-m",
+            "studies",
+            "sweep",
+            str(file),
+            "--cluster",
+            machines.address,
+            "--budget",
+            "2000",
+        ],
         stdout=subprocess.PIPE,
         stderr=subprocess.PIPE,
         text=True,
@@ -113,9 +124,13 @@ def test_ctrl_c_ends_cleanly_and_one_machine_goes_on(
     assert child.returncode == 130, output + errors
     assert errors.strip() == "finishing the designs in hand; once more stops at once"
     assert "hovergap resume results/small" in output
-    result = hovergap("resume", "results/small", "--workers", "1")
+    stored = rows(Path("results/small/Q6p2s1"))
+    more = len(stored) + 10
+    result = hovergap("resume", "results/small", "--workers", "1", "--budget", str(more))
     assert result.exit_code == 0, result.output
-    assert [len(rows(Path("results/small") / family)) for family in FAMILIES] == [200, 200]
+    after = rows(Path("results/small/Q6p2s1"))
+    assert len(after) == more
+    assert after[: len(stored)] == stored
 
 
 @pytest.mark.slow
