@@ -218,9 +218,12 @@ def suspension_field(
 
 
 def reacting_orders(batch: BatchField, equations: Equations) -> IntArray:
-    """Orders of a sector whose induced currents are followed: up to Q + p."""
+    """Orders of a sector whose induced currents are followed: up to 2 Q + p.
+
+    Up to Q + p a metal sleeve's loss by the suspension field would lack a tenth, so a hundredth.
+    """
     orders = batch.gap.class_orders(equations.topology.lattice.sector)
-    return orders[orders <= batch.model.slots + batch.model.pole_pairs]
+    return orders[orders <= 2 * batch.model.slots + batch.model.pole_pairs]
 
 
 def _with_added(
