@@ -7,6 +7,7 @@ from collections.abc import Sequence
 from pathlib import Path
 
 from optimizer.archive.archive import is_archive
+from optimizer.archive.durable import remove_leftovers
 from optimizer.archive.identity import read_identity
 from optimizer.archive.lock import writer_lock
 from optimizer.errors import ClusterError
@@ -127,6 +128,7 @@ def search_families(
     summaries: dict[str, Summary] = {}
     lost = False
     with Interruption() as interruption, writer_lock(results.folder):
+        remove_leftovers(results.folder)
         spending = Spending(
             results,
             searches,

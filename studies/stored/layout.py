@@ -96,6 +96,7 @@ def create(root: Path, study: Study, request: Request) -> Results:
     draft = root / f".{study.name}.{os.getpid()}"
     with storage(folder, "create"):
         root.mkdir(parents=True, exist_ok=True)
+        _remove_drafts(root, study.name)
         try:
             draft.mkdir()
             _write(draft / STUDY_FILE, study.content)
@@ -278,6 +279,24 @@ def _request(folder: Path, study: Study) -> Request:
 
 def _json(request: Request) -> bytes:
     return (json.dumps(request.table(), indent=2) + "\n").encode()
+
+
+def _remove_drafts(root: Path, study: str) -> None:
+    """Remove what processes left behind that were killed while they made this folder."""
+    for draft in root.glob(f".{study}.*"):
+        process = draft.name.rpartition(".")[2]
+        if process.isdecimal() and not _alive(int(process)):
+            shutil.rmtree(draft, ignore_errors=True)
+
+
+def _alive(process: int) -> bool:
+    try:
+        os.kill(process, 0)
+    except ProcessLookupError:
+        return False
+    except (PermissionError, OverflowError):
+        return True
+    return True
 
 
 def _write(file: Path, content: bytes) -> None:

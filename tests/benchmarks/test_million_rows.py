@@ -26,7 +26,9 @@ pytestmark = pytest.mark.benchmark
 
 ROWS = 1_000_000
 BATCH = 10_000
-TIME_LIMIT_S = 10.0  # of each command, with the start of Python; wanted of the program
+# Of processor time of a command with the start of Python; wanted of the program. By the clock
+# other work on the machine would count.
+TIME_LIMIT_S = 10.0
 MEMORY_LIMIT = 2e9  # bytes a command may take at its peak; wanted of the program
 # Runs a command and says at the end, in a line of its own, what it took.
 MEASURED = """
@@ -141,14 +143,14 @@ def test_a_million_rows(state: str, command: str, request: pytest.FixtureRequest
     results: Results = request.getfixturevalue(state)
     last = results.study.families[-1]
     target = {"inspect": [results.folder, f"{last}-100000"]}.get(command, [results.folder])
-    _, empty, _ = measured("--version")
-    text, taken, use = measured(command, *target)
+    _, _, empty = measured("--version")
+    text, _, use = measured(command, *target)
     size = sum(
         part.stat().st_size
         for family in results.study.families
         for part in part_paths(results.search_folder(family))
     )
-    print(f"{state}: {size / ROWS:.0f} bytes a row; starting Python takes {empty:.2f} s of it")
-    assert taken < TIME_LIMIT_S
+    print(f"{state}: {size / ROWS:.0f} bytes a row; starting takes {empty['cpu']:.2f} s of it")
+    assert use["cpu"] < TIME_LIMIT_S
     assert use["memory"] < MEMORY_LIMIT
     assert "166,667" in text or command == "inspect"
