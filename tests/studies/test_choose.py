@@ -131,6 +131,15 @@ def test_another_design_may_be_taken_if_it_is_a_candidate() -> None:
             decide([pool(FRONT)], wanted(), 1, take=name)
     with pytest.raises(ResultsError, match="is no design"):
         decide([pool(FRONT)], wanted(), 1, take="nonsense")
+    # Two searches of the family have evaluations of the same number.
+    rows = np.arange(len(FRONT))
+    names = ("Q6p2s1", "Q6p2s1.2")
+    several = replace(pool(FRONT), searches=names, owner=rows % 2, evaluations=rows // 2)
+    for name, values in zip(("Q6p2s1-000001", "Q6p2s1.2-000001"), FRONT[2:4], strict=True):
+        taken = decide([several], wanted(), 1, take=name)
+        assert taken is not None
+        assert taken.taken.design == name
+        assert np.array_equal(taken.taken.values, values)
     both = [pool(FRONT), pool(FRONT, folder="results/other")]
     with pytest.raises(ResultsError, match="several studies"):
         decide(both, wanted(), 1, take="Q6p2s1-000001")

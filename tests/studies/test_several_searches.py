@@ -21,6 +21,7 @@ from optimizer.archive.archive import open_archive
 from optimizer.fronts import hypervolume, non_dominated
 from studies import api
 from studies.comparison.numbers import REFERENCE
+from studies.running.spreading import read_rows
 from studies.stored.families import stored_families, stored_family
 from studies.stored.layout import open_results
 from studies.stored.naming import (
@@ -162,6 +163,21 @@ def test_a_total_is_spread_over_all_searches(hovergap: Run, write_study: Write) 
     assert result.exit_code == 2
     assert "is too few for 2 families with 6 searches each" in result.output
     assert "give at least 1200" in result.output
+
+
+def test_a_family_is_judged_by_the_first_rows_of_all_its_searches(
+    hovergap: Run, write_study: Write
+) -> None:
+    search(hovergap, write_study(BUDGET), "--searches", "2", "--family", "Q6p2s1")
+    quota = {"Q6p2s1": 40, "Q6p2s1.2": 25}
+    found = read_rows(open_results(FOLDER), quota)["Q6p2s1"]
+    feasible = []
+    for name, count in quota.items():
+        table = open_archive(FOLDER / name).table()
+        feasible += np.flatnonzero(table["feasible"].to_numpy()[:count]).tolist()
+    assert found.evaluations.tolist() == feasible
+    assert found.objectives.shape == (len(feasible), 3)
+    assert found.wanted == 40
 
 
 def test_the_front_of_a_family_is_that_of_all_its_searches(
