@@ -19,6 +19,7 @@ from importlib.metadata import PackageNotFoundError, version
 from pathlib import Path
 from typing import Any
 
+from optimizer.archive.durable import sync_folder
 from studies.errors import Path as KeyPath
 from studies.errors import ResultsError, StorageError, StudiesError, dotted, quoted
 from studies.study_file.definition import Study, study_from
@@ -95,16 +96,16 @@ def create(root: Path, study: Study, request: Request) -> Results:
     request = replace(request, hovergap=program_version())
     draft = root / f".{study.name}.{os.getpid()}"
     with storage(folder, "create"):
-        root.mkdir(parents=True, exist_ok=True)
+        _make_folder(root)
         _remove_drafts(root, study.name)
         try:
             draft.mkdir()
             _write(draft / STUDY_FILE, study.content)
             _write(draft / REQUEST_FILE, _json(request))
-            _sync_folder(draft)
+            sync_folder(draft)
             # Fails if another process has made the folder meanwhile and put something in it.
             draft.rename(folder)
-            _sync_folder(root)
+            sync_folder(root)
         except OSError as error:
             shutil.rmtree(draft, ignore_errors=True)
             if error.errno in (errno.EEXIST, errno.ENOTEMPTY):
@@ -155,7 +156,7 @@ def save_request(results: Results, request: Request) -> Results:
         try:
             _write(draft, _json(request))
             draft.replace(results.folder / REQUEST_FILE)
-            _sync_folder(results.folder)
+            sync_folder(results.folder)
         except OSError:
             with suppress(OSError):
                 draft.unlink()
@@ -281,6 +282,14 @@ def _json(request: Request) -> bytes:
     return (json.dumps(request.table(), indent=2) + "\n").encode()
 
 
+def _make_folder(folder: Path) -> None:
+    """Make a folder and its parents so that they outlast a loss of power."""
+    new = [place for place in (folder, *folder.parents) if not place.exists()]
+    folder.mkdir(parents=True, exist_ok=True)
+    for place in new:
+        sync_folder(place.parent)
+
+
 def _remove_drafts(root: Path, study: str) -> None:
     """Remove what processes left behind that were killed while they made this folder."""
     for draft in root.glob(f".{study}.*"):
@@ -304,11 +313,3 @@ def _write(file: Path, content: bytes) -> None:
         stream.write(content)
         stream.flush()
         os.fsync(stream.fileno())
-
-
-def _sync_folder(folder: Path) -> None:
-    handle = os.open(folder, os.O_RDONLY)
-    try:
-        os.fsync(handle)
-    finally:
-        os.close(handle)
