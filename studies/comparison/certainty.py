@@ -3,6 +3,9 @@
 A search is a random process, so the hypervolume a family reaches depends on its seed too. Several
 searches of each family show how much: on the scale of the whole comparison each search has a
 hypervolume of its own, and ranks tell whether those of two families differ by more than chance.
+
+The test takes all searches as independent. Those of one study are, by their seeds, but for the
+first search of each family, which all start from the study's own seed.
 """
 
 from __future__ import annotations

@@ -63,7 +63,7 @@ def statements(certainty: Certainty) -> list[str]:
     if not certainty.pairs:
         return said
     counted = len(certainty.pairs)
-    fewest = min(map(len, certainty.families))
+    fewest, most = min(map(len, certainty.families)), max(map(len, certainty.families))
     if not certainty.can_decide:
         with_all = (
             f", {p_value(min(certainty.least_p * counted, 1.0))} with all {counted} pairs of "
@@ -72,8 +72,8 @@ def statements(certainty: Certainty) -> list[str]:
             else ""
         )
         said.append(
-            f"{_searches(fewest)} of a family cannot tell it from another, even if all agree: p is "
-            f"{p_value(certainty.least_p)} at best{with_all}. To get to {LEVEL:g}, at least "
+            f"{_searches(fewest, most)} of a family cannot tell it from another, even if all "
+            f"agree: p is {p_value(certainty.least_p)} at best{with_all}. To get to {LEVEL:g}, at least "
             f"{certainty.needed} searches of each are needed."
         )
     said += [_sentence(pair, counted) for pair in certainty.neighbours()]
@@ -147,8 +147,8 @@ def _against(p: float) -> str:
     return p_value(p) if p < SMALLEST else f"= {p_value(p)}"
 
 
-def _searches(count: int) -> str:
-    return "1 search" if count == 1 else f"{count} searches"
+def _searches(fewest: int, most: int) -> str:
+    return f"{fewest} searches" if fewest == most else f"{fewest} to {most} searches"
 
 
 def _filled(text: str) -> str:

@@ -236,6 +236,7 @@ def _member_json(comparison: Comparison, member: Member) -> dict[str, Any]:
         "feasible": feasible,
         "feasible_share": feasible / evaluations if evaluations else None,
         "failed": failed,
+        "searches": len(member.stored.searches),
         "front_size": len(member.stored.front_ids),
         "verified": _verified_json(member.stored),
         "hypervolume": member.hypervolume,

@@ -175,6 +175,8 @@ def _attainment(data: ReportData, shown: CertaintyData, marks: Sequence[Mark]) -
         if len(goals) == 2
         else " Two objectives are drawn at a time, whatever becomes of the others."
     )
+    if len(shown.pairs) < len(goals) * (len(goals) - 1) // 2:
+        seen += f" Of all pairs of objectives the first {len(shown.pairs)} are drawn."
     boxes = "".join(
         f'<label><input type="checkbox" checked data-attained="{position}">'
         f"{swatch(mark, 'marker of')} {escape(family.label)}</label>"
