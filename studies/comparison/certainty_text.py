@@ -73,8 +73,8 @@ def statements(certainty: Certainty) -> list[str]:
         )
         said.append(
             f"{_searches(fewest, most)} of a family cannot tell it from another, even if all "
-            f"agree: p is {p_value(certainty.least_p)} at best{with_all}. To get to {LEVEL:g}, at least "
-            f"{certainty.needed} searches of each are needed."
+            f"agree: p is {p_value(certainty.least_p)} at best{with_all}. To get to {LEVEL:g}, "
+            f"at least {certainty.needed} searches of each are needed."
         )
     said += [_sentence(pair, counted) for pair in certainty.neighbours()]
     overall = certainty.overall
