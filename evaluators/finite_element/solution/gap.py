@@ -178,10 +178,9 @@ class GapCoupling:
         array (..., m, LANES)
         """
         turn = np.exp(-2j * np.pi / self.slots * np.outer(orders, np.arange(sector.slots)))
-        slotwise = np.einsum("ms,...skl->...mkl", turn, bore)
-        return np.asarray(
-            sector.count * np.einsum("mkl,...mkl->...ml", self.weights(orders), slotwise)
-        )
+        flat = bore.reshape(*bore.shape[:-2], -1)
+        slotwise = (turn @ flat).reshape(*bore.shape[:-3], orders.size, *bore.shape[-2:])
+        return np.asarray(sector.count * np.sum(self.weights(orders) * slotwise, axis=-2))
 
     def source_load(self, source: ComplexArray, orders: IntArray, angles: FloatArray) -> FloatArray:
         """Right-hand side of the nodes of a slot for the rotor turned by `angles` against it.

@@ -140,5 +140,5 @@ def test_turning_machine(numbers: machines.Numbers, separate: bool) -> None:
             found[0],
             expected,
             relative=0.02,
-            why="orders above 2 Q + p left out, 1 % of a metal sleeve's loss; measured 0.01 to 1 %",
+            why="orders above 3/2 Q + p left out, 4 % of a metal sleeve's loss at most",
         )
