@@ -30,7 +30,6 @@ PER_THREAD = 2  # chunks outstanding for each thread of a worker: the next is th
 CONNECT_S = 10.0
 PATIENCE_S = 600.0  # without any worker
 PACKAGES = ("hovergap", "numpy", "scipy", "numba")  # what the last bits of a number depend on
-_WANTS = 3  # times that a chunk came to workers without the problem
 _REFUSALS = 3  # errors of the cluster itself that one chunk may meet
 _POLL_S = 0.003
 _LOOK_S = 1.0  # between looks at who is there
@@ -40,10 +39,10 @@ class Cluster(Closing):
     """Evaluates chunks on the workers of a cluster, as many as there are at any time.
 
     Chunks are the same as on one machine, and so are the rows, if the same versions are installed
-    everywhere and the processors are of one kind. Each worker gets the problem once. A chunk whose
-    worker is lost is given to another; one that loses worker after worker is evaluated with
-    nothing beside it, then row by row, and a row of which workers die even then becomes a failed
-    row with the reason ``"worker died"``.
+    everywhere and the processors are of one kind. Workers that lack the problem ask for it. A
+    chunk whose worker is lost is given to another; one that loses worker after worker is evaluated
+    with nothing beside it, then row by row, and a row of which workers die even then becomes a
+    failed row with the reason ``"worker died"``.
 
     Whoever reaches the scheduler's port can run any code on all these machines, and this process
     trusts what they answer.
@@ -78,7 +77,6 @@ class Cluster(Closing):
         self.patience_s = patience_s
         self._versions = installed_versions(dict.fromkeys([*PACKAGES, *packages]))
         self._sent: tuple[Problem, str, Parcel] | None = None
-        self._supplied: set[str] = set()
         self._threads, self._seen_at, self._looked_at = 0, time.monotonic(), -_LOOK_S
         self._client = _connected(address)
 
@@ -129,26 +127,18 @@ class Cluster(Closing):
 
     def _submit(self, problem: Problem, errand: Errand) -> Any:
         digest, parcel = self._parcel(problem)
-        place: dict[str, Any] = {}
-        address, errand.wanted_by = errand.wanted_by, ""
-        if address:
-            # Whatever it has outstanding, a worker gets the problem once, unless that went astray.
-            if address in self._supplied and errand.wants < _WANTS:
-                address = ""
-            else:
-                self._supplied.add(address)
-                # Where to begin: that worker may be gone.
-                place = {"workers": [address], "allow_other_workers": True}
         order = Order(
             digest,
             errand.unit.chunk,
             self.time_limit_s,
             self._versions,
-            parcel if address else None,
+            parcel if errand.wanted else None,
         )
         try:
+            # To whichever worker: where only the one that asked would do, or would be preferred,
+            # an errand waits for ever once that is gone.
             return self._client.submit(
-                evaluate_order, order, key=f"evaluate-{uuid.uuid4().hex}", pure=False, **place
+                evaluate_order, order, key=f"evaluate-{uuid.uuid4().hex}", pure=False
             )
         except Exception as error:  # of the client's many parts
             raise self._lost(error) from error
@@ -159,7 +149,6 @@ class Cluster(Closing):
             parcel = Parcel(
                 tuple(problem.objectives), tuple(problem.constraints), tuple(problem.columns), data
             )
-            self._supplied.clear()
             self._sent = (problem, hashlib.sha256(data).hexdigest(), parcel)
         return self._sent[1:]
 
@@ -171,7 +160,7 @@ class Cluster(Closing):
         if isinstance(result, Finished):
             return errand.unit.settle(result)
         if isinstance(result, Wanted):
-            errand.wanted_by, errand.wants = result.address, errand.wants + 1
+            errand.wanted = True
             work.again(errand)
             return None
         if isinstance(result, Misfit):

@@ -18,17 +18,16 @@ class Errand:
     Attributes
     ----------
     unit : Unit
-    wanted_by : str
-        Worker that asked for the problem.
-    wants, refusals, meetings : int
-        How often that happened; errors of the cluster itself; workers that died meanwhile.
+    wanted : bool
+        Whether it came to a worker without the problem, and takes that along from now on.
+    refusals, meetings : int
+        Errors of the cluster itself; workers that died meanwhile.
     suspect : bool
         Whether it runs with nothing beside it from now on.
     """
 
     unit: Unit
-    wanted_by: str = ""
-    wants: int = 0
+    wanted: bool = False
     refusals: int = 0
     meetings: int = 0
     suspect: bool = False

@@ -63,9 +63,7 @@ class Order:
 
 @dataclass(frozen=True)
 class Wanted:
-    """The worker at this address does not know the problem yet."""
-
-    address: str
+    """The worker does not know the problem yet."""
 
 
 @dataclass(frozen=True)
@@ -95,7 +93,7 @@ def evaluate_order(order: Order) -> Answer:
             return Misfit(worker.address, f"{package} is {found} there and {wanted} here")
     parcel, path = _known(order, Path(worker.local_directory))
     if parcel is None or path is None:
-        return Wanted(worker.address)
+        return Wanted()
     crew = _take_crew()
     try:
         return list(crew.run(parcel, path, [order.chunk], order.time_limit_s))[0]  # noqa: RUF015
