@@ -25,7 +25,7 @@ DESIGNS = 16
 
 # Quantity: limit of its change, absolute and over its value, whichever is the larger. The force
 # errors of random designs reach 100 % and 70 degrees, of which one part in a hundred will do; those
-# worth building have some per cent. The goal of every loss is 2 %, which every median is well below;
+# worth building have some per cent. The goal of every loss is 2 %; every median is well below, but
 # the ninth decile of the teeth's lies higher, for long thin tips that few cells span.
 LIMITS: dict[str, tuple[float, float]] = {
     "torque": (0.0, 3e-3),
