@@ -7,7 +7,8 @@ from pathlib import Path
 from studies.api.tables import Folder, Folders, opened
 from studies.export.design import design_files, design_notes, front_notes
 from studies.export.files import write_folder
-from studies.export.front import front_files, front_table
+from studies.export.front import front_files
+from studies.export.front_table import front_table
 from studies.report.build import report_html
 from studies.report.collect import collect
 from studies.running.evaluating import usable_workers
