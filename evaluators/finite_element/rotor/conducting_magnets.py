@@ -14,6 +14,12 @@ the first pole, N and M as in `separate_magnets.py` (own derivation). Along the 
 has its two static waves and a few polynomials that vanish on both faces of the magnets, so that
 nothing is meshed. Core and shaft within, sleeve and clearance without, are rings (`eddy.py`).
 
+Taking each order alone instead (`eddy.py`) put the magnets' loss by the torque field 5 to 10 % too
+low, that by the suspension field 3 to 5 % too high and the force up to 3 degrees off in linear
+machines of six and twelve slots with 2, 4 and 8 poles, and the loss in the field of a single order
+up to 55 % off. Stepping through time on independent meshes agrees to 0.04 to 0.4 % in the loss once
+mesh and steps are refined, to 1.2 % at the default mesh.
+
 Short pieces: the currents of order n are weakened by the square root of `Conductors.end_factor` on
 both sides, which is exact for one order alone in the limit of that factor.
 """

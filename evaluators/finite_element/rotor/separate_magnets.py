@@ -17,6 +17,8 @@ How much it matters, over 16 random machines of each of the 15 families of the s
 magnitude 0.0002 to 0.008 and 0.0006 to 0.022, torque ripple 0.0001 to 0.002 and 0.0002 to 0.008;
 torque up to 0.6 % in other random machines. Most where ps = p - 1, whose main force is a small
 difference that the mixed orders -1 - p disturb. The time grows to 1.8 times (1.2 to 2.2).
+
+What the magnets conduct is not in here but in `conducting_magnets.py`.
 """
 
 from __future__ import annotations

@@ -265,7 +265,9 @@ class BatchField:
         The field of the lowest magnet orders stands still in the rotor; slotting is left out. The
         suspension field meets the same reluctivity: that of the tangent, H(B) linearised in every
         ring and averaged over directions, changes the force by less than 2e-3 (32 designs of four
-        families).
+        families). Of eight random machines of each of three families the one whose torque depends
+        most on the core, against a core saturated point by point on an independent mesh (NGSolve):
+        torque within 1e-3, force within 3.4e-3 and 0.3 degrees; more rings change nothing.
         """
         model = self.model
         orders = model.magnet_orders[:3]
