@@ -23,10 +23,13 @@ from numpy.typing import NDArray
 
 from evaluators.analytic.rotor import MU_0, RotorRadii, response
 from evaluators.analytic.slots import SlotMouth
+from evaluators.analytic.tips import PLACES, ToothTips
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
 IntArray = NDArray[np.int64]
+
+SMALL = 1e-9  # rad; of a smaller angle the sine is the angle, to rounding
 
 
 @dataclass(frozen=True)
@@ -90,6 +93,9 @@ class GapField:
     slot : array (n, c), Wb/m
         Fourier coefficient of the mean of A over the windings of the slots, less what the slot's
         own current adds on the way in from the mouth: a_j = slot exp(j 2 pi c j / Q).
+    tips : array (n, c, 2, 5), Wb/m
+        The same of the flux of the flanges before and behind each slot at four places, less the
+        leakage of the slot's own current, and of what enters by the face between first and last.
     """
 
     classes: IntArray
@@ -97,6 +103,7 @@ class GapField:
     rising: ComplexArray
     falling: ComplexArray
     slot: ComplexArray
+    tips: ComplexArray
 
     def of(self, rows: IntArray) -> GapField:
         """The classes in the given rows only."""
@@ -106,6 +113,7 @@ class GapField:
             rising=self.rising[:, rows],
             falling=self.falling[:, rows],
             slot=self.slot[:, rows],
+            tips=self.tips[:, rows],
         )
 
     def times(self, factor: ComplexArray) -> GapField:
@@ -116,6 +124,7 @@ class GapField:
             rising=self.rising * factor[..., None],
             falling=self.falling * factor[..., None],
             slot=self.slot * factor,
+            tips=self.tips * factor[..., None, None],
         )
 
 
@@ -140,6 +149,8 @@ class SlottedGap:
         equal residues, so that fields of magnets and of currents are reciprocal.
     iron : Iron, optional
         Perfect if left out.
+    tips : ToothTips, optional
+        Flanges whose flux shall be told; left out, fields have none.
     """
 
     def __init__(
@@ -151,6 +162,7 @@ class SlottedGap:
         classes: IntArray,
         reach: int,
         iron: Iron | None = None,
+        tips: ToothTips | None = None,
     ) -> None:
         self.radii, self.slots, self.mouth = radii, slots, mouth
         self.half = 0.5 * opening
@@ -159,11 +171,34 @@ class SlottedGap:
         self.orders = self._lowest[:, None] + slots * np.arange(-reach, reach + 1)[None, :]
         self._share = self.half[:, None] * mouth.current_share
         self._modes = _mode_integrals(self.half, self.orders, mouth.current_share.shape[1])
+        self._set_tips(tips)
         self._set_iron(iron or Iron.perfect(opening.size))
 
-    def with_iron(self, iron: Iron) -> SlottedGap:
-        """The same gap with other iron."""
+    def _set_tips(self, tips: ToothTips | None) -> None:
+        """Waves exp(j n x) of the flange behind the mouth, x from the slot's axis, (n, c, w, 4).
+
+        At four places; `sheet` (n, c, w) is their mean over flange and corner.
+        """
+        self.tips = tips
+        self._face = np.zeros((self.half.size, *self.orders.shape, 0), dtype=np.complex128)
+        self.sheet = self._face
+        if tips is None:
+            return
+        wide = tips.angle[:, None] * PLACES
+        ends = np.stack([np.zeros_like(self.half), tips.sheet], axis=1)
+        place = self.half[:, None] + np.concatenate([wide, ends], axis=1)
+        reach = self.orders.shape[1] // 2
+        low = np.exp(1j * self._lowest[:, None] * place[:, None, :])
+        step = np.exp(1j * self.slots * np.arange(-reach, reach + 1)[:, None] * place[:, None, :])
+        wave = low[:, :, None, :] * step[:, None, :, :]
+        order = np.where(self.orders == 0, 1, self.orders)
+        mean = (wave[..., -1] - wave[..., -2]) / (1j * order * tips.sheet[:, None, None])
+        self._face, self.sheet = wave[..., :-2], np.where(self.orders == 0, 1.0, mean)
+
+    def with_iron(self, iron: Iron, tips: ToothTips | None = None) -> SlottedGap:
+        """The same gap with other iron, and flanges whose flux shall be told."""
         other = copy(self)
+        other._set_tips(tips)
         other._set_iron(iron)
         return other
 
@@ -190,25 +225,77 @@ class SlottedGap:
             )
         return self._reaction
 
-    def _field(self, smooth: ComplexArray | float, mouth_field: ComplexArray) -> GapField:
-        """Gap harmonics from the smooth-bore potential and mouth fields mu0 h (n, c, K+1)."""
+    def tip_reaction(self) -> GapField:
+        """Field of mu0 times a voltage exp(j 2 pi c j / Q) lost along the flange behind each slot.
+
+        Only that of its sheet of current on the face; in the mouth the same voltage is missing,
+        which is minus `reaction`. That of the flanges before the slots is the mirror image.
+        """
+        sheet = -np.conj(self.sheet) / self.radii.bore[:, None, None]
+        smooth = self._response * (self.slots / (2.0 * np.pi)) * sheet
+        # The modes' system is real: real and imaginary part are two loads.
+        load = np.swapaxes(self._modes[..., 1:], 2, 3) @ np.stack([smooth.real, smooth.imag], 3)
+        both = np.linalg.solve(self._matrix, load)
+        answer: ComplexArray = np.asarray(both[..., 0] + 1j * both[..., 1])
+        uniform = np.zeros((*answer.shape[:2], 1))
+        mouth_field: ComplexArray = np.concatenate([uniform, answer], axis=2)
+        return self._field(0.0, mouth_field, np.asarray(sheet, dtype=np.complex128))
+
+    def _tip_flux(
+        self, local: ComplexArray, slot: ComplexArray, mouth_field: ComplexArray
+    ) -> ComplexArray:
+        """`GapField.tips` from the gap's potential (n, c, w) seen from the slot's axis."""
+        if self.tips is None:
+            return np.zeros((*slot.shape, 2, 0), dtype=np.complex128)
+        behind = (local[:, :, None, :] @ self._face)[:, :, 0]
+        before = (local[:, :, None, :] @ np.conj(self._face))[:, :, 0]
+        face = np.stack([before, behind], axis=2)
+        flux = slot[:, :, None, None] + self._walls(mouth_field) - face
+        return np.concatenate([flux, face[..., :1] - face[..., -1:]], axis=3)
+
+    def _walls(self, mouth_field: ComplexArray) -> ComplexArray:
+        """Potential of the slot's walls over that of its winding, before and behind, (n, c, 2, 4).
+
+        At the depth of the flange's underside at four places, without the slot's own leakage.
+        """
+        even = np.arange(1, mouth_field.shape[2] + 1) % 2 == 0
+        scale = -self.half * self.radii.bore
+        left = np.swapaxes(self.mouth.wall * scale[:, None, None], 1, 2)
+        alike = mouth_field[..., even] @ left[:, even]
+        # Odd unknowns have absorbed a factor -j, see `_mode_integrals`.
+        opposite = 1j * (mouth_field[..., ~even] @ left[:, ~even])
+        return np.stack([alike - opposite, alike + opposite], axis=2)
+
+    def _field(
+        self,
+        smooth: ComplexArray | float,
+        mouth_field: ComplexArray,
+        sheet: ComplexArray | float = 0.0,
+    ) -> GapField:
+        """Gap harmonics from the smooth-bore potential and mouth fields mu0 h (n, c, K+1).
+
+        `sheet` is the integral of mu0 h exp(-j n x) over the tooth faces around one slot.
+        """
         shift = np.exp(-1j * np.pi * self.orders / self.slots)
         driven = (self._modes @ mouth_field[..., None])[..., 0]
-        driven = driven * (self.slots / (2.0 * np.pi)) * shift
+        driven = (driven + sheet) * (self.slots / (2.0 * np.pi)) * shift
         potential = smooth + self._response * driven
         order = np.where(self.orders == 0, 1, np.abs(self.orders))
         swing = self.radii.bore[:, None, None] / order * driven
-        mean = np.sum(potential / shift * self._modes[..., 0], axis=2)
+        local = potential / shift
+        mean = np.sum(local * self._modes[..., 0], axis=2)
         # What the mouth's modes add on the way to the winding, by reciprocity.
         inside = self.radii.bore[:, None] * np.einsum(
             "nk,nck->nc", self._share, mouth_field[..., 1:]
         )
+        slot = mean / (2.0 * self.half[:, None]) + inside
         return GapField(
             classes=self.classes,
             orders=self.orders,
             rising=0.5 * (potential - swing),
             falling=0.5 * (potential + swing),
-            slot=mean / (2.0 * self.half[:, None]) + inside,
+            slot=slot,
+            tips=self._tip_flux(local, slot, mouth_field[..., 1:]),
         )
 
     def _with_stator(self, field: GapField) -> GapField:
@@ -278,6 +365,7 @@ def with_stator(field: GapField, reaction: GapField, voltage: FloatArray) -> Gap
         rising=field.rising - lost[:, :, None] * reaction.rising,
         falling=field.falling - lost[:, :, None] * reaction.falling,
         slot=field.slot - lost * reaction.slot,
+        tips=field.tips - lost[:, :, None, None] * reaction.tips,
     )
 
 
@@ -287,9 +375,18 @@ def _mode_integrals(half: FloatArray, orders: IntArray, modes: int) -> FloatArra
     Even modes: cos(k pi x / opening), their integral is real; odd modes: sin, their integral is
     -j times the number returned. The factor -j is absorbed in the odd unknowns.
     """
-    wave = 0.5 * np.arange(modes + 1)  # times pi, per half-angle
-    swing = (half[:, None, None] * orders / np.pi)[..., None]
-    minus, plus = np.sinc(wave - swing), np.sinc(wave + swing)
+    wave = 0.5 * np.pi * np.arange(modes + 1)
+    swing = half[:, None, None] * orders
+    # sin(wave -+ swing) by the addition theorem: the sine of so many numbers takes long.
+    along = np.multiply.outer(np.cos(swing), np.sin(wave))
+    across = np.multiply.outer(np.sin(swing), np.cos(wave))
+    minus, plus = (
+        np.where(np.abs(argument) < SMALL, 1.0, sine / np.where(argument == 0.0, 1.0, argument))
+        for argument, sine in (
+            (wave - swing[..., None], along - across),
+            (wave + swing[..., None], along + across),
+        )
+    )
     even = np.arange(modes + 1) % 2 == 0
     scale = half[:, None, None, None]
     return np.asarray(scale * np.where(even, minus + plus, minus - plus))

@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from evaluators.analytic import losses, rotor_state
+from evaluators.analytic.answers import Answers
 from evaluators.analytic.gap import GapField, Iron, SlottedGap, with_stator
 from evaluators.analytic.linkage import Linkage
 from evaluators.analytic.motion import Motion, move
@@ -18,11 +19,12 @@ from evaluators.analytic.saturation import (
     Paths,
     SaturatedIron,
     Steels,
+    at_core,
     core_peak,
-    fundamental_at_core,
     saturate,
 )
 from evaluators.analytic.slots import SlotMouth, mouth
+from evaluators.analytic.tips import ToothTips
 from evaluators.analytic.waves import PerfectStator, Waves
 from evaluators.machine.field import Excitation, FieldSolution
 from evaluators.machine.geometry.cross_sections import CrossSections
@@ -30,6 +32,15 @@ from evaluators.machine.task.task import Task
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
+
+
+@dataclass(frozen=True)
+class RotorState:
+    """Stiffness in N/m per m, largest density of the core and lowest of the magnets in T, (n,)."""
+
+    stiffness: FloatArray
+    core: FloatArray
+    magnet: FloatArray
 
 
 MAGNETIC_FROM = 0.1  # T at 1 kA/m: any ferritic steel is far above, any austenitic one far below
@@ -133,9 +144,10 @@ class AnalyticModel:
         core = replace(iron.main, tooth=perfect.tooth, yoke=perfect.yoke)
         admittance = core.core_admittance(self.recoil, magnet_orders)
         smooth = source(radii, *magnetised, magnet_orders, admittance)
-        for_slots = for_slots.with_iron(core)
+        tips = ToothTips.of(sections)
+        for_slots = for_slots.with_iron(core, tips)
         reaction_of = for_slots.reaction
-        magnets = for_magnets.with_iron(core).of_magnets(smooth.bore)
+        magnets = for_magnets.with_iron(core, tips).of_magnets(smooth.bore)
         under_magnets = reaction_of.of(magnet_orders % slots)
         main = iron.main.stator_voltage(slots, magnet_orders)
         saturated = with_stator(magnets, under_magnets, main)
@@ -144,6 +156,7 @@ class AnalyticModel:
         driven = unit.times(MU_0 * np.conj(phasor)[:, None] * current)
         under_control = reaction_of.of(control)
         suspension = under_control.times(MU_0 * control_current)
+        tip = for_slots.tip_reaction()
         waves = Waves(
             magnets=saturated,
             current=with_stator(driven, unit, iron.main.stator_voltage(slots, residues)),
@@ -151,8 +164,11 @@ class AnalyticModel:
                 suspension, under_control, iron.small.stator_voltage(slots, control)
             ),
             slot=slot,
+            tips=tips,
             phasor=phasor,
-            perfect=PerfectStator(magnets, driven, suspension, reaction_of),
+            perfect=PerfectStator(
+                magnets, driven, suspension, reaction_of, tip, Answers.of(for_slots, tip)
+            ),
         )
         return waves, smooth, iron
 
@@ -168,16 +184,13 @@ class AnalyticModel:
         perfect: Iron,
         reaction: FloatArray,
     ) -> Paths:
-        fundamental = at_order(magnets, self.rotation.pole_pairs)
-        current = at_order(driven, self.rotation.pole_pairs)
         order = np.array([self.rotation.pole_pairs])
-        at_core = fundamental_at_core(
+        field = at_core(
             radii,
-            fundamental,
-            smooth.bore[:, 0],
-            smooth.core[:, 0],
-            current,
-            self.rotation.pole_pairs,
+            order,
+            at_order(magnets, self.rotation.pole_pairs)[:, None],
+            MagnetSource(bore=smooth.bore[:, :1], core=smooth.core[:, :1]),
+            at_order(driven, self.rotation.pole_pairs),
             perfect.core_admittance(self.recoil, order),
         )
         teeth, yoke = self.linkage.iron_flux(magnets, driven, phasor, slot, self.rotation)
@@ -188,7 +201,7 @@ class AnalyticModel:
             reaction=reaction,
             tooth_peak=np.abs(teeth).max(axis=(1, 2)) / sections.tooth_width,
             yoke_peak=np.abs(yoke).max(axis=(1, 2)) / sections.yoke_thickness,
-            core_peak=core_peak(sections, at_core, self.steels)[1],
+            core_peak=core_peak(sections, field[:, 0], self.steels),
         )
 
     def motion(
@@ -198,6 +211,54 @@ class AnalyticModel:
         if positions is None:
             positions = self.rotation.positions(self.resolution.positions)
         return move(self.rotation, self.steels.stator, sections, waves, positions)
+
+    def _rotor_state(
+        self, sections: CrossSections, waves: Waves, smooth: MagnetSource, iron: SaturatedIron
+    ) -> RotorState:
+        """Stiffness and densities of the rotor."""
+        rotation, orders = self.rotation, self.rotation.magnet_orders
+        radii = RotorRadii.of(sections, self.recoil)
+        core = replace(iron.main, tooth=0.0 * iron.main.tooth, yoke=0.0 * iron.main.yoke)
+        parallel = self.task.construction.magnetisation == "parallel"
+        beside = SlottedGap(
+            radii,
+            sections.slot_opening_angle,
+            waves.slot,
+            rotation.slots,
+            rotor_state.beside(orders),
+            self.reach,
+            core,
+        )
+        still = at_core(
+            radii,
+            orders,
+            np.stack([at_order(waves.magnets, int(n), k) for k, n in enumerate(orders)], axis=1),
+            smooth,
+            at_order(waves.current, rotation.pole_pairs),
+            core.core_admittance(self.recoil, orders),
+        )
+        wide = np.arange(rotation.pole_pairs, rotation.edge_order + 1, 2 * rotation.pole_pairs)
+        magnetised = magnetisation(
+            sections.magnet_arc_ratio,
+            self.remanence,
+            rotation.pole_pairs,
+            wide,
+            self.task.construction.magnetisation,
+        )
+        alone = source(radii, *magnetised, wide, core.core_admittance(self.recoil, wide))
+        return RotorState(
+            stiffness=rotor_state.stiffness_of(beside, waves.magnets, orders, iron.main),
+            core=rotor_state.core_density(sections, orders, still, self.steels.shaft_magnetic),
+            magnet=rotor_state.lowest_magnet_density(
+                sections,
+                waves.magnets,
+                waves.current,
+                wide,
+                alone.bore,
+                self.recoil,
+                self.remanence if parallel else None,
+            ),
+        )
 
     # -- everything ---------------------------------------------------------------------------
 
@@ -211,17 +272,8 @@ class AnalyticModel:
         error = np.abs(np.abs(forces) - np.abs(mean_force)) / np.abs(mean_force)
         angle = np.abs(np.angle(forces * np.conj(mean_force)))
 
-        radii = RotorRadii.of(sections, self.recoil)
         pole_pairs = self.rotation.pole_pairs
-        at_core = fundamental_at_core(
-            radii,
-            at_order(waves.magnets, pole_pairs),
-            smooth.bore[:, 0],
-            smooth.core[:, 0],
-            at_order(waves.current, pole_pairs),
-            pole_pairs,
-            iron_state.main.core_admittance(self.recoil, np.array([pole_pairs])),
-        )
+        rotor = self._rotor_state(sections, waves, smooth, iron_state)
         slot, linkage = waves.slot, self.linkage
         iron = losses.iron(
             self.task, self.rotation, linkage, sections, waves, exciting, self.stacking
@@ -238,9 +290,7 @@ class AnalyticModel:
             force_error_magnitude=error.max(axis=(1, 2)),
             force_error_angle=angle.max(axis=(1, 2)),
             force_per_ampere_turn=motion.force_per_ampere_turn,
-            displacement_stiffness=rotor_state.stiffness_of(
-                sections, waves.magnets, self.rotation.magnet_orders
-            ),
+            displacement_stiffness=rotor.stiffness,
             # The part a quarter period behind the current, which makes the EMF and the torque.
             flux_linkage=np.real(
                 1j * motion.linkage * np.conj(waves.phasor) / np.abs(waves.phasor)
@@ -257,15 +307,8 @@ class AnalyticModel:
             / sections.bore_radius,
             tooth_flux_density=(motion.tooth_flux + iron.tooth_extra) / sections.tooth_width,
             yoke_flux_density=(motion.yoke_flux + iron.yoke_extra) / sections.yoke_thickness,
-            core_flux_density=core_peak(sections, at_core, self.steels)[0],
-            magnet_flux_density=rotor_state.lowest_magnet_density(
-                sections,
-                waves.magnets,
-                waves.current,
-                self.rotation.magnet_orders,
-                self.recoil,
-                self.remanence if self.task.construction.magnetisation == "parallel" else None,
-            ),
+            core_flux_density=rotor.core,
+            magnet_flux_density=rotor.magnet,
             loss_teeth=iron.teeth.total,
             loss_yoke=iron.yoke.total,
             loss_magnet=eddy.magnet.sum(axis=1),

@@ -13,6 +13,7 @@ from evaluators.analytic.network import CircuitState, StatorCircuit
 from evaluators.analytic.rotation import Rotation
 from evaluators.analytic.rotor import MU_0
 from evaluators.analytic.slots import SlotMouth
+from evaluators.analytic.tips import PLACES, WEIGHTS
 from evaluators.analytic.waves import Waves
 from evaluators.machine.field import Excitation
 from evaluators.machine.geometry.cross_sections import CrossSections
@@ -21,6 +22,9 @@ from evaluators.machine.winding.winding import Connection
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
+
+
+PHASORS = (1.0, 1.0j)  # of the suspension current, as far as forces are linear in it
 
 
 @dataclass(frozen=True)
@@ -94,51 +98,48 @@ def move(
 ) -> Motion:
     """Torque and force of n designs at rotor `positions` (k,), rad."""
     perfect, bore = waves.perfect, sections.bore_radius
-    # A voltage lost around a slot weakens the leakage across it as a current would.
-    leakage = np.reshape(waves.slot.yoke_permeance, (-1, 1, 1)) * np.eye(rotation.slots)
-    answer = network.circulant(np.real(perfect.reaction.slot)) + leakage
-    state = _saturate(rotation, curve, sections, waves, answer, positions)
+    state = _saturate(rotation, curve, sections, waves, positions)
 
     turning = np.exp(1j * rotation.magnet_exponents[:, None] * positions)
     pair = np.exp(1j * rotation.pole_pairs * np.array([-1.0, 1.0])[:, None] * positions)
-    reaction = rotation.by_order(perfect.reaction)
+    reaction = tuple(part[:, :, None] for part in rotation.by_order(perfect.reaction))
+    orders = np.arange(1, rotation.highest_order + 1)
+    behind = tuple(part[:, :, None] for part in rotation.by_order(perfect.tip))
+    # The mirror image: the slot's axis lies half a pitch from the angle zero.
+    mirror = np.exp(-2j * np.pi * orders / rotation.slots)[:, None]
+    before = tuple(np.conj(part) * mirror for part in behind)
 
-    def iron(lost: FloatArray) -> tuple[ComplexArray, ComplexArray]:
-        """Field of the voltage that the iron takes, a current against it."""
-        orders = np.arange(1, rotation.highest_order + 1)
-        spectrum = np.fft.fft(lost, axis=2)[:, :, orders % rotation.slots] / -rotation.slots
-        wave = np.swapaxes(spectrum, 1, 2)
-        return reaction[0][:, :, None] * wave, reaction[1][:, :, None] * wave
+    def iron(lost: FloatArray, tips_lost: FloatArray) -> tuple[ComplexArray, ComplexArray]:
+        """Field of the voltages that the iron takes, a current against them."""
+        current = lost + tips_lost.sum(axis=3)
+        terms = [
+            np.swapaxes(np.fft.fft(part, axis=2)[:, :, orders % rotation.slots], 1, 2)
+            for part in (current, tips_lost[..., 0], tips_lost[..., 1])
+        ]
+        rising, falling = (
+            (terms[1] * ahead + terms[2] * after - terms[0] * own) / rotation.slots
+            for own, ahead, after in zip(reaction, before, behind, strict=True)
+        )
+        return rising, falling
 
     rising, falling = (
         magnets @ turning + current @ pair + taken
         for magnets, current, taken in zip(
             rotation.dense(perfect.magnets),
             rotation.pair(perfect.current),
-            iron(state.lost),
+            iron(state.lost, state.tips_lost),
             strict=True,
         )
     )
 
     control = rotation.pair(perfect.suspension)
-    phasors = (1.0, 1.0j)
-    own = [
-        _slot_currents(rotation, "suspension", positions, np.full(bore.size, i)) for i in phasors
-    ]
-    small = [
-        _potentials(rotation, perfect.suspension, positions, i)
-        + _scaled(waves.slot.yoke_permeance, c)
-        for i, c in zip(phasors, own, strict=True)
-    ]
-    lost = network.small_lost(
-        state, answer, np.stack(small, 3), np.stack([_late(waves.slot, c) for c in own], 3)
-    )
+    lost, tips_lost = _small(rotation, waves, state, positions)
     forces = []
-    for number, phasor in enumerate(phasors):
+    for number, phasor in enumerate(PHASORS):
         # The column of exp(-j p angle) goes with the conjugate of the phasor, the other with it.
         moving = np.array([np.conj(phasor), phasor])[:, None] * pair
         up, down = (part @ moving for part in control)
-        iron_up, iron_down = iron(lost[..., number])
+        iron_up, iron_down = iron(lost[..., number], tips_lost[..., number])
         forces.append(
             stress.force(rising, down + iron_down, bore) + stress.force(up + iron_up, falling, bore)
         )
@@ -162,38 +163,87 @@ def _saturate(
     curve: MagnetizationCurve,
     sections: CrossSections,
     waves: Waves,
-    answer: FloatArray,
     positions: FloatArray,
 ) -> CircuitState:
     """Slot potentials of magnets and torque current; only one period of the slots is solved."""
     period, sign = rotation.slot_period
-    own = _slot_currents(rotation, "torque", positions, waves.phasor)
-    leakage = _scaled(waves.slot.yoke_permeance, own)[:, :, :period]
-
-    def potentials(magnets: GapField, current: GapField) -> FloatArray:
-        turning = np.exp(-1j * rotation.magnet_orders[:, None] * positions)
-        around = np.exp(2j * np.pi * magnets.classes[:, None] * np.arange(period) / rotation.slots)
-        wave = np.swapaxes(magnets.slot[:, :, None] * turning, 1, 2) @ around
-        driven = _potentials(rotation, current, positions, 1.0)[:, :, :period]
-        return np.asarray(2.0 * np.real(wave) + driven + leakage)
-
+    perfect, tips = waves.perfect, waves.tips
+    own = _slot_currents(rotation, "torque", positions, waves.phasor, period)
+    slots, seen = (
+        magnets + current
+        for magnets, current in zip(
+            _standing(rotation, perfect.magnets, positions, period),
+            _turning(rotation, perfect.current, positions, 1.0, period),
+            strict=True,
+        )
+    )
+    leakage = _scaled(waves.slot.yoke_permeance, own)
+    across = _scaled(1.0, own)[..., None, None] * waves.slot.wall_permeance[:, None, None, None, :]
+    # One permeability for teeth and yoke each makes the first guess.
+    start = (
+        _standing(rotation, waves.magnets, positions, period)[0]
+        + _turning(rotation, waves.current, positions, 1.0, period)[0]
+        + leakage
+    )
+    width = (PLACES[-1] - PLACES[0]) * tips.angle * sections.bore_radius
     state = network.solve(
-        StatorCircuit.of(sections, curve),
-        network.fold(answer, period, sign),
-        potentials(waves.perfect.magnets, waves.perfect.current),
-        potentials(waves.magnets, waves.current),
+        StatorCircuit.of(sections, tips, perfect.answers.profile, curve),
+        perfect.answers.fold(period, sign),
+        network.Sources(
+            slots=slots + leakage,
+            tips=seen[..., :-1] + across,
+            faces=seen[..., -1] / width[:, None, None, None],
+            late=_late(waves.slot, own, sign),
+        ),
+        start,
         sign,
-        _late(waves.slot, own)[:, :, :period],
     )
     return network.unfold(state, rotation.slots, sign)
 
 
+def _small(
+    rotation: Rotation, waves: Waves, state: CircuitState, positions: FloatArray
+) -> tuple[FloatArray, FloatArray]:
+    """Voltages that one ampere-turn of either suspension phasor loses.
+
+    Around all slots (n, k, Q, 2) and along their flanges (n, k, Q, 2, 2).
+    """
+    period, sign = rotation.suspension_period
+    slots, tips, late = [], [], []
+    for phasor in PHASORS:
+        turned = np.full(waves.phasor.shape, phasor)
+        own = _slot_currents(rotation, "suspension", positions, turned, period)
+        potential, seen = _turning(rotation, waves.perfect.suspension, positions, phasor, period)
+        leak = _scaled(waves.slot.wall_permeance @ WEIGHTS, own)
+        slots.append(potential + _scaled(waves.slot.yoke_permeance, own))
+        tips.append(seen[..., :-1] @ WEIGHTS + leak[..., None])
+        late.append(_late(waves.slot, own, sign))
+    lost, tips_lost = network.small_lost(
+        state,
+        waves.perfect.answers.fold(period, sign),
+        np.stack(slots, axis=-1),
+        np.stack(tips, axis=-1),
+        np.stack(late, axis=-1),
+        sign,
+    )
+    repeats = rotation.slots // period
+    signs = np.repeat(float(sign) ** np.arange(repeats), period)[:, None]
+    return (
+        np.tile(lost, (1, 1, repeats, 1)) * signs,
+        np.tile(tips_lost, (1, 1, repeats, 1, 1)) * signs[:, None],
+    )
+
+
 def _slot_currents(
-    rotation: Rotation, connection: Connection, positions: FloatArray, phasor: ComplexArray
+    rotation: Rotation,
+    connection: Connection,
+    positions: FloatArray,
+    phasor: ComplexArray,
+    count: int,
 ) -> FloatArray:
-    """Currents of the slots for phasors (n,) of ampere-turns, (n, k, Q) A."""
+    """Currents of the first slots for phasors (n,) of ampere-turns, (n, k, count) A."""
     turning = phasor[:, None] * np.exp(1j * rotation.pole_pairs * positions)
-    return np.real(turning[:, :, None] * rotation.winding.slot_mmf(connection))
+    return np.real(turning[:, :, None] * rotation.winding.slot_mmf(connection)[:count])
 
 
 def _scaled(permeance: FloatArray | float, current: FloatArray) -> FloatArray:
@@ -201,10 +251,15 @@ def _scaled(permeance: FloatArray | float, current: FloatArray) -> FloatArray:
     return MU_0 * np.reshape(permeance, (-1, 1, 1)) * current
 
 
-def _late(slot: SlotMouth, current: FloatArray) -> FloatArray:
-    """Leakage that the tooth before each slot carries at its root but not in the mean."""
+def _late(slot: SlotMouth, current: FloatArray, sign: int) -> FloatArray:
+    """Leakage that the tooth before each slot carries at its root but not in the mean.
+
+    Of currents (n, k, q) that repeat with `sign` after q slots.
+    """
     flux = _scaled(np.subtract(slot.yoke_permeance, slot.tooth_permeance), current)
-    return flux - np.roll(flux, 1, axis=2)
+    before = np.roll(flux, 1, axis=2)
+    before[:, :, 0] *= sign
+    return np.asarray(flux - before)
 
 
 def _linkage(
@@ -224,12 +279,36 @@ def _linkage(
     return np.asarray(2.0 / 3.0 * turned.mean(axis=1))
 
 
-def _potentials(
-    rotation: Rotation, field: GapField, positions: FloatArray, phasor: complex
-) -> FloatArray:
-    """Slot potentials of a current field times `phasor`, (n, k, Q) Wb/m."""
-    around = np.exp(
-        2j * np.pi * field.classes[:, None] * np.arange(rotation.slots) / rotation.slots
+def _standing(
+    rotation: Rotation, magnets: GapField, positions: FloatArray, count: int
+) -> tuple[FloatArray, FloatArray]:
+    """What the first slots and their flanges see of the magnets, (n, k, count) and (.., 2, 5)."""
+    slot = np.arange(count)
+    wave = np.exp(
+        1j
+        * (
+            2.0 * np.pi / rotation.slots * magnets.classes[:, None, None] * slot
+            - rotation.magnet_orders[:, None, None] * positions[:, None]
+        )
     )
+    return _seen(magnets, wave)
+
+
+def _turning(
+    rotation: Rotation, field: GapField, positions: FloatArray, phasor: complex, count: int
+) -> tuple[FloatArray, FloatArray]:
+    """The same of a current field times `phasor`."""
+    around = np.exp(2j * np.pi / rotation.slots * field.classes[:, None] * np.arange(count))
     turning = np.conj(phasor) * np.exp(-1j * rotation.pole_pairs * positions)
-    return np.asarray(2.0 * np.real((field.slot @ around)[:, None, :] * turning[None, :, None]))
+    return _seen(field, around[:, None, :] * turning[:, None])
+
+
+def _seen(field: GapField, wave: ComplexArray) -> tuple[FloatArray, FloatArray]:
+    """Twice the real part of slots and tips (n, c, ..) times wave (c, k, q)."""
+    rows, classes = field.slot.shape
+    both = np.concatenate([field.slot[..., None], field.tips.reshape(rows, classes, -1)], axis=2)
+    parts = np.concatenate([both.real, -both.imag], axis=1).swapaxes(1, 2)
+    flat = np.concatenate([wave.real, wave.imag]).reshape(2 * classes, -1)
+    seen = (2.0 * (parts @ flat)).reshape(rows, -1, *wave.shape[1:])
+    tips = np.moveaxis(seen[:, 1:].reshape(rows, 2, -1, *wave.shape[1:]), (1, 2), (3, 4))
+    return np.asarray(seen[:, 0]), np.asarray(tips)

@@ -52,6 +52,11 @@ class Rotation:
         """p."""
         return self.winding.family.pole_pairs
 
+    @cached_property
+    def edge_order(self) -> int:
+        """Highest order summed for the density at the edges of the magnets: six a slot pitch."""
+        return max(6 * self.slots, 3 * self.pole_pairs)
+
     def current_residues(self, connection: Connection) -> tuple[IntArray, ComplexArray]:
         """Fourier residues of the slot currents that vary as exp(-j p angle).
 
@@ -149,6 +154,23 @@ class Rotation:
         """After how many slots the field of magnets and torque current repeats, and its sign."""
         number = gcd(self.slots, 2 * self.pole_pairs)
         return self.slots // number, -1 if (2 * self.pole_pairs // number) % 2 else 1
+
+    @cached_property
+    def suspension_period(self) -> tuple[int, int]:
+        """After how many slots the suspension currents repeat, and their sign.
+
+        A multiple of `slot_period`, so that the saturation repeats too.
+        """
+        current = self.winding.slot_mmf("suspension")
+        small = CANCELLED * float(np.abs(current).max())
+        period = self.slot_period[0]
+        for number in range(period, self.slots, period):
+            if self.slots % number == 0:
+                turned = np.roll(current, -number)
+                for sign in (1, -1):
+                    if np.allclose(turned, sign * current, rtol=0.0, atol=small):
+                        return number, sign
+        return self.slots, 1
 
     # -- dense coefficients ----------------------------------------------------------------
 

@@ -16,7 +16,15 @@ import numpy as np
 from numpy.typing import NDArray
 
 from evaluators.analytic.gap import Iron
-from evaluators.analytic.rotor import MU_0, RotorRadii, core_share, response, source
+from evaluators.analytic.network import YokePath
+from evaluators.analytic.rotor import (
+    MU_0,
+    MagnetSource,
+    RotorRadii,
+    core_share,
+    response,
+    source,
+)
 from evaluators.machine.geometry.cross_sections import CrossSections
 from evaluators.machine.materials.magnetization import MagnetizationCurve
 
@@ -108,8 +116,7 @@ def saturate(
     perfect = np.abs(paths.magnet + paths.current)
     slots = sections.family.slots
     tooth_shape = (sections.slot_radius - sections.bore_radius) / sections.tooth_width
-    yoke_radius = 0.5 * (sections.slot_radius + sections.outer_radius)
-    yoke_shape = 2.0 * np.pi * yoke_radius / slots / sections.yoke_thickness
+    behind = YokePath.of(sections)
     smooth_source = source(radii, *magnetisation, order, np.zeros_like(magnetisation[0])).bore[:, 0]
     smooth_response = response(radii, order, np.zeros_like(magnetisation[0]))[:, 0]
     zero = np.zeros_like(perfect)
@@ -119,10 +126,13 @@ def saturate(
         reluctivity = mean_differential_reluctivity if small else secant_reluctivity
         tooth = reluctivity(steels.stator, share * paths.tooth_peak)
         yoke = reluctivity(steels.stator, share * paths.yoke_peak)
+        root = reluctivity(steels.stator, share * behind.spread * paths.yoke_peak)
         core = reluctivity(steels.rotor, share * paths.core_peak)
         return Iron(
             tooth=MU_0 * tooth * tooth_shape,
-            yoke=MU_0 * yoke * yoke_shape,
+            yoke=MU_0
+            * (yoke * behind.slot + root * behind.spread * behind.root)
+            / sections.yoke_thickness,
             core_permeability=1.0 / (MU_0 * core),
             core_ratio=hole,
         )
@@ -147,17 +157,11 @@ def saturate(
     return SaturatedIron(main=iron(share, small=False), small=iron(share, small=True), share=share)
 
 
-def core_peak(
-    sections: CrossSections, at_core: ComplexArray, steels: Steels
-) -> tuple[FloatArray, FloatArray]:
-    """Flux densities of the rotor core from the fundamental of A at its surface, (n,) complex.
+def core_peak(sections: CrossSections, at_core: ComplexArray, steels: Steels) -> FloatArray:
+    """Density that the core's permeability is taken at from the fundamental of A there, (n,) T.
 
-    Returns
-    -------
-    mean, effective : arrays (n,), T
-        Mean over the thickness that carries flux (the shaft too, if magnetic); mean of that and
-        the density at the surface of a core of uniform permeability, n coth(n ln(Ro/Ri)) / Ro per
-        potential, which the core's permeability is taken at.
+    Mean of that over the thickness that carries flux (the shaft too, if magnetic) and of that at
+    the surface of a core of uniform permeability, n coth(n ln(Ro/Ri)) / Ro per potential.
     """
     outer = sections.core_radius
     inner = np.zeros_like(outer) if steels.shaft_magnetic else sections.shaft_radius
@@ -165,19 +169,31 @@ def core_peak(
     order = sections.family.pole_pairs
     with np.errstate(divide="ignore"):
         surface = order / np.tanh(order * np.log(outer / inner)) / outer
-    mean = flux / (outer - inner)
-    return np.asarray(mean), np.asarray(0.5 * (mean + flux * surface))
+    return np.asarray(0.5 * (flux / (outer - inner) + flux * surface))
 
 
-def fundamental_at_core(
+def at_core(
     radii: RotorRadii,
+    orders: NDArray[np.int64],
     magnets: ComplexArray,
-    smooth_bore: ComplexArray,
-    smooth_core: ComplexArray,
+    smooth: MagnetSource,
     current: ComplexArray,
-    pole_pairs: int,
     core: FloatArray,
 ) -> ComplexArray:
-    """Fundamental of A at the core from the slotted field at the bore, (n,) complex each."""
-    share = core_share(radii, np.array([pole_pairs]), core)[:, 0]
-    return np.asarray(smooth_core + share * (magnets - smooth_bore + current))
+    """A at the core that stands still in the rotor, by magnet order, (n, v).
+
+    Parameters
+    ----------
+    orders : array (v,)
+    magnets : array (n, v)
+        Slotted field at the bore.
+    smooth : MagnetSource
+        Of the same orders.
+    current : array (n,)
+        Fundamental of the torque current at the bore.
+    core : array (n, v)
+        Core admittance.
+    """
+    slotted = magnets - smooth.bore
+    slotted[:, 0] += current
+    return np.asarray(smooth.core + core_share(radii, orders, core) * slotted)

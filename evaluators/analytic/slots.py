@@ -21,12 +21,14 @@ from numpy.typing import NDArray
 from scipy.integrate import quad_vec
 from scipy.linalg import expm
 
+from evaluators.analytic.tips import PLACES
 from evaluators.machine.geometry.cross_sections import CrossSections
 
 FloatArray = NDArray[np.float64]
 
 TIP_STEPS = 3
 WEDGE_STEPS = 6
+WALL_STEPS = tuple(np.rint(WEDGE_STEPS * (1.0 - PLACES)).astype(int))
 BODY_NODES = 16
 
 
@@ -50,13 +52,18 @@ class SlotMouth:
     tooth_permeance, yoke_permeance : arrays (n,)
         The same for A along the tooth body, mean over its length, and at the slot bottom: what a
         slot's own current adds to the flux of the teeth beside it and of the yoke behind it.
+    wall, wall_permeance : arrays (n, 4, K) and (n, 4)
+        Of A on the slot's wall at depths of `evaluators.analytic.tips.PLACES`: what f and mu0 I add
+        to the winding's A less the slot's own leakage; odd modes with the sign of the wall behind.
     """
 
     compliance: FloatArray
     current_share: FloatArray
     permeance: FloatArray
-    tooth_permeance: FloatArray | float = 0.0
-    yoke_permeance: FloatArray | float = 0.0
+    tooth_permeance: FloatArray
+    yoke_permeance: FloatArray
+    wall: FloatArray
+    wall_permeance: FloatArray
 
 
 def mouth(sections: CrossSections, modes: int) -> SlotMouth:
@@ -71,6 +78,9 @@ def mouth(sections: CrossSections, modes: int) -> SlotMouth:
     permeance = body.winding.copy()
     identity = np.eye(modes)
 
+    order = np.arange(1, modes + 1)
+    at_wall = np.where(order % 2 == 0, (-1.0) ** (order // 2), (-1.0) ** ((order - 1) // 2))
+    depths, back = [], []
     edges = _edges(sections)
     half_angle = 0.5 * sections.slot_angle(edges)
     for step in range(edges.shape[1] - 1):
@@ -78,7 +88,9 @@ def mouth(sections: CrossSections, modes: int) -> SlotMouth:
         middle = np.sqrt(outer * inner)[:, None]
         angle = 0.5 * sections.slot_angle(middle)[:, 0]
         length = np.log(outer / inner) / angle
-        compliance, share, gain = _widen(
+        if step in WALL_STEPS:
+            depths.append((step, compliance, share, permeance.copy()))
+        compliance, share, gain, first, first_driven = _widen(
             compliance, share, np.log(angle / half_angle[:, step]), modes
         )
         permeance += gain
@@ -89,13 +101,34 @@ def mouth(sections: CrossSections, modes: int) -> SlotMouth:
         top = compliance + (tanh / decay)[:, :, None] * identity
         transposed = np.swapaxes(divisor, 1, 2)
         behind = share
+        into = np.linalg.inv(divisor)
         share = np.linalg.solve(transposed, share[:, :, None])[:, :, 0] / cosh
         permeance += 0.5 * length - np.sum(behind * decay * tanh * cosh * share, axis=1)
         compliance = np.swapaxes(np.linalg.solve(transposed, np.swapaxes(top, 1, 2)), 1, 2)
-        compliance, share, gain = _widen(
+        compliance, share, gain, second, second_driven = _widen(
             compliance, share, np.log(half_angle[:, step + 1] / angle), modes
         )
         permeance += gain
+        straight = first @ into / cosh[:, None, :]
+        kept = (first @ into @ (decay * tanh * behind)[:, :, None])[..., 0]
+        back.append(
+            (
+                straight @ second,
+                kept - (straight @ second_driven[:, :, None])[..., 0] - first_driven,
+            )
+        )
+    wall, wall_permeance = [], []
+    whole, added = np.broadcast_to(identity, compliance.shape), np.zeros((rows, modes))
+    for step in range(len(back) - 1, -1, -1):
+        matrix, own = back[step]
+        whole, added = matrix @ whole, (matrix @ added[:, :, None])[..., 0] + own
+        if depths and depths[-1][0] == step:
+            _, there, shared, passed = depths.pop()
+            weight = shared - there @ at_wall
+            wall.append((weight[:, None, :] @ whole)[:, 0])
+            wall_permeance.append(
+                permeance - passed + shared @ at_wall + np.sum(weight * added, axis=1)
+            )
     compliance = 0.5 * (compliance + np.swapaxes(compliance, 1, 2))
     through_mouth = permeance - body.winding
     return SlotMouth(
@@ -104,6 +137,8 @@ def mouth(sections: CrossSections, modes: int) -> SlotMouth:
         permeance=permeance,
         tooth_permeance=through_mouth + body.tooth,
         yoke_permeance=through_mouth + body.yoke,
+        wall=np.stack(wall, axis=1),
+        wall_permeance=np.stack(wall_permeance, axis=1),
     )
 
 
@@ -155,7 +190,7 @@ def _body(sections: CrossSections) -> _Body:
 
 def _widen(
     compliance: FloatArray, share: FloatArray, stretch: FloatArray, modes: int
-) -> tuple[FloatArray, FloatArray, FloatArray]:
+) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray, FloatArray]:
     """Change of channel width by exp(stretch), (n,), going inwards, applied to the answer.
 
     Currents map as f' = B f + d f_0, so the potentials map by the inverse transpose: a = B^T a'
@@ -176,7 +211,7 @@ def _widen(
     compliance = np.swapaxes(back, 1, 2) @ compliance @ back
     inside = np.einsum("nji,nj->ni", back, raised)
     gain = np.sum(share * returned + inside * driven, axis=1)
-    return compliance, inside, gain
+    return compliance, inside, gain, back, returned
 
 
 @lru_cache(maxsize=8)

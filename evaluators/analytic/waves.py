@@ -7,8 +7,10 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from evaluators.analytic.answers import Answers
 from evaluators.analytic.gap import GapField
 from evaluators.analytic.slots import SlotMouth
+from evaluators.analytic.tips import ToothTips
 
 ComplexArray = NDArray[np.complex128]
 
@@ -18,14 +20,16 @@ class PerfectStator:
     """Gap fields of n designs under perfect teeth and yoke, with the rotor core as it is.
 
     `magnets` has one class per magnet order; the others have the Q residues of the slots. The
-    suspension field is that of phasor one, per ampere-turn; `reaction` is as of
-    `evaluators.analytic.gap.SlottedGap.reaction`.
+    suspension field is that of phasor one, per ampere-turn; `reaction` and `tip` are as of
+    `evaluators.analytic.gap.SlottedGap.reaction` and `tip_reaction`.
     """
 
     magnets: GapField
     current: GapField
     suspension: GapField
     reaction: GapField
+    tip: GapField
+    answers: Answers
 
 
 @dataclass(frozen=True)
@@ -40,5 +44,6 @@ class Waves:
     current: GapField
     suspension: GapField
     slot: SlotMouth
+    tips: ToothTips
     phasor: ComplexArray
     perfect: PerfectStator

@@ -7,6 +7,7 @@ from dataclasses import replace
 import machines
 import numpy as np
 import pytest
+from numpy.typing import NDArray
 from outside import OutsideChecks
 
 from evaluators.analytic.gap import GapField
@@ -14,10 +15,26 @@ from evaluators.analytic.rotor import MU_0, RotorRadii, magnetisation, source
 from evaluators.analytic.rotor_state import displacement_stiffness, lowest_magnet_density
 from evaluators.machine.geometry.cross_sections import CrossSections
 
+FloatArray = NDArray[np.float64]
+
 check = OutsideChecks("force")
 check_magnets = OutsideChecks(
     "demagnetisation", "Furlani, Permanent Magnet and Electromechanical Devices, 2001"
 )
+
+NO_TIPS = np.zeros((1, 1, 2, 0), dtype=complex)
+UNUSED = np.zeros((1, 23), dtype=complex)  # as many orders as the field has classes
+
+
+def smooth_gap(core: float, bore: float, order: int, density: float) -> FloatArray:
+    """Stiffness between perfect cylinders with one order of the given density at the bore."""
+    size = np.array([[0.25 * density * bore / order]])
+    depth = np.log(bore / core)
+    eta = [np.array([[np.tanh(near * depth) if near else 1.0]]) for near in (order - 1, order + 1)]
+    one = np.ones((1, 1))
+    return displacement_stiffness(
+        np.array([bore]), np.array([order]), size, size, (eta[0], eta[1]), (one, one)
+    )
 
 
 @pytest.mark.parametrize(
@@ -25,9 +42,7 @@ check_magnets = OutsideChecks(
 )
 def test_exact_stiffness_with_curvature(pole_pairs: int, density: float, expected: float) -> None:
     # Rr = 20, Rs = 25 mm, fundamental only.
-    found = displacement_stiffness(
-        np.array([20e-3]), np.array([25e-3]), np.array([pole_pairs]), np.array([[density]])
-    )
+    found = smooth_gap(20e-3, 25e-3, pole_pairs, density)
     check(
         "stiffness of a displaced rotor, magnets' fundamental",
         found[0],
@@ -43,9 +58,7 @@ def test_exact_stiffness_with_curvature(pole_pairs: int, density: float, expecte
 def test_thin_gap_limit(order: int) -> None:
     # Half of it for two poles without a homopolar path.
     gap, radius, density = 1e-6, 25e-3, 0.8
-    found = displacement_stiffness(
-        np.array([radius - gap]), np.array([radius]), np.array([order]), np.array([[density]])
-    )
+    found = smooth_gap(radius - gap, radius, order, density)
     thin = np.pi * radius * density**2 / (2.0 * MU_0 * gap) * (0.5 if order == 1 else 1.0)
     check(
         "stiffness of a displaced rotor in a thin gap",
@@ -81,12 +94,12 @@ def smooth_field(sections: CrossSections, direction: str, recoil: float) -> GapF
     rotor = RotorRadii.of(sections, recoil)
     parts = magnetisation(sections.magnet_arc_ratio, 1.2, 1, orders, direction)
     bore = source(rotor, *parts, orders, np.zeros((1, orders.size))).bore[:, :, None]
-    return GapField(orders, orders[:, None], 0.5 * bore, 0.5 * bore, bore[:, :, 0])
+    return GapField(orders, orders[:, None], 0.5 * bore, 0.5 * bore, bore[:, :, 0], NO_TIPS)
 
 
 def no_current() -> GapField:
     zero = np.zeros((1, 1, 1), dtype=complex)
-    return GapField(np.array([1]), np.array([[1]]), zero, zero, zero[:, :, 0])
+    return GapField(np.array([1]), np.array([[1]]), zero, zero, zero[:, :, 0], NO_TIPS)
 
 
 def test_uniform_density_of_a_diametral_cylinder() -> None:
@@ -99,6 +112,7 @@ def test_uniform_density_of_a_diametral_cylinder() -> None:
         smooth_field(sections, "parallel", 1.0),
         no_current(),
         np.arange(1, 46, 2),
+        UNUSED,
         1.0,
         1.2,
     )
@@ -119,6 +133,7 @@ def test_recoil_permeability_lowers_it() -> None:
         smooth_field(sections, "parallel", 1.05),
         no_current(),
         np.arange(1, 46, 2),
+        UNUSED,
         1.05,
         1.2,
     )
@@ -137,14 +152,14 @@ def test_current_against_the_magnets_lowers_it() -> None:
     sections = two_pole(10e-3, 18e-3, 20e-3, arc=0.8)
     orders = np.arange(1, 46, 2)
     magnets = smooth_field(sections, "radial", 1.05)
-    alone = lowest_magnet_density(sections, magnets, no_current(), orders, 1.05, None)
+    alone = lowest_magnet_density(sections, magnets, no_current(), orders, UNUSED, 1.05, None)
     part = -0.1 * magnets.rising[:, :1]
-    against = GapField(np.array([1]), np.array([[1]]), part, part, part[:, :, 0])
-    loaded = lowest_magnet_density(sections, magnets, against, orders, 1.05, None)
+    against = GapField(np.array([1]), np.array([[1]]), part, part, part[:, :, 0], NO_TIPS)
+    loaded = lowest_magnet_density(sections, magnets, against, orders, UNUSED, 1.05, None)
     left = magnets.rising.copy()
     left[:, 0] *= 0.9
     weaker = replace(magnets, rising=left, falling=left)
-    expected = lowest_magnet_density(sections, weaker, no_current(), orders, 1.05, None)
+    expected = lowest_magnet_density(sections, weaker, no_current(), orders, UNUSED, 1.05, None)
     assert loaded[0] == pytest.approx(expected[0], rel=1e-12)
     assert loaded[0] < alone[0]
 
@@ -156,8 +171,10 @@ def test_tangential_field_crosses_the_surface_as_h() -> None:
     """
     sections = two_pole(10e-3, 18e-3, 20e-3, arc=0.5)
     rising = np.array([[[-4e-3j]]])
-    field = GapField(np.array([1]), np.array([[1]]), rising, 0.0 * rising, rising[:, :, 0])
-    found = lowest_magnet_density(sections, field, no_current(), np.array([1]), 1.3, 0.9)
+    field = GapField(np.array([1]), np.array([[1]]), rising, 0.0 * rising, rising[:, :, 0], NO_TIPS)
+    found = lowest_magnet_density(
+        sections, field, no_current(), np.array([1]), UNUSED[:, :1], 1.3, 0.9
+    )
     angle = 0.25 * np.pi * np.linspace(-0.98, 0.98, 25)
     # A = 8e-3 (r/R) sin(theta): a uniform field of 0.4 T along the axis.
     normal, across = 0.4 * np.cos(angle), -0.4 * np.sin(angle)
@@ -167,7 +184,13 @@ def test_tangential_field_crosses_the_surface_as_h() -> None:
     assert found[0] == pytest.approx(along.min(), rel=1e-12)
     # Against the magnet the edges lie lowest, where mu_r counts.
     found = lowest_magnet_density(
-        sections, replace(field, rising=-rising), no_current(), np.array([1]), 1.3, 0.1
+        sections,
+        replace(field, rising=-rising),
+        no_current(),
+        np.array([1]),
+        UNUSED[:, :1],
+        1.3,
+        0.1,
     )
     along = -normal * np.cos(angle) + (1.3 * across + 0.1 * np.sin(angle)) * np.sin(angle)
     assert along.argmin() in (0, 24)

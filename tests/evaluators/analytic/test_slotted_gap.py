@@ -19,7 +19,16 @@ check = OutsideChecks("field")
 def deep_slot(modes: int) -> SlotMouth:
     """A slot with radial walls and no bottom: a mode dies out as exp(-k pi/2 x)."""
     decay = 0.5 * np.pi * np.arange(1, modes + 1)
-    return SlotMouth(np.diag(1.0 / decay)[None], np.zeros((1, modes)), np.zeros(1))
+    zero = np.zeros(1)
+    return SlotMouth(
+        compliance=np.diag(1.0 / decay)[None],
+        current_share=np.zeros((1, modes)),
+        permeance=zero,
+        tooth_permeance=zero,
+        yoke_permeance=zero,
+        wall=np.zeros((1, 4, modes)),
+        wall_permeance=np.zeros((1, 4)),
+    )
 
 
 def smooth_rotor(core: float, bore: float) -> RotorRadii:
@@ -132,7 +141,12 @@ def relative_permeance(
     whole = slotted.of_magnets(smooth[None])
     own = 0.5 * np.where(whole.orders == orders[:, None], smooth[:, None], 0.0)
     slots_alone = GapField(
-        whole.classes, whole.orders, whole.rising - own, whole.falling - own, whole.slot
+        whole.classes,
+        whole.orders,
+        whole.rising - own,
+        whole.falling - own,
+        whole.slot,
+        whole.tips,
     )
     angle = 0.5 * np.pi + np.radians(degrees)
     radial, tangential = density(slots_alone, bore, radius, angle)
