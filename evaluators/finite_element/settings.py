@@ -29,11 +29,11 @@ def read_settings(settings: dict[str, object]) -> Discretisation:
     rotor), ``positions``, ``cogging_positions``, ``orders_per_slot``, ``iron_rings`` (see
     `Discretisation`), ``refinement`` (cells and positions times this), ``cells`` (a table with
     the fields of `Resolution`) and ``rotor`` (``uniform`` or ``separate``: the spaces between the
-    magnets as permeable as these, or non-magnetic, see `separate_magnets`). With ``separate`` torque,
-    forces, losses and linkages have the spaces; displacement stiffness, the nonlinear force curve
-    and the field picture keep the uniform rotor. In the transient analysis every magnet segment
-    conducts on its own with either rotor (`conducting_magnets`); the static one takes the losses of
-    the rotor harmonic by harmonic.
+    magnets as permeable as these, or non-magnetic, see `separate_magnets`). With ``separate``
+    torque, forces, losses and linkages have the spaces; displacement stiffness, the nonlinear force
+    curve and the field picture keep the uniform rotor. In the transient analysis every magnet
+    segment conducts on its own with either rotor (`conducting_magnets`); the static one takes the
+    rotor's losses harmonic by harmonic.
 
     Raises
     ------
