@@ -22,7 +22,7 @@ from optimizer.running.progress import Settings
 
 SCHEMA_VERSION = 1
 # Of the search: raised when the same seed no longer gives the same designs.
-SEARCH_VERSION = "decomposition 1"
+SEARCH_VERSION = "decomposition 2"
 VERSION_KEY = b"optimizer.schema_version"
 IDENTITY_KEY = b"optimizer.identity"
 IDENTITY_NAME = "archive.json"

@@ -23,7 +23,7 @@ class Settings:
     seed : int
         Seed of the search, >= 0.
     population : int, optional
-        Wanted population; default by the number of objectives, about 100.
+        Wanted population; default about 40, from four objectives on about 100.
     chunk : int
         Designs evaluated by one call. Fixed by the study, never by the number of workers,
         because the last bits of an array operation may depend on the length of the array.

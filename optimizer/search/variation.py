@@ -11,7 +11,8 @@ import numpy as np
 from optimizer.problem import BoolArray, FloatArray, IntArray
 
 ETA_CROSSOVER = 20.0  # spread of children about their parents; larger is nearer
-ETA_MUTATION = 20.0
+ETA_MUTATION = 2.0  # the middle, on a logarithmic scale, of what is drawn for each child
+MUTATION_SPREAD = 2.0  # natural logarithm of the largest over the middle one
 DIFFERENCE = 0.5  # factor F of differential evolution
 _SAME = 1e-14  # parents nearer than this have no distance to scale
 
@@ -65,20 +66,25 @@ def polynomial_mutation(
 ) -> FloatArray:
     """Move each variable with probability 1/v; an ``unchanged`` row (n,) moves one at least.
 
-    Deb and Goyal, Computer Science and Informatics 26 (1996) 30-45, within the bounds. A row
-    that is still equal to a parent would pay for the same evaluation twice.
+    Deb and Goyal, Computer Science and Informatics 26 (1996) 30-45, within the bounds, with an
+    index drawn for each child. Steps of every length, short ones far more often than long ones,
+    are those of the breeder genetic algorithm (Muehlenbein and Schlierkamp-Voosen, Evol. Comput.
+    1 (1993) 25-49): a population that has drawn together still leaves a local front. A row that
+    is still equal to a parent would pay for the same evaluation twice.
     """
     rows, variables = x.shape
     u, chance = random.random((2, rows, variables))
+    size = 2.0 * random.random((rows, 1)) - 1.0
     forced = (random.random(rows) * variables).astype(np.int64)
     mutate = chance * variables < 1.0
     mutate[np.flatnonzero(unchanged), forced[unchanged]] = True
-    power = ETA_MUTATION + 1.0
+    power = ETA_MUTATION * np.exp(MUTATION_SPREAD * size) + 1.0
     down = u < 0.5
     room = np.where(down, 1.0 - x, x)
     share = np.where(down, 2.0 * u, 2.0 * (1.0 - u))
     step = 1.0 - (share + (1.0 - share) * room**power) ** (1.0 / power)
-    return np.where(mutate, np.where(down, x - step, x + step), x)
+    moved = np.clip(np.where(down, x - step, x + step), 0.0, 1.0)  # rounding may pass the bound
+    return np.where(mutate, moved, x)
 
 
 def draw_pairs(pools: IntArray, random: np.random.Generator) -> IntArray:

@@ -8,7 +8,9 @@ import numpy as np
 
 from optimizer.problem import FloatArray, IntArray
 
-DEFAULT_POPULATION = 100
+# A small population has more generations among as many evaluations. Four objectives and more
+# need more weights to have one inside the simplex.
+DEFAULT_POPULATION, DEFAULT_FOR_MANY, MANY = 40, 100, 4
 # A component of zero would make an objective of no account for its weight.
 SMALLEST_WEIGHT = 1e-6
 
@@ -27,9 +29,10 @@ def weight_vectors(objectives: int, population: int | None = None) -> FloatArray
     ----------
     objectives : int
     population : int, optional
-        Wanted number, by default 100.
+        Wanted number, by default 40, from four objectives on 100.
     """
-    wanted = DEFAULT_POPULATION if population is None else population
+    default = DEFAULT_POPULATION if objectives < MANY else DEFAULT_FOR_MANY
+    wanted = default if population is None else population
     if objectives == 1:
         return np.ones((wanted, 1))
     # Importing pymoo takes far longer than the rest of this package.

@@ -35,7 +35,12 @@ from optimizer.running.runner import run
 
 BUDGET = 230  # two generations and a part of the third
 SETTINGS = Settings(
-    budget=BUDGET, seed=7, evaluator="toy", evaluator_version="3", labels={"study": "plates"}
+    population=100,
+    budget=BUDGET,
+    seed=7,
+    evaluator="toy",
+    evaluator_version="3",
+    labels={"study": "plates"},
 )
 
 
@@ -148,7 +153,7 @@ def test_a_folder_without_an_archive_is_named(tmp_path):
 
 
 def test_every_changed_byte_of_a_part_is_found(tmp_path, plates):
-    run(plates, tmp_path, Settings(budget=100))
+    run(plates, tmp_path, Settings(budget=100, population=100))
     path = part_paths(tmp_path)[0]
     good = path.read_bytes()
     check_part(path)
@@ -160,7 +165,7 @@ def test_every_changed_byte_of_a_part_is_found(tmp_path, plates):
 
 
 def test_pages_carry_checksums_that_readers_can_verify(tmp_path, plates):
-    run(plates, tmp_path, Settings(budget=100))
+    run(plates, tmp_path, Settings(budget=100, population=100))
     path = part_paths(tmp_path)[0]
     column = pq.ParquetFile(path).metadata.row_group(0).column(2)
     assert column.path_in_schema == "x_mm"
@@ -403,7 +408,7 @@ def test_parts_of_similar_size_are_merged_while_the_run_goes_on(
 
 def test_parts_are_written_about_once_a_second(tmp_path, plates):
     # 100 chunks of a fast evaluation; each as a part of its own would be 100.
-    run(plates, tmp_path, Settings(budget=2_500))
+    run(plates, tmp_path, Settings(budget=2_500, population=100))
     assert len(part_paths(tmp_path)) < 8
 
 

@@ -13,7 +13,7 @@ from optimizer.running.repeats import Repeats
 from optimizer.running.runner import run
 from optimizer.workers.pool import Pool
 
-SETTINGS = Settings(budget=730, seed=5)
+SETTINGS = Settings(budget=730, seed=5, population=100)
 
 
 @pytest.fixture(autouse=True)
@@ -50,7 +50,7 @@ class Counted:
 def test_a_design_is_paid_for_once_and_its_repeats_say_so(tmp_path, failing_plates) -> None:
     counted = Counted(failing_plates)
     # Whole chunks: of one cut by the budget more is evaluated than stored.
-    run(failing_plates, tmp_path, Settings(budget=725, seed=5))
+    run(failing_plates, tmp_path, Settings(budget=725, seed=5, population=100))
     assert len(counted.paid) == len(set(counted.paid)) < 725
     rows = open_archive(tmp_path).table().to_pylist()
     assert len(rows) == 725
@@ -83,7 +83,7 @@ def test_interruptions_change_nothing_and_pay_for_nothing_twice(
     once = set(counted.paid)
     counted.paid.clear()
     for budget in (100, 200, 500, 730):  # whole chunks, which are never evaluated in part
-        run(failing_plates, tmp_path / "pieces", Settings(budget=budget, seed=5))
+        run(failing_plates, tmp_path / "pieces", Settings(budget=budget, seed=5, population=100))
         if not snapshot:
             (tmp_path / "pieces" / "state.npz").unlink()
     assert rows_of(tmp_path / "pieces").equals(rows_of(tmp_path / "whole"))
@@ -93,7 +93,7 @@ def test_interruptions_change_nothing_and_pay_for_nothing_twice(
 @pytest.mark.parametrize("budget", [10, 133, 377])
 def test_budgets_that_end_within_a_chunk(tmp_path, failing_plates, rows_of, budget) -> None:
     run(failing_plates, tmp_path / "whole", SETTINGS)
-    run(failing_plates, tmp_path / "pieces", Settings(budget=budget, seed=5))
+    run(failing_plates, tmp_path / "pieces", Settings(budget=budget, seed=5, population=100))
     assert open_archive(tmp_path / "pieces").rows == budget
     run(failing_plates, tmp_path / "pieces", SETTINGS)
     assert rows_of(tmp_path / "pieces").equals(rows_of(tmp_path / "whole"))

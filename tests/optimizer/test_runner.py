@@ -24,7 +24,7 @@ from optimizer.workers.pool import Pool
 
 
 def settings(budget: int = 730, **changes) -> Settings:
-    return Settings(budget=budget, seed=5, **changes)
+    return Settings(budget=budget, seed=5, population=100, **changes)
 
 
 def stop_after(calls: int):
@@ -38,7 +38,7 @@ def test_the_same_settings_give_the_same_rows(tmp_path, failing_plates, rows_of)
     second = run(failing_plates, tmp_path / "b", settings())
     assert rows_of(tmp_path / "a").equals(rows_of(tmp_path / "b"))
     assert (first.hypervolume, first.front_size) == (second.hypervolume, second.front_size)
-    run(failing_plates, tmp_path / "c", Settings(budget=730, seed=6))
+    run(failing_plates, tmp_path / "c", Settings(budget=730, seed=6, population=100))
     assert (
         not rows_of(tmp_path / "c")
         .select(["x_mm"])

@@ -18,7 +18,7 @@ STILL = StopRules(stagnation_generations=6, stagnation_gain=0.002)
 
 
 def settings(budget: int = 6_000) -> Settings:
-    return Settings(budget=budget, seed=5)
+    return Settings(budget=budget, seed=5, population=100)
 
 
 def test_a_front_that_grows_no_more_ends_the_run_where_its_volume_says(tmp_path, plates) -> None:

@@ -10,6 +10,7 @@ from scipy import stats
 from optimizer.search.variation import (
     ETA_CROSSOVER,
     ETA_MUTATION,
+    MUTATION_SPREAD,
     differential,
     draw_pairs,
     latin_hypercube,
@@ -79,14 +80,18 @@ def test_crossover_near_a_bound_is_cut_there() -> None:
 
 def test_mutation_moves_as_deb_and_goyal_define() -> None:
     # In the middle of the box with one variable, which always moves. Down by d has the
-    # distribution ((1 - d)^(eta + 1) - 0.5^(eta + 1)) / (1 - 0.5^(eta + 1)) / 2.
+    # distribution ((1 - d)^(eta + 1) - 0.5^(eta + 1)) / (1 - 0.5^(eta + 1)) / 2; here its mean
+    # over the index eta, whose logarithm is evenly distributed.
     x = np.full((ROWS, 1), 0.5)
     moved = polynomial_mutation(x, np.zeros(ROWS, dtype=bool), generator())[:, 0]
-    step, power = np.abs(moved - 0.5), ETA_MUTATION + 1.0
+    step = np.abs(moved - 0.5)
+    node, share = np.polynomial.legendre.leggauss(40)
+    power = ETA_MUTATION * np.exp(MUTATION_SPREAD * node) + 1.0
+    cut = 0.5**power
 
     def distribution(d: np.ndarray) -> np.ndarray:
-        cut = 0.5**power
-        return 1.0 - ((1.0 - d) ** power - cut) / (1.0 - cut)
+        left = ((1.0 - d[:, None]) ** power - cut) / (1.0 - cut)
+        return 1.0 - left @ share / 2.0
 
     p = stats.kstest(step, distribution).pvalue
     by_chance("the steps of polynomial mutation", p, MUTATION)
