@@ -46,7 +46,9 @@ def place() -> Iterator[Path]:
     memory = Path("/dev/shm")  # noqa: S108
     where = memory if os.access(memory, os.W_OK) else None
     with tempfile.TemporaryDirectory(dir=where) as folder:
-        yield Path(folder)
+        inner = Path(folder) / "place"  # what a writer was told is noted beside it
+        inner.mkdir()
+        yield inner
 
 
 def broken(place: Path, environment: dict[str, str], *arguments: str) -> list[dict]:
