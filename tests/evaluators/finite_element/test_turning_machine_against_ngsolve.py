@@ -137,7 +137,7 @@ def test_turning_machine(numbers: machines.Numbers, separate: bool) -> None:
             lost.magnet,
             control_magnet,
             0.01,
-            "mesh and time steps: measured 0.01 to 0.4 %",
+            "mesh and steps: measured 0.01 to 0.4 %",
         ),
         (
             "sleeve",
