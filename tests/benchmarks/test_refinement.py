@@ -38,7 +38,7 @@ LIMITS: dict[str, tuple[float, float]] = {
     "loss_iron_hysteresis": (0.0, 2e-2),
     "loss_iron_eddy": (0.0, 5e-2),
     "loss_iron_excess": (0.0, 3e-2),
-    "loss_magnet": (0.0, 2e-2),
+    "loss_magnet": (0.0, 2.5e-2),
     "loss_sleeve": (0.0, 2.5e-2),
 }
 
