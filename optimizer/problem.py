@@ -21,6 +21,7 @@ AnyArray = NDArray[Any]
 
 OK = "ok"
 FAILED = "failed"
+LARGEST_INTEGER = 2**31 - 1
 COLUMN_KINDS = ("float64", "int64", "bool", "string")
 
 
@@ -34,16 +35,20 @@ class Variable:
         Name of its archive column, with the unit as suffix.
     lower, upper : float
         Bounds, both included, in the unit of the suffix.
+    integer : bool
+        Whether only whole numbers are asked for; they are stored as floats all the same.
 
     Raises
     ------
     ProblemError
-        If the name is empty, a bound is not finite or the bounds are reversed.
+        If the name is empty, a bound is not finite or the bounds are reversed, or those of an
+        integer are no whole numbers below 2^31 in size.
     """
 
     name: str
     lower: float
     upper: float
+    integer: bool = False
 
     def __post_init__(self) -> None:
         if not self.name:
@@ -59,6 +64,13 @@ class Variable:
                 f" {self.upper}; exchange them"
             )
             raise ProblemError(msg)
+        for value in (self.lower, self.upper):
+            if self.integer and (value != round(value) or abs(value) > LARGEST_INTEGER):
+                msg = (
+                    f"variable {self.name}: bound {value} of an integer is not a whole number"
+                    f" from -{LARGEST_INTEGER} to {LARGEST_INTEGER}"
+                )
+                raise ProblemError(msg)
 
     @property
     def fixed(self) -> bool:

@@ -44,7 +44,10 @@ def identity_of(problem: Problem, settings: Settings) -> Identity:
         "evaluator": settings.evaluator,
         "evaluator_version": settings.evaluator_version,
         "labels": dict(settings.labels),
-        "variables": [[v.name, float(v.lower), float(v.upper)] for v in problem.variables],
+        "variables": [
+            [v.name, float(v.lower), float(v.upper), *(["integer"] if v.integer else [])]
+            for v in problem.variables
+        ],
         "objectives": list(problem.objectives),
         "constraints": list(problem.constraints),
         "columns": [[c.name, c.kind] for c in problem.columns],

@@ -33,6 +33,7 @@ MATING_NEAR = 0.9  # chance that the mates are taken from there, not from everyw
 # Children are rounded to this many steps a unit, so that the last bit of a power function,
 # which differs between processors and library versions, does not decide a design.
 _STEPS = 2.0**40
+_ATTEMPTS = 10  # to find another design for one that would repeat itself by rounding to integers
 
 
 @dataclass(frozen=True)
@@ -49,7 +50,8 @@ class DecompositionSearch:
     Parameters
     ----------
     variables : sequence of Variable
-        Fixed ones keep their value and take no part.
+        Fixed ones keep their value and take no part. Each value of an integer has an equal share
+        of the unit interval and stands at the middle of it, so parents are what was evaluated.
     objectives, constraints : int
         Numbers of columns of each outcome.
     seed : int
@@ -82,6 +84,8 @@ class DecompositionSearch:
         if len(self._free) == 0:
             msg = "a search needs at least one variable whose bounds differ"
             raise ProblemError(msg)
+        self._whole = np.array([variables[column].integer for column in self._free.tolist()])
+        self._values = (self._upper - self._lower)[self._free][self._whole] + 1.0
         weights = weight_vectors(objectives, population)
         self._order = neighbourhoods(weights)
         self._population = Population(weights, self._order, len(self._free), constraints)
@@ -106,11 +110,13 @@ class DecompositionSearch:
         if self._asked is None:
             first = not self._population.filled
             made = latin_hypercube(self.size, len(self._free), self._random)
-            unit = made if first else self._children()
-            self._asked = np.round(unit * _STEPS) / _STEPS
+            self._asked = self._without_repeats(made if first else self._children())
         low, high = self._lower[self._free], self._upper[self._free]
+        values = np.clip(low + self._asked * (high - low), low, high)
+        share = self._asked[:, self._whole]
+        values[:, self._whole] = low[self._whole] + np.floor(share * self._values)
         x = np.tile(self._lower, (self.size, 1))
-        x[:, self._free] = np.clip(low + self._asked * (high - low), low, high)
+        x[:, self._free] = values
         return x
 
     def tell(self, outcome: Outcome) -> None:
@@ -175,6 +181,28 @@ class DecompositionSearch:
         self._random.bit_generator.state = values["random"]
         self.generation = int(values["generation"])
         self._asked = arrays["asked"].copy() if "asked" in arrays else None
+
+    def _rounded(self, unit: FloatArray) -> FloatArray:
+        whole = unit[:, self._whole] * self._values
+        unit = unit.copy()
+        unit[:, self._whole] = (np.minimum(np.floor(whole), self._values - 1) + 0.5) / self._values
+        return np.asarray(np.round(unit * _STEPS) / _STEPS)
+
+    def _without_repeats(self, unit: FloatArray) -> FloatArray:
+        """Rounded designs; where integers make two the same, or one a member, it moves on."""
+        unit, members = self._rounded(unit), self._population.unit
+        if not self._whole.any():
+            return unit
+        for _ in range(_ATTEMPTS):
+            _, first = np.unique(np.concatenate([members, unit]), axis=0, return_index=True)
+            new = np.zeros(len(members) + len(unit), dtype=np.bool_)
+            new[first] = True
+            again = np.flatnonzero(~new[len(members) :])
+            if len(again) == 0:
+                break
+            forced = np.ones(len(again), dtype=np.bool_)
+            unit[again] = self._rounded(polynomial_mutation(unit[again], forced, self._random))
+        return unit
 
     def _children(self) -> FloatArray:
         members, random = self._population.unit, self._random

@@ -255,7 +255,7 @@ def test_another_study_is_refused_and_what_differs_is_said(tmp_path, plates):
     ("change", "said"),
     [
         ({"seed": 8}, "seed 7 there and 8 here"),
-        ({"population": 20}, "population None there and 20 here"),
+        ({"population": 20}, "population 100 there and 20 here"),
         ({"chunk": 5}, "designs per call 25 there and 5 here"),
         ({"evaluator": "finer"}, "evaluator 'toy' there and 'finer' here"),
         ({"labels": {"study": "plates", "study_digest": "5"}}, "settings of the study that have"),
