@@ -9,7 +9,7 @@ import click
 
 from evaluators.interface import StartsProgram
 from studies.errors import StudiesError
-from studies.running.problem import MachineProblem
+from studies.problem import MachineProblem
 
 LONGEST = 400  # characters of a command line that are shown
 

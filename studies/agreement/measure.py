@@ -17,8 +17,8 @@ from numpy.typing import NDArray
 from evaluators.machine.geometry.cross_sections import cross_sections
 from evaluators.machine.metrics import METRIC
 from optimizer.workers.dispatch import Dispatcher, single_threaded
-from studies.running.problem import MachineProblem, machine_problem
-from studies.stored.design import evaluate_all
+from studies.inspection.chosen import evaluate_all
+from studies.problem import MachineProblem, machine_problem
 from studies.stored.identity import study_digest
 from studies.study_file.definition import Study
 

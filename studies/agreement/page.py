@@ -24,10 +24,10 @@ from studies.agreement.measure import (
     family_agreement,
     unaffected,
 )
-from studies.running.problem import machine_problem
+from studies.inspection.chosen import with_evaluator
+from studies.problem import machine_problem
 from studies.running.progress import duration
 from studies.shipped.library import find_study, shipped
-from studies.stored.design import with_evaluator
 from studies.stored.layout import program_version
 
 PAGE = Path("evaluators") / "AGREEMENT.md"

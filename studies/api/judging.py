@@ -15,11 +15,11 @@ from studies.choice.decision import decide
 from studies.choice.preferences import Market, preferences
 from studies.choice.preferences import Method as Ranking
 from studies.errors import StudiesError
+from studies.inspection.chosen import QUICK_EVALUATOR, Chosen, choose_design, dispatcher_for
 from studies.running.evaluating import time_limit_of
 from studies.sensitivity import study as sensitivity_room
 from studies.sensitivity.indices import TooFewError
 from studies.sensitivity.tables import indices_csv, lines_csv
-from studies.stored.design import QUICK_EVALUATOR, Chosen, choose_design, dispatcher_for
 from studies.stored.layout import open_results
 from studies.tolerance import report as tolerance_room
 from studies.tolerance.run import built_machines

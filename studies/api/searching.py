@@ -13,9 +13,9 @@ from optimizer.running.progress import Progress, Summary
 from optimizer.workers.dispatch import Dispatcher
 from studies.api.tables import Folder, table_of
 from studies.new_study.beginning import begin_study
+from studies.problem import MachineProblem
 from studies.running import sweep as room
 from studies.running.evaluating import dispatcher_of
-from studies.running.problem import MachineProblem
 from studies.running.spending import Spending
 from studies.shipped.library import find_study
 from studies.stored.layout import Request, Results, create, open_results, save_request

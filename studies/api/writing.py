@@ -9,11 +9,11 @@ from studies.export.design import design_files, design_notes, front_notes
 from studies.export.files import write_folder
 from studies.export.front import front_files
 from studies.export.front_table import front_table
+from studies.inspection.chosen import choose_design
 from studies.report.build import report_html
 from studies.report.collect import collect
 from studies.running.evaluating import usable_workers
 from studies.sheet.content import design_sheet
-from studies.stored.design import choose_design
 from studies.stored.layout import open_results, storage
 
 

@@ -15,7 +15,7 @@ from evaluators.machine.geometry.mass import active_masses
 from evaluators.machine.geometry.variables import VARIABLE_NAMES
 from studies.choice.preferences import Preferences, scenario_prices
 from studies.errors import ResultsError
-from studies.running.problem import margin
+from studies.problem import margin
 from studies.stored.families import StoredFamily, matrix, stored_families
 from studies.stored.layout import Results
 from studies.stored.naming import design_id

@@ -13,7 +13,7 @@ def check(study_file: str) -> None:
     Every mistake is reported at once, with its line and with what would be right.
     """
     from studies.consent import program_of
-    from studies.running.problem import machine_problem
+    from studies.problem import machine_problem
     from studies.shipped.library import find_study
     from studies.tables import text_table
 

@@ -53,7 +53,7 @@ def export(
         title = f"Fronts of study {results.study.name}"
     else:
         from studies.export.design import design_files, design_notes
-        from studies.stored.design import choose_design
+        from studies.inspection.chosen import choose_design
 
         chosen = choose_design(results, design, evaluator)
         files, notes = design_files(chosen), design_notes(chosen)

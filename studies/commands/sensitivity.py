@@ -64,11 +64,11 @@ def sensitivity(
     from studies.consent import announce_program
     from studies.errors import StudiesError
     from studies.export.files import write_folder
+    from studies.inspection import chosen as designs
     from studies.running.evaluating import time_limit_of
     from studies.sensitivity import study as room
     from studies.sensitivity.indices import TooFewError
     from studies.sensitivity.tables import sensitivity_text
-    from studies.stored import design as designs
     from studies.stored.layout import open_results
 
     results = open_results(Path(results_folder))

@@ -78,8 +78,8 @@ def tolerance(
 
     from studies.consent import announce_program
     from studies.errors import StudiesError
+    from studies.inspection import chosen as designs
     from studies.running.evaluating import time_limit_of
-    from studies.stored import design as designs
     from studies.stored.layout import open_results
     from studies.tolerance import report
     from studies.tolerance.run import built_machines

@@ -53,9 +53,9 @@ def verify(
     from studies import verification as room
     from studies.consent import announce_program
     from studies.errors import EXIT_NOTHING_FEASIBLE, StudiesError
+    from studies.inspection.chosen import dispatcher_for
     from studies.running.evaluating import time_limit_of
     from studies.stored.damage import report_damage
-    from studies.stored.design import dispatcher_for
     from studies.stored.layout import open_results
 
     if front and top is not None:

@@ -10,7 +10,7 @@ from evaluators.finite_element.model import FieldModel
 from evaluators.finite_element.picture.picture import Currents, field_picture
 from studies.drawing.field_picture import field_image
 from studies.errors import StudiesError
-from studies.stored.design import choose_design
+from studies.inspection.chosen import choose_design
 from studies.stored.layout import Results
 
 FINER = 2

@@ -12,8 +12,8 @@ from studies.export.machine import machine_file
 from studies.export.materials import material_files
 from studies.export.suspension import suspension_files, suspension_known
 from studies.export.winding import winding_files
+from studies.inspection.chosen import Chosen
 from studies.inspection.design import SHORT_CAUTIONS
-from studies.stored.design import Chosen
 from studies.stored.layout import Results
 
 DRAWING = "cross_section.dxf"

@@ -17,7 +17,7 @@ from evaluators.machine.task.description import (
 )
 from studies.export.files import ExportedFile, json_file
 from studies.export.suspension import CURRENT
-from studies.stored.design import Chosen
+from studies.inspection.chosen import Chosen
 
 FORMAT = "hovergap machine"
 FORMAT_VERSION = 1

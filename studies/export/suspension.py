@@ -20,7 +20,7 @@ from numpy.typing import NDArray
 
 from studies.errors import StudiesError
 from studies.export.files import ExportedFile, json_file, text_file
-from studies.stored.design import Chosen
+from studies.inspection.chosen import Chosen
 from studies.tables import csv_text
 
 FloatArray = NDArray[np.float64]

@@ -10,7 +10,7 @@ from optimizer.workers.cluster import Cluster
 from optimizer.workers.dispatch import Dispatcher, Serial
 from optimizer.workers.pool import Pool
 from studies.errors import StudiesError
-from studies.running.problem import MachineProblem
+from studies.problem import MachineProblem
 from studies.study_file.definition import Study
 
 

@@ -10,8 +10,8 @@ from optimizer.running.progress import Progress, Settings, Summary
 from optimizer.running.runner import run
 from optimizer.running.stopping import StopRules
 from optimizer.workers.dispatch import Dispatcher
+from studies.problem import MachineProblem
 from studies.running.ended import Ended, note_end
-from studies.running.problem import MachineProblem
 from studies.running.spreading import ROUNDS, prospects, read_rows
 from studies.stored.layout import Results
 from studies.stored.naming import family_of

@@ -13,11 +13,11 @@ from optimizer.archive.lock import writer_lock
 from optimizer.errors import ClusterError
 from optimizer.running.progress import Settings, Summary
 from optimizer.workers.dispatch import Dispatcher
-from studies.comparison.infeasible import explain
 from studies.consent import program_of, require_consent
 from studies.errors import EXIT_FAILED, EXIT_NOTHING_FEASIBLE, EXIT_OK, StudiesError
+from studies.problem import MachineProblem, machine_problem
+from studies.running.infeasible import explain
 from studies.running.interruption import Interruption
-from studies.running.problem import MachineProblem, machine_problem
 from studies.running.progress import ProgressLine, duration
 from studies.running.spending import Spending
 from studies.shipped.library import shipped

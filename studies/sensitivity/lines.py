@@ -10,8 +10,8 @@ from numpy.typing import NDArray
 
 from optimizer.problem import Outcome, Variable
 from optimizer.workers.dispatch import Dispatcher
-from studies.running.problem import MachineProblem
-from studies.stored.design import evaluate_all
+from studies.inspection.chosen import evaluate_all
+from studies.problem import MachineProblem
 from studies.study_file.crosschecks import VARIABLE
 
 FloatArray = NDArray[np.float64]

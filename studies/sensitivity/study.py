@@ -11,9 +11,9 @@ from numpy.typing import NDArray
 
 from optimizer.problem import Outcome
 from optimizer.workers.dispatch import Dispatcher
+from studies.inspection.chosen import QUICK_EVALUATOR, Chosen, evaluate_all
 from studies.sensitivity.indices import BoolArray, Indices, delta_indices, sobol_indices
 from studies.sensitivity.lines import Line, lines_through
-from studies.stored.design import QUICK_EVALUATOR, Chosen, evaluate_all
 from studies.stored.families import matrix, stored_family
 from studies.study_file.definition import Study
 

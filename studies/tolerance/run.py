@@ -9,8 +9,8 @@ from numpy.typing import NDArray
 
 from optimizer.problem import Outcome, join_outcomes
 from optimizer.workers.dispatch import Dispatcher
-from studies.running.problem import MachineProblem, margin
-from studies.stored.design import Chosen, evaluate_all
+from studies.inspection.chosen import Chosen, evaluate_all
+from studies.problem import MachineProblem, margin
 from studies.tolerance.build import built_task, scattered_variables
 from studies.tolerance.scatter import Draw
 

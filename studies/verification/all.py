@@ -15,8 +15,8 @@ from optimizer.running.meter import Meter
 from optimizer.workers.dispatch import Dispatcher
 from studies.comparison.numbers import compare_families
 from studies.errors import EXIT_FAILED, EXIT_OK
+from studies.problem import machine_problem
 from studies.running.interruption import Interruption
-from studies.running.problem import machine_problem
 from studies.running.sweep import chosen_families
 from studies.stored.layout import Results
 from studies.verification.run import Plan, verify_family

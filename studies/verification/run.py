@@ -26,8 +26,8 @@ from optimizer.archive.parts import (
     write_part,
 )
 from optimizer.workers.dispatch import Chunk, Dispatcher, Finished, single_threaded
-from studies.running.problem import MachineProblem
-from studies.stored.design import QUICK_CHUNK, QUICK_EVALUATOR, SLOW_CHUNK
+from studies.inspection.chosen import QUICK_CHUNK, QUICK_EVALUATOR, SLOW_CHUNK
+from studies.problem import MachineProblem
 from studies.stored.families import matrix
 from studies.stored.verified import DEVIATION, STORED, VerifiedRow, deviation, verified_folder
 

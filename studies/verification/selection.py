@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 from optimizer.fronts import normalise
 from studies.comparison.numbers import Comparison, Member
 from studies.errors import StudiesError
-from studies.running.problem import MachineProblem
+from studies.problem import MachineProblem
 
 IntArray = NDArray[np.int64]
 

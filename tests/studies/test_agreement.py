@@ -12,7 +12,7 @@ from click.testing import CliRunner
 from optimizer.workers.dispatch import Serial
 from studies.agreement import measure as room
 from studies.agreement.page import main, page
-from studies.running.problem import machine_problem
+from studies.problem import machine_problem
 from studies.shipped.library import find_study
 
 

@@ -18,7 +18,7 @@ from studies.choice.preferences import Criterion, Preferences, preferences, scen
 from studies.choice.ranking import AUGMENTATION, achievement, scale_of
 from studies.choice.store import store_decision
 from studies.errors import ResultsError
-from studies.running.problem import machine_problem
+from studies.problem import machine_problem
 from studies.stored.layout import open_results
 
 Run = Callable[..., Result]

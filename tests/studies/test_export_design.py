@@ -18,7 +18,7 @@ from click.testing import Result
 from evaluators.machine.geometry.cross_sections import CrossSections
 from evaluators.machine.geometry.dxf import LAYER_COLOURS
 from studies.export.suspension import suspension_data
-from studies.stored.design import Chosen, choose_design
+from studies.inspection.chosen import Chosen, choose_design
 from studies.stored.layout import open_results
 
 Run = Callable[..., Result]

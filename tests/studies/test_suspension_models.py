@@ -11,9 +11,9 @@ from outside import OutsideChecks
 from evaluators.finite_element.evaluator import FiniteElementEvaluator
 from evaluators.machine.geometry.variables import VARIABLE_NAMES
 from studies.export.suspension import suspension_data
+from studies.inspection.chosen import Chosen
 from studies.inspection.design import Inspection
-from studies.running.problem import machine_problem
-from studies.stored.design import Chosen
+from studies.problem import machine_problem
 from studies.stored.layout import Request, Results
 from studies.study_file.definition import study_from
 

@@ -10,7 +10,7 @@ from click.testing import Result
 
 from optimizer.workers.dispatch import Serial
 from studies import api
-from studies.stored import design as room
+from studies.inspection import chosen as room
 
 Run = Callable[..., Result]
 Write = Callable[..., Path]

@@ -101,7 +101,7 @@ def test_colours_get_evenly_darker_also_without_colour() -> None:
 
 
 def test_outlines_as_polygons_keep_their_area(searched: Path, design: str) -> None:
-    from studies.stored.design import choose_design
+    from studies.inspection.chosen import choose_design
 
     chosen = choose_design(open_results(searched), design)
     for part in outlines(chosen.sections, 0, chosen.task.winding):

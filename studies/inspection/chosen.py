@@ -18,8 +18,8 @@ from optimizer.workers.dispatch import Chunk, Dispatcher
 from studies.consent import require_consent
 from studies.errors import ResultsError
 from studies.inspection.design import Inspection, inspect_design
+from studies.problem import MachineProblem, machine_problem
 from studies.running.evaluating import made_dispatcher
-from studies.running.problem import MachineProblem, machine_problem
 from studies.stored.layout import Results
 
 FloatArray = NDArray[np.float64]
