@@ -57,7 +57,8 @@ NOTES = (
     "Cogging is taken from teeth and yoke of one permeability each and is a tiny difference "
     "besides where slots and poles have a large common multiple: do not rank designs by it.",
     "`magnet_flux_density_T` is a sum of harmonics that rings at the edges of the magnets; both "
-    "sum as many, six to a slot pitch. Summed to the end it lies up to 0.1 T higher.",
+    "sum as many, six to a slot pitch. With more of them it moves by about 0.1 T, upwards in "
+    "most families but downwards with six slots: keep a margin.",
     "The median tells of ordinary designs; the ninth decile mostly of saturated ones, which the "
     "analytic evaluator treats by a circuit of teeth and yoke. Verify what a search has chosen: "
     "`hovergap verify RESULTS/STUDY --front`.",
