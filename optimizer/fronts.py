@@ -204,7 +204,10 @@ class Front:
         for point in points:
             beaten |= _compare(columns, point, np.greater_equal)
         if beaten.any():
-            self.replace(self.points[~beaten], self.evaluations[~beaten])
+            left = np.flatnonzero(~beaten)
+            for column in (*self._columns, self._numbers):
+                column[: len(left)] = column[left]
+            self._count = len(left)
         self._append(points, evaluations)
 
     def replace(self, points: FloatArray, evaluations: IntArray) -> None:

@@ -30,8 +30,8 @@ from optimizer.archive.parts import (
 from optimizer.errors import ArchiveError, ArchiveLockedError, ArchiveMismatchError
 from optimizer.fronts import non_dominated
 from optimizer.problem import Variable
-from optimizer.running.progress import Settings
 from optimizer.running.runner import run
+from optimizer.settings import Settings
 
 BUDGET = 230  # two generations and a part of the third
 SETTINGS = Settings(
@@ -275,6 +275,14 @@ def test_every_difference_is_said_in_words(plates, change, said):
     text = "; ".join(differences(there, {**there, **change}))
     assert said in text
     assert "digest" not in text
+
+
+def test_an_integer_is_told_from_a_real_variable_with_the_same_bounds(plates):
+    real = identity_of(plates, SETTINGS)
+    first, *others = plates.variables
+    plates.variables = (replace(first, integer=True), *others)
+    text = "; ".join(differences(real, identity_of(plates, SETTINGS)))
+    assert f"{first.name} from -1 to 3 there and from -1 to 3 integer here" in text
 
 
 def test_a_newer_schema_version_is_refused(tmp_path, plates):
