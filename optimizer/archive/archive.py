@@ -58,7 +58,7 @@ from optimizer.archive.schema import (
 )
 from optimizer.errors import ArchiveError, ArchiveMismatchError
 from optimizer.problem import BoolArray, FloatArray, IntArray, Outcome, Problem
-from optimizer.running.progress import Settings
+from optimizer.settings import Settings
 
 SHORTEST_INTERVAL_S = 1.0  # between two parts
 # A part is held back until the run has lasted this many times what the last part took to write.

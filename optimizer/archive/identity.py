@@ -18,7 +18,7 @@ from optimizer.archive.parts import (
 )
 from optimizer.errors import ArchiveError, storage_error
 from optimizer.problem import Problem
-from optimizer.running.progress import Settings
+from optimizer.settings import Settings
 
 SCHEMA_VERSION = 1
 # Of the search: raised when the same seed no longer gives the same designs.

@@ -12,7 +12,7 @@ import pyarrow as pa
 from optimizer.archive.identity import IDENTITY_KEY, SCHEMA_VERSION, VERSION_KEY, identity_of
 from optimizer.errors import ProblemError
 from optimizer.problem import Column, FloatArray, IntArray, Outcome, Problem, join_outcomes
-from optimizer.running.progress import Settings
+from optimizer.settings import Settings
 
 PARTS_KEY = b"optimizer.parts"  # of front.parquet: which parts it was made of
 

@@ -21,11 +21,12 @@ from optimizer.archive.snapshot import digest, read_snapshot, write_snapshot
 from optimizer.problem import BoolArray, IntArray, Outcome, Problem, check_problem
 from optimizer.running.generation import Generation
 from optimizer.running.meter import Meter
-from optimizer.running.progress import Progress, Settings, Summary
+from optimizer.running.progress import Progress, Summary
 from optimizer.running.repeats import Repeats, as_repeat
 from optimizer.running.stopping import StopRules, Watch
 from optimizer.running.tally import Tally
 from optimizer.search import DecompositionSearch
+from optimizer.settings import Settings
 from optimizer.workers.dispatch import Chunk, Dispatcher, Serial, single_threaded
 
 SNAPSHOT_INTERVAL_S = 10.0

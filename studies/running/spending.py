@@ -6,9 +6,10 @@ import time
 from collections.abc import Callable, Iterator
 from dataclasses import replace
 
-from optimizer.running.progress import Progress, Settings, Summary
+from optimizer.running.progress import Progress, Summary
 from optimizer.running.runner import run
 from optimizer.running.stopping import StopRules
+from optimizer.settings import Settings
 from optimizer.workers.dispatch import Dispatcher
 from studies.problem import MachineProblem
 from studies.running.ended import Ended, note_end

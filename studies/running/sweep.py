@@ -11,7 +11,8 @@ from optimizer.archive.durable import remove_leftovers
 from optimizer.archive.identity import read_identity
 from optimizer.archive.lock import writer_lock
 from optimizer.errors import ClusterError
-from optimizer.running.progress import Settings, Summary
+from optimizer.running.progress import Summary
+from optimizer.settings import Settings
 from optimizer.workers.dispatch import Dispatcher
 from studies.consent import program_of, require_consent
 from studies.errors import EXIT_FAILED, EXIT_NOTHING_FEASIBLE, EXIT_OK, StudiesError

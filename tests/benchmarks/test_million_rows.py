@@ -17,7 +17,7 @@ from optimizer.archive.parts import part_paths
 from optimizer.archive.schema import Rows
 from optimizer.fronts import non_dominated
 from optimizer.problem import Outcome
-from studies.running.problem import MachineProblem, machine_problem
+from studies.problem import MachineProblem, machine_problem
 from studies.running.sweep import search_settings
 from studies.shipped.library import find_study
 from studies.stored.layout import Request, Results, create

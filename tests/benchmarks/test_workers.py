@@ -23,7 +23,7 @@ from optimizer.problem import Column, Outcome, Problem, Variable
 from optimizer.workers.cluster import Cluster
 from optimizer.workers.dispatch import Chunk, Dispatcher, Serial, single_threaded
 from optimizer.workers.pool import Pool
-from studies.running.problem import MachineProblem, machine_problem
+from studies.problem import MachineProblem, machine_problem
 from studies.shipped.library import find_study
 
 psutil = pytest.importorskip("psutil")

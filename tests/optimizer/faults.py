@@ -30,7 +30,7 @@ from optimizer.archive import archive, durable, merging, parts
 from optimizer.errors import OptimizerError
 from optimizer.problem import Column, Outcome, Variable
 from optimizer.running import runner
-from optimizer.running.progress import Settings
+from optimizer.settings import Settings
 
 POWER_CUT = 70  # exit status
 WRITING = os.O_WRONLY | os.O_RDWR | os.O_CREAT | os.O_TRUNC

@@ -17,8 +17,8 @@ from clusters import LocalCluster
 
 from optimizer.errors import ClusterError, ProblemError
 from optimizer.problem import Column, Outcome, Variable
-from optimizer.running.progress import Settings
 from optimizer.running.runner import run
+from optimizer.settings import Settings
 from optimizer.workers import cluster as room
 from optimizer.workers.cluster import Cluster
 from optimizer.workers.dispatch import Chunk, Serial

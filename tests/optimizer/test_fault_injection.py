@@ -22,8 +22,8 @@ import pytest
 from optimizer.archive.archive import open_archive
 from optimizer.archive.parts import part_paths
 from optimizer.errors import ArchiveError, OptimizerError
-from optimizer.running.progress import Settings
 from optimizer.running.runner import run
+from optimizer.settings import Settings
 
 sys.path.insert(0, str(Path(__file__).parent))
 import faults

@@ -22,7 +22,7 @@ SCRIPT = """
     from optimizer.workers.dispatch import Serial
     from optimizer.workers.pool import Pool
     from optimizer.problem import Column, Outcome, Variable
-    from optimizer.running.progress import Settings
+    from optimizer.settings import Settings
 
     # Many parts and snapshots, so that kills fall into the midst of writing them.
     archive.SHORTEST_INTERVAL_S = 0.01

@@ -19,7 +19,7 @@ from optimizer.problem import (
     failed_outcome,
     join_outcomes,
 )
-from optimizer.running.progress import Settings
+from optimizer.settings import Settings
 
 
 @pytest.mark.parametrize(

@@ -8,9 +8,9 @@ import pytest
 from optimizer.archive.archive import open_archive
 from optimizer.problem import Column, Outcome
 from optimizer.running import runner as runner_module
-from optimizer.running.progress import Settings
 from optimizer.running.repeats import Repeats
 from optimizer.running.runner import run
+from optimizer.settings import Settings
 from optimizer.workers.pool import Pool
 
 SETTINGS = Settings(budget=730, seed=5, population=100)

@@ -17,9 +17,10 @@ from optimizer.errors import ArchiveMismatchError, ProblemError
 from optimizer.fronts import hypervolume
 from optimizer.problem import Column, Outcome, Variable
 from optimizer.running import runner as runner_module
-from optimizer.running.progress import Progress, Settings
+from optimizer.running.progress import Progress
 from optimizer.running.runner import run
 from optimizer.running.tally import BOX_ROWS
+from optimizer.settings import Settings
 from optimizer.workers.pool import Pool
 
 

@@ -10,9 +10,9 @@ import pytest
 from optimizer.archive.archive import open_archive
 from optimizer.errors import ProblemError
 from optimizer.problem import Outcome
-from optimizer.running.progress import Settings
 from optimizer.running.runner import run
 from optimizer.running.stopping import StopRules
+from optimizer.settings import Settings
 
 STILL = StopRules(stagnation_generations=6, stagnation_gain=0.002)
 

@@ -15,8 +15,8 @@ import pytest
 
 from optimizer.errors import ProblemError
 from optimizer.problem import Column, Outcome, Variable
-from optimizer.running.progress import Settings
 from optimizer.running.runner import run
+from optimizer.settings import Settings
 from optimizer.workers.dispatch import Chunk
 from optimizer.workers.pool import Pool
 

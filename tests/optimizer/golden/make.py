@@ -13,8 +13,8 @@ import numpy as np
 
 from optimizer.archive import archive
 from optimizer.problem import Column, Outcome, Variable
-from optimizer.running.progress import Settings
 from optimizer.running.runner import run
+from optimizer.settings import Settings
 
 
 class Plate:
