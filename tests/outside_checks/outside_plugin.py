@@ -1,4 +1,4 @@
-"""Pytest option `--checks-page FILE`: run the tests with outside checks, write what they find."""
+"""Pytest option `--checks-page=FILE`: run the tests with outside checks, write what they find."""
 
 from __future__ import annotations
 
@@ -23,7 +23,8 @@ def pytest_addoption(parser: pytest.Parser) -> None:
     parser.addoption(
         "--checks-page",
         metavar="FILE",
-        help="run only tests with outside checks, and write a page of what these have found",
+        help="run only tests with outside checks, and write a page of what these have found; with "
+        "the equals sign, else a page that is there already is taken for a test",
     )
 
 

@@ -116,11 +116,11 @@ def run(folder: Path, *arguments: str, text: str = CHILD) -> subprocess.Complete
 
 
 def test_the_page(tmp_path: Path) -> None:
-    done = run(tmp_path, "-k", "not left_out", "--checks-page", "page.md")
+    done = run(tmp_path, "-k", "not left_out", "--checks-page=page.md")
     assert done.returncode == 0, done.stdout + done.stderr
     assert "page.md is written: 5 outside checks" in done.stdout
     page = (tmp_path / "page.md").read_text()
-    assert "python -m pytest -q -k 'not left_out' --checks-page page.md" in page
+    assert "python -m pytest -q -k 'not left_out' --checks-page=page.md" in page
     assert re.search(r"\d{4}-\d\d-\d\d: Python 3\.\d+\.\d+, hovergap .*, numpy ", page)
     assert "5 checks of 10 values in 1 test files, all passed; 3 tests were not run" in page
     heat, book = "| `test_child.py` |", "a book \\| of 1900"
@@ -138,7 +138,7 @@ def test_the_page(tmp_path: Path) -> None:
 
 def test_no_page_after_a_failure(tmp_path: Path) -> None:
     failing = CHILD.replace("99.7", "98.9")
-    done = run(tmp_path, "--checks-page", "page.md", text=failing)
+    done = run(tmp_path, "--checks-page=page.md", text=failing)
     assert done.returncode == 1
     assert "warmth: found 98.9" in done.stdout
     assert "page.md is not written: a test has failed" in done.stdout
