@@ -62,11 +62,6 @@ class Price:
             )
             raise ValueError(msg)
 
-    @property
-    def per_kg_installed(self) -> float:
-        """Currency units per kilogram that is in the machine, base scenario."""
-        return self.installed("base")
-
     def installed(self, scenario: Scenario) -> float:
         """Currency units per kilogram that is in the machine."""
         return self._bought(scenario) / (1.0 - self.waste_share) + self.processing_per_kg

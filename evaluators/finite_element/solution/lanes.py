@@ -133,29 +133,6 @@ def products(w, a, b, c, d):  # type: ignore[no-untyped-def]
 
 
 @njit(cache=True, fastmath={"contract"}, error_model="numpy")
-def add_scaled(w, factor, a):  # type: ignore[no-untyped-def]
-    """w += factor * a, with one factor for all lanes."""
-    w0, w1, w2, w3, w4, w5, w6, w7 = (
-        w[0] + factor * a[0],
-        w[1] + factor * a[1],
-        w[2] + factor * a[2],
-        w[3] + factor * a[3],
-        w[4] + factor * a[4],
-        w[5] + factor * a[5],
-        w[6] + factor * a[6],
-        w[7] + factor * a[7],
-    )
-    w[0] = w0
-    w[1] = w1
-    w[2] = w2
-    w[3] = w3
-    w[4] = w4
-    w[5] = w5
-    w[6] = w6
-    w[7] = w7
-
-
-@njit(cache=True, fastmath={"contract"}, error_model="numpy")
 def subtract_panel(work, index, lower, first, last, s):  # type: ignore[no-untyped-def]
     """work[index[p], c] -= s[c] * lower[p] for p in first..last-1 and four columns c.
 

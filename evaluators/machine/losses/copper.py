@@ -75,52 +75,6 @@ def slot_loss(
     )
 
 
-def temperature_from_resistance(
-    resistance_hot: ArrayLike, resistance_cold: ArrayLike, temperature_cold_C: ArrayLike
-) -> FloatArray:
-    """Return the mean temperature of a copper winding in °C from two resistances.
-
-    (R2/R1) (235 + t1) - 235, IEC 60034-1 (from memory).
-    """
-    ratio = floats(resistance_hot) / floats(resistance_cold)
-    return ratio * (235.0 + floats(temperature_cold_C)) - 235.0
-
-
-def round_wire_factor(
-    diameter: ArrayLike, frequency: ArrayLike, resistivity: ArrayLike
-) -> FloatArray:
-    """Return the resistance of a round wire by itself over that at direct current.
-
-    Re[(k a / 2) J0(k a) / J1(k a)] with k = (1 - j) / delta. Rosa, Grover, *Formulas and Tables
-    for the Calculation of Mutual and Self-Inductance*, NBS Scientific Paper 169, 1912.
-
-    Parameters
-    ----------
-    diameter
-        m.
-    frequency
-        Hz.
-    resistivity
-        ohm m.
-    """
-    return np.asarray(_own_current(_wire_argument(diameter, frequency, resistivity)).real)
-
-
-def round_wire_internal_inductance_factor(
-    diameter: ArrayLike, frequency: ArrayLike, resistivity: ArrayLike
-) -> FloatArray:
-    """Return the internal inductance of a round wire over that at direct current.
-
-    From the imaginary part of the impedance `round_wire_factor` is the real part of.
-    """
-    x = _wire_argument(diameter, frequency, resistivity)
-    square = np.abs(x) ** 2
-    tiny = square < 1e-6
-    # A uniform current has the internal reactance |k a|²/8 times the direct-current resistance.
-    factor = 8.0 * _own_current(x).imag / np.where(tiny, 1.0, square)
-    return np.asarray(np.where(tiny, 1.0, factor))
-
-
 def transverse_field_loss(
     diameter: ArrayLike, flux_density: ArrayLike, frequency: ArrayLike, resistivity: ArrayLike
 ) -> FloatArray:
@@ -236,12 +190,3 @@ def _wire_argument(
     """k a of a non-magnetic wire, (1 - j) a / delta."""
     a = 0.5 * floats(diameter)
     return np.asarray((1.0 - 1.0j) * (a / skin_depth(frequency, resistivity)))
-
-
-def _own_current(
-    x: ComplexArray,
-) -> ComplexArray:
-    """Impedance over direct-current resistance, (x/2) J0(x)/J1(x), x = k a."""
-    small = np.abs(x) < 1e-3
-    y = np.where(small, 1.0, x)
-    return np.asarray(np.where(small, 1.0 - x * x / 8.0, 0.5 * y * jve(0, y) / jve(1, y)))

@@ -82,22 +82,6 @@ def classical_coefficient(thickness: float, resistivity: float, density: float) 
     return math.pi**2 * thickness**2 / (6.0 * resistivity * density)
 
 
-def lamination_skin_factor(thickness_to_skin_depth: ArrayLike) -> FloatArray:
-    """Return the classical loss with skin effect over that without, for lambda = d / delta.
-
-    (3/lambda) (sinh lambda - sin lambda) / (cosh lambda - cos lambda), constant permeability.
-    Bozorth, *Ferromagnetism*, 1951 (from memory). Not part of the loss functions below, because
-    the permeability to use in it is arbitrary in a saturating sheet.
-    """
-    x = floats(thickness_to_skin_depth)
-    # Below 0.1 cancellation costs more digits than the series leaves out (x⁸).
-    small = x < 0.1
-    y = np.clip(np.where(small, 1.0, x), None, 300.0)
-    exact = 3.0 / y * (np.sinh(y) - np.sin(y)) / (np.cosh(y) - np.cos(y))
-    exact = np.where(x > 300.0, 3.0 / np.where(x > 300.0, x, 1.0), exact)
-    return np.asarray(np.where(small, 1.0 - x**4 / 630.0, exact))
-
-
 def iron_loss_sine(
     coefficients: IronLossCoefficients, flux_density: ArrayLike, frequency: ArrayLike
 ) -> IronLoss:
@@ -110,31 +94,6 @@ def iron_loss_sine(
         classical=np.asarray(coefficients.classical * fb * fb),
         excess=np.asarray(coefficients.excess * fb * np.sqrt(fb)),
     )
-
-
-def iron_loss_from_harmonics(
-    coefficients: IronLossCoefficients, amplitudes: ArrayLike, frequencies: ArrayLike
-) -> IronLoss:
-    """Return the loss in W/kg as the sum over harmonics, each taken as a sine of its own.
-
-    Exact for the classical part. The other two do not add up in truth: the sum overstates the
-    hysteresis of harmonics that cause no minor loop and misses the cross terms of the excess
-    loss; use `iron_loss_from_waveform` where the waveform is known.
-
-    Parameters
-    ----------
-    amplitudes
-        Peak flux densities in T, shape (..., h). For a rotating field pass both components.
-    frequencies
-        In Hz, shape (h,) or (..., h).
-
-    Returns
-    -------
-    IronLoss
-        Each part of shape (...).
-    """
-    parts = iron_loss_sine(coefficients, amplitudes, frequencies)
-    return IronLoss(*(np.asarray(np.sum(part, axis=-1)) for part in parts))
 
 
 def iron_loss_from_waveform(
@@ -162,9 +121,9 @@ def iron_loss_from_waveform(
         length of the derivative vector.
     minor_loops
         Scale the hysteresis by the path of B over that of a single loop. This is the improved
-        generalised Steinmetz law with alpha = 1 without splitting the loops (see
-        `improved_steinmetz`), an upper estimate, because every minor loop is charged at the
-        excursion of the main loop.
+        generalised Steinmetz law with alpha = 1 without splitting the loops (Venkatachalam,
+        Sullivan, Abdallah, Tacca, COMPEL 2002), an upper estimate, because every minor loop is
+        charged at the excursion of the main loop.
 
     Returns
     -------
@@ -202,34 +161,6 @@ def iron_loss_from_waveform(
 def excess_constant() -> float:
     """Return the mean of |dB/dt|^1.5 over (f B)^1.5 for a sine, 8.763 (Bertotti 1988)."""
     return float((2.0 * math.pi) ** 1.5 * MEAN_COS_1_5)
-
-
-def improved_steinmetz(
-    k: float, alpha: float, beta: float, flux_density: ArrayLike, frequency: ArrayLike
-) -> FloatArray:
-    """Return the loss of a waveform by the improved generalised Steinmetz law.
-
-    k f^alpha B^beta for a sine; the unit of the result is that of k. Loops are not split.
-    Venkatachalam, Sullivan, Abdallah, Tacca, "Accurate prediction of ferrite core loss with
-    nonsinusoidal waveforms using only Steinmetz parameters", COMPEL 2002.
-
-    Parameters
-    ----------
-    flux_density
-        One period at equal steps without the repeated end point, T, shape (..., t).
-    frequency
-        Hz, shape (...).
-    """
-    b = floats(flux_density)
-    f = floats(frequency)
-    mean_cos = math.gamma(0.5 * (alpha + 1.0)) / (
-        math.sqrt(math.pi) * math.gamma(0.5 * alpha + 1.0)
-    )
-    k_i = k / ((2.0 * math.pi) ** alpha * mean_cos * 2.0 ** (beta - alpha))
-    excursion = b.max(axis=-1) - b.min(axis=-1)
-    speed = np.abs(np.roll(b, -1, axis=-1) - b) * b.shape[-1]
-    mean_speed = (speed**alpha).mean(axis=-1)
-    return np.asarray(k_i * mean_speed * f**alpha * excursion ** (beta - alpha))
 
 
 def fit_iron_loss(

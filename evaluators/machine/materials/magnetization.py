@@ -67,13 +67,6 @@ class MagnetizationCurve:
         c3, c2, c1, c0, t = self._piece(np.abs(b))
         return np.asarray(np.copysign(((c3 * t + c2) * t + c1) * t + c0, b))
 
-    def field_and_slope(self, flux_density: ArrayLike) -> tuple[FloatArray, FloatArray]:
-        """Return `field` and `differential_reluctivity` of B in T together."""
-        b = floats(flux_density)
-        c3, c2, c1, c0, t = self._piece(np.abs(b))
-        field = np.copysign(((c3 * t + c2) * t + c1) * t + c0, b)
-        return np.asarray(field), np.asarray((3.0 * c3 * t + 2.0 * c2) * t + c1)
-
     def differential_reluctivity(self, flux_density: ArrayLike) -> FloatArray:
         """Return dH/dB in m/H for B in T (any sign, any shape)."""
         c3, c2, c1, _, t = self._piece(np.abs(floats(flux_density)))

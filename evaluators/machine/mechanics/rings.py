@@ -1,9 +1,7 @@
-"""Rotating rings and discs, pressure on rings, and shrink fits: elastic closed forms.
+"""Rotating rings and discs, and pressure on rings: elastic closed forms in plane stress.
 
-All are plane stress; `plane_strain` turns elastic constants into those of a long cylinder with
-free ends, whose stresses in the plane follow the same formulas. Sources: Timoshenko, *Strength of
-Materials*, part II, chapter on rotating discs; Young, Budynas, *Roark's Formulas for Stress and
-Strain*, tables on rotating discs and thick vessels (from memory).
+Sources: Timoshenko, *Strength of Materials*, part II, chapter on rotating discs; Young, Budynas,
+*Roark's Formulas for Stress and Strain*, tables on rotating discs and thick vessels (from memory).
 """
 
 from __future__ import annotations
@@ -26,23 +24,6 @@ class Stress(NamedTuple):
 def tip_speed(radius: ArrayLike, speed: ArrayLike) -> FloatArray:
     """Return the circumferential speed in m/s from radius (m) and angular speed (rad/s)."""
     return np.asarray(floats(radius) * np.abs(floats(speed)))
-
-
-def thin_ring_stress(density: ArrayLike, radius: ArrayLike, speed: ArrayLike) -> FloatArray:
-    """Return the hoop stress in Pa of a thin ring turning by itself, rho w² r².
-
-    Density in kg/m3, mean radius in m, angular speed in rad/s.
-    """
-    return np.asarray(floats(density) * (floats(radius) * floats(speed)) ** 2)
-
-
-def plane_strain(young: ArrayLike, poisson: ArrayLike) -> tuple[FloatArray, FloatArray]:
-    """Return Young's modulus and Poisson's ratio to use for a long cylinder.
-
-    E / (1 - nu²) and nu / (1 - nu).
-    """
-    nu = floats(poisson)
-    return np.asarray(floats(young) / (1.0 - nu * nu)), np.asarray(nu / (1.0 - nu))
 
 
 def rotating_disc_stress(
@@ -118,15 +99,6 @@ def pressure_stress(
     return Stress(radial=np.asarray(mean - swing), hoop=np.asarray(mean + swing))
 
 
-def inside_pressure_compliance(
-    inner_radius: ArrayLike, outer_radius: ArrayLike, young: ArrayLike, poisson: ArrayLike
-) -> FloatArray:
-    """Return the growth of the inner radius per inside pressure in m/Pa."""
-    a, b = floats(inner_radius), floats(outer_radius)
-    shape = (b * b + a * a) / (b * b - a * a) + floats(poisson)
-    return np.asarray(a / floats(young) * shape)
-
-
 def outside_pressure_compliance(
     inner_radius: ArrayLike, outer_radius: ArrayLike, young: ArrayLike, poisson: ArrayLike
 ) -> FloatArray:
@@ -134,66 +106,3 @@ def outside_pressure_compliance(
     a, b = floats(inner_radius), floats(outer_radius)
     shape = (b * b + a * a) / (b * b - a * a) - floats(poisson)
     return np.asarray(b / floats(young) * shape)
-
-
-class Part(NamedTuple):
-    """Elastic constants of an isotropic part: Pa, dimensionless, kg/m3."""
-
-    young: ArrayLike
-    poisson: ArrayLike
-    density: ArrayLike
-
-
-class ShrinkFit(NamedTuple):
-    """State of a shrink fit; arrays of the common shape of the arguments."""
-
-    pressure: FloatArray
-    """Contact pressure in Pa; negative values mean that the hub has lifted."""
-    hub_hoop: FloatArray
-    """Hoop stress in Pa at the inner radius of the hub."""
-    lift_off_speed: FloatArray
-    """Angular speed in rad/s at which the pressure vanishes; infinite if it never does."""
-
-
-def shrink_fit(
-    shaft: Part,
-    hub: Part,
-    bore_radius: ArrayLike,
-    contact_radius: ArrayLike,
-    outer_radius: ArrayLike,
-    interference: ArrayLike,
-    speed: ArrayLike,
-) -> ShrinkFit:
-    """Return the state of a hub shrunk onto a shaft of equal length, turning.
-
-    Parameters
-    ----------
-    shaft, hub
-        Elastic constants.
-    bore_radius, contact_radius, outer_radius
-        m; bore of the shaft (zero for a solid one), contact, and outside of the hub.
-    interference
-        Radial interference at rest in m.
-    speed
-        Angular speed in rad/s.
-    """
-    r = contact_radius
-    compliance = outside_pressure_compliance(bore_radius, r, shaft.young, shaft.poisson)
-    compliance = compliance + inside_pressure_compliance(r, outer_radius, hub.young, hub.poisson)
-    shaft_growth = rotating_disc_growth(
-        r, bore_radius, r, shaft.density, shaft.young, shaft.poisson, 1.0
-    )
-    hub_growth = rotating_disc_growth(r, r, outer_radius, hub.density, hub.young, hub.poisson, 1.0)
-    opening = hub_growth - shaft_growth
-    square = floats(speed) ** 2
-    pressure = (floats(interference) - opening * square) / compliance
-    pressed = np.maximum(pressure, 0.0)
-    hoop = pressure_stress(r, r, outer_radius, pressed, 0.0).hoop
-    hoop = hoop + rotating_disc_stress(r, r, outer_radius, hub.density, hub.poisson, speed).hoop
-    opens = opening > 0.0
-    lift = np.sqrt(np.maximum(floats(interference), 0.0) / np.where(opens, opening, 1.0))
-    return ShrinkFit(
-        pressure=np.asarray(pressure),
-        hub_hoop=np.asarray(hoop),
-        lift_off_speed=np.asarray(np.where(opens, lift, np.inf)),
-    )

@@ -20,16 +20,6 @@ def cylinder_resistance(
     return np.asarray(ratio / (2.0 * np.pi * floats(conductivity) * floats(length)))
 
 
-def heated_cylinder_rise(
-    source: ArrayLike, radius: ArrayLike, conductivity: ArrayLike
-) -> FloatArray:
-    """Return the rise q R² / 4k of the axis of a uniformly heated rod over its surface in K.
-
-    Closed form; source in W/m3, radius in m, conductivity in W/(m K).
-    """
-    return np.asarray(floats(source) * floats(radius) ** 2 / (4.0 * floats(conductivity)))
-
-
 def heated_bar_mean_rise(
     source: ArrayLike, width: ArrayLike, height: ArrayLike, conductivity: ArrayLike
 ) -> FloatArray:

@@ -95,16 +95,6 @@ class Family:
         """Lowest order of the no-load radial force, gcd(Q, 2p); 1 is a built-in one-sided pull."""
         return math.gcd(self.slots, self.poles)
 
-    @property
-    def star_periodicity(self) -> int:
-        """Coils per spoke of the star at p, gcd(Q, p): how often the torque field repeats."""
-        return math.gcd(self.slots, self.pole_pairs)
-
-    @property
-    def slots_per_pole_and_phase(self) -> float:
-        """q = Q / (2 p m)."""
-        return self.slots / (self.poles * PHASES)
-
     def electrical_frequency(self, speed: float) -> float:
         """Electrical frequency in Hz at a mechanical speed in rad/s."""
         return self.pole_pairs * speed / (2.0 * math.pi)

@@ -1,24 +1,20 @@
-"""Copper: resistance, skin effect and slot-bar formulas against tables and mpmath."""
+"""Copper: resistance, cylinders in fields and slot-bar formulas against tables."""
 
 from __future__ import annotations
 
 import math
 
-import mpmath
 import numpy as np
 import pytest
 from outside import OutsideChecks
 
 from evaluators.machine.losses.copper import (
     rotating_field_loss,
-    round_wire_factor,
-    round_wire_internal_inductance_factor,
     skin_depth,
     slot_bar_factor,
     slot_bar_factors,
     slot_loss,
     strand_factor,
-    temperature_from_resistance,
     transverse_field_loss,
     winding_resistance,
 )
@@ -28,19 +24,7 @@ MU_0 = 4e-7 * math.pi
 
 check = OutsideChecks("losses")
 PRINTED = {"why": "printed digits"}
-TABLES = (
-    "Rosa, Grover, NBS Scientific Paper 169; Terman, Radio Engineers' Handbook, 1943; recomputed"
-)
 CYLINDER = "own evaluation of Landau, Lifshitz, section 59, problem 2 (from memory)"
-
-# x = a sqrt(w mu0 sigma), R/R0, Li/Li0.
-WIRE = [
-    (0.5, 1.000325, 0.9998373), (1.0, 1.005187, 0.9974075), (1.5, 1.025824, 0.9871108),
-    (2.0, 1.078159, 0.9611351), (2.5, 1.175379, 0.9134656), (3.0, 1.318095, 0.8451665),
-    (4.0, 1.677869, 0.6863228), (5.0, 2.042725, 0.5559681), (6.0, 2.393590, 0.4652055),
-    (8.0, 3.094446, 0.3510720), (10.0, 3.798576, 0.2816193), (15.0, 5.562079, 0.1882161),
-    (20.0, 7.327672, 0.1412790),
-]  # fmt: skip
 
 
 def wire_of(x: float, frequency: float = 1e3) -> float:
@@ -61,57 +45,7 @@ def test_skin_depth_of_copper() -> None:
     assert skin_depth(0.0, RHO) == math.inf
 
 
-@pytest.mark.parametrize(("x", "resistance", "inductance"), WIRE)
-def test_round_wire_by_itself(x: float, resistance: float, inductance: float) -> None:
-    diameter = wire_of(x)
-    check(
-        "resistance of a round wire over that without skin effect",
-        round_wire_factor(diameter, 1e3, RHO),
-        resistance,
-        absolute=6e-7,
-        **PRINTED,
-        source=TABLES,
-    )
-    check(
-        "internal inductance of a round wire over that without skin effect",
-        round_wire_internal_inductance_factor(diameter, 1e3, RHO),
-        inductance,
-        absolute=6e-8,
-        **PRINTED,
-        source=TABLES,
-    )
-
-
-def test_round_wire_of_the_cable_standard() -> None:
-    check(
-        "skin effect of a cable conductor at x = 2.14",
-        round_wire_factor(wire_of(2.14), 1e3, RHO) - 1.0,
-        0.1005,
-        absolute=6e-5,
-        why="two printed decimals of a percentage",
-        source="Neher, McGrath 1957, table III",
-    )
-
-
-@pytest.mark.parametrize("x", [1e-4, 1e-3, 0.3, 30.0, 300.0])
-def test_round_wire_against_mpmath(x: float) -> None:
-    with mpmath.workdps(30):
-        k = mpmath.mpf(x) * mpmath.exp(-1j * mpmath.pi / 4)
-        ratio = k / 2 * mpmath.besselj(0, k) / mpmath.besselj(1, k)
-        expected = float(ratio.real)
-    check(
-        "resistance of a round wire, thin to thick",
-        round_wire_factor(wire_of(x), 1e3, RHO),
-        expected,
-        relative=1e-10,
-        why="rounding of the library's Bessel functions",
-        source="mpmath, Bessel functions with 30 digits",
-    )
-
-
 def test_direct_current_is_the_limit() -> None:
-    assert round_wire_factor(1e-3, 0.0, RHO) == 1.0
-    assert round_wire_internal_inductance_factor(1e-3, 0.0, RHO) == 1.0
     assert transverse_field_loss(1e-3, 0.1, 0.0, RHO) == 0.0
     assert slot_bar_factor(0.0, 7) == 1.0
 
@@ -244,16 +178,3 @@ def test_resistance_and_loss_of_a_coil() -> None:
     assert resistance == pytest.approx(10.0 * RHO / (math.pi / 4 * 1e-6), rel=1e-12)
     # The loss does not know the number of turns.
     assert slot_loss(50 * 3.0, 0.2, area, RHO) == pytest.approx(9.0 * float(resistance))
-
-
-def test_temperature_from_resistance() -> None:
-    """0.500 to 0.640 ohm from 22 °C is 93.96 °C."""
-    check(
-        "temperature of a winding from its resistance",
-        temperature_from_resistance(0.640, 0.500, 22.0),
-        93.96,
-        absolute=1e-9,
-        unit="°C",
-        why="arithmetic",
-        source="IEC 60034-1 (from memory)",
-    )

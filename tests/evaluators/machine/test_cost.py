@@ -17,8 +17,8 @@ PRICES = Prices(
 
 def test_waste_is_a_share_of_what_is_bought() -> None:
     """Half of the sheet is scrap: 1 kg in the machine is 2 kg bought."""
-    assert PRICES.electrical_steel.per_kg_installed == 4.0
-    assert PRICES.copper.per_kg_installed == 14.0
+    assert PRICES.electrical_steel.installed("base") == 4.0
+    assert PRICES.copper.installed("base") == 14.0
 
 
 def test_costs_add_up_over_designs() -> None:

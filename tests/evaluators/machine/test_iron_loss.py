@@ -13,11 +13,8 @@ from evaluators.machine.losses.iron import (
     classical_coefficient,
     excess_constant,
     fit_iron_loss,
-    improved_steinmetz,
-    iron_loss_from_harmonics,
     iron_loss_from_waveform,
     iron_loss_sine,
-    lamination_skin_factor,
 )
 
 check = OutsideChecks("losses")
@@ -87,29 +84,6 @@ def test_classical_lamination_loss(
     )
 
 
-@pytest.mark.parametrize(("ratio", "factor"), [
-    (0.5, 0.9999008), (1.0, 0.9984167), (1.5, 0.9920657), (2.0, 0.9755889), (3.0, 0.8932052),
-    (5.0, 0.6100304), (10.0, 0.2999920),
-])  # fmt: skip
-def test_lamination_skin_effect(ratio: float, factor: float) -> None:
-    check(
-        "skin effect in a sheet",
-        lamination_skin_factor(ratio),
-        factor,
-        absolute=6e-8,
-        why="printed digits",
-        source="diffusion in a plate, (3/x)(sinh x - sin x)/(cosh x - cos x), own evaluation",
-    )
-
-
-def test_lamination_skin_factor_is_continuous_and_bounded() -> None:
-    assert lamination_skin_factor(0.0) == 1.0
-    at_switch = lamination_skin_factor(np.array([0.1 - 1e-9, 0.1 + 1e-9]))
-    # Cancellation in cosh - cos at 0.1 leaves about 1e-12 / 0.1².
-    assert at_switch[0] == pytest.approx(at_switch[1], abs=1e-10)
-    assert lamination_skin_factor(1e4) == pytest.approx(3e-4, rel=1e-9)  # limit 3 / lambda
-
-
 def test_excess_constant() -> None:
     check(
         "constant of the excess loss",
@@ -165,16 +139,15 @@ def test_harmonics_and_waveform_agree_on_the_classical_part() -> None:
     wave = np.einsum("nh,ht->nt", amplitude, np.sin(np.outer(order, PHASE)))
     f = np.array([50.0, 400.0])
     by_wave = iron_loss_from_waveform(LAW, wave, f)
-    by_sum = iron_loss_from_harmonics(LAW, amplitude, f[:, None] * order)
+    by_harmonic = iron_loss_sine(LAW, amplitude, f[:, None] * order)
     check(
         "classical loss of a waveform by its harmonics",
         by_wave.classical,
-        by_sum.classical,
+        by_harmonic.classical.sum(axis=1),
         relative=2e-5,
         why="the polygon is short by (7 pi/4096)²/3 = 1e-5 at most",
         source="Parseval's theorem",
     )
-    assert by_sum.total.shape == (2,)
 
 
 def test_minor_loops_add_hysteresis_only_where_b_turns_back() -> None:
@@ -188,23 +161,6 @@ def test_minor_loops_add_hysteresis_only_where_b_turns_back() -> None:
     assert expected > 1.02  # the third harmonic makes dents at the crests
     sine = iron_loss_from_waveform(LAW, SINE, 50.0, minor_loops=True)
     assert sine.hysteresis == pytest.approx(iron_loss_sine(LAW, 1.0, 50.0).hysteresis, rel=1e-6)
-
-
-@pytest.mark.parametrize(("alpha", "beta", "ratio"), [
-    (1.2, 2.0, 0.9682610), (1.5, 2.5, 0.9128914), (2.0, 2.0, 0.8105695), (1.0, 2.0, 1.0),
-])  # fmt: skip
-def test_improved_steinmetz(alpha: float, beta: float, ratio: float) -> None:
-    """Sine in, Steinmetz out; triangle over sine at equal peak."""
-    sine = improved_steinmetz(3.0, alpha, beta, 0.8 * SINE, 1e3)
-    triangle = improved_steinmetz(3.0, alpha, beta, 0.8 * TRIANGLE, 1e3)
-    check(
-        "improved Steinmetz loss of a sine over Steinmetz', of a triangle over that of the sine",
-        [sine / (3.0 * 1e3**alpha * 0.8**beta), triangle / sine],
-        [1.0, ratio],
-        relative=1e-6,
-        why=POLYGON,
-        source="Venkatachalam, Sullivan, Abdallah, Tacca, COMPEL 2002, own evaluation",
-    )
 
 
 def test_no_field_no_loss() -> None:

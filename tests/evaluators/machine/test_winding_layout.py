@@ -237,7 +237,5 @@ def test_family_numbers() -> None:
     family = Family(12, 4, 5, 1)
     assert family.id == "Q12p4s5"
     assert family.cogging_periods == 24
-    assert family.star_periodicity == 4
-    assert family.slots_per_pole_and_phase == 0.5
     # 48,000 turns a minute are 800 a second; four pole pairs make 3,200 Hz of them.
     assert family.electrical_frequency(800 * 2 * np.pi) == pytest.approx(3200)
