@@ -12,7 +12,6 @@ import time
 import zlib
 from contextlib import ExitStack
 from pathlib import Path
-from types import TracebackType
 from typing import Self
 
 import numpy as np
@@ -109,12 +108,7 @@ class Archive:
     def __enter__(self) -> Self:
         return self
 
-    def __exit__(
-        self,
-        kind: type[BaseException] | None,
-        error: BaseException | None,
-        traceback: TracebackType | None,
-    ) -> None:
+    def __exit__(self, *raised: object) -> None:
         with self._exit:
             self.flush()
 

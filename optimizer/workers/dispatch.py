@@ -12,7 +12,6 @@ import os
 import time
 from collections.abc import Iterable, Iterator
 from dataclasses import dataclass
-from types import TracebackType
 from typing import Protocol, Self
 
 from threadpoolctl import threadpool_limits
@@ -78,12 +77,7 @@ class Dispatcher(Protocol):
     def __enter__(self) -> Self:
         """Return itself."""
 
-    def __exit__(
-        self,
-        kind: type[BaseException] | None,
-        error: BaseException | None,
-        traceback: TracebackType | None,
-    ) -> None:
+    def __exit__(self, *raised: object) -> None:
         """Close."""
 
 
@@ -96,12 +90,7 @@ class Closing:
     def __enter__(self) -> Self:
         return self
 
-    def __exit__(
-        self,
-        kind: type[BaseException] | None,
-        error: BaseException | None,
-        traceback: TracebackType | None,
-    ) -> None:
+    def __exit__(self, *raised: object) -> None:
         self.close()
 
 

@@ -6,29 +6,13 @@ from pathlib import Path
 
 import click
 
-
-def _check_output(
-    context: click.Context, parameter: click.Parameter, value: str | None
-) -> Path | None:
-    del context, parameter
-    if value is None:
-        return None
-    file = Path(value)
-    if file.suffix.lower() not in (".png", ".svg"):
-        msg = f"{value!r} must end with .png or .svg"
-        raise click.BadParameter(msg)
-    return file
+from studies.commands.options import file_option
 
 
 @click.command()
 @click.argument("results_folder", metavar="RESULTS/STUDY", type=click.Path())
 @click.argument("design", metavar="DESIGN_ID")
-@click.option(
-    "--output",
-    type=click.Path(),
-    callback=_check_output,
-    help="File to write, .png or .svg.  [default: DESIGN_ID-field.png]",
-)
+@file_option(".png", ".svg", default="DESIGN_ID-field.png")
 @click.option(
     "--angle",
     type=click.FloatRange(-3600.0, 3600.0),

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 import re
 from collections.abc import Callable
+from pathlib import Path
 from typing import Any, TypeVar, cast
 
 import click
@@ -95,3 +96,35 @@ def time_limit_option(command: Command) -> Command:
         "own evaluator, none for another.",
     )
     return option(command)
+
+
+def file_option(*endings: str, default: str) -> Callable[[Command], Command]:
+    """The option ``--output`` of a command that writes one file, a `Path` or None.
+
+    Parameters
+    ----------
+    endings : str
+        What the file's name may end with; the ending chooses the format.
+    default : str
+        The name that help tells for a file that is not named.
+    """
+    words = " or ".join(endings)
+
+    def checked(
+        context: click.Context, parameter: click.Parameter, value: str | None
+    ) -> Path | None:
+        del context, parameter
+        if value is None:
+            return None
+        file = Path(value)
+        if file.suffix.lower() not in endings:
+            msg = f"{value!r} must end with {words}"
+            raise click.BadParameter(msg)
+        return file
+
+    return click.option(
+        "--output",
+        type=click.Path(),
+        callback=checked,
+        help=f"File to write, {words}.  [default: {default}]",
+    )

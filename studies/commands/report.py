@@ -6,6 +6,8 @@ from pathlib import Path
 
 import click
 
+from studies.commands.options import MOST_WORKERS
+
 
 @click.command()
 @click.argument("folders", metavar="RESULTS/STUDY...", nargs=-1, required=True, type=click.Path())
@@ -18,7 +20,9 @@ import click
     help="Designs of each front that get a card; larger fronts are thinned evenly.",
 )
 @click.option(
-    "--workers", type=click.IntRange(1, 256), help="Processes; by default one for each processor."
+    "--workers",
+    type=click.IntRange(1, MOST_WORKERS),
+    help="Processes; by default one for each processor.",
 )
 @click.pass_context
 def report(

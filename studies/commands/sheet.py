@@ -6,29 +6,13 @@ from pathlib import Path
 
 import click
 
-
-def _check_output(
-    context: click.Context, parameter: click.Parameter, value: str | None
-) -> Path | None:
-    del context, parameter
-    if value is None:
-        return None
-    file = Path(value)
-    if file.suffix.lower() not in (".html", ".pdf"):
-        msg = f"{value!r} must end with .html or .pdf"
-        raise click.BadParameter(msg)
-    return file
+from studies.commands.options import file_option
 
 
 @click.command()
 @click.argument("results_folder", metavar="RESULTS/STUDY", type=click.Path())
 @click.argument("design", metavar="DESIGN_ID")
-@click.option(
-    "--output",
-    type=click.Path(),
-    callback=_check_output,
-    help="File to write, .html or .pdf.  [default: DESIGN_ID.html]",
-)
+@file_option(".html", ".pdf", default="DESIGN_ID.html")
 def sheet(results_folder: str, design: str, output: Path | None) -> None:
     """Write a printable sheet of one design, with what a colleague needs to check it by hand."""
     from studies.sheet.content import design_sheet

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import signal
 import sys
-from types import FrameType, TracebackType
+from types import FrameType
 from typing import Self
 
 HANDLED = (signal.SIGINT, signal.SIGTERM)
@@ -31,12 +31,7 @@ class Interruption:
         self._before = {item: signal.signal(item, self._handle) for item in HANDLED}
         return self
 
-    def __exit__(
-        self,
-        kind: type[BaseException] | None,
-        error: BaseException | None,
-        traceback: TracebackType | None,
-    ) -> None:
+    def __exit__(self, *raised: object) -> None:
         for item, handler in self._before.items():
             # Once all is stored, a further Ctrl-C must not spoil the last words and exit code.
             ended = self.asked and item == signal.SIGINT

@@ -11,7 +11,6 @@ import sys
 import time
 from collections.abc import Iterator, Mapping
 from pathlib import Path
-from types import TracebackType
 from typing import Self
 
 STARTED_WITHIN_S = 60.0  # on a busy machine
@@ -81,12 +80,7 @@ class LocalCluster:
     def __enter__(self) -> Self:
         return self
 
-    def __exit__(
-        self,
-        kind: type[BaseException] | None,
-        error: BaseException | None,
-        traceback: TracebackType | None,
-    ) -> None:
+    def __exit__(self, *raised: object) -> None:
         for process in reversed(self._processes):
             with contextlib.suppress(ProcessLookupError):
                 os.killpg(process.pid, signal.SIGKILL)
