@@ -30,6 +30,7 @@ TIP_STEPS = 3
 WEDGE_STEPS = 6
 WALL_STEPS = tuple(np.rint(WEDGE_STEPS * (1.0 - PLACES)).astype(int))
 BODY_NODES = 16
+_NODES, _WEIGHTS = np.polynomial.legendre.leggauss(BODY_NODES)
 
 
 @dataclass(frozen=True)
@@ -166,11 +167,10 @@ def _body(sections: CrossSections) -> _Body:
     s dr / (r * slot angle), and the mean linkage is that of s^2 dr / (r * slot angle) (slot
     leakage of any width profile; Pyrhonen et al. 2014, ch. 4).
     """
-    nodes, weights = np.polynomial.legendre.leggauss(BODY_NODES)
     depth = 0.5 * (sections.slot_radius - sections.wedge_radius)[:, None]
-    radius = sections.wedge_radius[:, None] + depth * (1.0 + nodes)
+    radius = sections.wedge_radius[:, None] + depth * (1.0 + _NODES)
     angle = sections.slot_angle(radius)
-    step = weights * depth / (angle * radius)
+    step = _WEIGHTS * depth / (angle * radius)
     half = 0.5 * sections.tooth_width[:, None]
     ring = np.pi / sections.family.slots * (sections.slot_radius[:, None] ** 2 - radius**2)
     bottom = sections.slot_radius[:, None]
@@ -183,7 +183,7 @@ def _body(sections: CrossSections) -> _Body:
         length=np.sum(2.0 * step, axis=1),
         winding=np.sum(step * enclosed**2, axis=1),
         # Leakage that crosses at a depth is carried by the rest of the tooth behind it.
-        tooth=np.sum(step * enclosed * 0.5 * (1.0 - nodes), axis=1),
+        tooth=np.sum(step * enclosed * 0.5 * (1.0 - _NODES), axis=1),
         yoke=np.sum(step * enclosed, axis=1),
     )
 

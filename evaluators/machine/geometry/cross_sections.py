@@ -20,6 +20,7 @@ from evaluators.machine.winding.families import Family
 FloatArray = NDArray[np.float64]
 
 MILLI = 1e-3
+_NODES, _WEIGHTS = np.polynomial.legendre.leggauss(8)
 SMALLEST_SHAFT_RADIUS = 0.5e-3  # below this no core is left to carry torque or the magnets
 
 
@@ -155,12 +156,10 @@ class CrossSections:
             - _tooth_sector_area(self.tip_radius, self.tip_half_width)
             + _tooth_sector_area(self.bore_radius, self.tip_half_width)
         )
-        # The wedge by Gauss-Legendre quadrature of angle times radius: smooth, so 8 points are
-        # exact to rounding.
-        nodes, weights = np.polynomial.legendre.leggauss(8)
+        # The wedge by quadrature of angle times radius: smooth, so 8 points are exact to rounding.
         half = 0.5 * (self.wedge_radius - self.tip_radius)[:, None]
-        radius = self.tip_radius[:, None] + half * (1.0 + nodes)
-        wedge = np.sum(weights * half * radius * self.slot_angle(radius), axis=1)
+        radius = self.tip_radius[:, None] + half * (1.0 + _NODES)
+        wedge = np.sum(_WEIGHTS * half * radius * self.slot_angle(radius), axis=1)
         return np.asarray(tip + wedge)
 
     @property
