@@ -10,7 +10,7 @@ from typing import Any
 
 import numpy as np
 
-from evaluators.machine.geometry.cross_sections import CrossSections, cross_sections
+from evaluators.machine.geometry.cross_sections import RADII, CrossSections, cross_sections
 from evaluators.machine.geometry.variables import VARIABLES
 from evaluators.machine.metrics import METRIC, METRICS
 from evaluators.machine.task import description
@@ -27,15 +27,7 @@ MILLI = 1e-3
 PHASE_NAMES = description.PHASE_NAMES
 GROUP_NAMES = description.GROUP_NAMES
 LENGTHS = (
-    "shaft_radius",
-    "core_radius",
-    "magnet_radius",
-    "rotor_radius",
-    "bore_radius",
-    "tip_radius",
-    "wedge_radius",
-    "slot_radius",
-    "outer_radius",
+    *RADII,
     "tooth_width",
     "slot_opening",
     "yoke_thickness",

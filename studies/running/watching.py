@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import os
 import re
 import socket
 import time
@@ -21,6 +20,7 @@ from studies.running.progress import duration
 from studies.stored.families import matrix
 from studies.stored.layout import Results
 from studies.stored.naming import search_names
+from studies.stored.processes import alive
 from studies.tables import number, percent, text_table
 
 WINDOW_S = 30.0  # over which the rate is taken
@@ -195,16 +195,6 @@ def writer_of(folder: Path) -> str:
     if match is None:
         return ""
     process, host = int(match[1]), match[2]
-    if host == socket.gethostname() and not _alive(process):
+    if host == socket.gethostname() and not alive(process):
         return ""
     return f"process {process}" if host == socket.gethostname() else f"process {process} on {host}"
-
-
-def _alive(process: int) -> bool:
-    try:
-        os.kill(process, 0)
-    except ProcessLookupError:
-        return False
-    except (PermissionError, OverflowError):
-        return True
-    return True

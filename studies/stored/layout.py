@@ -22,6 +22,7 @@ from typing import Any
 from optimizer.archive.durable import sync_folder
 from studies.errors import Path as KeyPath
 from studies.errors import ResultsError, StorageError, StudiesError, dotted, quoted
+from studies.stored.processes import alive
 from studies.study_file.definition import Study, study_from
 
 STUDY_FILE = "study.toml"
@@ -294,18 +295,8 @@ def _remove_drafts(root: Path, study: str) -> None:
     """Remove what processes left behind that were killed while they made this folder."""
     for draft in root.glob(f".{study}.*"):
         process = draft.name.rpartition(".")[2]
-        if process.isdecimal() and not _alive(int(process)):
+        if process.isdecimal() and not alive(int(process)):
             shutil.rmtree(draft, ignore_errors=True)
-
-
-def _alive(process: int) -> bool:
-    try:
-        os.kill(process, 0)
-    except ProcessLookupError:
-        return False
-    except (PermissionError, OverflowError):
-        return True
-    return True
 
 
 def _write(file: Path, content: bytes) -> None:

@@ -22,6 +22,7 @@ from evaluators.machine.materials.magnetization import MagnetizationCurve
 from evaluators.machine.quantity import MU_0
 from evaluators.machine.task.task import Construction, Duty, MaterialSet, Task
 from evaluators.machine.winding.families import design_winding
+from evaluators.machine.winding.winding import Winding
 
 FloatArray = NDArray[np.float64]
 Numbers = tuple[int, int, int]
@@ -43,6 +44,23 @@ DESIGN: dict[str, float] = {
     "slot_depth_ratio": 0.6,
     "yoke_ratio": 1.0,
     "current_density_A_mm2": 6.0,
+}
+
+# Of round numbers, for geometry.
+PLAIN: dict[str, float] = {
+    "rotor_radius_mm": 20.0,
+    "clearance_mm": 0.5,
+    "sleeve_thickness_mm": 1.0,
+    "magnet_thickness_mm": 4.0,
+    "magnet_arc_ratio": 0.9,
+    "core_ratio": 0.5,
+    "tooth_width_ratio": 0.5,
+    "tip_span_ratio": 1.3,
+    "tip_height_mm": 1.0,
+    "wedge_height_mm": 2.0,
+    "slot_depth_ratio": 0.5,
+    "yoke_ratio": 1.0,
+    "current_density_A_mm2": 5.0,
 }
 
 BOUNDS: dict[str, tuple[float, float]] = {
@@ -121,3 +139,11 @@ def sections(of: Task, batch: dict[str, FloatArray]) -> CrossSections:
     found, valid, reasons = cross_sections(of.winding.family, batch, of.construction)
     assert valid.size == reasons.size, reasons
     return found
+
+
+def plain_machine(
+    slots: int, pole_pairs: int, suspension_pole_pairs: int, **changes: float
+) -> tuple[CrossSections, Winding]:
+    """Cross-section and winding of `PLAIN`, with some variables changed, in the usual task."""
+    of = task(slots, pole_pairs, suspension_pole_pairs)
+    return sections(of, designs(**{**PLAIN, **changes})), of.winding

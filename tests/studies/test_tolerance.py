@@ -13,6 +13,7 @@ import pytest
 from click.testing import Result
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from machines import PLAIN
 from outside import OutsideChecks
 
 from evaluators.machine.geometry.cross_sections import cross_sections
@@ -26,23 +27,6 @@ from studies.tolerance.statistics import contributions, yield_of
 
 Run = Callable[..., Result]
 Write = Callable[..., Path]
-
-BASE = {
-    "rotor_radius_mm": 20.0,
-    "clearance_mm": 0.5,
-    "sleeve_thickness_mm": 1.0,
-    "magnet_thickness_mm": 4.0,
-    "magnet_arc_ratio": 0.9,
-    "core_ratio": 0.5,
-    "tooth_width_ratio": 0.5,
-    "tip_span_ratio": 1.3,
-    "tip_height_mm": 1.0,
-    "wedge_height_mm": 2.0,
-    "slot_depth_ratio": 0.5,
-    "yoke_ratio": 1.0,
-    "current_density_A_mm2": 5.0,
-}
-
 
 check = OutsideChecks("studies")
 
@@ -141,7 +125,7 @@ def test_lots_that_differ_widen_the_interval() -> None:
 def test_scattered_variables_give_back_the_scattered_dimensions(
     span: float, tooth: float, seed: int
 ) -> None:
-    design = {**BASE, "tip_span_ratio": span, "tooth_width_ratio": tooth}
+    design = {**PLAIN, "tip_span_ratio": span, "tooth_width_ratio": tooth}
     family = design_winding(12, 4, 5).family
     construction = Construction()
     batch = {name: np.array([value]) for name, value in design.items()}
@@ -161,12 +145,12 @@ def test_scattered_variables_give_back_the_scattered_dimensions(
 
 def test_without_deviation_the_variables_are_the_designs() -> None:
     family = design_winding(6, 2, 1).family
-    batch = {name: np.array([value]) for name, value in BASE.items()}
+    batch = {name: np.array([value]) for name, value in PLAIN.items()}
     sections, _, _ = cross_sections(family, batch, Construction())
     back = scattered_variables(sections, draw((DIMENSIONS[0],), 1, 1, 0))
     for name, value in back.items():
         if name not in ("rotor_radius_mm", "clearance_mm", "magnet_arc_ratio", "core_ratio"):
-            assert value[0] == pytest.approx(BASE[name], rel=1e-12)
+            assert value[0] == pytest.approx(PLAIN[name], rel=1e-12)
 
 
 def test_overrides_are_read_and_refused_clearly() -> None:

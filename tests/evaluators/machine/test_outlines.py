@@ -6,42 +6,17 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from machines import plain_machine
 from outside import OutsideChecks
 
-from evaluators.machine.geometry.cross_sections import CrossSections, cross_sections
 from evaluators.machine.geometry.outlines import Loop, Outline, outlines
-from evaluators.machine.task.task import Construction
 from evaluators.machine.winding.families import design_winding
-from evaluators.machine.winding.winding import Winding
 
-BASE = {
-    "rotor_radius_mm": 20.0,
-    "clearance_mm": 0.5,
-    "sleeve_thickness_mm": 1.0,
-    "magnet_thickness_mm": 4.0,
-    "magnet_arc_ratio": 0.9,
-    "core_ratio": 0.5,
-    "tooth_width_ratio": 0.5,
-    "tip_span_ratio": 1.3,
-    "tip_height_mm": 1.0,
-    "wedge_height_mm": 2.0,
-    "slot_depth_ratio": 0.5,
-    "yoke_ratio": 1.0,
-    "current_density_A_mm2": 5.0,
-}
 # The wedge side is drawn by arcs; everything else is exact to rounding.
 WEDGE_TOLERANCE = 1e-6
 ROUNDING = 1e-12
 
 check = OutsideChecks("geometry")
-
-
-def machine(slots: int, p: int, ps: int, **changes: float) -> tuple[CrossSections, Winding]:
-    winding = design_winding(slots, p, ps)
-    design = {name: np.array([value]) for name, value in (BASE | changes).items()}
-    sections, valid, reasons = cross_sections(winding.family, design, Construction())
-    assert valid.size == 1, reasons[0]
-    return sections, winding
 
 
 def flattened(loop: Loop, steps: int = 400) -> np.ndarray:
@@ -70,7 +45,7 @@ def total(parts: tuple[Outline, ...], part: str) -> float:
 @pytest.mark.parametrize("family", [(6, 2, 1), (12, 4, 5), (12, 2, 1), (24, 2, 1)])
 @pytest.mark.parametrize("tip_span", [0.6, 1.0, 1.5])
 def test_areas_equal_those_of_the_geometry(family: tuple[int, int, int], tip_span: float) -> None:
-    sections, winding = machine(*family, tip_span_ratio=tip_span)
+    sections, winding = plain_machine(*family, tip_span_ratio=tip_span)
     parts = outlines(sections, 0, winding)
     slots = family[0]
     for part, area in {
@@ -92,7 +67,7 @@ def test_areas_equal_those_of_the_geometry(family: tuple[int, int, int], tip_spa
 
 @pytest.mark.parametrize("family", [(6, 2, 1), (12, 2, 1)])
 def test_flattened_arcs_enclose_the_same_area(family: tuple[int, int, int]) -> None:
-    sections, winding = machine(*family)
+    sections, winding = plain_machine(*family)
     for item in outlines(sections, 0, winding):
         for loop in (item.outer, *item.holes):
             check(
@@ -123,7 +98,7 @@ def test_parts_fill_the_circle_without_overlap(
         "wedge_height_mm": wedge,
         "tip_height_mm": tip,
     }
-    sections, winding = machine(12, 4, 5, **changes)
+    sections, winding = plain_machine(12, 4, 5, **changes)
     parts = outlines(sections, 0, winding)
     outer = np.pi * (1e3 * sections.outer_radius[0]) ** 2
     bore, rotor = 1e3 * sections.bore_radius[0], 1e3 * sections.rotor_radius[0]
@@ -136,7 +111,7 @@ def test_parts_fill_the_circle_without_overlap(
 
 
 def test_vertices_lie_on_the_walls() -> None:
-    sections, winding = machine(12, 4, 5)
+    sections, winding = plain_machine(12, 4, 5)
     slot = next(item for item in outlines(sections, 0, winding) if item.part == "slot")
     points = slot.outer.vertices @ np.array([1.0, 1j])
     radius = np.abs(points)
@@ -149,7 +124,7 @@ def test_vertices_lie_on_the_walls() -> None:
 
 def test_layers_lie_where_the_winding_says() -> None:
     """Coil i of pitch 1 surrounds tooth i: both its sides touch that tooth."""
-    sections, winding = machine(12, 4, 5)
+    sections, winding = plain_machine(12, 4, 5)
     parts = {item.number: item for item in outlines(sections, 0, winding) if item.part == "winding"}
     for side in winding.coil_sides:
         middle = parts[2 * side.slot + side.layer - 1].outer.vertices.mean(axis=0)
@@ -159,7 +134,7 @@ def test_layers_lie_where_the_winding_says() -> None:
 
 
 def test_another_family_is_refused() -> None:
-    sections, _ = machine(12, 4, 5)
+    sections, _ = plain_machine(12, 4, 5)
     with pytest.raises(ValueError, match="Q6p2s1"):
         outlines(sections, 0, design_winding(6, 2, 1))
 

@@ -6,41 +6,17 @@ import math
 import re
 import xml.etree.ElementTree as ET
 
-import numpy as np
 import pytest
+from machines import PLAIN, plain_machine
 
-from evaluators.machine.geometry.cross_sections import CrossSections, cross_sections
-from evaluators.machine.task.task import Construction
 from evaluators.machine.winding.families import design_winding
-from evaluators.machine.winding.winding import Winding
 from studies.drawing.cross_section import cross_section_svg
 from studies.drawing.palette import FAMILY_COLOURS, MARKERS, family_mark
 from studies.drawing.slot_detail import slot_detail_svg, slot_measures
 from studies.drawing.svg import number, scale_bar_length
 from studies.drawing.winding_diagram import winding_svg
 
-DESIGN = {
-    "rotor_radius_mm": 20.0,
-    "clearance_mm": 0.5,
-    "sleeve_thickness_mm": 1.0,
-    "magnet_thickness_mm": 4.0,
-    "magnet_arc_ratio": 0.9,
-    "core_ratio": 0.5,
-    "tooth_width_ratio": 0.5,
-    "tip_span_ratio": 1.3,
-    "tip_height_mm": 1.0,
-    "wedge_height_mm": 2.0,
-    "slot_depth_ratio": 0.5,
-    "yoke_ratio": 1.0,
-    "current_density_A_mm2": 5.0,
-}
 NAME = 'Q<b>"&1'
-
-
-def machine(slots: int, p: int, ps: int) -> tuple[CrossSections, Winding]:
-    winding = design_winding(slots, p, ps)
-    design = {name: np.array([value]) for name, value in DESIGN.items()}
-    return cross_sections(winding.family, design, Construction())[0], winding
 
 
 def parsed(svg: str) -> ET.Element:
@@ -56,7 +32,7 @@ def tags(root: ET.Element, name: str) -> list[ET.Element]:
 
 @pytest.mark.parametrize("family", [(6, 2, 1), (12, 4, 5), (24, 2, 1)])
 def test_cross_section_shows_every_part_once(family: tuple[int, int, int]) -> None:
-    sections, winding = machine(*family)
+    sections, winding = plain_machine(*family)
     svg = cross_section_svg(sections, 0, winding, NAME, "key")
     root = parsed(svg)
     assert NAME in str(root.get("aria-label"))
@@ -75,7 +51,7 @@ def test_cross_section_shows_every_part_once(family: tuple[int, int, int]) -> No
 
 
 def test_signs_lie_where_the_winding_says() -> None:
-    sections, winding = machine(12, 4, 5)
+    sections, winding = plain_machine(12, 4, 5)
     root = parsed(cross_section_svg(sections, 0, winding, NAME, "key"))
     towards: dict[int, int] = {}
     for item in tags(root, "use"):
@@ -92,7 +68,7 @@ def test_signs_lie_where_the_winding_says() -> None:
 
 
 def test_scale_is_true() -> None:
-    sections, winding = machine(12, 4, 5)
+    sections, winding = plain_machine(12, 4, 5)
     svg = cross_section_svg(sections, 0, winding, NAME, "key")
     radii = [float(item.get("r", "")) for item in tags(parsed(svg), "circle")]
     assert max(radii) == pytest.approx(1e3 * sections.outer_radius[0], abs=1e-3)
@@ -104,15 +80,15 @@ def test_scale_is_true() -> None:
 
 @pytest.mark.parametrize("family", [(6, 2, 1), (12, 2, 1), (24, 2, 1)])
 def test_detail_letters_its_measures(family: tuple[int, int, int]) -> None:
-    sections, winding = machine(*family)
+    sections, winding = plain_machine(*family)
     root = parsed(slot_detail_svg(sections, 0, winding, "key"))
     measures = slot_measures(sections, 0)
     assert [item.text for item in tags(root, "text")] != []
     assert {item.text for item in tags(root, "text")} == {item.letter for item in measures}
     found = {item.name: item.value for item in measures}
-    assert found["mechanical clearance"] == pytest.approx(DESIGN["clearance_mm"])
-    assert found["wedge height"] == pytest.approx(DESIGN["wedge_height_mm"])
-    assert found["magnet thickness"] == pytest.approx(DESIGN["magnet_thickness_mm"])
+    assert found["mechanical clearance"] == pytest.approx(PLAIN["clearance_mm"])
+    assert found["wedge height"] == pytest.approx(PLAIN["wedge_height_mm"])
+    assert found["magnet thickness"] == pytest.approx(PLAIN["magnet_thickness_mm"])
     opening = 1e3 * sections.slot_opening[0]
     assert found["slot opening (chord at the bore)"] == pytest.approx(opening)
 
