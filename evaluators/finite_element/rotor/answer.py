@@ -3,6 +3,8 @@
 Orders up to `COUPLED` times the number of slots mix among themselves (`conducting_magnets.py`),
 those above answer one by one (`eddy.py`): a field of such an order hardly reaches the magnets.
 A harmonic of negative frequency is the conjugate of one of opposite order and positive frequency.
+In a real field it mixes with those of positive frequency; in a complex one, which stands for two
+real fields a quarter period apart, the two signs are strangers to each other.
 """
 
 from __future__ import annotations
@@ -37,8 +39,8 @@ class _Group:
         Of the harmonics' arrays.
     frequency, order : arrays (e,)
         Place of each in the answer.
-    mirrored : bool
-        Whether their frequencies are negative.
+    mirrored : array (e,)
+        Which frequencies are negative.
     answer : Answer
     change : array (f, n, m, m)
         Response less that at standstill, of these harmonics alone.
@@ -50,7 +52,7 @@ class _Group:
     column: IntArray
     frequency: IntArray
     order: IntArray
-    mirrored: bool
+    mirrored: BoolArray
     answer: Answer
     change: ComplexArray
     relaxation: ComplexArray
@@ -60,13 +62,15 @@ class _Group:
         f, n, m = self.change.shape[:3]
         result = np.zeros((f, n, m), dtype=np.complex128)
         part = values[self.row, self.column]
-        result[self.frequency, :, self.order] = np.conj(part) if self.mirrored else part
+        result[self.frequency, :, self.order] = self._turned(part)
         return result
 
     def scatter(self, values: ComplexArray, result: ComplexArray) -> None:
         """Inverse of `gather`, into `result`."""
-        part = values[self.frequency, :, self.order]
-        result[self.row, self.column] = np.conj(part) if self.mirrored else part
+        result[self.row, self.column] = self._turned(values[self.frequency, :, self.order])
+
+    def _turned(self, part: ComplexArray) -> ComplexArray:
+        return np.where(self.mirrored[:, None], np.conj(part), part)
 
 
 class RotorAnswer:
@@ -99,21 +103,19 @@ class RotorAnswer:
         orders, speed = harmonics.orders, harmonics.speed
         moving = speed != 0.0
         coupled = moving & (np.abs(orders) <= COUPLED * slots)
-        self._groups = [
-            group
-            for mirrored in (False, True)
-            for group in self._grouped(coupled & ((speed < 0.0) == mirrored), static, mirrored)
-        ]
+        apart = [coupled] if harmonics.real else [coupled & (speed > 0.0), coupled & (speed < 0.0)]
+        self._groups = [group for chosen in apart for group in self._grouped(chosen, static)]
         self._alone = np.nonzero(moving & ~coupled)
         row, column = self._alone
         response = eddy.response(orders[column], speed[row, column])
         self._change = response - static[column]
         self._relaxation = 1.0 / (1.0 + self._change / static[column])
 
-    def _grouped(self, chosen: BoolArray, static: FloatArray, mirrored: bool) -> list[_Group]:
+    def _grouped(self, chosen: BoolArray, static: FloatArray) -> list[_Group]:
         harmonics, pairs = self.harmonics, self.ring.pole_pairs
         row, column = np.nonzero(chosen)
-        signed = harmonics.orders[column] * (-1 if mirrored else 1)
+        mirrored = harmonics.speed[row, column] < 0.0
+        signed = harmonics.orders[column] * np.where(mirrored, -1, 1)
         speed = np.abs(harmonics.speed[row, column])
         magnet = NU_0 / self.eddy.rotor.magnet_permeability
         groups = []
@@ -138,7 +140,14 @@ class RotorAnswer:
             relaxation = np.asarray(np.linalg.inv(answered), dtype=np.complex128)
             groups.append(
                 _Group(
-                    row[here], column[here], frequency, order, mirrored, answer, change, relaxation
+                    row[here],
+                    column[here],
+                    frequency,
+                    order,
+                    mirrored[here],
+                    answer,
+                    change,
+                    relaxation,
                 )
             )
         return groups

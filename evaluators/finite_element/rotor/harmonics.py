@@ -35,6 +35,9 @@ class Harmonics:
     angles : array (t,)
         Rotor positions, rad.
     pole_pairs : int
+    real : bool
+        Whether the field is real, so that its orders are positive and their conjugates go without
+        saying.
     """
 
     orders: IntArray
@@ -42,13 +45,14 @@ class Harmonics:
     speed: FloatArray
     angles: FloatArray
     pole_pairs: int
+    real: bool
 
     @classmethod
     def torque(cls, model: FieldModel, orders: IntArray, angles: FloatArray) -> Harmonics:
         """Harmonics of the torque field, a real field: positive orders suffice."""
         shift = int(model.symmetry.torque_shift[1])
         factor = int(model.symmetry.torque_sign[1]) * np.exp(-1j * orders * model.pitch * shift)
-        return cls._of(model, orders, angles, factor, 0)
+        return cls._of(model, orders, angles, factor, besides=0, real=True)
 
     @classmethod
     def suspension(cls, model: FieldModel, orders: IntArray, angles: FloatArray) -> Harmonics:
@@ -63,7 +67,7 @@ class Harmonics:
         used = int(np.argmax(np.abs(currents)))
         beta = currents[(used + shift) % model.slots] / currents[used]
         factor = beta * np.exp(-1j * signed * model.pitch * shift)
-        return cls._of(model, signed, angles, factor, model.pole_pairs)
+        return cls._of(model, signed, angles, factor, besides=model.pole_pairs, real=False)
 
     @classmethod
     def _of(
@@ -72,13 +76,15 @@ class Harmonics:
         orders: IntArray,
         angles: FloatArray,
         factor: ComplexArray,
+        *,
         besides: int,
+        real: bool,
     ) -> Harmonics:
         first = np.rint(-np.angle(factor) / (np.pi / 3.0)).astype(np.int64)
         step = np.fft.fftfreq(angles.size, 1.0 / angles.size).astype(np.int64)
         turns = orders - model.pole_pairs * (first - 6 * step[:, None]) + besides
         speed = turns * model.task.duty.speed
-        return cls(orders, first, speed, angles, model.pole_pairs)
+        return cls(orders, first, speed, angles, model.pole_pairs, real)
 
     def analyse(self, values: ComplexArray) -> ComplexArray:
         """Amplitudes (t, m, LANES) of coefficients over the positions (t, m, LANES)."""
