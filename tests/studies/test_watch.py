@@ -153,7 +153,10 @@ def test_a_terminal_is_redrawn_in_place(monkeypatch: pytest.MonkeyPatch) -> None
             screen.show(["a" * 50, "b"])
             screen.show([f"line {k}" for k in range(9)])
             screen.show(["end"])
-            text = os.read(parent, 10_000).decode().replace("\r\n", "\n")
+            written = b""
+            while b"end" not in written:  # a terminal hands over what it has so far
+                written += os.read(parent, 10_000)
+            text = written.decode().replace("\r\n", "\n")
     finally:
         os.close(parent)
     first, second, third = text.split("\x1b[J")[1:]

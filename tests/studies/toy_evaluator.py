@@ -51,9 +51,10 @@ class ToyEvaluator:
         arc = designs["magnet_arc_ratio"]
         slots = self.task.winding.family.slots
         special = {
-            "loss_copper_W": 10.0 * density**2,
+            # Copper wants large rotors and cost small ones, so that fronts hold both.
+            "loss_copper_W": 200.0 * density**2 / radius,
             "loss_iron_W": radius,
-            "loss_total_W": 10.0 * density**2 + radius,
+            "loss_total_W": 200.0 * density**2 / radius + radius,
             "cost": radius**2 / density,
             "ripple_index": 1.0 + (arc - 0.8) ** 2 * slots + 0.01 * radius,
             "efficiency": 1.0 / (1.0 + 1e-4 * density**2),
