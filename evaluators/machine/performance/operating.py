@@ -237,6 +237,8 @@ def _length_and_drag(
     Losses in iron and rotor come from fields that move against the part, so the shaft feeds them.
     A little of them is fed by the currents: counted as drag it lengthens the stack, on the safe
     side. (Common practice: iron and rotor losses of a magnet machine are taken off its shaft.)
+    The rotor's loss by the suspension field, some hundredths of the other, is no exact drag:
+    see `evaluators/NEGLECTED.md`.
     They and the friction of the gap grow with the length, the friction of the end faces does not,
     so the balance torque' L = (P + faces + losses' L + gap' (L + overhang)) / speed is linear in
     the length L.
