@@ -28,7 +28,8 @@ from studies.study_file.schema import (
 )
 from studies.study_file.schema_base import KILO, MEGA, MICRO, MILLI, Section
 from studies.study_file.schema_machine import (
-    FACTORS,
+    LITRE,
+    PER_MINUTE,
     CoolingSection,
     FaultSection,
     GasSection,
@@ -37,6 +38,21 @@ from studies.study_file.schema_machine import (
 from studies.suggestions import stem, suffix
 
 RPM = 2.0 * pi / 60.0  # rad/s
+
+FACTORS = {
+    "kW": KILO,
+    "rpm": RPM,
+    "mm_s": MILLI,
+    "kPa": KILO,
+    "MPa": MEGA,
+    "mm": MILLI,
+    "um": MICRO,
+    "L_min": LITRE * PER_MINUTE,
+    "L_s": LITRE,
+    "kg_cm2": 1e-4,
+    "N_mm": KILO,
+}
+"""Suffix to SI; suffixes that are SI already, and degrees, are left out."""
 
 MATERIAL_KINDS = {
     "stator_steel": "electrical_steel",
@@ -52,54 +68,18 @@ MATERIAL_KINDS = {
 
 def duty(section: DutySection) -> Duty:
     """Duty in watts, radians per second and volts."""
-    return Duty(
-        power=section.power_kW * KILO,
-        speed=section.speed_rpm * RPM,
-        overspeed_ratio=section.overspeed_ratio,
-        dc_link_voltage=section.dc_link_V,
-        voltage_reserve=section.voltage_reserve,
-        suspension_share=section.suspension_share,
-        orientation=section.orientation,
-        balance_grade=section.balance_grade_mm_s * MILLI,
-        rated_suspension_share=section.rated_suspension_share,
-        process_force=section.process_force_N,
-        lowest_speed_ratio=section.lowest_speed_ratio,
-        highest_speed_ratio=section.highest_speed_ratio,
-    )
+    values = _si(section)
+    return Duty(dc_link_voltage=values.pop("dc_link"), **values)
 
 
 def conditions(section: ConditionsSection) -> Conditions:
     """Temperatures in degrees Celsius, pressure in pascals."""
-    return Conditions(
-        winding_temperature=section.winding_temperature_C,
-        magnet_temperature=section.magnet_temperature_C,
-        sleeve_temperature=section.sleeve_temperature_C,
-        ambient_temperature=section.ambient_temperature_C,
-        gas_temperature=section.gas_temperature_C,
-        gas_pressure=section.gas_pressure_kPa * KILO,
-    )
+    return Conditions(**_si(section))
 
 
 def construction(section: ConstructionSection) -> Construction:
     """Lengths in metres, pressure in pascals."""
-    interference = section.sleeve_interference_um
-    return Construction(
-        magnetisation=section.magnetisation,
-        copper_fill=section.copper_fill,
-        magnet_segments=section.magnet_segments,
-        magnet_axial_segment=section.magnet_axial_segment_mm * MILLI,
-        strand_diameter=section.strand_diameter_mm * MILLI,
-        wire_grade=section.wire_grade,
-        winding_packing=section.winding_packing,
-        parallel_groups=section.parallel_groups,
-        end_turn_extension=section.end_turn_extension_mm * MILLI,
-        slot_insulation=section.slot_insulation_mm * MILLI,
-        minimum_slot_opening=section.minimum_slot_opening_mm * MILLI,
-        sleeve_interference=None if interference is None else interference * MICRO,
-        contact_pressure=section.contact_pressure_MPa * MEGA,
-        end_clearance=section.end_clearance_mm * MILLI,
-        rotor_overhang=section.rotor_overhang_mm * MILLI,
-    )
+    return Construction(**_si(section))
 
 
 def ripple(section: RippleSection) -> RippleWeights:
@@ -123,7 +103,10 @@ def fault(section: FaultSection) -> Fault:
 
 
 def _si(section: Section) -> dict[str, Any]:
-    """Values in SI by the machine's names: the keys without their units."""
+    """Values in SI by the machine's names: the keys without their units.
+
+    A key that the machine does not know under this name is an error of the caller's constructor.
+    """
     return {
         stem(key): value * FACTORS[suffix(key)] if value and suffix(key) in FACTORS else value
         for key, value in section.model_dump().items()

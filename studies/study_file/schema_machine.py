@@ -168,13 +168,3 @@ class FaultSection(Section):
     current_ratio: float = _number(
         Fault.current_ratio, 0.0, 20.0, "stated peak current over the peak torque current"
     )
-
-
-FACTORS = {
-    "mm": MILLI,
-    "L_min": LITRE * PER_MINUTE,
-    "L_s": LITRE,
-    "kg_cm2": 1e-4,
-    "N_mm": KILO,
-}
-"""Suffix to SI; suffixes that are SI already are left out."""
