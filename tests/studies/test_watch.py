@@ -33,9 +33,10 @@ def command(*arguments: str) -> list[str]:
 
 
 @pytest.fixture
-def sweep(write_study: Write) -> Iterator[subprocess.Popen[bytes]]:
-    """A sweep of two families that takes several seconds."""
-    write_study(('name = "toy"', 'name = "toy"\nsettings = { delay_s = 0.5 }'))
+def sweep(write_study: Write, request: pytest.FixtureRequest) -> Iterator[subprocess.Popen[bytes]]:
+    """A sweep of two families that takes several seconds; its parameter is the time of a call."""
+    delay = getattr(request, "param", 0.5)
+    write_study(('name = "toy"', f'name = "toy"\nsettings = {{ delay_s = {delay} }}'))
     process = subprocess.Popen(
         command("sweep", "small.toml", "--budget", "150", "--workers", "1"),
         stdout=subprocess.DEVNULL,
@@ -83,6 +84,7 @@ def test_watch_follows_a_running_sweep_to_its_end(sweep: subprocess.Popen[bytes]
         assert len(item.front) == stored.front.num_rows
 
 
+@pytest.mark.parametrize("sweep", [3.0], indirect=True)  # outlasts the start of watch
 def test_control_c_ends_the_watching_and_not_the_sweep(sweep: subprocess.Popen[bytes]) -> None:
     wait_for_rows(sweep)
     watching = subprocess.Popen(
