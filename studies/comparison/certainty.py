@@ -112,7 +112,7 @@ class Certainty:
     overall : Overall or None
         Test of all families together; None for fewer than three.
     least_p : float
-        Smallest p-value that the smallest numbers of searches can give, before the correction.
+        Smallest p-value that any two of the families can give, before the correction.
     needed : int
         Searches of each family with which two families could be told apart.
     """

@@ -109,7 +109,10 @@ def _efforts(certainty: Certainty) -> list[str]:
 
 def _sentence(pair: Pair, counted: int) -> str:
     several = f"; {p_value(pair.corrected)} with all {counted} pairs counted" if counted > 1 else ""
-    verdict = "not chance" if pair.sure else "may be chance"
+    verdict = "hardly chance" if pair.sure else "may be chance"
+    if pair.sure and pair.probability < 0.5:
+        # Possible with many searches: the test looks at all ranks, the order at the middle ones.
+        verdict += ", and against the order of their medians"
     if pair.equal == pair.pairs:
         return f"{pair.first} and {pair.second} reach the same in all pairs of searches (p = 1)."
     ties = f" and equal in {pair.equal}" if pair.equal else ""
