@@ -18,6 +18,7 @@ from evaluators.machine.metrics import METRICS
 from evaluators.machine.task.cooling import Cooling
 from evaluators.machine.task.rotor_layout import RotorLayout
 from evaluators.machine.task.task import Conditions, Construction, Duty, RippleWeights
+from studies import cli, commands
 from studies.shipped.library import shipped
 from studies.study_file import convert
 from studies.study_file.crosschecks import Limit
@@ -276,6 +277,11 @@ def test_help_is_quick_and_lists_all_commands(process: Callable[..., object]) ->
     # Processor time, which hardly depends on what else runs: 0.08 s measured on slow cores. A
     # user begins to wait at about 0.3 s.
     assert min(times) < 0.3
+
+
+def test_every_file_of_commands_is_a_command() -> None:
+    files = {file.stem for file in Path(commands.__file__).parent.glob("*.py")}
+    assert set(cli.main.commands) == files - {"__init__", "options"}
 
 
 def test_version(hovergap: Run) -> None:
