@@ -9,6 +9,8 @@ import pytest
 from evaluators.analytic.evaluator import AnalyticEvaluator
 from evaluators.machine.demagnetisation import ArmatureReaction
 from evaluators.machine.losses.eddy import rotor_eddy_loss
+from evaluators.machine.materials import library as materials
+from evaluators.machine.materials.library import ElectricalSteel
 from evaluators.machine.performance.circuit import END_TURN_PERMEANCE
 from evaluators.machine.quantity import MU_0
 
@@ -99,3 +101,27 @@ def test_pull_of_a_displaced_rotor_is_nearly_linear() -> None:
     at_touchdown = 1.5 * (touchdown * clearance / gap) ** 2
     assert at_touchdown == pytest.approx(0.005, rel=0.02)
     assert 1.5 * (zone * touchdown * clearance / gap) ** 2 < 0.001
+
+
+def sheet_skin_factor(steel: str, flux_density: float, frequency: float) -> float:
+    """Classical eddy loss with skin effect over that without, at the permeability of B.
+
+    (3/x)(sinh x - sin x)/(cosh x - cos x), x = thickness over skin depth: Bozorth, Ferromagnetism,
+    1951 (from memory).
+    """
+    sheet = materials.load(ElectricalSteel, steel)
+    permeability = flux_density / float(sheet.magnetization.field(np.array([flux_density]))[0])
+    depth = np.sqrt(float(sheet.resistivity.value) / (np.pi * frequency * permeability))
+    x = float(sheet.thickness.value) / depth
+    return float(3.0 / x * (np.sinh(x) - np.sin(x)) / (np.cosh(x) - np.cos(x)))
+
+
+@pytest.mark.parametrize(
+    ("steel", "left"),
+    [("NO20-1200", 19 / 20), ("M270-35A", 2 / 3), ("M330-50A", 1 / 2)],
+)
+def test_skin_effect_of_sheets_is_as_large_as_the_page_says(steel: str, left: float) -> None:
+    # The page rounds to a simple fraction.
+    assert sheet_skin_factor(steel, 1.0, 3200.0) == pytest.approx(left, abs=0.04)
+    assert sheet_skin_factor(steel, 1.0, 9600.0) < left - 0.1
+    assert sheet_skin_factor(steel, 1.5, 3200.0) > 0.97
