@@ -22,7 +22,7 @@ class Turns(NamedTuple):
 
 
 def choose_turns(per_turn: ArrayLike, limit: float, groups: int | None) -> Turns:
-    """Return the most turns that the terminal voltage allows.
+    """Return the most turns that the terminal voltage allows (common practice).
 
     Only the two groups of a phase can be in parallel for torque: their torque EMFs are equal. Two
     coils of one group are never alike in both fields, as p and p+-1 have no common divisor, so
@@ -72,7 +72,8 @@ def phase_voltage(
 ) -> PhaseVoltage:
     """Return the peak voltages of both currents and the displacement power factor of the torque's.
 
-    Torque current in phase with the EMF, no saliency; the suspension current meets no EMF.
+    Torque current in phase with the EMF, no saliency; the suspension current meets no EMF. Phasor
+    diagram of a synchronous machine (common practice).
 
     Parameters
     ----------

@@ -16,6 +16,8 @@ def skin_depth(
 ) -> FloatArray:
     """Return the skin depth in m, sqrt(rho / (pi f mu)); infinite at zero frequency.
 
+    Landau, Lifshitz, *Electrodynamics of Continuous Media*, section 59 (from memory).
+
     Parameters
     ----------
     frequency
@@ -36,7 +38,7 @@ def winding_resistance(
     copper_area: ArrayLike,
     resistivity: ArrayLike,
 ) -> FloatArray:
-    """Return the direct-current resistance of a coil in ohm.
+    """Return the direct-current resistance of a coil in ohm, rho l/A by definition.
 
     Parameters
     ----------
@@ -58,6 +60,8 @@ def slot_loss(
     ampere_turns: ArrayLike, turn_length: ArrayLike, copper_area: ArrayLike, resistivity: ArrayLike
 ) -> FloatArray:
     """Return the direct-current loss of coils in W, whatever their number of turns.
+
+    R I² with `winding_resistance`.
 
     Parameters
     ----------
@@ -162,6 +166,7 @@ def strand_factor(
     Dowell's replacement: strands lie in a square grid over slot width and depth, each round is a
     square of equal area, and a layer is a sheet whose conductivity is lowered by the share of
     the slot width that is copper. Strands in parallel are taken as perfectly transposed.
+    Sources as for `slot_bar_factors`.
 
     Parameters
     ----------

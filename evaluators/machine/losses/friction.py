@@ -13,7 +13,7 @@ from evaluators.machine.quantity import FloatArray, floats
 def gap_reynolds(
     radius: ArrayLike, gap: ArrayLike, speed: ArrayLike, density: ArrayLike, viscosity: ArrayLike
 ) -> FloatArray:
-    """Return the Reynolds number rho w R delta / mu of the gap flow.
+    """Return the Reynolds number of the gap flow, by definition rho w R delta / mu.
 
     Parameters
     ----------

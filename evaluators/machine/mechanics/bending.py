@@ -80,6 +80,8 @@ def beam_matrices(
 def natural_speeds(stiffness: FloatArray, masses: FloatArray) -> FloatArray:
     """Return all natural angular frequencies in rad/s, rising, (..., n, size).
 
+    By definition the roots of the eigenvalues of K x = w² M x.
+
     Parameters
     ----------
     stiffness : array (..., n, size, size)
@@ -95,6 +97,8 @@ def supported_modes(
     free: FloatArray, supported: FloatArray, masses: FloatArray
 ) -> tuple[FloatArray, FloatArray]:
     """Return natural frequencies of supported beams, and how much of each mode is bending.
+
+    Natural frequencies as in `natural_speeds`; the share is one of energies, by definition.
 
     Parameters
     ----------
@@ -127,7 +131,10 @@ def _scaled(stiffness: FloatArray, lower: FloatArray) -> FloatArray:
 
 
 def amplification_factor(damping_ratio: ArrayLike) -> FloatArray:
-    """Return the amplification factor 1/(2 zeta) of a lightly damped mode."""
+    """Return the amplification factor 1/(2 zeta) of a lightly damped mode.
+
+    API RP 684 (from memory).
+    """
     return np.asarray(0.5 / floats(damping_ratio))
 
 

@@ -57,7 +57,8 @@ def liquid(temperature_C: ArrayLike, glycol: bool) -> Liquid:
     """Return properties of water, or of water with half its mass of ethylene glycol.
 
     Linear between the points of a table, the viscosity in its logarithm; held beyond 95 degC and
-    below 5 (water) or -30 degC (glycol).
+    below 5 (water) or -30 degC (glycol). Water by
+    IAPWS, the mixture by CoolProp 8.
     """
     table = _HALF_GLYCOL if glycol else _WATER
     at = floats(temperature_C)
@@ -69,7 +70,8 @@ def liquid(temperature_C: ArrayLike, glycol: bool) -> Liquid:
 def frame_conductance(cooling: Cooling, outer_radius: FloatArray, length: FloatArray) -> FloatArray:
     """Return the conductance from the frame's outside to the coolant at its inlet, (n,) W/K.
 
-    Half the temperature rise of a liquid between inlet and outlet is part of it.
+    Half the temperature rise of a liquid between inlet and outlet is part of it. Air by
+    `plate_coefficient` and `rib_efficiency`, liquids by `duct_nusselt`.
 
     Parameters
     ----------

@@ -22,7 +22,7 @@ def taylor_squared(
     """Return the squared Taylor number w² r_m delta³ rho² / mu² of the gap.
 
     r_m is the mean radius of the gap; the geometric factor of Becker and Kaye is left out, which
-    is within 1 % of one for thin gaps.
+    is within 1 % of one for thin gaps. Taylor 1923.
 
     Parameters
     ----------

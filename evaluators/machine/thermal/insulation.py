@@ -20,7 +20,7 @@ REFERENCE_AMBIENT = 40.0  # degC, to which the rises belong; IEC 60034-1
 
 
 def class_margin(insulation_class: str, hot_spot_C: ArrayLike) -> FloatArray:
-    """Return what is left of the class temperature at the hottest point, in K.
+    """Return what is left of `CLASS_TEMPERATURE` at the hottest point, in K.
 
     Parameters
     ----------

@@ -73,7 +73,7 @@ class Network:
 
 
 def series(*resistances: FloatArray | float) -> FloatArray:
-    """Return the conductance of resistances in series, W/K from K/W."""
+    """Return the conductance of resistances in series, by definition the inverse sum; W/K, K/W."""
     total: FloatArray = np.asarray(0.0)
     for resistance in resistances:
         total = np.asarray(total + resistance)
