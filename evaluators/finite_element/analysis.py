@@ -21,6 +21,7 @@ from evaluators.finite_element.outcome.quantities import (
     suspension_inductance,
     suspension_loads,
 )
+from evaluators.finite_element.rotor.answer import eddy_rotor
 from evaluators.finite_element.rotor.separate_magnets import SeparateMagnets
 from evaluators.finite_element.solution import newton
 from evaluators.finite_element.solution.batch import BatchField, Equations, Solution, SolverFactory
@@ -126,7 +127,7 @@ class Induced:
 def induce(fields: StaticFields, exciting: Excitation) -> Induced:
     """Add the rotor's induced currents to static fields."""
     batch = fields.batch
-    rotor = transient.eddy_rotor(batch, _torque(fields.loaded).real.mean(axis=0))
+    rotor = eddy_rotor(batch, _torque(fields.loaded).real.mean(axis=0))
     main = transient.torque_field(batch, rotor, fields.loaded, exciting.torque, fields.separate)
     equations = batch.equations(batch.model.suspension)
     control = transient.suspension_field(
@@ -200,7 +201,10 @@ def evaluate(fields: StaticFields, exciting: Excitation) -> Result:
     yoke = np.array(iron.yoke) * (1.0 + share[1])
     hysteresis, eddy, excess = teeth + yoke
     if induced is None:
-        magnet, sleeve = _rotor_loss(batch, loaded, small, exciting, mean_torque)
+        loss = losses.rotor_loss(
+            batch, mean_torque, loaded, small, exciting.suspension, fields.separate
+        )
+        magnet, sleeve = loss.magnet, loss.sleeve + loss.shaft
     else:
         magnet, sleeve = induced.magnet, induced.sleeve
     field = FieldSolution(
@@ -239,30 +243,6 @@ def evaluate(fields: StaticFields, exciting: Excitation) -> Result:
 def _main(force: Force, forward: bool) -> ComplexArray:
     """Mean force per ampere-turn, by whichever of phasor and conjugate makes it, (LANES,)."""
     return np.asarray((force.direct if forward else force.mirrored).mean(axis=0))
-
-
-def _rotor_loss(
-    batch: BatchField,
-    loaded: Solution,
-    small: ComplexArray,
-    exciting: Excitation,
-    torque: FloatArray,
-) -> tuple[FloatArray, FloatArray]:
-    """Loss of magnets and sleeve by the static field's harmonics, (LANES,) each, W/m."""
-    model = batch.model
-    length = model.task.duty.shaft_torque / np.abs(torque)
-    orders = batch.gap.class_orders(model.symmetry.suspension)
-    orders = orders[orders <= 4 * model.slots]
-    plus, minus = batch.coefficients_both_sides(
-        small.mean(axis=0, keepdims=True),
-        model.symmetry.suspension,
-        model.suspension.lattice.bore,
-        orders,
-    )
-    eddy = losses.rotor_loss(
-        batch, loaded, (orders, plus[0], minus[0]), exciting.suspension, length
-    )
-    return eddy.magnet.sum(axis=1), eddy.sleeve.sum(axis=1)
 
 
 def _torque(solution: Solution) -> ComplexArray:

@@ -18,10 +18,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from evaluators.finite_element.outcome.quantities import suspension_loads
-from evaluators.finite_element.rotor.answer import RotorAnswer
-from evaluators.finite_element.rotor.eddy import Conductors, EddyLoss, EddyRotor
+from evaluators.finite_element.rotor.answer import RotorAnswer, rotor_answer
+from evaluators.finite_element.rotor.eddy import EddyLoss, EddyRotor
 from evaluators.finite_element.rotor.harmonics import Harmonics
-from evaluators.finite_element.rotor.separate_magnets import SeparateMagnets, ring_of
+from evaluators.finite_element.rotor.separate_magnets import SeparateMagnets
 from evaluators.finite_element.solution.admittance import (
     Load,
     admittance,
@@ -54,33 +54,6 @@ class InducedTorque:
     solution: Solution
     loss: EddyLoss
     unsettled: FloatArray
-
-
-def eddy_rotor(batch: BatchField, torque: FloatArray) -> EddyRotor:
-    """Conducting rotor of a batch whose stack is as long as `torque` (LANES,) per metre asks."""
-    model = batch.model
-    length = model.task.duty.shaft_torque / np.abs(torque)
-    conductors = Conductors.of(model.task, batch.sections.magnet_arc_ratio, length)
-    return EddyRotor(batch.rotor, batch.reluctivity, model.discretisation.iron_rings, conductors)
-
-
-def rotor_answer(
-    batch: BatchField,
-    rotor: EddyRotor,
-    harmonics: Harmonics,
-    separate: SeparateMagnets | None = None,
-) -> RotorAnswer:
-    """Answer of a batch's rotor to the harmonics of its torque or suspension field."""
-    model = batch.model
-    filler = model.recoil if separate is None else separate.filler_permeability
-    return RotorAnswer(
-        harmonics,
-        rotor,
-        ring_of(batch, filler),
-        model.task.construction.magnet_segments,
-        model.slots,
-        batch.response[np.abs(harmonics.orders)],
-    )
 
 
 def torque_field(

@@ -15,10 +15,16 @@ import numpy as np
 from numpy.typing import NDArray
 
 from evaluators.finite_element.rotor.conducting_magnets import Answer, ConductingMagnets, Spaces
-from evaluators.finite_element.rotor.eddy import EddyLoss, EddyRotor
+from evaluators.finite_element.rotor.eddy import LAYERS, Conductors, EddyLoss, EddyRotor
 from evaluators.finite_element.rotor.harmonics import Harmonics
-from evaluators.finite_element.rotor.separate_magnets import Ring, ring_reluctivity
+from evaluators.finite_element.rotor.separate_magnets import (
+    Ring,
+    SeparateMagnets,
+    ring_of,
+    ring_reluctivity,
+)
 from evaluators.finite_element.rotor.uniform import NU_0
+from evaluators.finite_element.solution.batch import BatchField
 
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
@@ -99,7 +105,7 @@ class RotorAnswer:
         static: FloatArray,
     ) -> None:
         self.harmonics, self.eddy, self.ring = harmonics, eddy, ring
-        self._segments = segments
+        self._segments, self._static = segments, static
         orders, speed = harmonics.orders, harmonics.speed
         moving = speed != 0.0
         coupled = moving & (np.abs(orders) <= COUPLED * slots)
@@ -122,7 +128,9 @@ class RotorAnswer:
         for residue in np.unique(signed % (2 * pairs)):
             here = signed % (2 * pairs) == residue
             orders, order = np.unique(signed[here], return_inverse=True)
-            speeds, frequency = np.unique(speed[here], return_inverse=True)
+            # Standstill comes first.
+            speeds, frequency = np.unique(np.append(0.0, speed[here]), return_inverse=True)
+            frequency = frequency[1:]
             spaces = None
             if self.ring.filler_permeability != self.eddy.rotor.magnet_permeability:
                 along, across = ring_reluctivity(self.ring, orders, magnet)
@@ -130,7 +138,7 @@ class RotorAnswer:
                 spaces = Spaces(along - own, across - own)
             magnets = ConductingMagnets(self.eddy, pairs, self._segments, orders, spaces)
             answer = magnets.answer(speeds)
-            change = answer.response - magnets.answer(np.zeros(1)).response
+            change = answer.response - answer.response[:1]
             present = np.zeros((speeds.size, orders.size), dtype=np.bool_)
             present[frequency, order] = True
             change *= (present[:, :, None] & present[:, None, :])[:, None]
@@ -170,6 +178,13 @@ class RotorAnswer:
         result[self._alone] = self._relaxation * missing[self._alone]
         return result
 
+    def weakened(self, amplitudes: ComplexArray) -> ComplexArray:
+        """What the rotor's currents leave of static `amplitudes` (t, m, n) of the potential.
+
+        For a field that a current sheet on a bore of perfect iron makes, which keeps its h.
+        """
+        return np.asarray(self.relaxed(self._static * amplitudes) / self._static)
+
     def loss(self, amplitudes: ComplexArray) -> EddyLoss:
         """Loss (n,) of the field whose two-sided coefficients have `amplitudes` (t, m, n), W/m.
 
@@ -184,3 +199,31 @@ class RotorAnswer:
             magnet=np.asarray(np.sum([part.magnet.sum(axis=0) for part in parts], axis=0)),
             sleeve=np.asarray(np.sum([part.sleeve.sum(axis=0) for part in parts], axis=0)),
         )
+
+
+def eddy_rotor(batch: BatchField, torque: FloatArray, layers: int = LAYERS) -> EddyRotor:
+    """Conducting rotor of a batch whose stack is as long as `torque` (LANES,) per metre asks."""
+    model = batch.model
+    length = model.task.duty.shaft_torque / np.abs(torque)
+    conductors = Conductors.of(model.task, batch.sections.magnet_arc_ratio, length)
+    rings = model.discretisation.iron_rings
+    return EddyRotor(batch.rotor, batch.reluctivity, rings, conductors, layers)
+
+
+def rotor_answer(
+    batch: BatchField,
+    rotor: EddyRotor,
+    harmonics: Harmonics,
+    separate: SeparateMagnets | None = None,
+) -> RotorAnswer:
+    """Answer of a batch's rotor to the harmonics of its torque or suspension field."""
+    model = batch.model
+    filler = model.recoil if separate is None else separate.filler_permeability
+    return RotorAnswer(
+        harmonics,
+        rotor,
+        ring_of(batch, filler),
+        model.task.construction.magnet_segments,
+        model.slots,
+        batch.response[np.abs(harmonics.orders)],
+    )

@@ -27,6 +27,7 @@ both sides, which is exact for one order alone in the limit of that factor.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cache
 
 import numpy as np
 from numpy.typing import NDArray
@@ -123,11 +124,10 @@ class ConductingMagnets:
         rotor, conductors = eddy.rotor, eddy.conductors
         self._order = np.where(orders == 0, ZERO, np.abs(orders).astype(np.float64))
         width = np.log(rotor.magnet_radius / rotor.iron_radius[-1])
-        points, weights = np.polynomial.legendre.leggauss(POINTS)
-        points, weights = 0.5 * (points + 1.0), 0.5 * weights
-        value, slope = _functions(self._order, width, points)
+        points, weights = _rule()
+        value, slope = _functions(self._order, width)
         nu = NU_0 / rotor.magnet_permeability
-        stiffness = nu * _uniform_ring(self._order, width, points, weights)
+        stiffness = nu * _uniform_ring(self._order, width)
         if spaces is not None:
             weight = weights * width[:, None]
             by_slope = spaces.along / width[:, None, None] ** 2
@@ -185,8 +185,17 @@ def _times(matrix: ComplexArray, vector: ComplexArray) -> ComplexArray:
     return np.asarray((matrix @ vector[..., None])[..., 0])
 
 
-def _polynomials(points: FloatArray) -> tuple[FloatArray, FloatArray]:
-    """x (1 - x) P_k(2 x - 1) and its derivative at `points` (q,), (INNER, q) each."""
+@cache
+def _rule() -> tuple[FloatArray, FloatArray]:
+    """Points and weights of the Gauss rule over 0 to 1."""
+    points, weights = np.polynomial.legendre.leggauss(POINTS)
+    return 0.5 * (points + 1.0), 0.5 * weights
+
+
+@cache
+def _polynomials() -> tuple[FloatArray, FloatArray]:
+    """x (1 - x) P_k(2 x - 1) and its derivative at the rule's points, (INNER, q) each."""
+    points = _rule()[0]
     bump, change = points * (1.0 - points), 1.0 - 2.0 * points
     values, slopes = [], []
     for k in range(INNER):
@@ -196,13 +205,12 @@ def _polynomials(points: FloatArray) -> tuple[FloatArray, FloatArray]:
     return np.array(values), np.array(slopes)
 
 
-def _functions(
-    order: FloatArray, width: FloatArray, points: FloatArray
-) -> tuple[FloatArray, FloatArray]:
+def _functions(order: FloatArray, width: FloatArray) -> tuple[FloatArray, FloatArray]:
     """Functions of x = (u - u_inner)/width and their derivatives by x, (n, 2 + INNER, m, q).
 
     The first two are the waves sinh(n width (1 - x)) and sinh(n width x), one on their own face.
     """
+    points = _rule()[0]
     z = (width[:, None] * order)[:, :, None]
     shape = (*z.shape[:2], points.size)
     value = np.empty((shape[0], 2 + INNER, *shape[1:]))
@@ -211,7 +219,7 @@ def _functions(
         rising, falling = np.exp(-z * (1.0 - x)), np.exp(-z * (1.0 + x))
         value[:, k] = (rising - falling) / (1.0 - np.exp(-2.0 * z))
         slope[:, k] = sign * z * (rising + falling) / (1.0 - np.exp(-2.0 * z))
-    values, slopes = _polynomials(points)
+    values, slopes = _polynomials()
     value[:, 2:], slope[:, 2:] = values[None, :, None], slopes[None, :, None]
     return value, slope
 
@@ -225,9 +233,7 @@ def _products(value: FloatArray, weight: FloatArray, matrix: FloatArray) -> Floa
     return np.asarray(shaped * matrix[:, None, :, None, :])
 
 
-def _uniform_ring(
-    order: FloatArray, width: FloatArray, points: FloatArray, weights: FloatArray
-) -> FloatArray:
+def _uniform_ring(order: FloatArray, width: FloatArray) -> FloatArray:
     """Stiffness per reluctivity of a ring without spaces, (n, l, m, l, m); waves in closed form."""
     kinds, count = 2 + INNER, order.size
     result = np.zeros((width.size, kinds, count, kinds, count))
@@ -235,7 +241,8 @@ def _uniform_ring(
     x = np.exp(-order * width[:, None])
     result[:, 0, m, 0, m] = result[:, 1, m, 1, m] = order * (1.0 + x * x) / (1.0 - x * x)
     result[:, 0, m, 1, m] = result[:, 1, m, 0, m] = -2.0 * order * x / (1.0 - x * x)
-    values, slopes = _polynomials(points)
+    values, slopes = _polynomials()
+    weights = _rule()[1]
     mass, stiff = (values * weights) @ values.T, (slopes * weights) @ slopes.T
     for k in range(INNER):
         for j in range(INNER):

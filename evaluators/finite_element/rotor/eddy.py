@@ -106,7 +106,7 @@ def _cut(
     outer: FloatArray,
     nu: FloatArray | float,
     sigma: FloatArray | float,
-    count: int = LAYERS,
+    count: int,
 ) -> Iterator[_Ring]:
     """Layers of equal width = ln(outer/inner)/count, from the inside."""
     width = np.log(outer / inner) / count
@@ -143,13 +143,20 @@ class EddyRotor:
     shaft_rings : int
         How many of them are shaft; the others are laminated and do not conduct along the axis.
     conductors : Conductors
+    layers : int
+        Of magnets and sleeve each.
     """
 
     def __init__(
-        self, rotor: Rotor, reluctivity: FloatArray, shaft_rings: int, conductors: Conductors
+        self,
+        rotor: Rotor,
+        reluctivity: FloatArray,
+        shaft_rings: int,
+        conductors: Conductors,
+        layers: int = LAYERS,
     ) -> None:
         self.rotor, self.reluctivity, self.shaft_rings = rotor, reluctivity, shaft_rings
-        self.conductors = conductors
+        self.conductors, self._layers = conductors, layers
 
     def response(self, orders: IntArray, speed: FloatArray) -> ComplexArray:
         """h/a at the bore, (m, n), for `orders` (m,) of any sign at angular speeds (m,), rad/s."""
@@ -171,7 +178,7 @@ class EddyRotor:
             a = a * layer.passing
         power.append(scale * np.imag(march.shaft) * np.abs(a) ** 2)
         # Air, sleeve, magnets, core: the power lost between two circles stays in between.
-        sleeve, magnet, core = 1, 1 + LAYERS, 1 + 2 * LAYERS
+        sleeve, magnet, core = 1, 1 + self._layers, 1 + 2 * self._layers
         return EddyLoss(
             shaft=power[-1],
             magnet=power[magnet] - power[core],
@@ -200,10 +207,9 @@ class EddyRotor:
         share = segment_share(n, conductors.segment_angle)
         magnet = conductors.magnet * share * conductors.coverage * conductors.end_factor(n, rotor)
         nu = NU_0 / rotor.magnet_permeability
-        through(
-            through(y, _cut(n, w, rotor.iron_radius[-1], rotor.magnet_radius, nu, magnet)),
-            self._outer_rings(n, w),
-        )
+        inner, outer = rotor.iron_radius[-1], rotor.magnet_radius
+        y = through(y, _cut(n, w, inner, outer, nu, magnet, self._layers))
+        through(y, self._outer_rings(n, w))
         return _March(layers, shaft)
 
     def _core_rings(self, n: FloatArray, w: FloatArray) -> Iterator[_Ring]:
@@ -215,7 +221,8 @@ class EddyRotor:
         rotor, conductors = self.rotor, self.conductors
         sigma = conductors.sleeve * ring_length_factor(n, conductors.length, rotor.sleeve_radius)
         nu = NU_0 / rotor.sleeve_permeability
-        yield from _cut(n, w, rotor.magnet_radius, rotor.sleeve_radius, nu, sigma)
+        inner, outer = rotor.magnet_radius, rotor.sleeve_radius
+        yield from _cut(n, w, inner, outer, nu, sigma, self._layers)
         yield from _cut(n, w, rotor.sleeve_radius, rotor.bore_radius, NU_0, 0.0, 1)
 
     def core(self, order: FloatArray, speed: FloatArray) -> ComplexArray:

@@ -14,6 +14,7 @@ from evaluators.finite_element import analysis, transient
 from evaluators.finite_element.mesh.lattice import Resolution
 from evaluators.finite_element.model import Discretisation, FieldModel
 from evaluators.finite_element.outcome import stress
+from evaluators.finite_element.rotor.answer import eddy_rotor
 from evaluators.finite_element.rotor.eddy import Conductors, EddyRotor
 from evaluators.finite_element.rotor.harmonics import Harmonics
 from evaluators.finite_element.rotor.uniform import NU_0, Rotor
@@ -154,7 +155,7 @@ def test_drag_torque_makes_the_loss(numbers: machines.Numbers) -> None:
     batch = fields.batch
     nothing = np.zeros(LANES)
     static = batch.solve_torque(batch.model.angles, nothing)
-    rotor = transient.eddy_rotor(batch, ONES)
+    rotor = eddy_rotor(batch, ONES)
     induced = transient.torque_field(batch, rotor, static, nothing)
     assert np.all(induced.unsettled <= transient.SETTLED)
     waves = induced.solution.waves

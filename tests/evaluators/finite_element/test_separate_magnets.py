@@ -14,6 +14,7 @@ from evaluators.finite_element import analysis, transient
 from evaluators.finite_element.evaluator import FiniteElementEvaluator
 from evaluators.finite_element.mesh.lattice import Resolution
 from evaluators.finite_element.model import Discretisation, FieldModel
+from evaluators.finite_element.rotor.answer import eddy_rotor
 from evaluators.finite_element.rotor.eddy import Conductors, EddyRotor
 from evaluators.finite_element.rotor.separate_magnets import Ring, SeparateMagnets, at_bore
 from evaluators.finite_element.rotor.uniform import NU_0, Rotor, magnetisation
@@ -116,7 +117,7 @@ def test_insulating_separate_magnets_are_the_static_ones() -> None:
 def test_conducting_magnets_with_spaces_like_them_are_those_of_the_uniform_rotor() -> None:
     model, fields, current = machine((12, 1, 2))
     batch = fields.batch
-    eddy = transient.eddy_rotor(batch, np.ones(LANES))
+    eddy = eddy_rotor(batch, np.ones(LANES))
     equations = batch.equations(model.suspension)
     alike = SeparateMagnets(batch, model.recoil * (1.0 + 1e-12))
     results = []

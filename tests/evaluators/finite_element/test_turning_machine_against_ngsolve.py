@@ -18,6 +18,7 @@ from outside import OutsideChecks
 from evaluators.finite_element import analysis, transient
 from evaluators.finite_element.model import Discretisation, FieldModel
 from evaluators.finite_element.outcome.quantities import suspension_force
+from evaluators.finite_element.rotor.answer import eddy_rotor
 from evaluators.finite_element.rotor.eddy import EddyRotor
 from evaluators.finite_element.solution.lanes import LANES
 from evaluators.finite_element.solution.system import CurveTable
@@ -61,7 +62,7 @@ def test_turning_machine(numbers: machines.Numbers, separate: bool) -> None:
     model, sections, current = linear_machine(numbers, separate)
     fields = analysis.solve(model, sections, current)
     batch = fields.batch
-    eddy = transient.eddy_rotor(batch, ONES)
+    eddy = eddy_rotor(batch, ONES)
     # A plane field: endless pieces, and nothing slow in the shaft.
     endless = np.inf * ONES
     conductors = replace(eddy.conductors, shaft=1e-6, segment_length=endless, length=endless)
