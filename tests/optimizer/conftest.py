@@ -8,6 +8,8 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+from optimizer.archive import archive as archive_module
+from optimizer.archive import merging
 from optimizer.archive.archive import open_archive
 from optimizer.problem import Column, Outcome, Variable
 
@@ -72,6 +74,15 @@ def rows_of():
         return table.drop_columns(list(TIME_COLUMNS)).combine_chunks()
 
     return read
+
+
+@pytest.fixture
+def many_parts(monkeypatch) -> None:
+    """Write every chunk as a part of its own, and leave the parts as they are."""
+    monkeypatch.setattr(archive_module, "SHORTEST_INTERVAL_S", 0.0)
+    monkeypatch.setattr(archive_module, "LARGEST_SHARE", 0.0)
+    monkeypatch.setattr(merging, "MERGE_FROM", 10**9)
+    monkeypatch.setattr(merging, "MERGE_MEANWHILE", 10**9)
 
 
 @pytest.fixture
