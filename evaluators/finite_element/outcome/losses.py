@@ -41,6 +41,8 @@ def _waveform_loss(  # type: ignore[no-untyped-def]
 ):
     """Add weight times (hysteresis, sum of dB^2, sum of |dB|^1.5) of every point to `result`.
 
+    dB is the derivative halfway between two positions, from four of them, times the step.
+
     nodes : (t, size + 1, LANES); cells, signs : (slots, k, 8)
     polar : (k, points, 8, 2, LANES) radial and tangential flux density per nodal potential, T
     source, turn_sign : (sixths,) slot whose field is taken for each sixth, and its sign
@@ -72,21 +74,30 @@ def _waveform_loss(  # type: ignore[no-untyped-def]
                 path0 = 0.0
                 path1 = 0.0
                 last = positions * sixths - 1
-                p0 = radial[last]
-                p1 = tangential[last]
+                before0 = radial[last] - radial[last - 1]
+                before1 = tangential[last] - tangential[last - 1]
+                change0 = radial[0] - radial[last]
+                change1 = tangential[0] - tangential[last]
                 for i in range(positions * sixths):
                     b0 = radial[i]
                     b1 = tangential[i]
                     low0, high0 = min(low0, b0), max(high0, b0)
                     low1, high1 = min(low1, b1), max(high1, b1)
-                    path0 += abs(b0 - p0)
-                    path1 += abs(b1 - p1)
-                    d = (b0 - p0) ** 2 + (b1 - p1) ** 2
+                    path0 += abs(change0)
+                    path1 += abs(change1)
+                    n = i + 1 if i < last else 0
+                    next0 = radial[n] - b0
+                    next1 = tangential[n] - b1
+                    slope0 = (26.0 * change0 - before0 - next0) / 24.0
+                    slope1 = (26.0 * change1 - before1 - next1) / 24.0
+                    d = slope0 * slope0 + slope1 * slope1
                     square += d
                     root = np.sqrt(d)
                     power += root * np.sqrt(root)
-                    p0 = b0
-                    p1 = b1
+                    before0 = change0
+                    before1 = change1
+                    change0 = next0
+                    change1 = next1
                 peak0 = 0.5 * (high0 - low0)
                 peak1 = 0.5 * (high1 - low1)
                 energy = 0.0
@@ -108,8 +119,12 @@ def iron_loss(batch: BatchField, solution: Solution) -> IronLoss:
     the mesh: radial and tangential component each with its own hysteresis, which covers rotation as
     for an elliptic locus (common practice), and raised by its minor loops; classical and excess
     loss from the length of dB/dt. The same law as
-    `evaluators.machine.losses.iron.iron_loss_from_waveform`. The flux density of the sheet is that
-    of the stack over the stacking factor.
+    `evaluators.machine.losses.iron.iron_loss_from_waveform`, smooth. The flux density of the sheet
+    is that of the stack over the stacking factor.
+
+    Twelve positions put the loss of the teeth 0.1 to 0.4 % too low (medians of five families of the
+    shipped studies, eight random machines each, against 96 positions; at most 1.1 %), that of the
+    yoke 0.1 %; with dB between two positions it was 0.2 to 0.9 % (2.2 %) and 0.2 to 0.4 %.
     """
     model = batch.model
     lattice = model.torque.lattice

@@ -102,6 +102,7 @@ def iron_loss_from_waveform(
     frequency: ArrayLike,
     second_component: ArrayLike | None = None,
     minor_loops: bool = False,
+    smooth: bool = False,
 ) -> IronLoss:
     """Return the loss in W/kg of a periodic waveform.
 
@@ -124,6 +125,9 @@ def iron_loss_from_waveform(
         generalised Steinmetz law with alpha = 1 without splitting the loops (Venkatachalam,
         Sullivan, Abdallah, Tacca, COMPEL 2002), an upper estimate, because every minor loop is
         charged at the excursion of the main loop.
+    smooth
+        Take the derivative halfway between two samples from four of them, exact for a cubic,
+        instead of from two: low by 3/320 (2 pi/t)⁴ in the classical loss of a sine.
 
     Returns
     -------
@@ -147,6 +151,8 @@ def iron_loss_from_waveform(
                 peak > 0.0, path / np.where(peak > 0.0, 4.0 * peak, 1.0), 1.0
             )
         hysteresis = hysteresis + energy * f
+        if smooth:
+            step = (26.0 * step - np.roll(step, 1, axis=-1) - np.roll(step, -1, axis=-1)) / 24.0
         speed_squared = speed_squared + (step * samples) ** 2
     # speed_squared is (dB/dt)² in units of f², hence the powers of f below.
     classical = speed_squared.mean(axis=-1) * f**2 / (2.0 * math.pi**2)

@@ -305,6 +305,7 @@ def test_iron_loss_of_a_cell_is_that_of_its_waveform() -> None:
         model.task.electrical_frequency,
         tangential / model.stacking,
         minor_loops=True,
+        smooth=True,
     )
     density = float(steel.density.value) * model.stacking
     sectors = model.symmetry.torque.count
