@@ -77,11 +77,15 @@ class Child:
             raise EOFError
         return None
 
-    def kill(self) -> None:
-        """End it and what it started, whatever they are doing."""
+    def strike(self) -> None:
+        """End it and what it started, whatever they are doing, without waiting for it."""
         with contextlib.suppress(ProcessLookupError, PermissionError):
             os.killpg(self.process.pid, signal.SIGKILL)
         self.process.kill()
+
+    def kill(self) -> None:
+        """End it and what it started, and let go of it."""
+        self.strike()
         self.process.wait()
         self.pipe.close()
 

@@ -32,6 +32,7 @@ class Crew:
         self.workers = workers
         self.children: list[Child] = []
         self._stillborn = 0
+        self._given_up = False
 
     def run(
         self,
@@ -57,7 +58,7 @@ class Crew:
         ProblemError
             If an outcome is not what the problem declares.
         WorkerError
-            If workers cannot be started.
+            If workers cannot be started, or were given up.
         """
         units = _Units(chunks, time_limit_s is not None)
         self.man()
@@ -81,11 +82,18 @@ class Crew:
 
     def man(self) -> None:
         """Have all workers alive."""
+        self._stand()
         for child in [item for item in self.children if item.process.poll() is not None]:
             child.kill()
             self.children.remove(child)
         while len(self.children) < self.workers:
             self.children.append(Child())
+
+    def give_up(self) -> None:
+        """End the workers at once, from any thread; the run that waits for them raises."""
+        self._given_up = True
+        for child in list(self.children):
+            child.strike()
 
     def close(self) -> None:
         """End the workers, those at work at once."""
@@ -131,6 +139,7 @@ class Crew:
     def _died(
         self, described: Described, child: Child, unit: Unit, units: _Units
     ) -> Finished | None:
+        self._stand()
         begun = child.since is not None
         if not child.began_once:
             self._stillborn += 1
@@ -146,6 +155,11 @@ class Crew:
             units.again(after)
             return None
         return after
+
+    def _stand(self) -> None:
+        if self._given_up:
+            msg = "the designs in hand were given up"
+            raise WorkerError(msg)
 
     def _replace(self, child: Child) -> None:
         child.kill()

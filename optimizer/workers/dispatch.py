@@ -10,9 +10,9 @@ from __future__ import annotations
 import contextlib
 import os
 import time
-from collections.abc import Iterable, Iterator
+from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass
-from typing import Protocol, Self
+from typing import Protocol, Self, cast
 
 from threadpoolctl import threadpool_limits
 
@@ -71,6 +71,12 @@ class Dispatcher(Protocol):
             exception of an evaluation becomes a failed row.
         """
 
+    def lanes(self, most: int) -> Sequence[Dispatcher]:
+        """What evaluates here, shared out for up to ``most`` runs in threads of their own."""
+
+    def give_up(self) -> None:
+        """End what is in hand at once, from any thread; the run that waits for it may raise."""
+
     def close(self) -> None:
         """Let go of whatever is held."""
 
@@ -82,7 +88,15 @@ class Dispatcher(Protocol):
 
 
 class Closing:
-    """What is closed at the end of a ``with`` block."""
+    """What is closed at the end of a ``with`` block, and serves one run at a time."""
+
+    def lanes(self, most: int) -> Sequence[Dispatcher]:
+        """Itself alone."""
+        del most
+        return [cast("Dispatcher", self)]
+
+    def give_up(self) -> None:
+        """Do nothing where what is in hand ends by itself."""
 
     def close(self) -> None:
         """Do nothing where there is nothing to let go of."""

@@ -6,17 +6,17 @@ import math
 import os
 import shutil
 import tempfile
-from collections.abc import Iterable, Iterator
+from collections.abc import Iterable, Iterator, Sequence
 from pathlib import Path
 
 from optimizer.errors import ProblemError
 from optimizer.problem import Problem
 from optimizer.workers.crew import Crew
-from optimizer.workers.dispatch import Chunk, Closing, Finished
+from optimizer.workers.dispatch import Chunk, Closing, Dispatcher, Finished
 
 
 class Pool(Closing):
-    """Evaluates chunks in worker processes; one pool serves many runs.
+    """Evaluates chunks in worker processes; one pool serves many runs, one after the other.
 
     The workers are started afresh, not forked, so they inherit no state of this process. One that
     dies costs nobody but the chunk it had in hand: that is tried again, and if a worker dies of it
@@ -49,13 +49,33 @@ class Pool(Closing):
         self._crew = Crew(workers)
         self._folder = Path(tempfile.mkdtemp(prefix="optimizer-"))
         self._sent: tuple[Problem, Path] | None = None
+        self._lanes: list[Pool] = []
 
     def run(self, problem: Problem, chunks: Iterable[Chunk]) -> Iterator[Finished]:
         """Evaluate every chunk; see :class:`optimizer.workers.dispatch.Dispatcher`."""
         return self._crew.run(problem, self._send(problem), chunks, self.time_limit_s)
 
+    def lanes(self, most: int) -> Sequence[Dispatcher]:
+        """Pools with the workers of this one shared out among up to ``most``; closed with it.
+
+        This pool starts no workers of its own unless it is run too.
+        """
+        count = min(most, self.workers)
+        if count <= 1:
+            return [self]
+        each, over = divmod(self.workers, count)
+        made = [Pool(each + (k < over), self.time_limit_s) for k in range(count)]
+        self._lanes += made
+        return made
+
+    def give_up(self) -> None:
+        """End the workers at once, from any thread; the run that waits for them raises."""
+        self._crew.give_up()
+
     def close(self) -> None:
         """End the workers and remove what was stored for them."""
+        for lane in self._lanes:
+            lane.close()
         self._crew.close()
         self._sent = None
         shutil.rmtree(self._folder, ignore_errors=True)

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable, Sequence
 from dataclasses import replace
 from pathlib import Path
+from threading import Lock
 
 import pyarrow as pa
 
@@ -167,29 +168,27 @@ def _search(
     progress: Watch | None,
     stop: Stop | None,
 ) -> pa.Table:
-    searched = ""
+    turn = Lock()
 
-    def begin(search: str) -> None:
-        nonlocal searched
-        searched = search
-
-    def show(state: Progress) -> None:
+    def show(search: str, state: Progress) -> None:
         if progress is not None:
-            progress(searched, state)
+            with turn:
+                progress(search, state)
 
+    searches = room.problems_of_searches(results, problems)
     with writer_lock(results.folder):
         spending = Spending(
             results,
-            room.problems_of_searches(results, problems),
+            searches,
             lambda name, problem: room.search_settings(
                 results, problem, split_search_name(name)[1]
             ),
             dispatcher,
-            begin,
             show,
             stop or _never,
         )
-        return table_of([_row(name, summary) for name, summary in spending.searches()])
+        found = dict(spending.searches())
+    return table_of([_row(name, found[name]) for name in searches if name in found])
 
 
 def _never() -> bool:

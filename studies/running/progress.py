@@ -7,6 +7,7 @@ import shutil
 import sys
 import time
 from collections.abc import Callable
+from threading import RLock
 from typing import TextIO
 
 from optimizer.running.progress import Progress
@@ -29,27 +30,30 @@ class StatusLine:
         self.terminal = self.stream.isatty()
         self._shown_at = -math.inf
         self._width = 0
+        self._turn = RLock()  # searches that go on side by side tell of themselves
 
     def put(self, text: Callable[[], str]) -> None:
         """Show what `text` returns if the last showing is long enough ago."""
         interval = SCREEN_INTERVAL_S if self.terminal else PLAIN_INTERVAL_S
-        now = time.monotonic()
-        if now - self._shown_at < interval:
-            return
-        self._shown_at = now
-        if self.terminal:
-            columns = shutil.get_terminal_size().columns - 1
-            self._overwrite(text()[:columns])
-        else:
-            self._write(f"{text()}\n")
+        with self._turn:
+            now = time.monotonic()
+            if now - self._shown_at < interval:
+                return
+            self._shown_at = now
+            if self.terminal:
+                columns = shutil.get_terminal_size().columns - 1
+                self._overwrite(text()[:columns])
+            else:
+                self._write(f"{text()}\n")
 
     def say(self, text: str) -> None:
         """Write lines of their own, taking the place of a kept line."""
-        if self._width:
-            self._overwrite("")
-            self._write("\r")
-            self._width = 0
-        self._write(f"{text}\n")
+        with self._turn:
+            if self._width:
+                self._overwrite("")
+                self._write("\r")
+                self._width = 0
+            self._write(f"{text}\n")
 
     def _overwrite(self, text: str) -> None:
         self._write("\r" + text.ljust(self._width))
@@ -61,7 +65,7 @@ class StatusLine:
 
 
 class ProgressLine(StatusLine):
-    """Shows the progress of one search after the other.
+    """Shows the progress of searches, one after the other or side by side.
 
     Parameters
     ----------
@@ -73,23 +77,31 @@ class ProgressLine(StatusLine):
 
     def __init__(self, searches: tuple[str, ...], stream: TextIO | None = None) -> None:
         super().__init__(stream)
-        self._searches = searches
-        self._search = ""
+        self._later = list(searches)
+        self._states: dict[str, Progress] = {}
 
-    def begin(self, search: str) -> None:
-        """Turn to the next search."""
-        self._search = search
-        self._shown_at = -math.inf
+    def show(self, search: str, state: Progress) -> None:
+        """Show the state of a search, if the last showing is long enough ago or it is new."""
+        with self._turn:
+            if search not in self._states:
+                self._shown_at = -math.inf
+            if search in self._later:
+                self._later.remove(search)
+            self._states[search] = state
+            self.put(self._text)
 
-    def show(self, state: Progress) -> None:
-        """Show the state if the last showing is long enough ago."""
-        self.put(lambda: self._text(state))
+    def finish(self, search: str) -> None:
+        """Show no more of a search."""
+        with self._turn:
+            self._states.pop(search, None)
 
-    def _text(self, state: Progress) -> str:
-        done = state.evaluations
+    def _text(self) -> str:
+        if len(self._states) > 1:
+            return self._side_by_side()
+        ((search, state),) = self._states.items()
+        done, later = state.evaluations, len(self._later)
         share = state.feasible / done if done else 0.0
-        later = len(self._searches) - 1 - self._searches.index(self._search)
-        parts = [f"{self._search}  {done:,}/{state.budget:,}"]
+        parts = [f"{search}  {done:,}/{state.budget:,}"]
         known = math.isfinite(state.rate) and state.rate > 0.0
         if known:
             left = f"left {duration(state.seconds_left)}"
@@ -103,6 +115,17 @@ class ProgressLine(StatusLine):
         parts.append(f"front {state.front_size}")
         if known:
             parts.append(speed(state.rate))
+        return "  ".join(parts)
+
+    def _side_by_side(self) -> str:
+        states = self._states.values()
+        rate = sum(item.rate for item in states if math.isfinite(item.rate))
+        parts = [f"{name}  {item.evaluations:,}" for name, item in self._states.items()]
+        if rate > 0.0:
+            left = sum(item.budget - item.evaluations for item in states)
+            left += len(self._later) * max(item.budget for item in states)
+            # The most wanted stands first, because a narrow terminal cuts the end.
+            parts = [f"all left {duration(left / rate)}", speed(rate), *parts]
         return "  ".join(parts)
 
 

@@ -3,28 +3,30 @@
 from __future__ import annotations
 
 import time
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Sequence
+from concurrent.futures import ThreadPoolExecutor, as_completed
 from dataclasses import replace
+from functools import partial
+from queue import SimpleQueue
 
 from optimizer.running.progress import Progress, Summary
 from optimizer.running.runner import run
 from optimizer.running.stopping import StopRules
 from optimizer.settings import Settings
-from optimizer.workers.dispatch import Dispatcher
+from optimizer.workers.dispatch import Dispatcher, single_threaded
 from studies.problem import MachineProblem
 from studies.running.ended import Ended, note_end
 from studies.running.spreading import ROUNDS, prospects, read_rows
 from studies.stored.layout import Results
 from studies.stored.naming import family_of
 
-Begin = Callable[[str], None]
-Show = Callable[[Progress], None]
+Show = Callable[[str, Progress], None]
 Stop = Callable[[], bool]
 SettingsOf = Callable[[str, MachineProblem], Settings]
 
 
 class Spending:
-    """Searches families, one search after the other or in rounds.
+    """Searches families: as many searches side by side as there are workers, or in rounds.
 
     Parameters
     ----------
@@ -35,12 +37,10 @@ class Spending:
         Settings of a search's archive, from its name and problem; its budget is the most a search
         gets.
     dispatcher : Dispatcher
-    begin : callable
-        Told which search goes on from now on.
     show : callable
-        Told its progress.
+        Told the name of a search and its progress, from any thread.
     stop : callable
-        Asked whether to stop.
+        Asked whether to stop, from any thread.
     """
 
     def __init__(
@@ -49,12 +49,11 @@ class Spending:
         problems: dict[str, MachineProblem],
         settings: SettingsOf,
         dispatcher: Dispatcher,
-        begin: Begin,
         show: Show,
         stop: Stop,
     ) -> None:
         self._results, self._problems, self._settings = results, problems, settings
-        self._dispatcher, self._begin, self._show, self._stop = dispatcher, begin, show, stop
+        self._dispatcher, self._show, self._stop = dispatcher, show, stop
         minutes = results.study.search.wall_time_min
         self._deadline = None if minutes is None else time.monotonic() + 60.0 * minutes
         self._new = dict.fromkeys(problems, 0)
@@ -71,15 +70,55 @@ class Spending:
         total = self._results.study.search.total_evaluations
         for name, summary in self._in_turn() if total is None else self._in_rounds(total):
             yield name, replace(summary, new=self._new[name], seconds=self._seconds[name])
+
+    def _in_turn(self) -> Iterator[tuple[str, Summary]]:
+        most = {name: self._settings(name, item).budget for name, item in self._problems.items()}
+        lanes = self._dispatcher.lanes(len(most))
+        if len(lanes) > 1:
+            yield from self._side_by_side(most, lanes)
+            return
+        for position, name in enumerate(most):
+            summary = self._search(name, most[name], len(most) - position, self._dispatcher)
+            self._note(name, summary, most[name])
+            yield name, summary
             if summary.stopped:
                 return
 
-    def _in_turn(self) -> Iterator[tuple[str, Summary]]:
-        for position, (name, problem) in enumerate(self._problems.items()):
-            most = self._settings(name, problem).budget
-            summary = self._search(name, most, len(self._problems) - position)
-            self._note(name, summary, most)
-            yield name, summary
+    def _side_by_side(
+        self, most: dict[str, int], lanes: Sequence[Dispatcher]
+    ) -> Iterator[tuple[str, Summary]]:
+        """Search with the workers shared out; the archives do not depend on how many there are."""
+        free: SimpleQueue[Dispatcher] = SimpleQueue()
+        for lane in lanes:
+            free.put(lane)
+
+        def search(name: str, later: int) -> Summary | None:
+            if self._stop():
+                return None
+            lane = free.get()
+            try:
+                return self._search(name, most[name], 1.0 + later / len(lanes), lane)
+            finally:
+                free.put(lane)
+
+        # Entered here, so that what each run enters and leaves in its thread changes nothing.
+        with single_threaded(), ThreadPoolExecutor(len(lanes)) as threads:
+            futures = {
+                threads.submit(search, name, len(most) - 1 - position): name
+                for position, name in enumerate(most)
+            }
+            try:
+                for future in as_completed(futures):
+                    name, summary = futures[future], future.result()
+                    if summary is not None:
+                        self._note(name, summary, most[name])
+                        yield name, summary
+            except BaseException:  # a second Ctrl-C, a full disk: the other threads must end too
+                for future in futures:
+                    future.cancel()
+                for lane in lanes:
+                    lane.give_up()
+                raise
 
     def _in_rounds(self, total: int) -> Iterator[tuple[str, Summary]]:
         most = {name: self._settings(name, item).budget for name, item in self._problems.items()}
@@ -91,7 +130,9 @@ class Spending:
             over: dict[str, str] = {}
             for name in active:
                 quota[name] = min(quota[name] + share, most[name])
-                summary = last[name] = self._search(name, max(quota[name], 1), 1)
+                summary = last[name] = self._search(
+                    name, max(quota[name], 1), 1.0, self._dispatcher
+                )
                 if summary.stopped:
                     yield name, summary
                     return
@@ -118,7 +159,7 @@ class Spending:
                 active.remove(name)
                 yield name, summary
 
-    def _search(self, name: str, budget: int, sharers: int) -> Summary:
+    def _search(self, name: str, budget: int, sharers: float, dispatcher: Dispatcher) -> Summary:
         """Go on with one search, with its part of the time left if it shares that with others."""
         search, problem = self._results.study.search, self._problems[name]
         left = None
@@ -130,13 +171,12 @@ class Spending:
             feasible_within=search.feasible_within,
             wall_time_s=left,
         )
-        self._begin(name)
         summary = run(
             problem,
             self._results.search_folder(name),
             replace(self._settings(name, problem), budget=budget),
-            self._dispatcher,
-            self._show,
+            dispatcher,
+            partial(self._show, name),
             self._stop,
             rules,
         )

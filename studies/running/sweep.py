@@ -103,7 +103,7 @@ def problems_of(
 def search_families(
     results: Results, problems: dict[str, MachineProblem], dispatcher: Dispatcher
 ) -> int:
-    """Search one family after the other, as often as is asked for, and say how it went.
+    """Search the families, each as often as is asked for, and say how it went.
 
     Returns
     -------
@@ -135,13 +135,13 @@ def search_families(
             searches,
             lambda name, problem: search_settings(results, problem, split_search_name(name)[1]),
             dispatcher,
-            line.begin,
             line.show,
             interruption,
         )
         try:
             for name, summary in spending.searches():
                 summaries[name] = summary
+                line.finish(name)
                 line.say(_search_text(name, summary))
         except KeyboardInterrupt:
             line.say("stopped at once; the designs in hand were given up")
@@ -164,7 +164,8 @@ def search_families(
             + (" --allow-program" if any(map(program_of, problems.values())) else "")
         )
         return EXIT_FAILED if lost else interruption.exit_code
-    return _closing(line, results, summaries)
+    in_order = {name: summaries[name] for name in searches if name in summaries}
+    return _closing(line, results, in_order)
 
 
 def resume_command(folder: Path, families: tuple[str, ...], requested: tuple[str, ...]) -> str:

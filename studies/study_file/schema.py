@@ -270,11 +270,11 @@ class SearchSection(Section):
         None, ge=4, le=10_000, description="designs of one generation; chosen if left out"
     )
     designs_per_call: int = Field(
-        50,
+        18,  # half a generation of three objectives
         ge=1,
         le=10_000,
-        description="designs the evaluator gets at a time; one generation is shared among the "
-        "workers in such pieces",
+        description="designs the evaluator gets at a time; one generation is shared in such pieces "
+        "among the workers of its search",
     )
     seed: int = Field(1, ge=0, le=2**31 - 1, description="seed of the search")
     total_evaluations: int | None = Field(

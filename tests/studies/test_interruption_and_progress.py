@@ -143,9 +143,9 @@ def test_terminal_progress_overwrites_one_line(monkeypatch: pytest.MonkeyPatch) 
     monkeypatch.setenv("COLUMNS", "120")
     stream = Terminal()
     line = ProgressLine(("A", "B"), stream)  # type: ignore[arg-type]
-    line.begin("A")
     state = Progress(500, 1000, 125, 3, 40, 0.5, 100.0, 5.0, 12)
-    line.show(state)
+    line.show("A", state)
+    line.finish("A")
     line.say("done")
     first, blank, rest = stream.text.removeprefix("\r").split("\r")
     # 500 left at 100/s, then 1000 of the other family.
@@ -155,9 +155,21 @@ def test_terminal_progress_overwrites_one_line(monkeypatch: pytest.MonkeyPatch) 
     assert blank == " " * len(first)
     assert rest == "done\n"
     monkeypatch.setenv("COLUMNS", "40")
-    line.begin("B")
-    line.show(state)
+    line.show("B", state)
     assert len(stream.text.rpartition("\r")[2]) == 39
+
+
+def test_searches_side_by_side_share_a_line(monkeypatch: pytest.MonkeyPatch) -> None:
+    from optimizer.running.progress import Progress
+
+    monkeypatch.setenv("COLUMNS", "120")
+    stream = Terminal()
+    line = ProgressLine(("A", "B", "C"), stream)  # type: ignore[arg-type]
+    line.show("A", Progress(500, 1000, 125, 3, 40, 0.5, 100.0, 5.0, 12))
+    line.show("B", Progress(250, 1000, 125, 3, 40, 0.5, 150.0, 5.0, 12))
+    # 500 and 750 left and 1000 of the third, at 250/s together.
+    text = stream.text.rpartition("\r")[2].rstrip()
+    assert text == "all left 0:09  250/s  A  500  B  250"
 
 
 def test_durations() -> None:
