@@ -289,12 +289,20 @@ def cross_sections(
     ValueError
         If a variable is missing or lengths differ.
     """
-    rows = batch_length(designs)
+    batch_length(designs)  # refuses what is no batch
     value = {name: np.asarray(designs[name], dtype=np.float64) for name in VARIABLE_NAMES}
+    dimensions = _dimensions(family, value)
+    reasons = _refusals(family, construction, value, dimensions)
+    valid = np.flatnonzero([not reason for reason in reasons])
+    rows = {name: dimension[valid] for name, dimension in dimensions.items()}
+    return CrossSections(family=family, **rows), valid, np.array(reasons, dtype=np.str_)
+
+
+def _dimensions(family: Family, value: Mapping[str, FloatArray]) -> dict[str, FloatArray]:
+    """Attributes of `CrossSections` by name, (n,), of whatever the variables say."""
     rotor = value["rotor_radius_mm"] * MILLI
     magnet = rotor - value["sleeve_thickness_mm"] * MILLI
     core = magnet - value["magnet_thickness_mm"] * MILLI
-    shaft = value["core_ratio"] * core
     bore = rotor + value["clearance_mm"] * MILLI
     tip = bore + value["tip_height_mm"] * MILLI
     wedge = tip + value["wedge_height_mm"] * MILLI
@@ -302,14 +310,36 @@ def cross_sections(
 
     half_pitch = np.pi / family.slots
     tooth = value["tooth_width_ratio"] * 2.0 * bore * np.sin(half_pitch)
-    outer = slot + value["yoke_ratio"] * tooth * family.slots / (2.0 * np.pi * family.pole_pairs)
+    yoke = value["yoke_ratio"] * tooth * family.slots / (2.0 * np.pi * family.pole_pairs)
     span = value["tip_span_ratio"]
     with np.errstate(invalid="ignore"):  # infinite numbers are refused below
         straight = np.arcsin(np.clip(0.5 * tooth / bore, 0.0, 1.0))
         closing = straight + (span - 1.0) * (half_pitch - straight)
         tip_half = np.where(span <= 1.0, 0.5 * span * tooth, bore * np.sin(closing))
+    return {
+        "shaft_radius": value["core_ratio"] * core,
+        "core_radius": core,
+        "magnet_radius": magnet,
+        "rotor_radius": rotor,
+        "bore_radius": bore,
+        "tip_radius": tip,
+        "wedge_radius": wedge,
+        "slot_radius": slot,
+        "outer_radius": slot + yoke,
+        "tooth_width": tooth,
+        "tip_half_width": tip_half,
+        "magnet_arc_ratio": value["magnet_arc_ratio"],
+    }
 
-    reasons = [""] * rows
+
+def _refusals(
+    family: Family,
+    construction: Construction,
+    value: Mapping[str, FloatArray],
+    dimensions: Mapping[str, FloatArray],
+) -> list[str]:
+    """Why a design is no cross-section, the first reason of each; empty where it is one."""
+    reasons = [""] * value[VARIABLE_NAMES[0]].size
 
     def refuse(bad: NDArray[np.bool_], text: str, *values: FloatArray) -> None:
         for row in np.flatnonzero(bad):
@@ -321,7 +351,7 @@ def cross_sections(
     for name in VARIABLE_NAMES:
         refuse(~(value[name] > 0.0), name + " = {0:.4g} must be positive", value[name])
     refuse(
-        ~(shaft >= SMALLEST_SHAFT_RADIUS),
+        ~(dimensions["shaft_radius"] >= SMALLEST_SHAFT_RADIUS),
         "sleeve_thickness_mm = {0:.4g} and magnet_thickness_mm = {1:.4g} leave no room for core "
         "and shaft inside rotor_radius_mm = {2:.4g} (shaft radius must be at least 0.5 mm)",
         value["sleeve_thickness_mm"],
@@ -337,6 +367,9 @@ def cross_sections(
         "magnet_arc_ratio = {0:.4g} must be at most 1",
         value["magnet_arc_ratio"],
     )
+    bore, wedge = dimensions["bore_radius"], dimensions["wedge_radius"]
+    tooth, tip_half = dimensions["tooth_width"], dimensions["tip_half_width"]
+    half_pitch = np.pi / family.slots
     with np.errstate(invalid="ignore"):
         opening = 2.0 * bore * np.sin(half_pitch - np.arcsin(np.clip(tip_half / bore, -1.0, 1.0)))
         top = 2.0 * wedge * np.sin(half_pitch - np.arcsin(np.clip(0.5 * tooth / wedge, -1.0, 1.0)))
@@ -346,7 +379,7 @@ def cross_sections(
         "slot opening = {0:.4g} mm must be at least " + f"{limit / MILLI:.4g} mm: reduce "
         "tip_span_ratio = {1:.4g} or tooth_width_ratio = {2:.4g}",
         opening / MILLI,
-        span,
+        value["tip_span_ratio"],
         value["tooth_width_ratio"],
     )
     least = 2.0 * construction.slot_insulation
@@ -357,21 +390,4 @@ def cross_sections(
         top / MILLI,
         value["tooth_width_ratio"],
     )
-
-    valid = np.flatnonzero([not reason for reason in reasons])
-    sections = CrossSections(
-        family=family,
-        shaft_radius=shaft[valid],
-        core_radius=core[valid],
-        magnet_radius=magnet[valid],
-        rotor_radius=rotor[valid],
-        bore_radius=bore[valid],
-        tip_radius=tip[valid],
-        wedge_radius=wedge[valid],
-        slot_radius=slot[valid],
-        outer_radius=outer[valid],
-        tooth_width=tooth[valid],
-        tip_half_width=tip_half[valid],
-        magnet_arc_ratio=value["magnet_arc_ratio"][valid],
-    )
-    return sections, valid, np.array(reasons, dtype=np.str_)
+    return reasons
