@@ -56,15 +56,17 @@ def start(tmp_path: Path, folder: Path, workers: int, environment) -> subprocess
     return subprocess.Popen(command, env=environment)
 
 
-@pytest.mark.parametrize("workers", [0, pytest.param(2, marks=pytest.mark.slow)])
-def test_ten_kills_leave_no_trace(tmp_path, python_path, rows_of, workers) -> None:
+@pytest.mark.parametrize(
+    ("workers", "kills"), [(0, 4), *(pytest.param(n, 10, marks=pytest.mark.slow) for n in (0, 2))]
+)
+def test_kills_leave_no_trace(tmp_path, python_path, rows_of, workers, kills) -> None:
     with start(tmp_path, tmp_path / "whole", 0, python_path) as whole:
         assert whole.wait(timeout=120) == 0
     folder = tmp_path / "killed"
     # Wherever the clock of this machine puts them, the moments are another set every time.
     moments = random.Random(workers)
     seen = []
-    for _ in range(10):
+    for _ in range(kills):
         with start(tmp_path, folder, workers, python_path) as run:
             begun = time.monotonic()
             # Once it has begun to work: importing takes longer than the kills are apart.

@@ -168,18 +168,24 @@ def test_no_more_runs_at_a_time_than_licences(
     monkeypatch.setenv("TMPDIR", str(tmp_path))
     script = tmp_path / "two.py"
     script.write_text(
-        "import sys; from pathlib import Path\n"
+        "import sys, time; from pathlib import Path\n"
         f"sys.path[:0] = [{str(HERE)!r}, {str(HERE.parent)!r}, {str(HERE.parents[2])!r}]\n"
         "import machines, test_external_faults as t\n"
         f"e = t.evaluator(Path({str(tmp_path / 'work')!r}), 'counting', {str(tmp_path)!r}, "
         "concurrency=int(sys.argv[1]))\n"
+        "ready = Path(sys.argv[2])\n"
+        "(ready / sys.argv[3]).touch()\n"
+        "while len(list(ready.iterdir())) < 2: time.sleep(0.005)\n"  # or they may never meet
         "print(e.evaluate(machines.designs(3)).reason.tolist())\n"
     )
 
     def outputs(licences: str) -> list[str]:
+        ready = tmp_path / f"ready{licences}"
+        ready.mkdir()
+        command = [sys.executable, str(script), licences, str(ready)]
         runs = [
-            subprocess.Popen([sys.executable, script, licences], stdout=subprocess.PIPE, text=True)
-            for _ in range(2)
+            subprocess.Popen([*command, name], stdout=subprocess.PIPE, text=True)
+            for name in ("one", "other")
         ]
         return [run.communicate(timeout=120)[0].strip() for run in runs]
 
