@@ -70,11 +70,12 @@ def test_ctrl_c_ends_cleanly_and_the_printed_command_goes_on(
     assert rows(Path("results/small/Q6p2s1"))[: len(stored)] == stored
 
 
-def test_second_ctrl_c_stops_at_once(write_study: Write) -> None:
+@pytest.mark.parametrize("workers", ["1", "2"])  # in this process; side by side in threads
+def test_second_ctrl_c_stops_at_once(write_study: Write, workers: str) -> None:
     """One call takes a minute; the second signal must not wait for it."""
     settings = '[evaluator.settings]\ndelay_s = 60.0\nbegun = "begun"'
     minute = ('name = "toy"', f'name = "toy"\n{settings}')
-    child = begin("sweep", write_study(minute), "--workers", "1")
+    child = begin("sweep", write_study(minute), "--workers", workers)
     for _ in range(600):
         if Path("begun").exists():
             break
