@@ -103,12 +103,14 @@ def test_a_total_is_spent_and_interruptions_do_not_change_on_whom(
 
 def test_an_evaluation_that_hangs_is_a_row(hovergap: Run, write_study: Write, rows: Reader) -> None:
     slow = ('name = "toy"', 'name = "toy"\nsettings = { delay_s = 3600.0 }')
-    keys = (BUDGET, "evaluations_per_family = 2\ntime_limit_s = 0.2")
-    result = hovergap("sweep", write_study(slow, keys), "--family", "Q6p2s1", "--workers", "2")
+    # A call is evaluated whole, whatever the budget, and each row that hangs costs a process.
+    limits = "evaluations_per_family = 2\ndesigns_per_call = 1\ntime_limit_s = 0.2"
+    study = write_study(slow, (BUDGET, limits))
+    result = hovergap("sweep", study, "--family", "Q6p2s1", "--workers", "2")
     assert result.exit_code != 0  # nothing feasible
     assert "Traceback" not in result.output
-    for row in rows(FOLDER / "Q6p2s1"):
-        assert (row["status"], row["reason"]) == ("timed out", "no answer within 0.2 s")
+    found = [(row["status"], row["reason"]) for row in rows(FOLDER / "Q6p2s1")]
+    assert found == [("timed out", "no answer within 0.2 s")] * 2
 
 
 def test_the_limits_may_change_when_a_study_goes_on(hovergap: Run, write_study: Write) -> None:
