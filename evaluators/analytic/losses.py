@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from evaluators.analytic.linkage import Linkage
+from evaluators.analytic.mixing import mixed_to_separate
 from evaluators.analytic.rotation import Rotation
 from evaluators.analytic.waves import Waves
 from evaluators.machine.field import Excitation
@@ -17,6 +18,8 @@ from evaluators.machine.losses.iron import IronLoss, iron_loss_from_waveform
 from evaluators.machine.task.task import Task
 
 FloatArray = NDArray[np.float64]
+
+MIXED = 2  # orders up to so many times the slots mix in the magnets, as in the finite elements
 
 
 @dataclass(frozen=True)
@@ -89,6 +92,8 @@ def rotor_eddy(
 ) -> RotorEddyLoss:
     """Eddy-current loss of magnets and sleeve per order and time dependence, W/m.
 
+    Orders of one frequency mix in the magnets (`mixing`), those of the torque field at least.
+
     Every wave exp(j (n theta + tau angle)) of the stator frame turns against the rotor with the
     frequency |n + tau| times that of the shaft. Waves of magnets and torque current are added with
     their phase, the suspension's by its square.
@@ -121,7 +126,7 @@ def rotor_eddy(
     magnet = task.materials.magnet
     pitch = np.pi / rotation.pole_pairs
     segments = task.construction.magnet_segments
-    return rotor_eddy_loss(
+    found = rotor_eddy_loss(
         orders.astype(np.float64),
         np.abs(turns[row, column]) * task.duty.speed / (2.0 * np.pi),
         density,
@@ -141,3 +146,17 @@ def rotor_eddy(
             length, float(task.materials.sleeve.resistivity.at(temperature.sleeve_temperature))
         ),
     )
+    turn, wave = turns[row, column], main[:, row, column]
+    near = orders <= MIXED * rotation.slots + rotation.pole_pairs
+    share = mixed_to_separate(
+        found.magnet[:, near],
+        (np.where(turn > 0, wave, np.conj(wave)) / np.sqrt(square[:, row, column]))[:, near],
+        (orders * np.sign(turn))[near],
+        np.abs(turn)[near],
+        rotation.pole_pairs,
+        segments,
+        sections.magnet_arc_ratio * pitch / segments,
+    )
+    mixed = found.magnet.copy()
+    mixed[:, near] *= share[:, None]
+    return found._replace(magnet=mixed)

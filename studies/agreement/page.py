@@ -54,11 +54,11 @@ NOTES = (
     "yoke are far from it. The analytic circuit gives a tip one flux and one voltage; a search "
     "that smooths the force by it still finds designs with two or three times the error that "
     "it promises, at levels of a per cent or two.",
-    "`loss_magnet_W` is too low by the analytic evaluator, most where magnets are wide: it takes "
-    "every field order by itself, while orders of one frequency mix in each separately conducting "
-    "magnet, which finite elements count. The warmer magnets then carry less flux, so total loss, "
-    "efficiency, torque and force per length differ with it; in families with much magnet loss the "
-    "ranks of efficiency and of `torque_Nm`, which holds the drag of that loss, suffer too.",
+    "`loss_magnet_W` is least sure with many poles and saturated stators: the analytic evaluator "
+    "lets orders of one frequency mix in each magnet, but takes the reaction of the currents of "
+    "every order by itself and the field of a stator saturated alike in all teeth. Warmer magnets "
+    "carry less flux, so total loss, efficiency, torque and force per length differ with it; where "
+    "that loss is large the ranks of efficiency and of `torque_Nm`, which holds its drag, suffer.",
     "Cogging is taken from teeth and yoke of one permeability each and is a tiny difference "
     "besides where slots and poles have a large common multiple: do not rank designs by it.",
     "`magnet_flux_density_T` is a sum of harmonics that rings at the edges of the magnets; both "

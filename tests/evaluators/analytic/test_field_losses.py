@@ -14,6 +14,7 @@ from evaluators.analytic import losses
 from evaluators.analytic.model import AnalyticModel, Resolution, Waves
 from evaluators.machine.field import Excitation
 from evaluators.machine.geometry.cross_sections import CrossSections
+from evaluators.machine.losses.eddy import RotorEddyLoss
 from evaluators.machine.losses.iron import IronLossCoefficients
 
 FloatArray = NDArray[np.float64]
@@ -136,8 +137,11 @@ def test_waves_against_the_rotor(
     waves = case.model.waves(case.sections, case.exciting)[0]
     seen: dict[str, FloatArray] = {}
 
-    def catch(order: FloatArray, frequency: FloatArray, density: FloatArray, **_: object) -> None:
+    def catch(
+        order: FloatArray, frequency: FloatArray, density: FloatArray, **_: object
+    ) -> RotorEddyLoss:
         seen.update(order=order, frequency=frequency, density=density[0])
+        return RotorEddyLoss(density, density)
 
     monkeypatch.setattr(losses, "rotor_eddy_loss", catch)
     rotation = case.model.rotation
