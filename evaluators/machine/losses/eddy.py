@@ -130,8 +130,8 @@ def rotor_eddy_loss(
     3 % for a thickness of a fifth of the skin depth and by 1 % (order 1) to 22 % (order 4) for
     two thirds of it. Harmonics of equal frequency and different order are taken as uncorrelated
     over the segments; `evaluators.analytic.mixing` adds what they have in common. Short segments
-    shorten their eddies: the factor is `block_length_factor` of a block whose width gives the same loss in a uniform
-    field. The sleeve follows `ring_length_factor`.
+    shorten their eddies: the factor is `block_length_factor` of a block whose width gives the same
+    loss in a uniform field. The sleeve follows `ring_length_factor`.
 
     Parameters
     ----------
