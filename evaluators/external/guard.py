@@ -33,6 +33,10 @@ class Guard:
         self._process: subprocess.Popen[bytes] | None = None
         self._owner = 0
 
+    def ready(self) -> None:
+        """Start the guard, before the first program rather than after it."""
+        self._running()
+
     def started(self, group: int) -> None:
         """A process group is alive."""
         self._tell(b"+%d\n" % group)

@@ -48,6 +48,7 @@ def run_program(program: Sequence[str], folder: Path, timeout_s: float) -> Ended
     Standard input is empty; standard output and error go to ``output.txt`` in `folder`.
     """
     file = folder / OUTPUT
+    GUARD.ready()
     with file.open("wb") as stream:
         try:
             process = subprocess.Popen(  # noqa: S603  the user has consented to this program

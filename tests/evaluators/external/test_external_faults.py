@@ -209,12 +209,13 @@ def test_killed_evaluator_takes_its_program_along(tmp_path: Path) -> None:
     while not (child.exists() and child.read_text().endswith("\n")):
         assert time.monotonic() < deadline
         time.sleep(0.05)
+    time.sleep(0.5)  # the program may be quicker than its keeper, who tells the guard of it
     os.kill(run.pid, signal.SIGKILL)
     run.wait()
     assert gone(int(child.read_text()))
 
 
-def gone(process: int, within_s: float = 10.0) -> bool:
+def gone(process: int, within_s: float = 60.0) -> bool:
     """Whether a process ends (or is a zombie nobody reaps) within the time."""
     deadline = time.monotonic() + within_s
     while time.monotonic() < deadline:
