@@ -19,7 +19,7 @@ from studies.running import sweep as room
 from studies.running.evaluating import dispatcher_of
 from studies.running.spending import Spending
 from studies.shipped.library import find_study
-from studies.stored.layout import Request, Results, create, open_results, save_request
+from studies.stored.layout import Results, create, open_results, save_request
 from studies.stored.naming import split_search_name
 from studies.study_file.definition import Study
 
@@ -114,14 +114,7 @@ def sweep(
     wanted = study if isinstance(study, Study) else load_study(study)
     chosen = room.chosen_families(wanted, families)
     problems = room.problems_of(wanted, chosen, allow_program)
-    shipped = wanted.file.endswith(room.SHIPPED_MARK)
-    request = Request(
-        origin=wanted.file if shipped else str(Path(wanted.file).absolute()),
-        families=chosen,
-        evaluations_per_family=evaluations or wanted.search.evaluations_per_family,
-        seed=wanted.search.seed if seed is None else seed,
-        searches_per_family=searches or wanted.search.searches_per_family,
-    )
+    request = room.request_of(wanted, chosen, evaluations, searches, seed)
     room.announced(wanted, chosen, request)
     with dispatcher_of(wanted, workers, cluster) as dispatcher:
         results_of_study = create(Path(results), wanted, request)

@@ -56,19 +56,12 @@ def sweep(
     from studies.running import sweep as room
     from studies.running.evaluating import dispatcher_of
     from studies.shipped.library import find_study
-    from studies.stored.layout import Request, create
+    from studies.stored.layout import create
 
     study = find_study(study_file)
     families = room.chosen_families(study, family)
     problems = room.problems_of(study, families, allow_program)
-    shipped = study.file.endswith(room.SHIPPED_MARK)
-    request = Request(
-        origin=study.file if shipped else str(Path(study.file).absolute()),
-        families=families,
-        evaluations_per_family=budget or study.search.evaluations_per_family,
-        seed=study.search.seed if seed is None else seed,
-        searches_per_family=searches or study.search.searches_per_family,
-    )
+    request = room.request_of(study, families, budget, searches, seed)
     said = room.announced(study, families, request)
     dispatcher = context.with_resource(dispatcher_of(study, workers, cluster))
     results = create(Path(results_folder), study, request)

@@ -83,6 +83,24 @@ def announced(study: Study, families: Sequence[str], request: Request) -> str:
     )
 
 
+def request_of(
+    study: Study,
+    families: tuple[str, ...],
+    evaluations: int | None,
+    searches: int | None,
+    seed: int | None,
+) -> Request:
+    """What a new sweep is asked for; what is None is taken from the study."""
+    shipped = study.file.endswith(SHIPPED_MARK)
+    return Request(
+        origin=study.file if shipped else str(Path(study.file).absolute()),
+        families=families,
+        evaluations_per_family=evaluations or study.search.evaluations_per_family,
+        seed=study.search.seed if seed is None else seed,
+        searches_per_family=searches or study.search.searches_per_family,
+    )
+
+
 def problems_of(
     study: Study, families: Sequence[str], allow_program: bool = False
 ) -> dict[str, MachineProblem]:
